@@ -1,0 +1,2 @@
+//! Bytes of a digitizer export → channels with a checked time base.
+//! Must not open a file.

@@ -1,0 +1,2 @@
+//! Plain maths on `f64` slices.
+//! Must not know lasers, units or files.
