@@ -1,0 +1,9 @@
+//! What a run needs of the world, as traits, and the station file that names the instruments.
+//! Must not touch an instrument itself.
+//! Main types: [`Bench`], [`Want`].
+
+mod bench;
+mod want;
+
+pub use bench::{Bench, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, Trouble};
+pub use want::{CaptureRequest, ReadingKind, ReadingRequest, Want};
