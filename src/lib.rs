@@ -9,8 +9,23 @@ pub mod quantity;
 pub mod constants;
 pub mod uncertainty;
 // L2
+pub mod behaviour;
 pub mod capture;
 pub mod measurand;
 pub mod record;
+pub mod sweep;
+pub mod tube;
+// L3
+pub mod limits;
+pub mod phantom;
+pub mod recipe;
 // L4
+pub mod report;
+pub mod run;
 pub mod station;
+// L5
+pub mod disk;
+pub mod driver;
+pub mod instruments;
+// L6
+pub mod cli;
