@@ -19,6 +19,8 @@ const LEAST_DAMPING: f64 = 1e-30;
 const LEAST_GAIN: f64 = 1e-4;
 /// Fraction of the sum of squares that may be rounding where residuals are tiny differences of large values.
 const ROUNDING_OF_SUM: f64 = 1e-9;
+/// Relative to the squared column lengths; far below any curvature that double precision can tell from none.
+const TRACE_DAMPING: f64 = 1e-10;
 /// A parameter is lost if its derivatives fell to this fraction of the largest met on the way.
 const LOST: f64 = 1e-6;
 /// Most undamped steps after convergence. Two or three do for small residuals; large residuals with strong curvature
@@ -43,7 +45,7 @@ const POLISH_END: f64 = 1e-14;
 ///    the new point is clipped to the bounds.
 /// 3. Compare the reduction with the expected one; accept, and scale λ by max(1/3, 1 − (2·gain − 1)³), or reject, and raise λ.
 /// 4. On convergence, polish with undamped steps as long as these shrink.
-/// 5. If the model no longer depends on some parameter at the end (a long first step can carry it there), from the start
+/// 5. If the model no longer depends on some parameter at the end (a long first step can carry it there), try again from the start
 ///    with heavy first damping, and return the better of the two.
 ///
 /// Source: Levenberg 1944, Marquardt 1963; scaling as in Moré 1978; the rule for λ: Nielsen 1999 (all from memory).
@@ -228,11 +230,10 @@ impl<'a> Search<'a> {
         let mut last = f64::INFINITY;
         for _ in 0..POLISH_STEPS {
             let free = self.free_to_move();
-            if self.triangle.inverse_normal(&free).is_none() {
-                return;
-            }
+            // Dependent derivatives have no undamped step; a trace of damping picks the shortest of the many.
+            let damping = if self.triangle.inverse_normal(&free).is_some() { 0.0 } else { TRACE_DAMPING };
             let lengths = self.triangle.column_lengths();
-            let Some(delta) = self.triangle.damped_step(0.0, &lengths, &free) else { return };
+            let Some(delta) = self.triangle.damped_step(damping, &lengths, &free) else { return };
             let moved: Vec<f64> = self.parameters.iter().zip(&delta).map(|(p, d)| p + d).collect();
             let length = self.relative_length(&delta, &moved);
             if length <= POLISH_END || length >= POLISH_SHRINK * last || clipped(&moved, &self.bounds) != moved {
