@@ -16,7 +16,7 @@ use super::{
 };
 
 /// A ramp monitor or photodiode below this many levels is worth a remark.
-const COARSE: usize = 100;
+const COARSE: usize = 64;
 
 /// One file, read.
 struct Source<'a> {
@@ -200,15 +200,18 @@ fn channels(sources: &[Source<'_>], file: usize) -> Vec<Spot> {
     let many = source.columns.len() > 1;
     let copies_time = |column: &[f64]| {
         source.time.is_some_and(|time| {
-            column.iter().zip(&source.columns[time]).all(|(a, b)| a == b || (a.is_nan() && b.is_nan()))
+            let other = column.iter().zip(&source.columns[time]).filter(|(a, b)| a != b && !a.is_nan() && !b.is_nan());
+            100 * other.count() <= column.len()
         })
     };
+    let is_time = |c: usize| matches!(source.around.labels[c].unit, Some(ColumnUnit::Time(_)));
     let is_number = |c: usize| {
         let label = &source.around.labels[c];
         many && source.time != Some(c) && (is_index_word(&label.name) || (c == 0 && counts_up(&source.columns[c])))
     };
     (0..source.columns.len())
         .filter(|&c| source.time != Some(c) && !copies_time(&source.columns[c]) && !is_number(c))
+        .filter(|&c| !is_time(c))
         .filter(|&c| source.columns[c].iter().any(|v| v.is_finite()))
         .map(|c| (file, c))
         .collect()
@@ -276,7 +279,7 @@ fn time_base(
 /// Seconds in one of the column's unit.
 fn time_factor(source: &Source<'_>, index: usize) -> f64 {
     let column = source.layout.columns.get(index).copied().unwrap_or(0);
-    let stated = || unit(&source.around.text(&["horizontalunits", "xunits"], column)?);
+    let stated = || unit(source.around.text(&["horizontalunits", "xunits"], column)?);
     match source.around.labels[index].unit.clone().or_else(stated) {
         Some(ColumnUnit::Time(factor)) => factor,
         _ => 1.0,
@@ -339,7 +342,7 @@ fn volts(
     let around = &source.around;
     let integers = samples.iter().all(|v| v.fract() == 0.0);
     let codes = around.number(&["yincrement", "yinc"], column).filter(|_| integers);
-    let stated = || unit(&around.text(&["verticalunits", "yunits"], column)?);
+    let stated = || unit(around.text(&["verticalunits", "yunits"], column)?);
     if let Some(increment) = codes {
         // volts = (code − reference)·increment + origin, the common practice of digitizers' waveform preambles.
         let reference = around.number(&["yreference"], column).unwrap_or(0.0);
