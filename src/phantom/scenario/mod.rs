@@ -164,7 +164,7 @@ mod tests {
                     power = \"9 W\"\nincident = [{ kind = \"hopp\", at = \"1 s\" }]\n";
         let error = Scenario::parse("s.toml", text).unwrap_err().to_string();
         let lines: Vec<&str> = error.lines().map(|line| line.split(": ").next().unwrap_or("")).collect();
-        let places = ["s.toml:2:13", "s.toml:4:1", "s.toml:6:9", "s.toml:9:8", "s.toml:11:9", "s.toml:12:23"];
+        let places = ["s.toml:2:13", "s.toml:4:1", "s.toml:6:9", "s.toml:9:8", "s.toml:11:9", "s.toml:12:22"];
         assert_eq!(lines, places, "{error}");
         assert!(error.contains("`finesse`") && error.contains("`MHz` is not a unit of a power"), "{error}");
     }
