@@ -1,3 +1,5 @@
-//! Placeholder of the ground: see `DEVELOPERS.md`.
+//! The command line: one file per command; ending → exit status.
+//! Must not decide anything.
 
 pub mod check;
+pub mod simulate;
