@@ -204,9 +204,9 @@ pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, off
         let birge = if fit.dof > 0 { (fit.chi_square / fit.dof as f64).max(1.0).sqrt() } else { scale.sqrt() };
         fit.u_spacing * birge
     };
-    let tightest = fits.iter().filter(|fit| usable(fit)).map(spread).fold(f64::INFINITY, f64::min);
+    let tightest = |i: usize| fits[..=i].iter().filter(|fit| usable(fit)).map(spread).fold(f64::INFINITY, f64::min);
     let admissible = |i: usize| {
-        usable(&fits[i]) && fits[i].dof >= 0 && (!with_comb || spread(&fits[i]) <= MOST_INFLATION * tightest)
+        usable(&fits[i]) && fits[i].dof >= 0 && (!with_comb || spread(&fits[i]) <= MOST_INFLATION * tightest(i))
     };
     let best =
         (0..fits.len()).filter(|i| admissible(*i) && spares(*i + 1)).min_by(|a, b| merit(*a).total_cmp(&merit(*b)))?;
