@@ -15,7 +15,7 @@ use crate::record::sheet::Sheet;
 pub const LAST_LINE: f64 = 806.0;
 const SMALL: Style = Style::plain(6.8, GREY);
 const EXPLAINED: &str = "U: expanded uncertainty for 95.45 %. \"conforms\": probability of being inside, no prior \
-     knowledge assumed. Brackets: bounds, best grade first. Relates only to the tube tested.";
+     knowledge assumed. Brackets: bounds, best grade first. Valid for this tube only.";
 
 /// The foot and where it begins; drawn from the bottom of the page upwards.
 ///
