@@ -66,7 +66,13 @@ impl AxisFit {
         (self.at(u + h) - self.at(u - h)) / (2.0 * h)
     }
 
-    /// Largest slope over smallest on the ramp; infinite if the axis turns back.
+    /// Root mean square residual, Hz.
+    pub fn rms(&self) -> f64 {
+        let n = self.residuals.len().max(1) as f64;
+        (self.residuals.iter().map(|r| r * r).sum::<f64>() / n).sqrt()
+    }
+
+    /// Whether the axis never turns back between two places.
     pub fn is_one_way(&self, from: f64, to: f64) -> bool {
         (0..=32).all(|i| self.slope(from + (to - from) * f64::from(i) / 32.0) > 0.0)
     }
@@ -104,10 +110,22 @@ pub(super) fn solve(
     terms: usize,
     offsets: Offsets,
 ) -> Option<AxisFit> {
+    solve_with(placed, covariance, fsr, terms, offsets, None)
+}
+
+/// The same, with the highest coefficient held near zero: `prior` is its standard deviation, Hz.
+fn solve_with(
+    placed: &[Placed],
+    covariance: &DMatrix<f64>,
+    fsr: f64,
+    terms: usize,
+    offsets: Offsets,
+    prior: Option<f64>,
+) -> Option<AxisFit> {
     let n = placed.len();
     let unknowns = terms + 1 + offsets.unknowns();
     let with_comb = offsets == Offsets::Comb;
-    if n < unknowns {
+    if n + usize::from(prior.is_some()) < unknowns {
         return None;
     }
     // In units of the FSR all numbers are near one.
@@ -120,6 +138,14 @@ pub(super) fn solve(
     let whitener = (covariance / (fsr * fsr)).cholesky()?.l();
     let white_design = whitener.solve_lower_triangular(&design)?;
     let white_wanted = whitener.solve_lower_triangular(&wanted)?;
+    let (white_design, white_wanted) = match prior {
+        Some(sigma) if sigma > 0.0 => {
+            let mut row = white_design.insert_row(n, 0.0);
+            row[(n, terms)] = fsr / sigma;
+            (row, white_wanted.push(0.0))
+        }
+        _ => (white_design, white_wanted),
+    };
     let qr = white_design.clone().qr();
     let r = qr.r();
     // A vanishing diagonal means that what was seen does not fix an unknown.
@@ -162,6 +188,31 @@ fn last_changes(fits: &[AxisFit]) -> f64 {
     if changes.len() < 2 { 0.0 } else { (changes.iter().sum::<f64>() / changes.len() as f64).sqrt() }
 }
 
+/// A ramp's next coefficient over its last: smooth piezo ramps fall off by three or more a degree (found).
+const FALL_OFF: f64 = 0.35;
+
+/// Change of the spacing that a term too weakly seen to be fitted may still cause, Hz.
+///
+/// The next coefficient is let in with an expected size of [`FALL_OFF`] times the last one; what the spacing then moves,
+/// and what its uncertainty grows by, is the truncation.
+fn expected_term(
+    placed: &[Placed],
+    covariance: &DMatrix<f64>,
+    fsr: f64,
+    offsets: Offsets,
+    fit: &AxisFit,
+    birge: f64,
+) -> Option<f64> {
+    let terms = fit.coefficients.len() - 1;
+    let last = fit.coefficients.last()?.abs();
+    let sigma = if terms < 2 { 0.1 * last } else { FALL_OFF * last };
+    let wider = solve_with(placed, covariance, fsr, terms + 1, offsets, Some(sigma))?;
+    let moved = wider.spacing? - fit.spacing?;
+    let grown = (wider.u_spacing.powi(2) - fit.u_spacing.powi(2)).max(0.0) * birge * birge;
+    // Where the term is well seen, `moved` is what `grown` expects: the two are one effect, counted once.
+    Some((moved * moved).max(grown).sqrt())
+}
+
 /// The axis chosen among degrees, and what the choice costs.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Choice {
@@ -182,7 +233,7 @@ pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, off
     let mut fits: Vec<AxisFit> = Vec::new();
     let unknowns = |terms: usize| terms + 1 + offsets.unknowns();
     // A quarter of the peaks must be left over to contradict the model chosen; richer ones only bear witness.
-    let spare = placed.len() / 4;
+    let spare = if placed.len() <= 5 { 0 } else { placed.len() / 4 };
     let spares = |terms: usize| terms == 1 || unknowns(terms) + spare <= placed.len();
     for terms in 1..=MOST_TERMS {
         match solve(placed, covariance, fsr, terms, offsets) {
@@ -224,7 +275,7 @@ pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, off
     // A ramp that needs many terms, or all there are data for, is no polynomial: its series goes on.
     let goes_on = best + 1 >= SERIES_TERMS || (next.is_none() && best + 1 >= 3);
     let series = if goes_on { SERIES_SHARE * last_changes(&fits[..=best]) } else { 0.0 };
-    let truncation = beyond.hypot(series);
+    let truncation = expected_term(placed, covariance, fsr, offsets, &fit, birge).unwrap_or(beyond).hypot(series);
     Some(Choice { fit, terms: best + 1, birge, truncation })
 }
 

@@ -260,6 +260,14 @@ impl Map {
         }
     }
 
+    /// Root mean square misfit of the map, Hz; 0 where it was not fitted.
+    fn rms(&self) -> f64 {
+        match self {
+            Self::Smooth(_) => 0.0,
+            Self::Fitted(axis) => axis.rms(),
+        }
+    }
+
     /// Hz a sample.
     fn slope(&self, x: f64, half: f64, fsr: f64) -> f64 {
         match self {
@@ -305,7 +313,8 @@ fn assemble(
             0 => (0.6 * apparent).clamp(0.015, 0.06),
             _ => (0.4 * apparent).clamp(0.006, 0.04),
         }
-        .hypot((4.0 * u_phase).min(0.02));
+        .hypot((4.0 * u_phase).min(0.02))
+        .hypot((3.0 * map.rms() / fsr).min(0.02));
         let phased: Vec<Phased> = good
             .iter()
             .map(|i| Phased {
@@ -590,8 +599,7 @@ fn warn_of_result(
     if result.order_count < 3 {
         result.warnings.push(Warning::FewOrders);
     }
-    let n = choice.fit.residuals.len() as f64;
-    let rms = (choice.fit.residuals.iter().map(|r| r * r).sum::<f64>() / n).sqrt();
+    let rms = choice.fit.rms();
     if choice.fit.dof > 1 && choice.birge > 3.0 && rms > EVEN_ALLOWANCE {
         result.warnings.push(Warning::UnevenComb { rms });
     }

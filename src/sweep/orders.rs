@@ -105,7 +105,7 @@ pub(super) fn find(peaks: &[Seen], n_samples: usize, width: f64, spacing_over_fs
 
 /// Prefers small bends and, of repeats that fit alike, the shortest.
 fn penalty(orders: &Orders) -> f64 {
-    0.12 * orders.bend.abs() + 0.06 * orders.period / orders.length
+    0.08 * orders.bend.abs() + 0.2 * orders.period / orders.length
 }
 
 /// The peak nearest one order after `x`, with its distance in orders.
