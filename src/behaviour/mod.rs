@@ -5,10 +5,17 @@
 mod decay;
 mod glimpse;
 mod jumps;
+mod line;
+mod swaps;
 #[cfg(test)]
 mod synthetic;
 mod track;
 mod warmup;
+mod watch;
 
 pub use glimpse::{Glimpse, GlimpseMode};
 pub use warmup::{Warmup, WarmupSettings, WarmupState};
+pub use watch::{Hop, Swap, Watched, watch};
+
+#[cfg(test)]
+mod fixture_tests;
