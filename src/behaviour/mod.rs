@@ -14,6 +14,7 @@ mod swaps;
 #[cfg(test)]
 mod synthetic;
 mod track;
+mod trial;
 mod warmup;
 mod watch;
 

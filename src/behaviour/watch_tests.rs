@@ -4,7 +4,7 @@
 #![allow(clippy::unwrap_used)]
 
 use super::*;
-use crate::behaviour::synthetic::Synthetic;
+use crate::behaviour::synthetic::{Noise, Synthetic};
 
 /// One capture every `EVERY` s.
 const EVERY: f64 = 0.5;
@@ -148,4 +148,29 @@ fn nothing_from_nothing() {
     assert_eq!(watch(&[], 400e6), Watched::default());
     let dark = Glimpse { at: 1.0, ..Glimpse::default() };
     assert_eq!(watch(&[dark.clone(), dark], f64::NAN), Watched::default());
+}
+
+#[test]
+fn events_anywhere_are_found_and_attributed() {
+    let mut noise = Noise(77);
+    let mut share = || (noise.normal() / 2.0).tanh().abs();
+    for seed in 1..=20 {
+        let sizes = [30e6 + 140e6 * share(), -30e6 - 140e6 * share(), 100e6];
+        let times = [40.0 + 100.0 * share(), 250.0 + 200.0 * share(), 620.0 + 100.0 * share()];
+        let swaps = vec![160.0 + 50.0 * share(), 500.0 + 80.0 * share()];
+        let tube = Synthetic {
+            drift: 1.5e6 * share(),
+            u_height: 0.03,
+            u_position: 1.5e6,
+            hops: times.into_iter().zip(sizes).collect(),
+            swaps: swaps.clone(),
+            ..Synthetic::quad(seed)
+        };
+        let mut glimpses = tube.glimpses(0.3, 180.0, 0.2);
+        glimpses.extend(tube.glimpses(180.2, 900.0, EVERY));
+        let watched = watch(&glimpses, tube.spacing);
+        assert_times(&hop_times(&watched), &times);
+        assert_times(&swap_times(&watched), &swaps);
+        assert!(watched.unattributed.is_empty() && watched.interferometer.is_empty(), "seed {seed}: {watched:?}");
+    }
 }
