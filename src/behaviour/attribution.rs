@@ -10,8 +10,8 @@ use super::track::Track;
 /// Glimpses on either side of a jump whose heights attribute it.
 const WITNESSES: usize = 8;
 
-/// Walk, in cycles, and glimpses from which the gain line near a moment is made: enough to fill the line, few enough that a
-/// drifting interferometer does not smear it.
+/// Walk, in cycles, and glimpses from which the gain line near a moment is made: enough to fill the line, few enough
+/// that a drifting interferometer does not smear it.
 pub(crate) const LINE_CYCLES: f64 = 3.0;
 /// See [`LINE_CYCLES`].
 pub(crate) const LINE_GLIMPSES: usize = 60;
@@ -19,8 +19,8 @@ pub(crate) const LINE_GLIMPSES: usize = 60;
 /// Difference of χ² that decides: 3 standard deviations.
 const DECISIVE: f64 = 9.0;
 
-/// Displacement of the line by drift between the time it was taken from and the jump: steps and reach of the search, and the
-/// width of what is expected beforehand, Hz.
+/// Displacement of the line by drift between the time it was taken from and the jump: steps and reach of the search,
+/// and the width of what is expected beforehand, Hz.
 const DRIFT_STEP: f64 = 10e6;
 const DRIFT_STEPS: i32 = 15;
 const DRIFT_WIDTH: f64 = 75e6;
@@ -36,14 +36,15 @@ pub(crate) enum Owner {
     Unknown,
 }
 
-/// Attributes jump `number` by mode heights; `shift(point)` is what is known of the interferometer's displacements before it, Hz.
+/// Attributes jump `number` by mode heights; `shift(point)` is what is known of the interferometer's displacements
+/// before it, Hz.
 ///
 /// # Method
 /// 1. Make the gain line from the glimpses before the jump (or after it, where there is under a cycle before).
 /// 2. Find how far the line has drifted from there to the last glimpses on the same side of the jump.
-/// 3. Compare the glimpses just beyond the jump with the line in that place (a hop of the tube), and with the line displaced by
-///    the jump and any whole number of spacings (the interferometer's), all heights of a glimpse scaled freely, as a knock may
-///    change them. A difference of χ² under 9 does not decide.
+/// 3. Compare the glimpses just beyond the jump with the line in that place (a hop of the tube), and with the line
+///    displaced by the jump and any whole number of spacings (the interferometer's), all heights of a glimpse scaled
+///    freely, as a knock may change them. A difference of χ² under 9 does not decide.
 pub(crate) fn attribute(
     track: &Track,
     glimpses: &[Glimpse],

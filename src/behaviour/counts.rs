@@ -27,8 +27,8 @@ pub struct Counts {
     pub min: u32,
     /// Greatest number.
     pub max: u32,
-    /// Probability that the least number is right: that the mode nearest to the floor is on the side found, in the clearest glimpse
-    /// with that number.
+    /// Probability that the least number is right: that the mode nearest to the floor is on the side found, in the
+    /// clearest glimpse with that number.
     pub min_probability: f64,
     /// The same for the greatest number.
     pub max_probability: f64,
@@ -104,7 +104,8 @@ fn count(glimpse: &Glimpse, floor: f64) -> Option<(u32, f64)> {
     (n > 0).then_some((n, nearest))
 }
 
-/// Points of the gain line: every mode of every glimpse at its distance from the middle, which is the centroid of the profile.
+/// Points of the gain line: every mode of every glimpse at its distance from the middle, which is the centroid of the
+/// profile.
 ///
 /// Heights are the sum of both photodiodes. Empty where there are too few modes for a profile.
 pub fn gain_points(glimpses: &[Glimpse], spacing: f64) -> Vec<GainPoint> {

@@ -40,8 +40,9 @@ impl Decay {
     /// Fits the walk, or `None` where the points do not allow it.
     ///
     /// # Method
-    /// 1. Gather the points in bins. 2. Variable projection: for each trial τ the offset and amplitudes are a weighted linear
-    ///    fit; the sum of squares is then searched over τ, by grid, golden section and Gauss-Newton (Golub & Pereyra 1973).
+    /// 1. Gather the points in bins. 2. Variable projection: for each trial τ the offset and amplitudes are a weighted
+    ///    linear fit; the sum of squares is then searched over τ, by grid, golden section and Gauss-Newton (Golub &
+    ///    Pereyra 1973).
     /// 3. The same with a fast part, kept where it passes an F-test at 0.1 %.
     /// 4. Variances times max(1, reduced χ²) times (1 + ρ)/(1 − ρ), ρ the correlation of neighbouring residuals.
     pub fn fit(points: &[WalkPoint]) -> Option<Self> {
@@ -145,9 +146,9 @@ impl Decay {
         self.best.residual(at, horizon).0
     }
 
-    /// Upper bound of that walk at one-sided 95 %: the greatest value among all (A, τ) whose sum of squares lies within t² of
-    /// the least (profile likelihood), so that a τ known badly to one side is not hidden by a tangent; the form of the model
-    /// adds its share.
+    /// Upper bound of that walk at one-sided 95 %: the greatest value among all (A, τ) whose sum of squares lies within
+    /// t² of the least (profile likelihood), so that a τ known badly to one side is not hidden by a tangent; the form
+    /// of the model adds its share.
     pub fn residual_upper(&self, at: f64, horizon: f64) -> f64 {
         let allowed = self.t95().powi(2) * self.inflation;
         let expected = self.residual(at, horizon);

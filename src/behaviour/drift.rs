@@ -17,8 +17,8 @@ const LEAST_GLIMPSES: usize = 12;
 
 /// Rate at which the gain line moves along the scan axis, Hz/s, positive toward higher frequency.
 ///
-/// The gain line of a tube stands still (pressure and temperature move it by a few megahertz, from memory), so that is the drift
-/// of the interferometer, with opposite sign to a growth of its body.
+/// The gain line of a tube stands still (pressure and temperature move it by a few megahertz, from memory), so that is
+/// the drift of the interferometer, with opposite sign to a growth of its body.
 ///
 /// * `glimpses`: in order of time, over at least four whole walk cycles of 12 glimpses or more; else `None`.
 /// * `spacing`: mode spacing of the type, Hz.

@@ -36,10 +36,11 @@ pub struct CyclePower {
 /// `None` with fewer than five 1 s averages, or no light.
 ///
 /// # Method
-/// 1. Average readings within each second. 2. Noise of an average: robust scatter about the line through its neighbours.
+/// 1. Average readings within each second. 2. Noise of an average: robust scatter about the line through its
+///    neighbours.
 /// 3. Mean: each second counts by the time it stands for, as captures need not be even; its u is noise over √n.
-/// 4. Ripple: the extremes of n averages of pure noise lie about 2√(2 ln n)·σ apart (extreme value theory, leading term); what is
-///    found is taken as √(found² − noise²), exact for none and good for much ripple.
+/// 4. Ripple: the extremes of n averages of pure noise lie about 2√(2 ln n)·σ apart (extreme value theory, leading
+///    term); what is found is taken as √(found² − noise²), exact for none and good for much ripple.
 pub fn cycle_power(glimpses: &[Glimpse], window: (f64, f64)) -> Option<CyclePower> {
     let averages = averages(glimpses, window);
     let n = averages.len();
@@ -159,7 +160,8 @@ mod tests {
 
     #[test]
     fn noise_alone_is_hardly_ripple() {
-        // 1 % noise makes 0.7 % an average and 4 % of apparent ripple over 180; what stays is within three of its own u.
+        // 1 % noise makes 0.7 % an average and 4 % of apparent ripple over 180; what stays is within three of its own
+        // u.
         for seed in 1..=20 {
             let power = cycle_power(&glimpses(seed, 1e-5, |_| 1e-3), (60.0, 240.0)).unwrap();
             assert!(power.ripple.value < 3.0 * power.ripple.u() && power.ripple_floor > 0.03, "{power:?}");

@@ -28,11 +28,12 @@ pub(crate) struct Exchanges {
 /// Exchanges of axis.
 ///
 /// # Method
-/// 1. Share of crossed light q of each mode; the families' levels are the middles of the lower and upper half of all shares.
-/// 2. A mode keeps its number on the comb while it walks, and neighbours are at right angles: the sign of (−1)^k·(q − middle)
-///    is one and the same for all modes of all glimpses. A glimpse's sense is that sign where its modes agree.
-/// 3. An exchange is a change of sense between glimpses that follow each other, with three of one sense before and three of
-///    the other after. A jump of the comb (known only modulo one spacing) starts a new count.
+/// 1. Share of crossed light q of each mode; the families' levels are the middles of the lower and upper half of all
+///    shares.
+/// 2. A mode keeps its number on the comb while it walks, and neighbours are at right angles: the sign of (−1)^k·(q −
+///    middle) is one and the same for all modes of all glimpses. A glimpse's sense is that sign where its modes agree.
+/// 3. An exchange is a change of sense between glimpses that follow each other, with three of one sense before and
+///    three of the other after. A jump of the comb (known only modulo one spacing) starts a new count.
 pub(crate) fn find(track: &Track, placed: &[Placed], jumps: &[Jump]) -> Exchanges {
     let shares: Vec<f64> = placed.iter().filter_map(share).collect();
     let Some((low, high)) = levels(shares) else { return Exchanges::default() };

@@ -23,7 +23,8 @@ const CLUSTER_START: usize = 16;
 /// Points over which the rate of walk is taken to predict the next phase.
 const LOOK_BACK: usize = 4;
 
-/// Largest error of a predicted step, in cycles, at which the phase may still be unwrapped. Half a cycle is the hard bound.
+/// Largest error of a predicted step, in cycles, at which the phase may still be unwrapped. Half a cycle is the hard
+/// bound.
 const LARGEST_STEP_ERROR: f64 = 0.3;
 
 /// Shortest time over which the rate of walk changes by itself, s (the fast part of a warm-up; common practice).
@@ -66,11 +67,11 @@ impl Track {
     /// * `spacing`: mode spacing, Hz; 1 % off does no harm.
     ///
     /// # Method
-    /// 1. Unfold each position to within half an order of the running place of the cluster of modes, so that the cut between
-    ///    orders lies opposite to the gain line.
+    /// 1. Unfold each position to within half an order of the running place of the cluster of modes, so that the cut
+    ///    between orders lies opposite to the gain line.
     /// 2. Phase of a glimpse: argument of the weighted mean of exp(2πi·position/spacing) over its modes.
-    /// 3. Unwrap from the last glimpse backward, each step nearest to what the rate just after it predicts: the walk slows
-    ///    down, so the end is the safe place to start. Stop where the rate can no longer say which cycle it is.
+    /// 3. Unwrap from the last glimpse backward, each step nearest to what the rate just after it predicts: the walk
+    ///    slows down, so the end is the safe place to start. Stop where the rate can no longer say which cycle it is.
     pub fn follow(glimpses: &[Glimpse], spacing: f64) -> Self {
         let mut track = Self { spacing, origin: 0.0, points: Vec::new(), early_unknown: false, scatter: 0.0 };
         if !(spacing.is_finite() && spacing > 0.0) {

@@ -1,4 +1,5 @@
-//! Trials of the walk's model N(t) = C − A·exp(−t/τ) − A_f·exp(−t/τ_f) against binned observations, and the search for the best.
+//! Trials of the walk's model N(t) = C − A·exp(−t/τ) − A_f·exp(−t/τ_f) against binned observations, and the search for
+//! the best.
 //! Must not say what a fit means: that is [`super::decay`]'s.
 //! Main types: [`Bin`], [`Trial`].
 
@@ -138,7 +139,8 @@ pub(crate) fn minimize(grid: &[f64], rounds: usize, at: impl Fn(f64) -> Option<T
     Some(best)
 }
 
-/// Best trial with a fast part: a grid of both time constants, then polished. Both amplitudes must be positive, as a warming tube grows.
+/// Best trial with a fast part: a grid of both time constants, then polished. Both amplitudes must be positive, as a
+/// warming tube grows.
 pub(crate) fn with_fast_part(bins: &[Bin], slow: &[f64]) -> Option<Trial> {
     let rough = minimize(slow, 0, |tau| {
         let fast = FAST_RATIOS.iter().filter_map(|ratio| trial(bins, tau, Some(ratio * tau)));
@@ -172,7 +174,8 @@ pub(crate) fn polished(bins: &[Bin], start: Trial, free_tau: bool, rounds: usize
     best
 }
 
-/// Linear fit by the tangent at a trial, columns (C, A[, δτ][, A_f, δτ_f]): its covariance, and the next step of a search.
+/// Linear fit by the tangent at a trial, columns (C, A[, δτ][, A_f, δτ_f]): its covariance, and the next step of a
+/// search.
 pub(crate) fn tangent(at: &Trial, bins: &[Bin], free_tau: bool) -> Option<LinearFit> {
     let by_tau = |b: &Bin, amplitude: f64, tau: f64| -amplitude * b.exponential(tau) * b.at / (tau * tau);
     solve(bins, |b| {

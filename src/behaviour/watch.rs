@@ -56,9 +56,9 @@ pub struct Swap {
 /// * `spacing`: mode spacing of the type, Hz; the measured one is used where there is one.
 ///
 /// # Method
-/// 1. Follow the comb and find its jumps. 2. Build the gain line from all glimpses. 3. Attribute each jump: after a hop of the
-///    tube the heights fit the line where it was; after one of the interferometer they fit the line displaced by the jump, plus
-///    any whole number of spacings.
+/// 1. Follow the comb and find its jumps. 2. Build the gain line from all glimpses. 3. Attribute each jump: after a hop
+///    of the tube the heights fit the line where it was; after one of the interferometer they fit the line displaced by
+///    the jump, plus any whole number of spacings.
 /// 4. Swaps: see [`swaps`].
 pub fn watch(glimpses: &[Glimpse], spacing: f64) -> Watched {
     let track = Track::follow(glimpses, pooled_spacing(glimpses, spacing));

@@ -90,7 +90,8 @@ fn a_twin_with_a_hop_and_a_swap() {
     for seed in 1..=5 {
         let tube = Synthetic { hops: vec![(700.1, 300e6)], swaps: vec![500.2], ..Synthetic::twin(seed) };
         let watched = watch(&tube.glimpses(0.3, 900.0, EVERY), tube.spacing);
-        // With one mode in sight nobody can say whose a jump is: it must not be lost, and must not be called the interferometer's.
+        // With one mode in sight nobody can say whose a jump is: it must not be lost, and must not be called the
+        // interferometer's.
         let seen: Vec<f64> = watched.hops.iter().chain(&watched.unattributed).map(|h| h.at).collect();
         assert_times(&seen, &[700.1]);
         assert_times(&swap_times(&watched), &[500.2]);
@@ -127,7 +128,8 @@ fn a_drifting_interferometer_hides_nothing() {
 
 #[test]
 fn swaps_at_one_place_under_the_line_every_cycle() {
-    // Two swaps a cycle would cancel in mode identity over the cycle; one each cycle at the same comb phase is the common case.
+    // Two swaps a cycle would cancel in mode identity over the cycle; one each cycle at the same comb phase is the
+    // common case.
     let tube = Synthetic::quad(6);
     let phase_at = |n: f64| -tube.tau * (1.0 - n / tube.n_infinity).ln();
     let swaps: Vec<f64> = (20..60).map(|n| phase_at(f64::from(n) + 0.1) + 1e-3).collect();
@@ -135,8 +137,8 @@ fn swaps_at_one_place_under_the_line_every_cycle() {
     let tube = Synthetic { swaps: swaps.clone(), ..tube };
     let watched = watch(&tube.glimpses(from, to, EVERY), tube.spacing);
     assert_times(&swap_times(&watched), &swaps);
-    // Comb 0.3 GHz above the middle at the start: after n + 0.1 cycles a mode lies 0.3 − 0.03997 − 0.3997 GHz off. One capture
-    // of walk, and a middle known to some tens of megahertz.
+    // Comb 0.3 GHz above the middle at the start: after n + 0.1 cycles a mode lies 0.3 − 0.03997 − 0.3997 GHz off. One
+    // capture of walk, and a middle known to some tens of megahertz.
     let planted = 0.3e9 - 0.1 * tube.spacing - tube.spacing;
     for swap in &watched.swaps {
         assert!((swap.detuning.unwrap() - planted).abs() < 80e6, "{swap:?}, planted {planted}");

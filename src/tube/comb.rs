@@ -13,10 +13,11 @@ pub fn mode_spacing(mirror_spacing: Length) -> FrequencyDifference {
     FrequencyDifference::from_hertz(SPEED_OF_LIGHT.value / (2.0 * mirror_spacing.metres()))
 }
 
-/// Mirror spacing in m from a measured mode spacing in Hz: L = c / (2 Δν (1 + p)), p the share by which gain dispersion shrinks
-/// the comb ([`MODE_PULLING`]).
+/// Mirror spacing in m from a measured mode spacing in Hz: L = c / (2 Δν (1 + p)), p the share by which gain dispersion
+/// shrinks the comb ([`MODE_PULLING`]).
 ///
-/// The budget of the spacing is carried over, with the pulling's own line added. `None` for a spacing that is not positive.
+/// The budget of the spacing is carried over, with the pulling's own line added. `None` for a spacing that is not
+/// positive.
 pub fn mirror_spacing(mode_spacing: &Measured) -> Option<Measured> {
     let spacing = mode_spacing.value;
     if !(spacing.is_finite() && spacing > 0.0) {
@@ -43,7 +44,8 @@ pub fn mode_number(mirror_spacing: Length, wavelength: Length) -> f64 {
     2.0 * mirror_spacing.metres() / wavelength.metres()
 }
 
-/// Least and greatest number of modes that a lasing span holds as the comb walks through it: ⌊S/Δν⌋ and the next integer.
+/// Least and greatest number of modes that a lasing span holds as the comb walks through it: ⌊S/Δν⌋ and the next
+/// integer.
 ///
 /// Source: common practice. Zero and one for a span or spacing that is not positive.
 pub fn mode_count_bounds(lasing_span: FrequencyDifference, mode_spacing: FrequencyDifference) -> (u32, u32) {

@@ -44,7 +44,8 @@ mod tests {
             let warming = TemperatureDifference::from_si(kelvin);
             walk_cycles(Length::from_metres(metres), BOROSILICATE.value, warming, WAVELENGTH)
         };
-        // Borosilicate, 400 mm and 50 K: 205; 150, 250, 375 mm over 20 to 60 K: 31 to 92, 51 to 154, 77 to 231. Whole numbers.
+        // Borosilicate, 400 mm and 50 K: 205; 150, 250, 375 mm over 20 to 60 K: 31 to 92, 51 to 154, 77 to 231. Whole
+        // numbers.
         let cases = [
             (0.4, 50.0, 205.0),
             (0.15, 20.0, 31.0),
@@ -65,7 +66,8 @@ mod tests {
 
     #[test]
     fn interferometer_bodies() {
-        // Handbook expansions of steel, aluminium, invar: 12.0, 23.0, 1.2 per million and kelvin; values given for 0.1 K.
+        // Handbook expansions of steel, aluminium, invar: 12.0, 23.0, 1.2 per million and kelvin; values given for 0.1
+        // K.
         let light = Frequency::from_hertz(SPEED_OF_LIGHT.value / RED_LINE.value);
         for (expansion, megahertz) in [(12.0e-6, 570.0), (23.0e-6, 1090.0), (1.2e-6, 57.0)] {
             let drift = body_drift(light, expansion, TemperatureDifference::from_si(0.1)).megahertz();
