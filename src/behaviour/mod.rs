@@ -1,5 +1,4 @@
-//! What a tube does over time: walk and warm-up, hops and swaps, mode counts, points of the gain line, power over walk
-//! cycles.
+//! What a tube does over time: walk and warm-up, hops and swaps, mode counts, gain line, power over walk cycles.
 //! Must not read a clock or do I/O: everything is a function of the glimpses taken.
 //! Main types: [`Glimpse`], [`Warmup`], [`Watched`], [`Counts`], [`CyclePower`].
 

@@ -1,5 +1,4 @@
-//! Trials of the walk's model N(t) = C − A·exp(−t/τ) − A_f·exp(−t/τ_f) against binned observations, and the search for
-//! the best.
+//! Trials of the model N(t) = C − A·exp(−t/τ) − A_f·exp(−t/τ_f) against binned walk, and the search for the best.
 //! Must not say what a fit means: that is [`super::decay`]'s.
 //! Main types: [`Bin`], [`Trial`].
 
