@@ -1,2 +1,7 @@
-//! Plain maths on `f64` slices.
-//! Must not know lasers, units or files.
+//! Plain maths on `f64` slices: least squares, line shapes, peaks, smoothing, spectra, summaries.
+//! Must not know lasers, units or files; no input may panic.
+//! Main entries: [`least_squares::fit`], [`linear::weighted`], [`peaks::find`].
+
+pub mod least_squares;
+pub mod linear;
+mod triangle;
