@@ -3,7 +3,9 @@
 //! Main types: [`Bench`], [`Want`].
 
 mod bench;
+mod journal;
 mod want;
 
 pub use bench::{Bench, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, Trouble};
+pub use journal::{Durability, Journal, JournalError};
 pub use want::{CaptureRequest, ReadingKind, ReadingRequest, Want};
