@@ -61,7 +61,9 @@ fn hint(error: &std::io::Error) -> &'static str {
         ErrorKind::StorageFull | ErrorKind::QuotaExceeded => {
             "; what was stored is whole: make room and give the same command again"
         }
-        ErrorKind::NotADirectory | ErrorKind::AlreadyExists => "; a part of this path is a plain file: name another folder with `--reports`",
+        ErrorKind::NotADirectory | ErrorKind::AlreadyExists => {
+            "; a part of this path is a plain file: name another folder with `--reports`"
+        }
         ErrorKind::PermissionDenied | ErrorKind::ReadOnlyFilesystem => {
             "; name a folder that can be written with `--reports`"
         }
