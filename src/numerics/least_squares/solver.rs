@@ -41,12 +41,13 @@ const POLISH_END: f64 = 1e-14;
 ///
 /// # Method
 /// 1. QR-reduce the Jacobian `J` and the residuals `r`, so that no digits are lost by forming `JᵀJ`.
-/// 2. Solve min |r + J·δ|² + λ·|D·δ|², `D` = the largest column lengths of `J` met so far; parameters pressed against a bound are left out,
-///    the new point is clipped to the bounds.
-/// 3. Compare the reduction with the expected one; accept, and scale λ by max(1/3, 1 − (2·gain − 1)³), or reject, and raise λ.
+/// 2. Solve min |r + J·δ|² + λ·|D·δ|², `D` = the largest column lengths of `J` met so far; parameters pressed against
+///    a bound are left out, the new point is clipped to the bounds.
+/// 3. Compare the reduction with the expected one; accept, and scale λ by max(1/3, 1 − (2·gain − 1)³), or reject, and
+///    raise λ.
 /// 4. On convergence, polish with undamped steps as long as these shrink.
-/// 5. If the model no longer depends on some parameter at the end (a long first step can carry it there), try again from the start
-///    with heavy first damping, and return the better of the two.
+/// 5. If the model no longer depends on some parameter at the end (a long first step can carry it there), try again
+///    from the start with heavy first damping, and return the better of the two.
 ///
 /// Source: Levenberg 1944, Marquardt 1963; scaling as in Moré 1978; the rule for λ: Nielsen 1999 (all from memory).
 ///
@@ -225,7 +226,8 @@ impl<'a> Search<'a> {
         true
     }
 
-    /// Undamped steps while they shrink; the sum of squares is blind to the last digits of the parameters, the steps are not.
+    /// Undamped steps while they shrink; the sum of squares is blind to the last digits of the parameters, the steps
+    /// are not.
     fn polish(&mut self) {
         let mut last = f64::INFINITY;
         for _ in 0..POLISH_STEPS {
