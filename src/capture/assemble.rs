@@ -16,7 +16,7 @@ use super::{
 };
 
 /// A ramp monitor or photodiode below this many levels is worth a remark.
-const COARSE: usize = 100;
+const COARSE: usize = 64;
 
 /// One file, read.
 struct Source<'a> {
@@ -200,15 +200,18 @@ fn channels(sources: &[Source<'_>], file: usize) -> Vec<Spot> {
     let many = source.columns.len() > 1;
     let copies_time = |column: &[f64]| {
         source.time.is_some_and(|time| {
-            column.iter().zip(&source.columns[time]).all(|(a, b)| a == b || (a.is_nan() && b.is_nan()))
+            let other = column.iter().zip(&source.columns[time]).filter(|(a, b)| a != b && !a.is_nan() && !b.is_nan());
+            100 * other.count() <= column.len()
         })
     };
+    let is_time = |c: usize| matches!(source.around.labels[c].unit, Some(ColumnUnit::Time(_)));
     let is_number = |c: usize| {
         let label = &source.around.labels[c];
         many && source.time != Some(c) && (is_index_word(&label.name) || (c == 0 && counts_up(&source.columns[c])))
     };
     (0..source.columns.len())
         .filter(|&c| source.time != Some(c) && !copies_time(&source.columns[c]) && !is_number(c))
+        .filter(|&c| !is_time(c))
         .filter(|&c| source.columns[c].iter().any(|v| v.is_finite()))
         .map(|c| (file, c))
         .collect()

@@ -4,7 +4,7 @@
 
 use super::{
     layout::Layout,
-    text::{Cell, Dialect, Line, Lines, Separator, number},
+    text::{Cell, Dialect, Line, Lines, Separator, TOO_LARGE, number},
     units::{ColumnUnit, unit, unit_in_name},
 };
 
@@ -191,7 +191,7 @@ impl Surroundings {
             Some(ColumnUnit::Time(factor) | ColumnUnit::Voltage(factor)) => factor,
             _ => 1.0,
         };
-        Some(number * factor).filter(|value| value.is_finite())
+        Some(number * factor).filter(|value| value.abs() < TOO_LARGE)
     }
 
     /// Seconds between samples, where the header says so.

@@ -4,7 +4,7 @@
 
 use super::{
     layout::{Layout, is_content},
-    text::{Cell, Dialect, Lines, Separator},
+    text::{Cell, Dialect, Lines, Separator, TOO_LARGE},
 };
 
 /// Reads every column of numbers. A cell without a finite number gives NaN, so that every column has one value a line.
@@ -104,7 +104,7 @@ fn read_cell(body: &[u8], at: usize, dialect: Dialect) -> (f64, usize) {
             let end = skip_blanks(body, start + used, tabs);
             let closed = body.get(end).is_none_or(|&b| is_separator(b, dialect.separator) || is_end(b))
                 || (dialect.separator == Separator::Blanks && end > start + used);
-            if closed && value.is_finite() {
+            if closed && value.abs() < TOO_LARGE {
                 return (value, if dialect.separator == Separator::Blanks { start + used } else { end });
             }
         }

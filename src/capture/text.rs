@@ -83,7 +83,7 @@ impl Dialect {
             return Cell::Blank;
         }
         match number(cell, self.decimal_comma) {
-            Some(value) if value.is_finite() => Cell::Number(value),
+            Some(value) if value.abs() < TOO_LARGE => Cell::Number(value),
             Some(_) => Cell::NotFinite,
             None if is_not_finite_word(cell) => Cell::NotFinite,
             None => Cell::Text,
@@ -91,12 +91,15 @@ impl Dialect {
     }
 }
 
+/// Digitizers mark an invalid sample by 9.9e37 (SCPI 1999, volume 1, 7.2.1; from memory); no volt or second is that large.
+pub(super) const TOO_LARGE: f64 = 1e30;
+
 /// What a cell holds.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(super) enum Cell {
     Number(f64),
     Blank,
-    /// `nan`, `inf`, or beyond what a double holds.
+    /// `nan`, `inf`, or [`TOO_LARGE`].
     NotFinite,
     Text,
 }

@@ -31,6 +31,8 @@ impl TimeBase {
 const WRONG_PART: f64 = 0.01;
 /// Part of its span by which a column of times may leave a straight line, from rounding to three digits.
 const STRAIGHT: f64 = 0.005;
+/// A rounder step may widen the rest by this factor: a thousand stamps show their widest rounding to a few per cent.
+const LOOSER: f64 = 1.05;
 /// Pairs and samples used for the robust first line.
 const PICKS: usize = 65;
 
@@ -172,16 +174,75 @@ impl Stamps {
         Ok((self.base(stamps, stated), remarks))
     }
 
-    /// The base: the header's step where stamps are rounded and agree with it; the first stamp where it is exact.
+    /// The base. Where stamps are rounded many steps fit: the header's own if it does, else the one of fewest digits,
+    /// as digitizers sample at round steps (common practice); the start is then the middle of what the stamps allow.
     fn base(&self, stamps: &[f64], stated: Option<f64>) -> TimeBase {
         let n = stamps.len();
-        let rounded = self.largest > 0.01 * self.step;
-        // Rounding moves the fitted ends by less than the largest distance of a stamp.
-        let agrees = |step: &f64| (step - self.step).abs() * n as f64 <= 2.0 * self.largest;
-        let step = stated.filter(|step| rounded && agrees(step)).unwrap_or(self.step);
-        let middle = 0.5 * n.saturating_sub(1) as f64;
-        let fitted = self.start + (self.step - step) * middle;
-        let exact = stamps.first().filter(|first| (*first - fitted).abs() < 0.01 * step);
-        TimeBase { start: exact.copied().unwrap_or(fitted), step, n }
+        let mut base = TimeBase { start: self.start, step: self.step, n };
+        if self.largest > 0.01 * self.step {
+            let (_, spread) = self.rest(stamps, self.step);
+            let fits = |step: &f64| {
+                let near = (step - self.step).abs() * n as f64 <= 2.0 * self.largest;
+                near && self.rest(stamps, *step).1 <= LOOSER * spread
+            };
+            base.step =
+                stated.into_iter().chain((1..=4).map(|d| round_to(self.step, d))).find(fits).unwrap_or(self.step);
+            base.start = self.rest(stamps, base.step).0;
+        }
+        match stamps.first().filter(|first| (*first - base.start).abs() < 0.01 * base.step) {
+            Some(&exact) => TimeBase { start: exact, ..base },
+            None => base,
+        }
+    }
+
+    /// Middle and width of what good stamps leave after `step·i` is taken away.
+    fn rest(&self, stamps: &[f64], step: f64) -> (f64, f64) {
+        let good = |&(i, t): &(usize, &f64)| (t - self.start - self.step * i as f64).abs() <= self.allowed;
+        let rests = stamps.iter().enumerate().filter(good).map(|(i, t)| t - step * i as f64);
+        let (low, high) = rests.fold((f64::MAX, f64::MIN), |(low, high), rest| (low.min(rest), high.max(rest)));
+        (0.5 * low + 0.5 * high, high - low)
+    }
+}
+
+/// A positive value rounded to significant digits.
+fn round_to(value: f64, digits: usize) -> f64 {
+    format!("{value:.*e}", digits.saturating_sub(1)).parse().unwrap_or(value)
+}
+
+#[cfg(test)]
+mod tests {
+    #![allow(clippy::unwrap_used)]
+    use super::*;
+
+    fn judged(stamps: &[f64], stated: Option<f64>) -> Result<(TimeBase, Vec<CaptureRemark>), CaptureError> {
+        fit(stamps).unwrap().judge(stamps, stated, |row| row + 1)
+    }
+
+    #[test]
+    fn rounded_stamps_give_back_the_round_step() {
+        let rounded: Vec<f64> = (0..1000).map(|i| ((-0.5 + 0.001 * f64::from(i)) * 100.0).round() / 100.0).collect();
+        let (time, remarks) = judged(&rounded, None).unwrap();
+        assert_eq!(time.step, 0.001);
+        assert!((time.start + 0.5).abs() < 0.001, "half a step is all that rounding leaves open: {}", time.start);
+        // 901 of 999 pairs: 101 different stamps among 1,000.
+        assert_eq!(remarks, [CaptureRemark::StampsRepeated { count: 1000 - 101 }]);
+    }
+
+    #[test]
+    fn one_wrong_stamp_is_a_remark_and_many_are_an_error() {
+        let mut stamps: Vec<f64> = (0..500).map(|i| 4e-6 * f64::from(i)).collect();
+        stamps[250] = 0.0;
+        let (time, remarks) = judged(&stamps, None).unwrap();
+        assert!((time.step / 4e-6 - 1.0).abs() < 1e-12, "least squares over exact stamps: rounding alone");
+        assert_eq!(remarks, [CaptureRemark::StampsWrong { count: 1, line: 251, stamp: 0.0 }]);
+        stamps.iter_mut().skip(100).for_each(|t| *t += 1e-4);
+        assert!(matches!(judged(&stamps, None), Err(CaptureError::TimeUneven { .. })));
+    }
+
+    #[test]
+    fn backward_and_standing_time_are_errors() {
+        let back: Vec<f64> = (0..200).map(|i| -1e-3 * f64::from(i)).collect();
+        assert!(matches!(judged(&back, None), Err(CaptureError::TimeBackward { .. })));
+        assert!(matches!(judged(&[0.25; 200], None), Err(CaptureError::TimeStands { .. })));
     }
 }
