@@ -279,7 +279,7 @@ fn time_base(
 /// Seconds in one of the column's unit.
 fn time_factor(source: &Source<'_>, index: usize) -> f64 {
     let column = source.layout.columns.get(index).copied().unwrap_or(0);
-    let stated = || unit(&source.around.text(&["horizontalunits", "xunits"], column)?);
+    let stated = || unit(source.around.text(&["horizontalunits", "xunits"], column)?);
     match source.around.labels[index].unit.clone().or_else(stated) {
         Some(ColumnUnit::Time(factor)) => factor,
         _ => 1.0,
@@ -342,7 +342,7 @@ fn volts(
     let around = &source.around;
     let integers = samples.iter().all(|v| v.fract() == 0.0);
     let codes = around.number(&["yincrement", "yinc"], column).filter(|_| integers);
-    let stated = || unit(&around.text(&["verticalunits", "yunits"], column)?);
+    let stated = || unit(around.text(&["verticalunits", "yunits"], column)?);
     if let Some(increment) = codes {
         // volts = (code − reference)·increment + origin, the common practice of digitizers' waveform preambles.
         let reference = around.number(&["yreference"], column).unwrap_or(0.0);

@@ -65,7 +65,7 @@ pub(super) struct Dialect {
 
 impl Dialect {
     /// The cells of a line, trimmed.
-    pub fn cells<'a>(self, line: &'a [u8]) -> impl Iterator<Item = &'a [u8]> {
+    pub fn cells(self, line: &[u8]) -> impl Iterator<Item = &[u8]> {
         let blanks = self.separator == Separator::Blanks;
         let line = if blanks { line.trim_ascii() } else { line };
         line.split(move |&b| match self.separator {

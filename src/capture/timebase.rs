@@ -224,7 +224,7 @@ mod tests {
         let (time, remarks) = judged(&rounded, None).unwrap();
         assert_eq!(time.step, 0.001);
         assert!((time.start + 0.5).abs() < 0.001, "half a step is all that rounding leaves open: {}", time.start);
-        // 901 of 999 pairs: 101 different stamps among 1,000.
+        // 101 different stamps, -0.50 to 0.50, among 1,000.
         assert_eq!(remarks, [CaptureRemark::StampsRepeated { count: 1000 - 101 }]);
     }
 

@@ -46,7 +46,7 @@ impl LinearFit {
 pub enum LinearError {
     /// The lengths do not belong together.
     #[error(
-        "linear fit: design has {design} values for {rows} rows and {weights} weights; expected rows × columns and one weight per row"
+        "linear fit: {design} design values, {rows} rows, {weights} weights; expected rows × columns values, a weight per row"
     )]
     Lengths {
         /// Values in the design.

@@ -90,9 +90,14 @@ pub(super) fn solve(
         return None;
     }
     // In units of the FSR all numbers are near one.
-    let design = DMatrix::from_fn(n, unknowns, |i, j| {
-        if j <= terms { legendre(j, placed[i].u) } else { -f64::from(placed[i].tooth) }
-    });
+    let design =
+        DMatrix::from_fn(
+            n,
+            unknowns,
+            |i, j| {
+                if j <= terms { legendre(j, placed[i].u) } else { -f64::from(placed[i].tooth) }
+            },
+        );
     let wanted = DVector::from_fn(n, |i, _| f64::from(placed[i].order));
     let whitener = (covariance / (fsr * fsr)).cholesky()?.l();
     let white_design = whitener.solve_lower_triangular(&design)?;
@@ -140,12 +145,7 @@ pub(super) struct Choice {
 }
 
 /// Chooses the number of terms by the chi-square each must earn at 0.1 %, never by less.
-pub(super) fn choose(
-    placed: &[Placed],
-    covariance: &DMatrix<f64>,
-    fsr: f64,
-    with_comb: bool,
-) -> Option<Choice> {
+pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, with_comb: bool) -> Option<Choice> {
     let (from, to) = placed.iter().fold((f64::MAX, f64::MIN), |(a, b), p| (a.min(p.u), b.max(p.u)));
     let mut fits: Vec<AxisFit> = Vec::new();
     for terms in 1..=MOST_TERMS {

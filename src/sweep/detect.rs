@@ -44,12 +44,12 @@ pub(super) fn detect(segment: &Segment) -> Look {
     let first = pass(signal, baseline, (LEAST_SIGMA * segment.noise * 1.4).max(0.05 * range));
     let rough = typical_width(&first);
     // Noise can break a top into several peaks, each too narrow: smooth once and look again.
-    let smoothed = smoothing::moving_mean(signal, odd(rough / 3.0));
+    let smoothed = smoothing::moving_mean(signal, half_window(rough));
     let again = pass(&smoothed, baseline, (LEAST_SIGMA * segment.noise).max(0.05 * range));
     let width = typical_width(&again).max(1.0);
-    let window = odd(width / 3.0);
-    let smoothed = smoothing::moving_mean(signal, window);
-    let noise = segment.noise / (window as f64).sqrt();
+    let half = half_window(width);
+    let smoothed = smoothing::moving_mean(signal, half);
+    let noise = segment.noise / (2.0 * half as f64 + 1.0).sqrt();
     let top = smoothed.iter().cloned().fold(f64::MIN, f64::max) - baseline;
     let mut peaks = pass(&smoothed, baseline, (LEAST_SIGMA * noise).max(LEAST_SHARE * top));
     peaks.truncate_strongest(MOST);
@@ -70,9 +70,9 @@ impl Truncate for Vec<Seen> {
     }
 }
 
-fn odd(width: f64) -> usize {
-    let whole = width.round().clamp(1.0, 1e5) as usize;
-    whole | 1
+/// Half of a smoothing window that spans a third of a line's width.
+fn half_window(width: f64) -> usize {
+    (width / 6.0).round().clamp(0.0, 1e5) as usize
 }
 
 fn pass(signal: &[f64], baseline: f64, prominence: f64) -> Vec<Seen> {
@@ -80,7 +80,7 @@ fn pass(signal: &[f64], baseline: f64, prominence: f64) -> Vec<Seen> {
     peaks::find(signal, &options)
         .into_iter()
         .map(|peak| Seen {
-            x: peak.index,
+            x: peak.index as f64,
             height: peak.height - baseline,
             width: peak.width_at_half_prominence.max(1.0),
         })

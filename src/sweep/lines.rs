@@ -371,9 +371,8 @@ fn memory_factor(residuals: &[f64], width: f64) -> f64 {
     if !(power > 0.0) || lags == 0 {
         return 1.0;
     }
-    let sum: f64 = (1..=lags)
-        .map(|k| residuals[k..].iter().zip(residuals).map(|(a, b)| a * b).sum::<f64>() / power)
-        .sum();
+    let sum: f64 =
+        (1..=lags).map(|k| residuals[k..].iter().zip(residuals).map(|(a, b)| a * b).sum::<f64>() / power).sum();
     (1.0 + 2.0 * sum - 2.0 * (4.0 * lags as f64 / n as f64).sqrt()).max(1.0)
 }
 

@@ -63,7 +63,10 @@ pub(super) fn find(peaks: &[Seen], n_samples: usize, width: f64, spacing_over_fs
         for b in &strong[i + 1..] {
             let distance = b.x - a.x;
             // Less than three widths is one peak's shoulder; over nine tenths of the ramp nothing else could repeat.
-            if distance < 3.0 * width || distance > 0.92 * length || b.height.min(a.height) < 0.35 * b.height.max(a.height) {
+            if distance < 3.0 * width
+                || distance > 0.92 * length
+                || b.height.min(a.height) < 0.35 * b.height.max(a.height)
+            {
                 continue;
             }
             for step in -BENDS..=BENDS {
@@ -107,10 +110,7 @@ fn penalty(orders: &Orders) -> f64 {
 
 /// The peak nearest one order after `x`, with its distance in orders.
 fn partner<'a>(peaks: &'a [Seen], orders: &Orders, phase: f64) -> Option<(&'a Seen, f64)> {
-    peaks
-        .iter()
-        .map(|q| (q, (orders.phase(q.x) - phase).abs()))
-        .min_by(|a, b| a.1.total_cmp(&b.1))
+    peaks.iter().map(|q| (q, (orders.phase(q.x) - phase).abs())).min_by(|a, b| a.1.total_cmp(&b.1))
 }
 
 fn score(peaks: &[Seen], orders: &Orders, tolerance: f64) -> f64 {

@@ -54,7 +54,9 @@ impl fmt::Display for Refusal {
             Self::TooShort { samples } => {
                 write!(f, "the longest ramp has {samples} samples; at least 100 are needed: record more samples a ramp")
             }
-            Self::Dark => write!(f, "no peak stands above the noise: is the tube lit and the beam on the interferometer?"),
+            Self::Dark => {
+                write!(f, "no peak stands above the noise: is the tube lit and the beam on the interferometer?")
+            }
             Self::Fringes { share } => write!(
                 f,
                 "broad fringes, no peaks: the bumps are {:.0} % as wide as their distance; a finesse of 5 or more is needed",
@@ -150,7 +152,10 @@ impl fmt::Display for Warning {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Self::NoFsrUncertainty => {
-                write!(f, "no uncertainty given for the free spectral range: the stated uncertainty is that of the sweep alone")
+                write!(
+                    f,
+                    "no uncertainty given for the free spectral range: the stated uncertainty is that of the sweep alone"
+                )
             }
             Self::NoRamp => write!(f, "no usable ramp channel: the whole capture was taken as one ramp"),
             Self::Clipped { samples } => {
@@ -174,7 +179,10 @@ impl fmt::Display for Warning {
             ),
             Self::Stray { count } => write!(f, "{count} peak(s) that do not repeat were left out"),
             Self::UnequalOrders => {
-                write!(f, "alternate orders are unequal in height: the beam is matched on axis, or realign the interferometer")
+                write!(
+                    f,
+                    "alternate orders are unequal in height: the beam is matched on axis, or realign the interferometer"
+                )
             }
             Self::UnevenComb { rms } => {
                 write!(f, "the modes depart from even spacing by {:.2} MHz (root mean square)", rms / 1e6)

@@ -95,7 +95,15 @@ fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
     if !(range > 0.0) || median < 0.1 * range / means.len() as f64 {
         return None;
     }
-    let way = |s: f64| if s > SLOPE_SHARE * median { 1 } else if s < -SLOPE_SHARE * median { -1 } else { 0 };
+    let way = |s: f64| {
+        if s > SLOPE_SHARE * median {
+            1
+        } else if s < -SLOPE_SHARE * median {
+            -1
+        } else {
+            0
+        }
+    };
     let mut runs: Vec<(usize, usize)> = Vec::new();
     let mut from = 0;
     for i in 1..=slopes.len() {

@@ -81,7 +81,7 @@ fn files_of_one_capture_must_fit_together() {
     );
     let late = text.replace("0.00", "1.00");
     assert!(both(late.as_bytes()).is_err());
-    let elsewhere: Vec<u8> = (0..N).flat_map(|i| format!("{}e-5,1\n", 2 * i).into_bytes()).collect();
+    let elsewhere: Vec<u8> = (0..N).flat_map(|i| format!("{}e-5,{}\n", 2 * i, i % 7).into_bytes()).collect();
     assert!(matches!(both(&elsewhere), Err(CaptureError::UnequalTimes { .. })));
     assert!(both(b"").unwrap_err().to_string().starts_with("b: the file is empty"));
     assert_eq!(read_many(&[], None).map(|c| c.remarks), Err(CaptureError::NoFiles));

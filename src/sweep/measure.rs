@@ -1,0 +1,511 @@
+//! The engine's one path: ramp → peaks → orders → lines → comb → axis → result.
+//! Must not hide a doubt: what cannot be measured is refused in words, what is odd is a warning.
+//! Main entry: [`measure`].
+
+use nalgebra::DMatrix;
+
+use super::{
+    Measurement, Mode, Refusal, ScanAxis, Settings, Warning,
+    axis::{self, Choice, Placed},
+    comb::{self, Class, Comb, Phased},
+    detect::{self, Look, Seen},
+    lines::{self, LineFit, Samples, Start},
+    orders::{self, Orders},
+    segment::{self, Segment},
+};
+use crate::{
+    capture::Capture,
+    numerics::smoothing,
+    uncertainty::{BudgetLine, Evaluation, Measured},
+};
+
+/// Fewest samples on a ramp that can be measured.
+const FEWEST_SAMPLES: usize = 100;
+/// An apparent finesse below this is fringes, not peaks.
+const LEAST_FINESSE: f64 = 4.0;
+/// Share of the peaks' height that must be found again one order on.
+const LEAST_REPEAT: f64 = 0.55;
+/// A fitted line counts if its height exceeds this many of its own standard uncertainties (`measurement.md`: 5 σ).
+const LEAST_HEIGHT_SIGMA: f64 = 5.0;
+/// The pole must improve the sum of squares by this chi-square (1 parameter at far below 0.1 %) to be believed.
+const POLE_CHI_SQUARE: f64 = 30.0;
+/// Allowance for departures of the comb from even spacing, Hz (`measurement.md` §1).
+const EVEN_ALLOWANCE: f64 = 100e3;
+
+/// Measures one capture.
+///
+/// Total: every input gives a result, if only a refusal in words.
+///
+/// 1. The longest one-way ramp is cut out, the signal turned upward, flat tops are masked.
+/// 2. Peaks are found; the order repeat is found among them.
+/// 3. All lines are fitted at once (Lorentzian, one width, detector pole where the data ask for it).
+/// 4. Peaks are gathered into classes (one light, seen in every order), the comb is laid over the classes.
+/// 5. Σ cᵢ Pᵢ(x) − m·Δν = k·FSR is solved for axis and spacing, weighted by the centres' covariance.
+pub fn measure(capture: &Capture, settings: &Settings) -> Measurement {
+    let mut result = Measurement { free_spectral_range: settings.free_spectral_range, ..Measurement::default() };
+    if let Err(refusal) = run(capture, settings, &mut result) {
+        result.refused = Some(refusal);
+    }
+    result
+}
+
+fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Result<(), Refusal> {
+    check(settings)?;
+    if settings.u_free_spectral_range == 0.0 {
+        result.warnings.push(Warning::NoFsrUncertainty);
+    }
+    let segment = segment::find(capture);
+    result.noise = Some(segment.noise);
+    if segment.signal.len() < FEWEST_SAMPLES {
+        return Err(Refusal::TooShort { samples: segment.signal.len() });
+    }
+    warn_of_segment(&segment, result);
+    let look = detect::detect(&segment);
+    let mean = segment.signal.iter().sum::<f64>() / segment.signal.len() as f64;
+    result.mean_level = Some(mean - look.baseline);
+    if look.peaks.is_empty() {
+        result.dark = true;
+        return Err(Refusal::Dark);
+    }
+    let orders = repeat(&look, &segment, settings)?;
+    let fitted = fit_lines(&segment, &look, &orders).ok_or(Refusal::NoFit)?;
+    if let Some(pole) = fitted.fit.pole {
+        let time_constant = pole * segment.dt;
+        if pole > 0.3 * fitted.fit.width {
+            result.warnings.push(Warning::SlowDetector { time_constant });
+        }
+    }
+    assemble(&segment, &orders, &fitted, settings, result)
+}
+
+fn check(settings: &Settings) -> Result<(), Refusal> {
+    let fsr = settings.free_spectral_range;
+    if !(fsr.is_finite() && fsr > 0.0) {
+        return Err(Refusal::Setting(format!("a free spectral range of {fsr} Hz is not usable; expected more than 0")));
+    }
+    Ok(())
+}
+
+fn warn_of_segment(segment: &Segment, result: &mut Measurement) {
+    if !segment.has_ramp {
+        result.warnings.push(Warning::NoRamp);
+    }
+    if segment.inverted {
+        result.warnings.push(Warning::Inverted);
+    }
+    if segment.n_clipped > 0 {
+        result.warnings.push(Warning::Clipped { samples: segment.n_clipped });
+    }
+    if segment.step > 1.5 * segment.noise {
+        result.warnings.push(Warning::CoarseSteps);
+    }
+}
+
+/// The order repeat, or why there is none.
+fn repeat(look: &Look, segment: &Segment, settings: &Settings) -> Result<Orders, Refusal> {
+    let ratio = settings.nominal_spacing.map(|s| s / settings.free_spectral_range).filter(|r| *r > 0.0 && *r < 1.0);
+    let orders = orders::find(&look.peaks, segment.signal.len(), look.width, ratio).ok_or(Refusal::OneOrder)?;
+    let finesse = orders.period / look.width;
+    if finesse < LEAST_FINESSE {
+        return Err(Refusal::Fringes { share: 1.0 / finesse });
+    }
+    if orders.score < LEAST_REPEAT {
+        return Err(Refusal::NoRepeat { share: orders.score });
+    }
+    Ok(orders)
+}
+
+/// Lines as fitted, with and without the detector's pole.
+struct Fitted {
+    fit: LineFit,
+    apparent_width: f64,
+    stretch: Vec<f64>,
+}
+
+fn fit_lines(segment: &Segment, look: &Look, orders: &Orders) -> Option<Fitted> {
+    let samples = Samples::new(&segment.signal, &segment.usable, look.width);
+    let stretch_of = |x: f64| (orders.local_period(x) / orders.period).clamp(0.2, 5.0);
+    let mut seen: Vec<Seen> = look.peaks.clone();
+    let mut start = Start {
+        centres: seen.iter().map(|p| p.x).collect(),
+        heights: seen.iter().map(|p| p.height).collect(),
+        stretch: seen.iter().map(|p| stretch_of(p.x)).collect(),
+        width: look.width,
+        pole: None,
+        baseline: look.baseline,
+    };
+    let mut plain = lines::fit(&samples, &start)?;
+    let mut fit = plain.clone();
+    for round in 0..3 {
+        fit = with_pole(&samples, &start, &plain).unwrap_or_else(|| plain.clone());
+        if round == 2 {
+            break;
+        }
+        let more = hidden(&samples, &fit, look);
+        if more.is_empty() {
+            break;
+        }
+        seen =
+            fit.centres.iter().zip(&fit.heights).map(|(x, h)| Seen { x: *x, height: *h, width: fit.width }).collect();
+        seen.extend(more);
+        seen.retain(|p| {
+            p.height > 0.0 && p.x > -0.5 * fit.width && p.x < segment.signal.len() as f64 + 0.5 * fit.width
+        });
+        seen.sort_by(|a, b| a.x.total_cmp(&b.x));
+        let next = Start {
+            centres: seen.iter().map(|p| p.x).collect(),
+            heights: seen.iter().map(|p| p.height).collect(),
+            stretch: seen.iter().map(|p| stretch_of(p.x)).collect(),
+            width: fit.width,
+            pole: None,
+            baseline: fit.baseline.0,
+        };
+        let Some(better) = lines::fit(&samples, &next) else { break };
+        start = next;
+        plain = better;
+    }
+    Some(Fitted { apparent_width: plain.width, fit, stretch: start.stretch })
+}
+
+/// The fit with the detector's pole, if the data ask for it.
+fn with_pole(samples: &Samples, start: &Start, plain: &LineFit) -> Option<LineFit> {
+    let mut best: Option<LineFit> = None;
+    for share in [0.15, 0.6] {
+        let pole = share * plain.width;
+        let trial = Start {
+            centres: plain.centres.iter().map(|x| x - pole.min(plain.width)).collect(),
+            heights: plain.heights.clone(),
+            width: plain.width / (1.0 + share),
+            pole: Some(pole),
+            baseline: plain.baseline.0,
+            stretch: start.stretch.clone(),
+        };
+        if let Some(fit) = lines::fit(samples, &trial) {
+            if best.as_ref().is_none_or(|b| fit.sum_of_squares < b.sum_of_squares) {
+                best = Some(fit);
+            }
+        }
+    }
+    let best = best?;
+    let gain = (plain.sum_of_squares - best.sum_of_squares) / (best.sum_of_squares / best.dof);
+    (gain > POLE_CHI_SQUARE).then_some(best)
+}
+
+/// Lines that the first look missed: what stands out of the residuals.
+fn hidden(samples: &Samples, fit: &LineFit, look: &Look) -> Vec<Seen> {
+    let bin = samples.bin as f64;
+    let half = (fit.width / bin / 6.0).round().max(0.0) as usize;
+    let smoothed = smoothing::moving_mean(&fit.residuals, half);
+    let top = look.peaks.iter().map(|p| p.height).fold(0.0, f64::max);
+    let threshold = (6.0 * fit.residual / (2.0 * half as f64 + 1.0).sqrt()).max(0.01 * top);
+    let options = crate::numerics::peaks::Options {
+        min_height: Some(threshold),
+        min_prominence: Some(threshold),
+        min_distance: (fit.width / bin).ceil().max(1.0) as usize,
+    };
+    let found = crate::numerics::peaks::find(&smoothed, &options);
+    // A misfit top leaves residuals on the line itself: only what stands clear of every line is new.
+    let clear = |x: f64| fit.centres.iter().all(|c| (c - x).abs() > 0.7 * fit.width);
+    found
+        .into_iter()
+        .map(|p| Seen { x: p.index as f64 * bin + (bin - 1.0) / 2.0, height: p.height, width: fit.width })
+        .filter(|p| clear(p.x))
+        .take(12)
+        .collect()
+}
+
+/// From fitted lines to classes, comb, axis and the result.
+fn assemble(
+    segment: &Segment,
+    orders: &Orders,
+    fitted: &Fitted,
+    settings: &Settings,
+    result: &mut Measurement,
+) -> Result<(), Refusal> {
+    let fit = &fitted.fit;
+    let fsr = settings.free_spectral_range;
+    let length = segment.signal.len() as f64;
+    let u_of = |x: f64| (x - length / 2.0) / (length / 2.0);
+    let width_phase = fit.width / orders.period;
+    let good: Vec<usize> = (0..fit.centres.len())
+        .filter(|i| {
+            let (x, h) = (fit.centres[*i], fit.heights[*i]);
+            h > LEAST_HEIGHT_SIGMA * fit.u_heights[*i] && x > 0.0 && x < length
+        })
+        .collect();
+    let covariance_of = |peaks: &[usize], slope: &dyn Fn(f64) -> f64| {
+        DMatrix::from_fn(peaks.len(), peaks.len(), |a, b| {
+            let (i, j) = (peaks[a], peaks[b]);
+            fit.centre_covariance[(i, j)] * slope(fit.centres[i]) * slope(fit.centres[j])
+        })
+    };
+    // First with the smooth order map, then with the axis it leads to: the second time the classes are sharp.
+    let mut phase: Box<dyn Fn(f64) -> f64> = Box::new(|x| orders.phase(x));
+    let mut tolerance = (0.6 * width_phase).clamp(0.008, 0.04);
+    let mut slope: Box<dyn Fn(f64) -> f64> = Box::new(|x| fsr / orders.local_period(x));
+    let mut outcome: Option<(Vec<Class>, Result<Comb, Refusal>, Option<(Vec<Placed>, Choice)>)> = None;
+    for round in 0..3 {
+        let phased: Vec<Phased> =
+            good.iter().map(|i| Phased { peak: *i, phase: phase(fit.centres[*i]), height: fit.heights[*i] }).collect();
+        let range = (phase(0.0), phase(length));
+        let mut classes = comb::classes(&phased, tolerance, range);
+        classes.retain(|c| !c.members.is_empty());
+        // What shows in one order but should in several does not repeat: it is left out, and said.
+        let repeats = |c: &Class| c.members.len() >= 2 || c.expected < 2;
+        let stray = classes.iter().filter(|c| !repeats(c)).count();
+        let kept: Vec<Class> = classes.into_iter().filter(repeats).collect();
+        let found = comb::find(&kept, tolerance.max(0.3 * width_phase), fsr, settings.nominal_spacing);
+        let teeth: Vec<Option<(i32, i32)>> = match &found {
+            Ok(comb) => comb.teeth.clone(),
+            // Without a comb the strongest class alone still gives a scale.
+            Err(_) => strongest_only(&kept),
+        };
+        let placed = place(&kept, &teeth, fit, &u_of);
+        let peaks: Vec<usize> = placed.iter().map(|p| p.peak).collect();
+        let several = placed.iter().any(|p| p.tooth != 0);
+        let choice = axis::choose(&placed, &covariance_of(&peaks, &*slope), fsr, several);
+        if round == 2 && stray > 0 {
+            result.warnings.push(Warning::Stray { count: stray });
+        }
+        let next = choice.as_ref().map(|c| c.fit.clone());
+        outcome = Some((kept, found, choice.map(|c| (placed, c))));
+        let Some(axis) = next else { break };
+        let half = length / 2.0;
+        let axis2 = axis.clone();
+        phase = Box::new(move |x| axis.at((x - half) / half) / fsr);
+        slope = Box::new(move |x| axis2.slope((x - half) / half) / half);
+        tolerance = (0.35 * width_phase).clamp(0.004, 0.03);
+    }
+    let (classes, found, solved) = outcome.ok_or(Refusal::WeakScale)?;
+    let Some((placed, choice)) = solved else {
+        return Err(match found {
+            Err(refusal @ (Refusal::Ambiguous { .. } | Refusal::NoComb { .. })) => refusal,
+            _ => Refusal::WeakScale,
+        });
+    };
+    let seen_orders: std::collections::BTreeSet<i32> =
+        classes.iter().flat_map(|c| c.members.iter().map(|m| m.1)).collect();
+    result.order_count = seen_orders.len() as u32;
+    fill(segment, fitted, &classes, &found, &placed, &choice, settings, result);
+    Ok(())
+}
+
+fn strongest_only(classes: &[Class]) -> Vec<Option<(i32, i32)>> {
+    let strongest = classes
+        .iter()
+        .enumerate()
+        .max_by(|a, b| {
+            (a.1.members.len(), a.1.height)
+                .partial_cmp(&(b.1.members.len(), b.1.height))
+                .unwrap_or(std::cmp::Ordering::Equal)
+        })
+        .map(|(i, _)| i);
+    (0..classes.len()).map(|i| (Some(i) == strongest).then_some((0, 0))).collect()
+}
+
+fn place(classes: &[Class], teeth: &[Option<(i32, i32)>], fit: &LineFit, u_of: &dyn Fn(f64) -> f64) -> Vec<Placed> {
+    let mut placed = Vec::new();
+    for (class, tooth) in classes.iter().zip(teeth) {
+        let Some((order, tooth)) = tooth else { continue };
+        for (peak, own) in &class.members {
+            // ν = own·FSR + class phase; class phase + order·FSR = tooth·Δν + const.
+            placed.push(Placed { peak: *peak, u: u_of(fit.centres[*peak]), order: own - order, tooth: *tooth });
+        }
+    }
+    placed.sort_by(|a, b| a.u.total_cmp(&b.u));
+    placed
+}
+
+#[allow(clippy::too_many_arguments)] // One call, from the function above; a struct would only rename the list.
+fn fill(
+    segment: &Segment,
+    fitted: &Fitted,
+    classes: &[Class],
+    found: &Result<Comb, Refusal>,
+    placed: &[Placed],
+    choice: &Choice,
+    settings: &Settings,
+    result: &mut Measurement,
+) {
+    let fit = &fitted.fit;
+    let fsr = settings.free_spectral_range;
+    let length = segment.signal.len() as f64;
+    let half = length / 2.0;
+    let sign = if segment.rising { 1.0 } else { -1.0 };
+    let axis = &choice.fit;
+    let at = |x: f64| axis.at((x - half) / half);
+    let slope = |x: f64| axis.slope((x - half) / half) / half;
+    let reference = at(segment.reference);
+    // One common width at the middle of the ramp, where the stretch is 1.
+    let fwhm = fit.width * slope(half);
+    result.finesse = Some(fsr / fwhm);
+    result.finesse_apparent = Some(fsr / (fitted.apparent_width * slope(half)));
+    match found {
+        Ok(_) => result.mode_spacing = spacing_with_budget(choice, placed.len(), settings),
+        Err(refusal) => result.no_spacing = Some(refusal.clone()),
+    }
+    let crossed =
+        segment.crossed.as_ref().and_then(|signal| lines::heights_in(signal, &segment.usable, fit, &fitted.stretch));
+    let mut modes: Vec<(f64, Mode)> = Vec::new();
+    let mut off_axis: Vec<(f64, Mode)> = Vec::new();
+    let teeth: Vec<Option<(i32, i32)>> = match found {
+        Ok(comb) => comb.teeth.clone(),
+        Err(Refusal::OneMode) => strongest_only(classes),
+        // No comb could be told: every class is listed as a mode, none as off the comb.
+        Err(_) => vec![Some((0, 0)); classes.len()],
+    };
+    for (class, tooth) in classes.iter().zip(&teeth) {
+        let n = class.members.len() as f64;
+        let mean = |value: &dyn Fn(usize) -> f64| class.members.iter().map(|m| value(m.0)).sum::<f64>() / n;
+        let folded = |i: usize, own: i32| at(fit.centres[i]) - f64::from(own) * fsr;
+        let frequency = class.members.iter().map(|(i, own)| folded(*i, *own)).sum::<f64>() / n;
+        let u_frequency = (class
+            .members
+            .iter()
+            .map(|(i, _)| fit.centre_covariance[(*i, *i)] * slope(fit.centres[*i]).powi(2))
+            .sum::<f64>()
+            / (n * n))
+            .sqrt()
+            * choice.birge;
+        let peak_height = mean(&|i| fit.heights[i]);
+        let mode = Mode {
+            position: (sign * (frequency - reference)).rem_euclid(fsr),
+            u_position: u_frequency,
+            offset: 0.0,
+            u_offset: 0.0,
+            peak_height,
+            u_peak_height: (class.members.iter().map(|m| fit.u_heights[m.0].powi(2)).sum::<f64>()).sqrt() / n,
+            relative_height: 0.0,
+            area: std::f64::consts::FRAC_PI_2 * peak_height * fwhm,
+            fwhm,
+            crossed_height: crossed.as_ref().map(|c| mean(&|i| c[i])),
+        };
+        match tooth {
+            Some(_) => modes.push((mode.position, mode)),
+            None => off_axis.push((mode.position, mode)),
+        }
+    }
+    finish_modes(modes, off_axis, fsr, result);
+    warn_of_result(fit, choice, classes, settings, segment, result);
+    result.axis = Some(ScanAxis {
+        start: segment.start,
+        end: segment.end,
+        coefficients: axis
+            .coefficients
+            .iter()
+            .enumerate()
+            .map(|(i, c)| if i == 0 { c - reference } else { *c })
+            .collect(),
+        rising: segment.rising,
+        inverted: segment.inverted,
+        baseline: fit.baseline.0,
+    });
+}
+
+fn spacing_with_budget(choice: &Choice, n_peaks: usize, settings: &Settings) -> Option<Measured> {
+    let spacing = choice.fit.spacing?;
+    let scatter = choice.fit.u_spacing * choice.birge;
+    // Residuals rule the scatter only where they exceed the noise; else the fit of the samples gave it, with many degrees.
+    let dof =
+        if choice.birge > 1.0 && choice.fit.dof > 0 { (choice.fit.dof as f64 + n_peaks as f64).max(1.0) } else { 1e3 };
+    let direct = BudgetLine::direct;
+    let mut budget = vec![direct("scatter", "scatter of the fitted peaks", Evaluation::TypeA, scatter, dof)];
+    budget.push(direct(
+        "axis-truncation",
+        &format!("axis truncation: change with one term more than {}", choice.terms),
+        Evaluation::TypeB,
+        choice.truncation,
+        f64::INFINITY,
+    ));
+    budget.push(BudgetLine {
+        source_id: settings.fsr_source_id.clone(),
+        line: "free spectral range".to_owned(),
+        evaluation: Evaluation::TypeB,
+        standard_uncertainty: settings.u_free_spectral_range * settings.free_spectral_range,
+        dof: f64::INFINITY,
+        sensitivity: spacing / settings.free_spectral_range,
+        note: String::new(),
+    });
+    Some(Measured { value: spacing, budget })
+}
+
+/// Sorts modes from the first after the largest gap, sets offsets and relative heights.
+fn finish_modes(mut modes: Vec<(f64, Mode)>, mut off_axis: Vec<(f64, Mode)>, fsr: f64, result: &mut Measurement) {
+    modes.sort_by(|a, b| a.0.total_cmp(&b.0));
+    let n = modes.len();
+    let top = modes.iter().map(|m| m.1.peak_height).fold(0.0, f64::max);
+    let gap_before = |i: usize| {
+        let previous = if i == 0 { modes[n - 1].0 - fsr } else { modes[i - 1].0 };
+        modes[i].0 - previous
+    };
+    let mut first = 0;
+    for i in 1..n {
+        // Gaps equal within a part in a million count as equal: the lowest ramp voltage wins.
+        if gap_before(i) > gap_before(first) * (1.0 + 1e-6) {
+            first = i;
+        }
+    }
+    modes.rotate_left(first);
+    let origin = modes.first().map(|m| (m.1.position, m.1.u_position));
+    for (i, (position, mode)) in modes.iter_mut().chain(off_axis.iter_mut()).enumerate() {
+        if let Some((from, u_from)) = origin {
+            mode.offset = (*position - from).rem_euclid(fsr);
+            mode.u_offset = if i == 0 && n > 0 { 0.0 } else { mode.u_position.hypot(u_from) };
+        }
+        mode.relative_height = if top > 0.0 { mode.peak_height / top } else { 0.0 };
+    }
+    // An off-axis peak just below the first mode reads as a small negative offset, not almost a whole order.
+    let span = modes.last().map_or(0.0, |m| m.1.offset);
+    for (_, mode) in &mut off_axis {
+        if mode.offset > (fsr + span) / 2.0 {
+            mode.offset -= fsr;
+        }
+    }
+    off_axis.sort_by(|a, b| a.1.offset.total_cmp(&b.1.offset));
+    result.modes = modes.into_iter().map(|m| m.1).collect();
+    result.off_axis = off_axis.into_iter().map(|m| m.1).collect();
+}
+
+fn warn_of_result(
+    fit: &LineFit,
+    choice: &Choice,
+    classes: &[Class],
+    settings: &Settings,
+    segment: &Segment,
+    result: &mut Measurement,
+) {
+    if let (Some(spacing), Some(nominal)) = (&result.mode_spacing, settings.nominal_spacing) {
+        if (spacing.value / (2.0 * nominal) - 1.0).abs() < 0.1 {
+            result.warnings.push(Warning::TwiceNominal);
+        }
+    }
+    if let Some(ratio) = result.off_axis.iter().map(|m| m.relative_height).max_by(f64::total_cmp) {
+        result.warnings.push(Warning::OffAxis { count: result.off_axis.len(), ratio });
+    }
+    let noise = segment.noise / ((fit.width / 12.0).floor().max(1.0)).sqrt();
+    let chi_square = if noise > 0.0 { (fit.residual / noise).powi(2) } else { 1.0 };
+    if chi_square > 4.0 {
+        result.warnings.push(Warning::Misfit { chi_square });
+    }
+    if result.order_count < 3 {
+        result.warnings.push(Warning::FewOrders);
+    }
+    let n = choice.fit.residuals.len() as f64;
+    let rms = (choice.fit.residuals.iter().map(|r| r * r).sum::<f64>() / n).sqrt();
+    if choice.fit.dof > 1 && choice.birge > 3.0 && rms > EVEN_ALLOWANCE {
+        result.warnings.push(Warning::UnevenComb { rms });
+    }
+    let top = classes.iter().map(|c| c.height).fold(0.0, f64::max);
+    let unequal = classes.iter().filter(|c| c.height > 0.5 * top && c.members.len() >= 3).any(|c| {
+        let parity = |odd: i32| {
+            let of: Vec<f64> =
+                c.members.iter().filter(|m| m.1.rem_euclid(2) == odd).map(|m| fit.heights[m.0]).collect();
+            of.iter().sum::<f64>() / of.len().max(1) as f64
+        };
+        let (even, odd) = (parity(0), parity(1));
+        even.min(odd) < 0.6 * even.max(odd)
+    });
+    if unequal {
+        result.warnings.push(Warning::UnequalOrders);
+    }
+}
