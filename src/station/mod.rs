@@ -2,8 +2,10 @@
 //! Must not touch an instrument itself.
 //! Main types: [`Bench`], [`Want`].
 
+pub mod answers;
 mod bench;
 mod journal;
+pub mod file;
 mod want;
 
 pub use bench::{Bench, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, Trouble};
