@@ -5,12 +5,10 @@
 mod drive;
 mod engine;
 mod finding;
-mod pace;
 
 pub use drive::{Driver, Watcher, resume};
 pub use engine::Engine;
 pub use finding::finding_of;
-pub use pace::Pace;
 
 use crate::station::{JournalError, Trouble};
 
