@@ -2,7 +2,9 @@
 //! Must not touch an instrument itself.
 //! Main types: [`Bench`], [`Want`].
 
+pub mod answers;
 mod bench;
+pub mod file;
 mod want;
 
 pub use bench::{Bench, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, Trouble};

@@ -1,0 +1,2 @@
+//! Sentences of a verdict.
+//! Must not decide.
