@@ -1,1 +1,53 @@
-//! Placeholder of the ground: see `DEVELOPERS.md`.
+//! The command line: one file per command; how each ends becomes the exit status.
+//! Must not decide anything about a tube.
+//! Main function: [`run`].
+
+mod ending;
+mod inspect;
+mod measure;
+mod output;
+
+pub use ending::{Ending, Failure};
+
+use std::process::ExitCode;
+
+use clap::{Parser, Subcommand};
+
+/// Test station for helium-neon laser tubes: warm up, sweep, measure, judge, record.
+#[derive(Debug, Parser)]
+#[command(name = "tubewright", version, about, disable_help_subcommand = true)]
+struct Arguments {
+    #[command(subcommand)]
+    command: Command,
+}
+
+#[derive(Debug, Subcommand)]
+enum Command {
+    /// Run the recipe for one tube, judge it, leave record.csv and record.pdf
+    Inspect(Box<inspect::Arguments>),
+    /// Measure captured sweeps and print what was found; no record
+    Measure(measure::Arguments),
+}
+
+/// Runs the command that the process was given.
+///
+/// Returns the exit status of its ending. Wrong usage ends in 2, said by the reader of arguments itself.
+pub fn run() -> ExitCode {
+    let arguments = match Arguments::try_parse() {
+        Ok(arguments) => arguments,
+        Err(error) => {
+            // Nobody to tell if this fails too.
+            let _ = error.print();
+            return ExitCode::from(u8::try_from(error.exit_code()).unwrap_or(2));
+        }
+    };
+    let ended = match arguments.command {
+        Command::Inspect(arguments) => inspect::run(*arguments),
+        Command::Measure(arguments) => measure::run(&arguments),
+    };
+    let ending = ended.unwrap_or_else(|failure| {
+        output::talk(&format!("tubewright: {}", failure.message));
+        failure.ending
+    });
+    ExitCode::from(ending.status())
+}

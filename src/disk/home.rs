@@ -1,6 +1,6 @@
 //! Where tube types and records are sought: home on disk, or the demo types compiled in.
 //! Must not parse what it reads.
-//! Main types: [`Home`], [`TypeTexts`].
+//! Main types: [`Home`], [`TypeTexts`]; main function: [`demo_bench`].
 
 use std::path::{Path, PathBuf};
 
@@ -10,7 +10,28 @@ use super::{DiskError, name::is_folder_name};
 type Compiled = (&'static str, &'static str, &'static str);
 
 /// The types that the program brings with it, read-only.
-const COMPILED: &[Compiled] = &[];
+const COMPILED: &[Compiled] = &[
+    ("open-500", include_str!("../../limits/open-500/limits.toml"), include_str!("../../limits/open-500/recipe.toml")),
+    ("open-800", include_str!("../../limits/open-800/limits.toml"), include_str!("../../limits/open-800/recipe.toml")),
+    (
+        "plate-250",
+        include_str!("../../limits/plate-250/limits.toml"),
+        include_str!("../../limits/plate-250/recipe.toml"),
+    ),
+    ("quad-375", include_str!("../../limits/quad-375/limits.toml"), include_str!("../../limits/quad-375/recipe.toml")),
+    ("twin-150", include_str!("../../limits/twin-150/limits.toml"), include_str!("../../limits/twin-150/recipe.toml")),
+];
+
+/// The station files that the program brings with it: (name of the bench, text).
+const BENCHES: &[(&str, &str)] = &[
+    ("bench-1", include_str!("../../fixtures/demo/bench-1.toml")),
+    ("bench-2", include_str!("../../fixtures/demo/bench-2.toml")),
+];
+
+/// Text of the compiled-in station file of a demo bench.
+pub fn demo_bench(name: &str) -> Option<&'static str> {
+    BENCHES.iter().find(|(known, _)| *known == name).map(|(_, text)| *text)
+}
 
 /// The two files of a tube type, with the names that faults and records give them.
 #[derive(Debug, Clone, PartialEq, Eq)]

@@ -13,7 +13,7 @@ mod store;
 pub use atomic::write_atomic;
 pub use chain::{ChainFault, read_chain};
 pub use folder::{Frozen, RunFolder};
-pub use home::{Home, TypeTexts};
+pub use home::{Home, TypeTexts, demo_bench};
 pub use lock::SerialLock;
 pub use name::{folder_name, is_folder_name};
 pub use store::{FoundRun, Store};

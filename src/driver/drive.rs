@@ -7,7 +7,7 @@ use chrono::DateTime;
 use super::{Interrupted, engine::Engine};
 use crate::record::event::{Captured, Event, Happening};
 use crate::record::question::{Answer, Question};
-use crate::run::{At, Run};
+use crate::run::{At, Remark, Run};
 use crate::station::{Bench, CaptureRequest, Durability, Journal, ReadingRequest, Trouble, Want};
 
 /// Failures of an instrument in a row after which the run is left open instead of going on.
@@ -18,7 +18,7 @@ const REPEATS: u32 = 1000;
 /// Sees what happens; shows it, or not.
 pub trait Watcher {
     /// One event was stored and taken.
-    fn happened(&mut self, run: &Run, event: &Event);
+    fn happened(&mut self, run: &Run, event: &Event, remarks: &[Remark]);
     /// A person is about to be asked.
     fn asking(&mut self, _question: &Question) {}
 }
@@ -156,8 +156,8 @@ impl Driver<'_> {
     fn store(&mut self, what: Happening, durability: Durability) -> Result<(), Failed> {
         let now = self.bench.clock.now();
         let event = self.journal.append(now, &what, durability)?;
-        self.run.take(&event.what, at_of(&event));
-        self.watcher.happened(self.run, &event);
+        let remarks = self.run.take(&event.what, at_of(&event));
+        self.watcher.happened(self.run, &event, &remarks);
         Ok(())
     }
 }

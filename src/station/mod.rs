@@ -4,8 +4,8 @@
 
 pub mod answers;
 mod bench;
-mod journal;
 pub mod file;
+mod journal;
 mod want;
 
 pub use bench::{Bench, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, Trouble};
