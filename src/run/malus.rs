@@ -25,13 +25,14 @@ pub(crate) struct Malus {
 ///
 /// axis = ½ atan2(c, b); u(axis) = ½ u_⊥/√(b² + c²), u_⊥ the standard error across (b, c). Malus 1809; any optics text.
 pub(crate) fn fit(points: &[(f64, f64)]) -> Option<Malus> {
-    let design: Vec<f64> = points.iter().flat_map(|(angle, _)| [1.0, (2.0 * angle).cos(), (2.0 * angle).sin()]).collect();
+    let design: Vec<f64> =
+        points.iter().flat_map(|(angle, _)| [1.0, (2.0 * angle).cos(), (2.0 * angle).sin()]).collect();
     let rhs: Vec<f64> = points.iter().map(|(_, signal)| *signal).collect();
     let fit = linear::weighted(&design, &rhs, &vec![1.0; rhs.len()]).ok()?;
     let [mean, b, c] = fit.coefficients[..] else { return None };
     let scatter = fit.reduced_chi_square()?.sqrt();
     let swing = b.hypot(c);
-    if !(swing > 0.0) {
+    if !swing.is_finite() || swing <= 0.0 {
         return None;
     }
     let covariance = |i: usize, j: usize| fit.covariance.get(3 * i + j).copied().unwrap_or(f64::NAN);
@@ -58,7 +59,7 @@ pub(crate) fn null(points: &[(f64, f64)]) -> Option<(f64, f64, f64)> {
     let rhs: Vec<f64> = points.iter().map(|(_, signal)| *signal).collect();
     let fit = linear::weighted(&design, &rhs, &vec![1.0; rhs.len()]).ok()?;
     let [a, b, c] = fit.coefficients[..] else { return None };
-    if !(c > 0.0) {
+    if !c.is_finite() || c <= 0.0 {
         return None;
     }
     let at = -b / (2.0 * c);
@@ -68,7 +69,8 @@ pub(crate) fn null(points: &[(f64, f64)]) -> Option<(f64, f64, f64)> {
     let mut variance = 0.0;
     for i in 0..3 {
         for j in 0..3 {
-            variance += gradient[i] * gradient[j] * fit.covariance.get(3 * i + j).copied().unwrap_or(f64::NAN) * scatter;
+            variance +=
+                gradient[i] * gradient[j] * fit.covariance.get(3 * i + j).copied().unwrap_or(f64::NAN) * scatter;
         }
     }
     let least = a - b * b / (4.0 * c);
@@ -103,7 +105,10 @@ mod tests {
 
     #[test]
     fn parabola_through_the_null() {
-        let points: Vec<_> = (-4..=4).map(|i| f64::from(i) * 0.5f64.to_radians()).map(|x| (x, 0.002 + (x - 0.003).sin().powi(2))).collect();
+        let points: Vec<_> = (-4..=4)
+            .map(|i| f64::from(i) * 0.5f64.to_radians())
+            .map(|x| (x, 0.002 + (x - 0.003).sin().powi(2)))
+            .collect();
         let (least, _, at) = null(&points).unwrap();
         // sin² departs from the parabola by x⁴/3: 5e-7 at 2°.
         assert!((least - 0.002).abs() < 5e-7 && (at - 0.003).abs() < 1e-5, "{least} {at}");

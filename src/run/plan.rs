@@ -5,7 +5,7 @@
 use crate::{
     limits::{Fault, Limits},
     recipe::Recipe,
-    station::StationFile,
+    station::file::StationFile,
 };
 
 /// What a run is measured by, judged by and measured on.

@@ -93,7 +93,12 @@ fn type_a(lines: &[StoredLine]) -> f64 {
 
 /// Degrees of freedom of all captures' Type A lines together.
 fn own_dof(captures: &[(f64, &[StoredLine])]) -> f64 {
-    captures.iter().flat_map(|(_, lines)| lines.iter()).filter(|l| l.type_a).map(|l| l.dof.unwrap_or(f64::INFINITY)).sum()
+    captures
+        .iter()
+        .flat_map(|(_, lines)| lines.iter())
+        .filter(|l| l.type_a)
+        .map(|l| l.dof.unwrap_or(f64::INFINITY))
+        .sum()
 }
 
 /// The Type B lines, one for each source and wording, in the order of their first appearance.
@@ -154,7 +159,8 @@ mod tests {
     #[test]
     fn scatter_averages_down_and_the_certificate_does_not() {
         let budget = [line("scatter", true, 2.0), line("SIM-0001", false, 3.0)];
-        let captures: Vec<(f64, &[StoredLine])> = [99.0, 101.0, 99.5, 100.5].iter().map(|v| (*v, &budget[..])).collect();
+        let captures: Vec<(f64, &[StoredLine])> =
+            [99.0, 101.0, 99.5, 100.5].iter().map(|v| (*v, &budget[..])).collect();
         let pooled = pool(&captures).unwrap();
         assert!((pooled.measured.value - 100.0).abs() < 1e-12);
         // χ² = (1 + 1 + 0.25 + 0.25)/4 over 3: below 1, so u_A = 2/√4.

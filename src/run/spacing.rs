@@ -50,8 +50,10 @@ pub(crate) fn rows(pooled: Option<Pooled>, from: &str, book: &mut Notebook) -> O
     if let Some(birge) = pooled.birge.filter(|birge| *birge > 1.0) {
         note += &format!("; Birge ratio {birge:.2}");
     }
-    let rows =
-        [Filled::number("mode_spacing", spacing).noted(note), Filled::number("mirror_spacing", &mirror_spacing(spacing))];
+    let rows = [
+        Filled::number("mode_spacing", spacing).noted(note),
+        Filled::number("mirror_spacing", &mirror_spacing(spacing)),
+    ];
     book.spacing = Some(pooled.measured);
     Some(rows)
 }

@@ -54,7 +54,10 @@ fn counts(room: &Room<'_>, from: &str, cycles: f64) -> [Filled; 2] {
     let glimpses: Vec<_> = captures.iter().map(|seen| seen.glimpse.clone()).collect();
     let spacing = room.book.spacing.as_ref().map_or(room.plan.recipe.nominal_spacing, |spacing| spacing.value);
     match count_modes(&glimpses, room.plan.recipe.mode_floor, spacing) {
-        Some(counts) if counts.phases_seen >= PHASES => todo!(),
+        Some(counts) if counts.phases_seen >= PHASES => [
+            Filled::count(keys[0], counts.min.into(), counts.min.into(), counts.min.into()),
+            Filled::count(keys[1], counts.max.into(), counts.max.into(), counts.max.into()),
+        ],
         Some(counts) => {
             let reason = format!("{} of {PHASES} phases of the walk cycle seen", counts.phases_seen);
             keys.map(|key| Filled::absent(key, reason.as_str()))

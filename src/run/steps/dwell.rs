@@ -127,9 +127,14 @@ impl Dwell {
         rows.push(some_number(KEYS[0], state.tau.as_ref().filter(|_| tau_stands), &why));
         rows.push(some_number(KEYS[1], state.ready.as_ref().filter(|_| settled), &why));
         if self.any_light && state.walked.is_finite() && !room.book.of(room.step).is_empty() {
-            let line = BudgetLine::direct("walk", "tube phase at both ends", Evaluation::TypeA, state.u_walked, f64::INFINITY);
+            let line =
+                BudgetLine::direct("walk", "tube phase at both ends", Evaluation::TypeA, state.u_walked, f64::INFINITY);
             let cycles = Measured::with_line(state.walked, line);
-            let note = if state.early_unknown { "early cycles unknown: counted from the first that could be followed" } else { "" };
+            let note = if state.early_unknown {
+                "early cycles unknown: counted from the first that could be followed"
+            } else {
+                ""
+            };
             rows.push(Filled::number(KEYS[2], &cycles).noted(note));
             rows.push(Filled::number(KEYS[3], &cycles.scaled(self.wavelength / 2.0)).noted(note));
         }

@@ -12,6 +12,8 @@ mod supply;
 mod sweep;
 mod watch;
 
+use chrono::{DateTime, FixedOffset};
+
 use super::{filled::Filled, notebook::Notebook, plan::Plan};
 use crate::{
     recipe::StepKind,
@@ -21,6 +23,9 @@ use crate::{
     },
     station::ReadingKind,
 };
+
+/// Samples of a whole capture, where a recipe has no key for it.
+pub(crate) const WHOLE_CAPTURE: usize = 20_000;
 
 /// A step at work: it is begun once, then wants one thing after the other until it wants nothing.
 pub(crate) trait Step: Send {
@@ -46,6 +51,8 @@ pub(crate) struct Room<'a> {
     pub step: &'a str,
     /// What was seen so far.
     pub book: &'a mut Notebook,
+    /// When the run was opened.
+    pub opened_at: Option<DateTime<FixedOffset>>,
     /// Monotonic ms of the event at hand.
     pub now_ms: u64,
 }

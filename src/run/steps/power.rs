@@ -10,7 +10,7 @@ use crate::{
         filled::Filled,
         notebook::{DwellEnd, Notebook, Seen},
     },
-    station::PowerMeter,
+    station::file::PowerMeter,
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
 
@@ -61,11 +61,15 @@ fn scatter_line(words: String, u: f64, n: usize) -> BudgetLine {
 
 fn power(points: &[(f64, f64)], meter: &PowerMeter) -> Filled {
     let (Some(mean), Some(scatter)) = (mean(points), scatter(points)) else {
-        return Filled::absent(KEYS[0], format!("{} averages in the last whole cycle, expected 3 or more", points.len()));
+        return Filled::absent(
+            KEYS[0],
+            format!("{} averages in the last whole cycle, expected 3 or more", points.len()),
+        );
     };
     let n = points.len();
     let value = mean * meter.factor;
-    let own = scatter_line(format!("scatter of {n} averages of 1 s"), scatter * meter.factor.abs() / (n as f64).sqrt(), n);
+    let own =
+        scatter_line(format!("scatter of {n} averages of 1 s"), scatter * meter.factor.abs() / (n as f64).sqrt(), n);
     let mut scale = meter_line(meter);
     scale.sensitivity = value;
     Filled::number(KEYS[0], &Measured { value, budget: vec![own, scale] })
@@ -94,7 +98,9 @@ fn drift(cycles: &[(f64, f64)]) -> Filled {
     if cycles.len() < DRIFT_CYCLES.1 {
         return few();
     }
-    let (Some(middle), Some(level)) = (cycles.get(cycles.len() / 2).map(|(at, _)| *at), mean(cycles)) else { return few() };
+    let (Some(middle), Some(level)) = (cycles.get(cycles.len() / 2).map(|(at, _)| *at), mean(cycles)) else {
+        return few();
+    };
     let design: Vec<f64> = cycles.iter().flat_map(|(at, _)| [1.0, at - middle]).collect();
     let rhs: Vec<f64> = cycles.iter().map(|(_, power)| power / level).collect();
     let fit = linear::weighted(&design, &rhs, &vec![1.0; rhs.len()]);
@@ -141,7 +147,11 @@ impl Power {
         if dwelt.is_some_and(|dwelt| dwelt.end == Some(DwellEnd::SourceEnded) && !dwelt.warmup.state().settled) {
             return Err("the captures ended before the walk settled".into());
         }
-        let cycles = dwelt.map_or(1.0, |dwelt| dwelt.cycles).max(1.0);
+        let Some(cycles) = dwelt.map(|dwelt| dwelt.cycles.max(1.0)) else {
+            let at_rest = format!("{} is at rest: no walk cycle was seen", self.from);
+            let row = power(&all, meter).noted("at rest, not over a walk cycle");
+            return Ok(vec![row, Filled::absent(KEYS[1], at_rest.as_str()), Filled::absent(KEYS[2], at_rest)]);
+        };
         let within = |cycles: f64| -> Result<Vec<(f64, f64)>, String> {
             let window = whole_cycles(room.book, &self.from, cycles)?;
             Ok(averages(room.book.of_within(&self.from, window)))

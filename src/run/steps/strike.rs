@@ -34,7 +34,8 @@ impl Strike {
         room.book.first_light_ms = Some(room.now_ms);
         self.filled.push(match answer {
             Answer::Number(delay) => {
-                let line = BudgetLine::direct("by hand", "time taken by hand", Evaluation::TypeB, U_BY_HAND, f64::INFINITY);
+                let line =
+                    BudgetLine::direct("by hand", "time taken by hand", Evaluation::TypeB, U_BY_HAND, f64::INFINITY);
                 Filled::number("start_delay", &Measured::with_line(*delay, line))
             }
             answer => absent("start_delay", answer),

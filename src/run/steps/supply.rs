@@ -7,7 +7,10 @@ use crate::{
     recipe,
     record::question::Answer,
     run::{filled::Filled, notebook::Notebook},
-    station::{self, ReadingKind, Source},
+    station::{
+        ReadingKind,
+        file::{self, Source},
+    },
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
 
@@ -20,7 +23,7 @@ const DROPOUT: &str = "Lower the current slowly until the discharge goes out and
 /// The step.
 pub(super) struct Supply {
     dropout: bool,
-    station: Option<station::Supply>,
+    station: Option<file::Supply>,
     stage: usize,
     last: usize,
     current: Option<f64>,
@@ -101,14 +104,14 @@ impl Supply {
 }
 
 /// Source id of the supply's voltage scale: correlated with every voltage under the same certificate, not with currents.
-pub(super) fn voltage_source(supply: Option<&station::Supply>) -> String {
+pub(super) fn voltage_source(supply: Option<&file::Supply>) -> String {
     match supply.and_then(|supply| supply.certificate.as_ref()) {
         Some(certificate) => format!("{}/voltage", certificate.number),
         None => "supply/voltage".into(),
     }
 }
 
-fn current_source(supply: &station::Supply) -> String {
+fn current_source(supply: &file::Supply) -> String {
     let number = supply.certificate.as_ref().map_or("supply", |certificate| &certificate.number);
     format!("{number}/current")
 }
@@ -121,7 +124,7 @@ fn reading_line() -> BudgetLine {
     BudgetLine::direct("display", "steps of the display", Evaluation::TypeB, U_READING, f64::INFINITY)
 }
 
-fn current_measured(current: f64, supply: &station::Supply) -> Measured {
+fn current_measured(current: f64, supply: &file::Supply) -> Measured {
     let mut scale = scale_line(&current_source(supply), "current reading", supply.u);
     scale.sensitivity = current;
     Measured { value: current, budget: vec![scale, reading_line()] }
@@ -155,7 +158,8 @@ impl Step for Supply {
     fn take(&mut self, given: Given<'_>, _room: &mut Room<'_>) {
         let key = ["run_current", "run_voltage", "dropout_current"].get(self.stage).copied().unwrap_or_default();
         let found = match given {
-            Given::Answer(Answer::Number(value)) | Given::Reading(Ok(ref value)) => Ok(*value),
+            Given::Answer(Answer::Number(value)) => Ok(*value),
+            Given::Reading(Ok(value)) => Ok(value),
             Given::Answer(answer) => Err(absent(key, answer)),
             Given::Reading(Err(reason)) => Err(Filled::absent(key, reason)),
             _ => return,

@@ -13,6 +13,9 @@ use crate::{
 /// Relative standard uncertainty of a finesse from one capture, where no scatter is seen (common practice).
 const U_FINESSE: f64 = 0.05;
 
+/// Reasons shown on the sheet.
+const SHOWN: usize = 3;
+
 /// The step.
 pub(super) struct Sweep {
     keys: recipe::Sweep,
@@ -86,7 +89,10 @@ impl Sweep {
         self.filled.push(finesse(&self.finesse));
         if !self.reasons.is_empty() {
             let step = room.step;
-            room.book.remark(format!("Step {step}: {}.", self.reasons.join("; ")));
+            let more = self.reasons.len().saturating_sub(SHOWN);
+            let more = if more > 0 { format!("; and {more} more") } else { String::new() };
+            let shown = self.reasons.get(..SHOWN).unwrap_or(&self.reasons).join("; ");
+            room.book.remark(format!("Step {step}: {shown}{more}."));
         }
     }
 }
@@ -100,7 +106,8 @@ fn finesse(values: &[f64]) -> Filled {
     let mut measured = pooled.measured;
     if pooled.used == 1 {
         let u = U_FINESSE * measured.value;
-        let line = BudgetLine::direct("one capture", "no scatter from one capture", Evaluation::TypeB, u, f64::INFINITY);
+        let line =
+            BudgetLine::direct("one capture", "no scatter from one capture", Evaluation::TypeB, u, f64::INFINITY);
         measured = Measured::with_line(measured.value, line);
     }
     Filled::number("finesse", &measured)

@@ -12,7 +12,7 @@ use crate::{
         notebook::Notebook,
         steps::{Given, Room, Step, Wish},
     },
-    station::{Polarizer as StationPolarizer, ReadingKind},
+    station::{ReadingKind, file::Polarizer as StationPolarizer},
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
 
@@ -137,7 +137,7 @@ impl Linear {
         let dof = self.fine.len().saturating_sub(3).max(1) as f64;
         let u_dark = u_least * (self.fine.len() as f64 / 3.0).sqrt();
         let u_low = u_least.hypot(u_dark);
-        if !(greatest > 0.0) {
+        if !greatest.is_finite() || greatest <= 0.0 {
             return Filled::absent(key, "no light through the polarizer");
         }
         if least < 2.0 * u_low {

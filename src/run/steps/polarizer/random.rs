@@ -160,9 +160,11 @@ impl Random {
     }
 
     fn azimuth(&self, family: &Family) -> Filled {
-        let scatter = BudgetLine::direct("scatter", "scatter about Malus's law", Evaluation::TypeA, family.u, family.dof);
+        let scatter =
+            BudgetLine::direct("scatter", "scatter about Malus's law", Evaluation::TypeA, family.u, family.dof);
         let measured = Measured { value: family.axis, budget: vec![scatter, self.scale_line()] };
-        Filled::number(KEYS[0], &measured).noted("of one family of modes; the other's is given by the angle between neighbours")
+        Filled::number(KEYS[0], &measured)
+            .noted("of one family of modes; the other's is given by the angle between neighbours")
     }
 
     /// In [0°, 180°): which neighbour comes first is chance, so 90.3° and 89.7° say the same.
@@ -264,6 +266,10 @@ impl Step for Random {
     }
 
     fn expected_s(&self, _book: &Notebook) -> Option<f64> {
-        Some(if self.done { 0.0 } else { 5.0 * (self.keys.angles.len() - self.index.min(self.keys.angles.len())) as f64 })
+        Some(if self.done {
+            0.0
+        } else {
+            5.0 * (self.keys.angles.len() - self.index.min(self.keys.angles.len())) as f64
+        })
     }
 }
