@@ -6,6 +6,7 @@ mod ending;
 mod inspect;
 mod measure;
 mod output;
+mod simulate;
 
 pub use ending::{Ending, Failure};
 
@@ -27,6 +28,8 @@ enum Command {
     Inspect(Box<inspect::Arguments>),
     /// Measure captured sweeps and print what was found; no record
     Measure(measure::Arguments),
+    /// Write captures of a simulated tube, sound or faulty, and the truth about it
+    Simulate(Box<simulate::SimulateArgs>),
 }
 
 /// Runs the command that the process was given.

@@ -20,3 +20,6 @@ pub use scenario::{Scenario, ScenarioError, ScenarioFault, ScenarioTube};
 pub use trace::RawTrace;
 pub use tube::{Incident, TubeTruth};
 pub use world::{Setting, World};
+
+#[cfg(test)]
+mod tests;
