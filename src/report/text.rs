@@ -31,7 +31,7 @@ pub fn value_text(row: &Row) -> ValueText {
             ValueText { absent: "not a finite number".to_owned(), ..ValueText::default() }
         }
         Value::Number { value, expanded, .. } => {
-            let (number, spread) = joint(shown(*value), shown(*expanded), known.map_or(6, |m| m.decimals));
+            let (number, spread) = rounded(shown(*value), shown(*expanded), known.map_or(6, |m| m.decimals));
             let spread = if expanded.is_finite() { format!("± {}", typeset(&spread)) } else { String::new() };
             ValueText { value: typeset(&number), spread, unit, absent: String::new() }
         }
@@ -47,6 +47,15 @@ pub fn value_text(row: &Row) -> ValueText {
     }
 }
 
+/// Rounded together; in powers of ten where a column of figures could not hold the number.
+fn rounded(value: f64, expanded: f64, most: usize) -> (String, String) {
+    let plain = |x: f64| x.abs() < 1e7;
+    if plain(value) && (plain(expanded) || !expanded.is_finite()) {
+        return joint(value, expanded, most);
+    }
+    (format!("{value:.3e}"), format!("{expanded:.1e}"))
+}
+
 /// A bound in the unit of the catalogue, at most six significant digits, without the unit: `979.3`, `0.5`.
 pub fn bound_text(known: Option<&Measurand>, si: f64) -> String {
     let shown = known.map_or(si, |m| m.shown(si));
@@ -54,7 +63,9 @@ pub fn bound_text(known: Option<&Measurand>, si: f64) -> String {
         return "?".to_owned();
     }
     let rounded: f64 = format!("{shown:.5e}").parse().unwrap_or(shown);
-    typeset(&format!("{}", rounded + 0.0))
+    let size = rounded.abs();
+    let odd = size >= 1e7 || (size > 0.0 && size < 1e-4);
+    typeset(&if odd { format!("{rounded:e}") } else { format!("{}", rounded + 0.0) })
 }
 
 /// A probability with three decimals that never claims certainty it has not: `0.748`, `< 0.001`, `> 0.999`.

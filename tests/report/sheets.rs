@@ -396,3 +396,30 @@ pub fn glyphless() -> Sheet {
     sheet.identity.serial = "\u{1F4A1}".repeat(64);
     sheet
 }
+
+/// Every measurand of the catalogue, limited, and six looks: still one page.
+pub fn full() -> Sheet {
+    let mut sheet = fail();
+    let known = sheet.rows.clone();
+    let of = |key: &str| known.iter().find(|row| row.measurand == key).cloned();
+    sheet.rows = measurand::CATALOGUE
+        .iter()
+        .map(|m| {
+            of(m.key).unwrap_or_else(|| match m.shape {
+                measurand::Shape::Count => count("step", m.key, 1, Some(0.0), Some(3.0)),
+                _ => limited("step", m.key, (12.3, 0.4), Some(10.0), Some(14.0)),
+            })
+        })
+        .collect();
+    let looks = ["output_mirror", "cathode", "bore", "glow", "leads", "label"];
+    sheet.rows.extend(looks.map(|name| look(name, "clean")));
+    sheet.remarks = vec!["Two captures were lost during the dwell.".into()];
+    sheet
+}
+
+/// More rows than a page can hold, however close.
+pub fn endless() -> Sheet {
+    let mut sheet = pass();
+    sheet.rows.extend((0..140).map(|i| look(&format!("look_{i}"), "clean")));
+    sheet
+}
