@@ -47,10 +47,30 @@ pub fn run() -> ExitCode {
     let ended = match arguments.command {
         Command::Inspect(arguments) => inspect::run(*arguments),
         Command::Measure(arguments) => measure::run(&arguments),
+        Command::Simulate(arguments) => simulate(&arguments),
     };
     let ending = ended.unwrap_or_else(|failure| {
         output::talk(&format!("tubewright: {}", failure.message));
         failure.ending
     });
     ExitCode::from(ending.status())
+}
+
+/// Says what `simulate` wrote, and maps what went wrong.
+fn simulate(arguments: &simulate::SimulateArgs) -> Result<Ending, Failure> {
+    use simulate::SimulateError;
+    match simulate::run(arguments) {
+        Ok(simulate::Simulated { written, lost }) => {
+            let folder = arguments.folder.display();
+            output::talk(&format!("{written} captures written to `{folder}`, {lost} lost on purpose"));
+            Ok(Ending::Accepted)
+        }
+        Err(error) => {
+            let ending = match &error {
+                SimulateError::UnknownType { .. } | SimulateError::Impossible { .. } => Ending::Unusable,
+                SimulateError::InTheWay(_) | SimulateError::Disk { .. } => Ending::Store,
+            };
+            Err(Failure::new(ending, error.to_string()))
+        }
+    }
 }
