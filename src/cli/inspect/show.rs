@@ -36,6 +36,8 @@ pub(super) struct Show {
     progress: Option<(String, Instant)>,
     /// A progress line stands on the terminal.
     line_open: bool,
+    /// Wall time and bench time, s, when this process began.
+    began: Option<(Instant, f64)>,
     failed: Option<Failure>,
 }
 
@@ -50,6 +52,7 @@ impl Show {
             done_steps: 0,
             progress: None,
             line_open: false,
+            began: None,
             failed: None,
         }
     }
@@ -89,7 +92,14 @@ impl Show {
         }
     }
 
-    fn progress(&mut self, run: &Run) {
+    /// Bench seconds that pass in one second of wall time: as seen so far, else as fast as allowed.
+    fn rate(&self, elapsed_s: f64) -> f64 {
+        let (Some(pace), Some((at, first_s))) = (self.pace, self.began) else { return 1.0 };
+        let wall = at.elapsed().as_secs_f64();
+        if wall > 1.0 { ((elapsed_s - first_s) / wall).clamp(1e-3, pace) } else { pace }
+    }
+
+    fn progress(&mut self, run: &Run, elapsed_s: f64) {
         let progress = run.progress();
         let every = if self.on_terminal { REWRITE_EVERY } else { LINE_EVERY };
         let due = self.progress.as_ref().is_none_or(|(step, at)| *step != progress.step || at.elapsed() >= every);
@@ -97,7 +107,7 @@ impl Show {
             return;
         }
         self.progress = Some((progress.step.clone(), Instant::now()));
-        let left = progress.expected_s.map(|s| s / self.pace.unwrap_or(1.0)).map_or_else(String::new, time_left);
+        let left = progress.expected_s.map_or_else(String::new, |s| time_left(s / self.rate(elapsed_s)));
         let line = format!("[{}/{}] {}{left}", progress.done_steps + 1, progress.n_steps, progress.step);
         if self.on_terminal {
             let mut err = io::stderr().lock();
@@ -144,7 +154,8 @@ impl Show {
 }
 
 impl Watcher for Show {
-    fn happened(&mut self, run: &Run, _event: &Event, remarks: &[Remark]) {
+    fn happened(&mut self, run: &Run, event: &Event, remarks: &[Remark]) {
+        self.began.get_or_insert((Instant::now(), event.elapsed_s));
         for remark in remarks {
             self.clear();
             output::talk(&format!("  {remark}"));
@@ -156,7 +167,7 @@ impl Watcher for Show {
                 run.plan().recipe.steps.iter().take(progress.done_steps).map(|step| step.name.as_str()).collect();
             self.rows(&run.sheet(), &done);
         }
-        self.progress(run);
+        self.progress(run, event.elapsed_s);
     }
 
     fn asking(&mut self, _question: &Question) {

@@ -93,17 +93,8 @@ pub fn run(arguments: &Arguments) -> Result<Ending, Failure> {
         mode_floor: arguments.mode_floor,
         fsr_source_id: GIVEN_FSR.to_owned(),
     };
-    let outcomes: Vec<Outcome> = groups_of(arguments)
-        .par_iter()
-        .map(|files| {
-            let mut outcome = outcome_of(files, arguments.columns.as_ref(), &settings);
-            if arguments.fsr_u.is_none() {
-                let warning = "--fsr-u was not given: the uncertainty leaves out that of the free spectral range";
-                outcome.warnings.push(warning.to_owned());
-            }
-            outcome
-        })
-        .collect();
+    let outcomes: Vec<Outcome> =
+        groups_of(arguments).par_iter().map(|files| outcome_of(files, arguments.columns.as_ref(), &settings)).collect();
     let mut ending = Ending::Accepted;
     for outcome in &outcomes {
         output::result(&match arguments.format {
