@@ -2,17 +2,22 @@
 //! Must not decide anything about a tube.
 //! Main function: [`run`].
 
+pub mod check;
 mod ending;
+mod home;
 mod inspect;
 mod measure;
 mod output;
-mod simulate;
+pub mod simulate;
 
 pub use ending::{Ending, Failure};
 
+use std::path::PathBuf;
 use std::process::ExitCode;
 
 use clap::{Parser, Subcommand};
+
+use self::simulate::SimulateError;
 
 /// Test station for helium-neon laser tubes: warm up, sweep, measure, judge, record.
 #[derive(Debug, Parser)]
@@ -28,6 +33,14 @@ enum Command {
     Inspect(Box<inspect::Arguments>),
     /// Measure captured sweeps and print what was found; no record
     Measure(measure::Arguments),
+    /// Read limits, recipes and station files; say everything that is wrong, with line and column
+    Check {
+        #[command(flatten)]
+        arguments: check::CheckArgs,
+        /// Folder that holds limits/ (else TUBEWRIGHT_HOME, else the nearest parent with limits/)
+        #[arg(long, value_name = "DIR")]
+        home: Option<PathBuf>,
+    },
     /// Write captures of a simulated tube, sound or faulty, and the truth about it
     Simulate(Box<simulate::SimulateArgs>),
 }
@@ -47,6 +60,7 @@ pub fn run() -> ExitCode {
     let ended = match arguments.command {
         Command::Inspect(arguments) => inspect::run(*arguments),
         Command::Measure(arguments) => measure::run(&arguments),
+        Command::Check { arguments, home } => check(&arguments, home),
         Command::Simulate(arguments) => simulate(&arguments),
     };
     let ending = ended.unwrap_or_else(|failure| {
@@ -56,9 +70,18 @@ pub fn run() -> ExitCode {
     ExitCode::from(ending.status())
 }
 
+/// Prints every fault; any makes the files unusable.
+fn check(arguments: &check::CheckArgs, home: Option<PathBuf>) -> Result<Ending, Failure> {
+    let home = home::find(home, None)?;
+    let mut text = Vec::new();
+    let faults = check::check(arguments, home.folder(), &mut text)
+        .map_err(|error| Failure::new(Ending::Store, format!("cannot write the faults: {error}")))?;
+    output::result(String::from_utf8_lossy(&text).trim_end())?;
+    Ok(if faults == 0 { Ending::Accepted } else { Ending::Unusable })
+}
+
 /// Says what `simulate` wrote, and maps what went wrong.
 fn simulate(arguments: &simulate::SimulateArgs) -> Result<Ending, Failure> {
-    use simulate::SimulateError;
     match simulate::run(arguments) {
         Ok(simulate::Simulated { written, lost }) => {
             let folder = arguments.folder.display();

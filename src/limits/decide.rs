@@ -37,10 +37,9 @@ impl Decision {
 pub fn judge_row(row: &Row, limit: &Limit, limits: &Limits, finished: bool) -> Vec<Judged> {
     let shared_bounds = [&limit.lower, &limit.upper].iter().all(|bound| !matches!(bound, Bound::PerGrade(_)));
     let grades = if shared_bounds { vec![String::new()] } else { limits.grades.clone() };
-    let rule = match row.value {
-        Value::Count { .. } | Value::Word(_) => Rule::Shared,
-        _ => limit.rule.unwrap_or(limits.rule),
-    };
+    let counted = find(&limit.measurand).is_some_and(|measurand| measurand.shape == Shape::Count);
+    let exact = counted || !limit.wanted.is_empty() || matches!(row.value, Value::Count { .. } | Value::Word(_));
+    let rule = if exact { Rule::Shared } else { limit.rule.unwrap_or(limits.rule) };
     let judge = |grade: String| {
         let (lower, upper) = (limit.lower.of(&grade), limit.upper.of(&grade));
         let decision = decide(row, limit, (lower, upper), rule, finished);
@@ -81,11 +80,9 @@ fn decide(row: &Row, limit: &Limit, bounds: (Option<f64>, Option<f64>), rule: Ru
             let probability = conformance_probability(key, (*value, *u, *dof), bounds.0, bounds.1);
             let passes = match (zone, rule) {
                 (None, _) => true,
-                (Some(zone), Rule::Guarded) if shape != Shape::Count => zone == Zone::InsideByU,
-                (Some(_), Rule::Probability(wanted)) if shape != Shape::Count => {
-                    probability.is_some_and(|probability| probability >= wanted)
-                }
-                (Some(zone), _) => matches!(zone, Zone::InsideByU | Zone::Inside),
+                (Some(zone), Rule::Guarded) => zone == Zone::InsideByU,
+                (Some(_), Rule::Probability(wanted)) => probability.is_some_and(|probability| probability >= wanted),
+                (Some(zone), Rule::Shared) => matches!(zone, Zone::InsideByU | Zone::Inside),
             };
             Decision { zone, probability, ..Decision::of(passes) }
         }

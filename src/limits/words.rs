@@ -145,7 +145,7 @@ fn in_doubt(judged: &Judged) -> bool {
 fn why(row: &Row, judged: &Judged) -> String {
     let label = lower_case(&row.label);
     match &row.value {
-        Value::Word(word) => format!("{label}: {word}, wanted {}", judged.wanted.join(" or ")),
+        Value::Word(word) => format!("{label} {word}, wanted {}", judged.wanted.join(" or ")),
         Value::Count { value, .. } => format!("{label}: {value}, {}", place(row, judged)),
         Value::Number { expanded, .. } if in_doubt(judged) => {
             let (_, side, bound) = nearest_bound(row, judged);

@@ -13,7 +13,7 @@ pub struct BenchTruth {
     pub orders: f64,
     /// Period of the ramp, s; one capture is one period.
     pub ramp_period: f64,
-    /// Share of the period in which the ramp rises: 0.5 is a triangle, 0.92 a sawtooth with a short flyback.
+    /// Share of the period in which the ramp rises: 0.5 is a triangle, 0.95 a sawtooth with a short flyback.
     pub rising_share: f64,
     /// Lowest ramp voltage, V.
     pub ramp_low: f64,
@@ -53,14 +53,14 @@ pub struct BenchTruth {
 }
 
 impl Default for BenchTruth {
-    /// An ordinary bench: 6.4 GHz, finesse 150, sawtooth over 2.3 orders in 25 ms, 12 bits.
+    /// An ordinary bench: 6.4 GHz, finesse 150, sawtooth over 2.5 orders in 25 ms, 12 bits.
     fn default() -> Self {
         Self {
             free_spectral_range: 6.4e9,
             finesse: 150.0,
-            orders: 2.3,
+            orders: 2.5,
             ramp_period: 0.025,
-            rising_share: 0.92,
+            rising_share: 0.95,
             ramp_low: 1.0,
             ramp_high: 9.0,
             ramp_curvature: 0.12,

@@ -7,9 +7,9 @@ use super::bench::BenchTruth;
 /// Begin of a capture before the lower turn of the ramp, as a share of the period: the trigger comes a little early.
 const PRETRIGGER: f64 = 0.01;
 /// Bias of the piezo below the ramp's lowest voltage, over the ramp's height.
-const BIAS: f64 = 0.3;
+const BIAS: f64 = 0.6;
 /// Height and reach of the creep after a turn, over curvature and ramp height; sizes from memory.
-const CREEP: f64 = 0.012;
+const CREEP: f64 = 0.006;
 const CREEP_REACH: f64 = 0.13;
 
 /// The ramp of one bench.

@@ -15,6 +15,26 @@ pub(super) struct Placed {
     pub order: i32,
     /// Tooth of the comb.
     pub tooth: i32,
+    /// Class of the peak: one light in every order.
+    pub class: usize,
+}
+
+/// What stands for the places of modes within an order.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Offsets {
+    /// Teeth of an even comb: one unknown, its spacing.
+    Comb,
+    /// An unknown offset for every class but the first: nothing is assumed of the modes.
+    Classes(usize),
+}
+
+impl Offsets {
+    fn unknowns(self) -> usize {
+        match self {
+            Self::Comb => 1,
+            Self::Classes(n) => n.saturating_sub(1),
+        }
+    }
 }
 
 /// A solved axis.
@@ -74,7 +94,7 @@ fn legendre(degree: usize, u: f64) -> f64 {
 ///
 /// * `covariance`: of the placed peaks' frequencies, Hz², in the same order.
 /// * `terms`: highest degree, at least 1.
-/// * `with_comb`: Δν is unknown too; else every tooth must be 0.
+/// * `offsets`: an even comb, or a free offset for every class (`Σ cᵢ Pᵢ(u) − ν_j = order·FSR`).
 ///
 /// Linear and closed: whiten by Cholesky, then normal equations (Legendre polynomials keep them well conditioned).
 pub(super) fn solve(
@@ -82,22 +102,20 @@ pub(super) fn solve(
     covariance: &DMatrix<f64>,
     fsr: f64,
     terms: usize,
-    with_comb: bool,
+    offsets: Offsets,
 ) -> Option<AxisFit> {
     let n = placed.len();
-    let unknowns = terms + 1 + usize::from(with_comb);
+    let unknowns = terms + 1 + offsets.unknowns();
+    let with_comb = offsets == Offsets::Comb;
     if n < unknowns {
         return None;
     }
     // In units of the FSR all numbers are near one.
-    let design =
-        DMatrix::from_fn(
-            n,
-            unknowns,
-            |i, j| {
-                if j <= terms { legendre(j, placed[i].u) } else { -f64::from(placed[i].tooth) }
-            },
-        );
+    let design = DMatrix::from_fn(n, unknowns, |i, j| match offsets {
+        _ if j <= terms => legendre(j, placed[i].u),
+        Offsets::Comb => -f64::from(placed[i].tooth),
+        Offsets::Classes(_) => -f64::from(u8::from(placed[i].class == j - terms)),
+    });
     let wanted = DVector::from_fn(n, |i, _| f64::from(placed[i].order));
     let whitener = (covariance / (fsr * fsr)).cholesky()?.l();
     let white_design = whitener.solve_lower_triangular(&design)?;
@@ -131,6 +149,19 @@ const SIGNIFICANT: f64 = 10.83;
 /// A term is admissible if it inflates the spacing's uncertainty by less than this over the best one with fewer terms.
 const MOST_INFLATION: f64 = 6.0;
 
+/// From this many terms on a ramp counts as outside any polynomial family.
+const SERIES_TERMS: usize = 5;
+/// What is left out of a series, as a share of what its last terms changed (found: 0.1 to 0.2 on power-law and creeping ramps).
+const SERIES_SHARE: f64 = 0.15;
+
+/// Root mean square of what the last two terms changed in the spacing, Hz; 0 with fewer than two fits.
+fn last_changes(fits: &[AxisFit]) -> f64 {
+    let spacings: Vec<f64> = fits.iter().rev().take(3).filter_map(|fit| fit.spacing).collect();
+    let changes: Vec<f64> = spacings.windows(2).map(|w| (w[0] - w[1]).powi(2)).collect();
+    // One change alone is the step from a straight line to the first bend: it says nothing of a series.
+    if changes.len() < 2 { 0.0 } else { (changes.iter().sum::<f64>() / changes.len() as f64).sqrt() }
+}
+
 /// The axis chosen among degrees, and what the choice costs.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Choice {
@@ -145,40 +176,55 @@ pub(super) struct Choice {
 }
 
 /// Chooses the number of terms by the chi-square each must earn at 0.1 %, never by less.
-pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, with_comb: bool) -> Option<Choice> {
+pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, offsets: Offsets) -> Option<Choice> {
+    let with_comb = offsets == Offsets::Comb;
     let (from, to) = placed.iter().fold((f64::MAX, f64::MIN), |(a, b), p| (a.min(p.u), b.max(p.u)));
     let mut fits: Vec<AxisFit> = Vec::new();
+    let unknowns = |terms: usize| terms + 1 + offsets.unknowns();
+    // A quarter of the peaks must be left over to contradict the model chosen; richer ones only bear witness.
+    let spare = placed.len() / 4;
+    let spares = |terms: usize| terms == 1 || unknowns(terms) + spare <= placed.len();
     for terms in 1..=MOST_TERMS {
-        match solve(placed, covariance, fsr, terms, with_comb) {
+        match solve(placed, covariance, fsr, terms, offsets) {
             Some(fit) => fits.push(fit),
             None => break,
         }
     }
     let usable = |fit: &AxisFit| fit.is_one_way(from, to);
-    // Noise scale from the richest model that keeps two degrees of freedom.
+    // Noise scale: the best that any model leaves, at least what the centres' covariance says.
     let scale = fits
         .iter()
-        .rev()
-        .find(|fit| fit.dof >= 2 && usable(fit))
-        .map_or(1.0, |fit| (fit.chi_square / fit.dof as f64).max(1.0));
+        .filter(|fit| fit.dof >= 1 && usable(fit))
+        .map(|fit| (fit.chi_square / fit.dof as f64).max(1.0))
+        .fold(f64::INFINITY, f64::min);
+    let scale = if scale.is_finite() { scale } else { 1.0 };
     let merit = |i: usize| fits[i].chi_square / scale + SIGNIFICANT * i as f64;
-    let tightest = fits.iter().map(|fit| fit.u_spacing).fold(f64::INFINITY, f64::min);
-    let admissible = |i: usize| {
-        usable(&fits[i]) && fits[i].dof >= 0 && (!with_comb || fits[i].u_spacing < MOST_INFLATION * tightest)
+    // A poor model is tight about a wrong value: its residuals are counted in before it may rule out a richer one.
+    let spread = |fit: &AxisFit| {
+        let birge = if fit.dof > 0 { (fit.chi_square / fit.dof as f64).max(1.0).sqrt() } else { scale.sqrt() };
+        fit.u_spacing * birge
     };
-    let best = (0..fits.len()).filter(|i| admissible(*i)).min_by(|a, b| merit(*a).total_cmp(&merit(*b)))?;
+    let tightest = fits.iter().filter(|fit| usable(fit)).map(spread).fold(f64::INFINITY, f64::min);
+    let admissible = |i: usize| {
+        usable(&fits[i]) && fits[i].dof >= 0 && (!with_comb || spread(&fits[i]) <= MOST_INFLATION * tightest)
+    };
+    let best =
+        (0..fits.len()).filter(|i| admissible(*i) && spares(*i + 1)).min_by(|a, b| merit(*a).total_cmp(&merit(*b)))?;
     let fit = fits[best].clone();
     let birge = if fit.dof > 0 { (fit.chi_square / fit.dof as f64).max(1.0).sqrt() } else { scale.sqrt() };
-    let truncation = match (fit.spacing, fits.get(best + 1).and_then(|next| next.spacing.map(|s| (s, next)))) {
-        (Some(spacing), Some((other, next))) if next.dof >= 0 && admissible(best + 1) => {
+    let next = fits.get(best + 1).filter(|next| next.dof >= 0 && admissible(best + 1));
+    let beyond = match (fit.spacing, next.and_then(|next| next.spacing.map(|s| (s, next)))) {
+        (Some(spacing), Some((other, next))) => {
             // For nested models var(difference) = var(richer) − var(poorer).
             let by_chance = (next.u_spacing.powi(2) - fit.u_spacing.powi(2)).max(0.0) * birge * birge;
             ((other - spacing).powi(2) - by_chance).max(0.0).sqrt()
         }
-        // No degree of freedom is left to see a further term: allow what the last one changed, if there was one.
-        (Some(spacing), _) if best > 0 => fits[best - 1].spacing.map_or(0.0, |before| (before - spacing).abs() / 4.0),
         _ => 0.0,
     };
+    // A ramp that needs many terms, or all there are data for, is no polynomial: its series goes on.
+    let goes_on = best + 1 >= SERIES_TERMS || (next.is_none() && best + 1 >= 3);
+    let series = if goes_on { SERIES_SHARE * last_changes(&fits[..=best]) } else { 0.0 };
+    let truncation = beyond.hypot(series);
     Some(Choice { fit, terms: best + 1, birge, truncation })
 }
 
@@ -208,12 +254,12 @@ mod tests {
                     if legendre_sum(&truth, m) < wanted { a = m } else { b = m }
                 }
                 if a.abs() < 1.0 {
-                    placed.push(Placed { peak: placed.len(), u: a, order, tooth });
+                    placed.push(Placed { peak: placed.len(), u: a, order, tooth, class: tooth as usize });
                 }
             }
         }
         let covariance = DMatrix::identity(placed.len(), placed.len()) * 1e10;
-        let choice = choose(&placed, &covariance, fsr, true).expect("fixed by three orders");
+        let choice = choose(&placed, &covariance, fsr, Offsets::Comb).expect("fixed by three orders");
         assert_eq!(choice.terms, 2);
         // Noise-free: what remains is rounding of the bisection.
         assert!((choice.fit.spacing.unwrap_or(0.0) - spacing).abs() < 10.0);

@@ -108,6 +108,8 @@ const NARROWEST: f64 = 50e6;
 const LEAST_SHARE: f64 = 0.6;
 /// Combs whose scores are nearer than this fit equally well.
 const EQUAL: f64 = 0.03;
+/// A tooth within this of half an order may be the interferometer's own, orders.
+const HALF_WAY: f64 = 0.02;
 /// A comb within this of nominal is settled by it.
 const NEAR_NOMINAL: f64 = 0.12;
 
@@ -151,9 +153,16 @@ pub(super) fn find(classes: &[Class], tolerance: f64, fsr: f64, nominal: Option<
     if best.score < LEAST_SHARE {
         return Err(Refusal::NoComb { share: best.score.max(0.0) });
     }
+    // A confocal interferometer matched on axis shows one mode again, weakly, half-way: no second tooth.
+    let heights: Vec<f64> =
+        classes.iter().zip(&best.teeth).filter(|(_, t)| t.is_some()).map(|(c, _)| c.height).collect();
+    let (low, high) = heights.iter().fold((f64::MAX, 0.0f64), |(a, b), h| (a.min(*h), b.max(*h)));
+    if heights.len() == 2 && (best.spacing - 0.5).abs() < HALF_WAY && low < 0.4 * high {
+        return Err(Refusal::OneMode);
+    }
     let rivals: Vec<&Comb> = combs
         .iter()
-        .filter(|c| best.score - c.score < EQUAL && (c.spacing / best.spacing - 1.0).abs() > 0.05 && on_teeth(c) >= 2)
+        .filter(|c| best.score - c.score < EQUAL && (c.spacing / best.spacing - 1.0).abs() > 0.12 && on_teeth(c) >= 2)
         .collect();
     if rivals.is_empty() {
         return Ok(best);
@@ -166,7 +175,7 @@ pub(super) fn find(classes: &[Class], tolerance: f64, fsr: f64, nominal: Option<
             return Ok((*near).clone());
         }
     }
-    // A comb that leaves out every second tooth of a rival explains as much with fewer modes missing: not a rival.
+    // Folded by the order, any comb has aliases; those wider than a gain line is are not believed while a plain one fits.
     let simple = equal.iter().filter(|c| span(c) * fsr <= PLAIN_SPAN).collect::<Vec<_>>();
     if simple.len() == 1 {
         return Ok((**simple[0]).clone());
@@ -174,41 +183,40 @@ pub(super) fn find(classes: &[Class], tolerance: f64, fsr: f64, nominal: Option<
     Err(Refusal::Ambiguous { first: best.spacing * fsr, second: equal[1].spacing * fsr })
 }
 
-/// A span that sound tubes do not exceed, Hz (`measurement.md` of the design: 1000–2200 MHz by type; practice).
-const PLAIN_SPAN: f64 = 2.4e9;
+/// A span that asks for no belief, Hz: lasing spans are 1000–2200 MHz by type (common practice), the comb is narrower.
+const PLAIN_SPAN: f64 = 1.9e9;
 
 fn span(comb: &Comb) -> f64 {
     let teeth = comb.teeth.iter().flatten().map(|t| t.1);
     f64::from(teeth.clone().max().unwrap_or(0) - teeth.min().unwrap_or(0)) * comb.spacing
 }
 
-/// Lays a comb of a spacing through the strongest class and scores it; the spacing is improved on the way.
+/// Lays a comb of a spacing through the strongest class and scores it; place and spacing are improved on the way.
 fn lay(classes: &[Class], spacing: f64, tolerance: f64, fsr: f64) -> Option<Comb> {
-    let origin = classes.iter().enumerate().max_by(|a, b| a.1.height.total_cmp(&b.1.height))?.0;
-    let mut spacing = spacing;
-    let mut teeth = vec![None; classes.len()];
-    for round in 0..2 {
-        let most = (WIDEST_SPAN / (spacing * fsr)).floor() as i32;
-        teeth = assign(classes, origin, spacing, tolerance, most);
-        if round == 0 {
-            let (mut sxx, mut sxy) = (0.0, 0.0);
-            for (class, tooth) in classes.iter().zip(&teeth) {
-                if let Some((order, tooth)) = tooth {
-                    let d = class.phase + f64::from(*order) - classes[origin].phase;
-                    sxx += class.height * f64::from(*tooth).powi(2);
-                    sxy += class.height * f64::from(*tooth) * d;
-                }
-            }
-            if sxx > 0.0 && sxy > 0.0 {
-                spacing = sxy / sxx;
-            }
-        }
+    let strongest = classes.iter().max_by(|a, b| a.height.total_cmp(&b.height))?;
+    let mut line = Line { origin: strongest.phase, spacing };
+    let mut teeth = Vec::new();
+    // The first look is wide: one uneven tooth must not hide the others.
+    for widening in [1.8, 1.3, 1.0] {
+        let most = (WIDEST_SPAN / (line.spacing * fsr)).floor() as i32;
+        teeth = assign(classes, line, tolerance * widening, most);
+        line = improve(classes, &teeth, line);
+    }
+    let spacing = line.spacing;
+    // Teeth that fold onto each other are one line and its shadow, not a comb.
+    let beside = spacing - spacing.round();
+    if spacing > 0.5 && beside.abs() < LEAST_FOLDED {
+        return None;
     }
     let all: f64 = classes.iter().map(|c| c.height).sum();
     let on: f64 = classes.iter().zip(&teeth).filter(|(_, t)| t.is_some()).map(|(c, _)| c.height).sum();
     let used: Vec<i32> = teeth.iter().flatten().map(|t: &(i32, i32)| t.1).collect();
     let (first, last) = (*used.iter().min()?, *used.iter().max()?);
     let missing = f64::from(last - first + 1) - used.len() as f64;
+    // Two teeth with a gap between are twice or half of something else.
+    if missing > used.len() as f64 - 2.0 {
+        return None;
+    }
     for tooth in teeth.iter_mut().flatten() {
         tooth.1 -= first;
     }
@@ -216,28 +224,55 @@ fn lay(classes: &[Class], spacing: f64, tolerance: f64, fsr: f64) -> Option<Comb
     Some(Comb { spacing, teeth, score: on / all - 0.18 * missing - 0.02 * wide })
 }
 
+/// Neighbouring teeth, folded by the order, must stand this far apart, orders.
+const LEAST_FOLDED: f64 = 0.03;
+
+/// A comb's place and spacing, orders.
+#[derive(Debug, Clone, Copy)]
+struct Line {
+    origin: f64,
+    spacing: f64,
+}
+
+/// Weighted straight line through the teeth found: phase + order against tooth.
+fn improve(classes: &[Class], teeth: &[Option<(i32, i32)>], line: Line) -> Line {
+    let (mut s0, mut s1, mut s2, mut t0, mut t1) = (0.0, 0.0, 0.0, 0.0, 0.0);
+    for (class, tooth) in classes.iter().zip(teeth) {
+        let Some((order, tooth)) = tooth else { continue };
+        let (m, at, w) = (f64::from(*tooth), class.phase + f64::from(*order), class.height);
+        s0 += w;
+        s1 += w * m;
+        s2 += w * m * m;
+        t0 += w * at;
+        t1 += w * m * at;
+    }
+    let determinant = s0 * s2 - s1 * s1;
+    if !(determinant > 1e-9 * s0 * s0) {
+        return line;
+    }
+    let spacing = (s0 * t1 - s1 * t0) / determinant;
+    if spacing > 0.0 { Line { origin: (s2 * t0 - s1 * t1) / determinant, spacing } } else { line }
+}
+
 /// Gives classes to teeth, strongest first; no tooth twice.
-fn assign(classes: &[Class], origin: usize, spacing: f64, tolerance: f64, most: i32) -> Vec<Option<(i32, i32)>> {
+fn assign(classes: &[Class], line: Line, tolerance: f64, most: i32) -> Vec<Option<(i32, i32)>> {
+    let spacing = line.spacing;
     let mut order_of: Vec<usize> = (0..classes.len()).collect();
     order_of.sort_by(|a, b| classes[*b].height.total_cmp(&classes[*a].height));
     let mut teeth: Vec<Option<(i32, i32)>> = vec![None; classes.len()];
     let (mut low, mut high) = (0, 0);
     for i in order_of {
-        if i == origin {
-            teeth[i] = Some((0, 0));
-            continue;
-        }
-        let d = classes[i].phase - classes[origin].phase;
+        let d = classes[i].phase - line.origin;
         let mut best: Option<(f64, i32, i32)> = None;
         for order in -3..=3 {
             let tooth = ((d + f64::from(order)) / spacing).round() as i32;
-            if tooth == 0 || tooth.abs() > most || (high.max(tooth) - low.min(tooth)) > most {
+            if tooth.abs() > most || (high.max(tooth) - low.min(tooth)) > most {
                 continue;
             }
             let off = (d + f64::from(order) - f64::from(tooth) * spacing).abs();
             let taken = teeth.iter().flatten().any(|t| t.1 == tooth);
             // Further teeth stand less surely: the spacing proposed has an error of its own.
-            let reach = tolerance * (1.0 + 0.25 * f64::from(tooth.abs() - 1));
+            let reach = tolerance * (1.0 + 0.25 * f64::from((tooth.abs() - 1).max(0)));
             // A tooth next to those placed is likelier than one far out that fits by chance.
             let gap = f64::from((tooth - high).max(low - tooth).max(1) - 1);
             let cost = off / tolerance + 1.5 * gap;

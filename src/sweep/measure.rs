@@ -6,7 +6,7 @@ use nalgebra::DMatrix;
 
 use super::{
     Measurement, Mode, Refusal, ScanAxis, Settings, Warning,
-    axis::{self, Choice, Placed},
+    axis::{self, AxisFit, Choice, Offsets, Placed},
     comb::{self, Class, Comb, Phased},
     detect::{self, Look, Seen},
     lines::{self, LineFit, Samples, Start},
@@ -22,9 +22,11 @@ use crate::{
 /// Fewest samples on a ramp that can be measured.
 const FEWEST_SAMPLES: usize = 100;
 /// An apparent finesse below this is fringes, not peaks.
-const LEAST_FINESSE: f64 = 4.0;
+const LEAST_FINESSE: f64 = 6.0;
 /// Share of the peaks' height that must be found again one order on.
 const LEAST_REPEAT: f64 = 0.55;
+/// Share of all fitted height that must stand on the comb; off-axis light up to half of every axial mode passes.
+const LEAST_COMB_SHARE: f64 = 0.64;
 /// A fitted line counts if its height exceeds this many of its own standard uncertainties (`measurement.md`: 5 σ).
 const LEAST_HEIGHT_SIGMA: f64 = 5.0;
 /// The pole must improve the sum of squares by this chi-square (1 parameter at far below 0.1 %) to be believed.
@@ -66,6 +68,9 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
     if look.peaks.is_empty() {
         result.dark = true;
         return Err(Refusal::Dark);
+    }
+    if look.peaks.len() > MOST_LINES {
+        return Err(Refusal::Clutter { count: look.peaks.len() });
     }
     let orders = repeat(&look, &segment, settings)?;
     let fitted = fit_lines(&segment, &look, &orders).ok_or(Refusal::NoFit)?;
@@ -115,6 +120,9 @@ fn repeat(look: &Look, segment: &Segment, settings: &Settings) -> Result<Orders,
     Ok(orders)
 }
 
+/// More lines than this on one ramp are clutter: no comb is that dense.
+const MOST_LINES: usize = 90;
+
 /// Lines as fitted, with and without the detector's pole.
 struct Fitted {
     fit: LineFit,
@@ -137,7 +145,10 @@ fn fit_lines(segment: &Segment, look: &Look, orders: &Orders) -> Option<Fitted> 
     let mut plain = lines::fit(&samples, &start)?;
     let mut fit = plain.clone();
     for round in 0..3 {
-        fit = with_pole(&samples, &start, &plain).unwrap_or_else(|| plain.clone());
+        let noise = segment.noise / (samples.bin as f64).sqrt();
+        // Where the plain lines leave nothing but noise there is no pole to be found.
+        let clean = plain.residual < 1.03 * noise;
+        fit = if clean { None } else { with_pole(&samples, &start, &plain) }.unwrap_or_else(|| plain.clone());
         if round == 2 {
             break;
         }
@@ -214,6 +225,50 @@ fn hidden(samples: &Samples, fit: &LineFit, look: &Look) -> Vec<Seen> {
         .collect()
 }
 
+/// Share of all fitted height, strays included, that stands on the comb.
+fn comb_share(classes: &[Class], comb: &Comb, good: &[usize], fit: &LineFit) -> f64 {
+    let all: f64 = good.iter().map(|i| fit.heights[*i]).sum();
+    let on: f64 = classes
+        .iter()
+        .zip(&comb.teeth)
+        .filter(|(_, tooth)| tooth.is_some())
+        .flat_map(|(class, _)| &class.members)
+        .map(|m| fit.heights[m.0])
+        .sum();
+    if all > 0.0 { on / all } else { 0.0 }
+}
+
+/// Median standard uncertainty of the centres, orders.
+fn typical_u(fit: &LineFit, peaks: &[usize], slope: impl Fn(f64) -> f64) -> f64 {
+    let mut all: Vec<f64> =
+        peaks.iter().map(|i| fit.centre_covariance[(*i, *i)].max(0.0).sqrt() * slope(fit.centres[*i])).collect();
+    all.sort_by(f64::total_cmp);
+    all.get(all.len() / 2).copied().unwrap_or(0.0)
+}
+
+/// Scan detuning against sample position, as far as it is known.
+enum Map {
+    Smooth(Orders),
+    Fitted(AxisFit),
+}
+
+impl Map {
+    fn detuning(&self, x: f64, half: f64, fsr: f64) -> f64 {
+        match self {
+            Self::Smooth(orders) => orders.phase(x) * fsr,
+            Self::Fitted(axis) => axis.at((x - half) / half),
+        }
+    }
+
+    /// Hz a sample.
+    fn slope(&self, x: f64, half: f64, fsr: f64) -> f64 {
+        match self {
+            Self::Smooth(orders) => fsr / orders.local_period(x),
+            Self::Fitted(axis) => axis.slope((x - half) / half) / half,
+        }
+    }
+}
+
 /// From fitted lines to classes, comb, axis and the result.
 fn assemble(
     segment: &Segment,
@@ -226,7 +281,6 @@ fn assemble(
     let fsr = settings.free_spectral_range;
     let length = segment.signal.len() as f64;
     let u_of = |x: f64| (x - length / 2.0) / (length / 2.0);
-    let width_phase = fit.width / orders.period;
     let good: Vec<usize> = (0..fit.centres.len())
         .filter(|i| {
             let (x, h) = (fit.centres[*i], fit.heights[*i]);
@@ -239,50 +293,90 @@ fn assemble(
             fit.centre_covariance[(i, j)] * slope(fit.centres[i]) * slope(fit.centres[j])
         })
     };
-    // First with the smooth order map, then with the axis it leads to: the second time the classes are sharp.
-    let mut phase: Box<dyn Fn(f64) -> f64> = Box::new(|x| orders.phase(x));
-    let mut tolerance = (0.6 * width_phase).clamp(0.008, 0.04);
-    let mut slope: Box<dyn Fn(f64) -> f64> = Box::new(|x| fsr / orders.local_period(x));
-    let mut outcome: Option<(Vec<Class>, Result<Comb, Refusal>, Option<(Vec<Placed>, Choice)>)> = None;
-    for round in 0..3 {
-        let phased: Vec<Phased> =
-            good.iter().map(|i| Phased { peak: *i, phase: phase(fit.centres[*i]), height: fit.heights[*i] }).collect();
-        let range = (phase(0.0), phase(length));
-        let mut classes = comb::classes(&phased, tolerance, range);
-        classes.retain(|c| !c.members.is_empty());
-        // What shows in one order but should in several does not repeat: it is left out, and said.
-        let repeats = |c: &Class| c.members.len() >= 2 || c.expected < 2;
-        let stray = classes.iter().filter(|c| !repeats(c)).count();
-        let kept: Vec<Class> = classes.into_iter().filter(repeats).collect();
-        let found = comb::find(&kept, tolerance.max(0.3 * width_phase), fsr, settings.nominal_spacing);
-        let teeth: Vec<Option<(i32, i32)>> = match &found {
-            Ok(comb) => comb.teeth.clone(),
-            // Without a comb the strongest class alone still gives a scale.
-            Err(_) => strongest_only(&kept),
-        };
-        let placed = place(&kept, &teeth, fit, &u_of);
-        let peaks: Vec<usize> = placed.iter().map(|p| p.peak).collect();
-        let several = placed.iter().any(|p| p.tooth != 0);
-        let choice = axis::choose(&placed, &covariance_of(&peaks, &*slope), fsr, several);
-        if round == 2 && stray > 0 {
-            result.warnings.push(Warning::Stray { count: stray });
+    let half = length / 2.0;
+    let apparent = fitted.apparent_width / orders.period;
+    let mut map = Map::Smooth(*orders);
+    let mut outcome = None;
+    let mut best_share = 0.0;
+    // Each round sharpens the axis: the smooth order map, then free offsets, then the comb.
+    for round in 0..4 {
+        let u_phase = typical_u(fit, &good, |x| map.slope(x, half, fsr) / fsr);
+        let tolerance = match round {
+            0 => (0.6 * apparent).clamp(0.015, 0.06),
+            _ => (0.4 * apparent).clamp(0.006, 0.04),
         }
+        .hypot((4.0 * u_phase).min(0.02));
+        let phased: Vec<Phased> = good
+            .iter()
+            .map(|i| Phased {
+                peak: *i,
+                phase: map.detuning(fit.centres[*i], half, fsr) / fsr,
+                height: fit.heights[*i],
+            })
+            .collect();
+        let range = (map.detuning(0.0, half, fsr) / fsr, map.detuning(length, half, fsr) / fsr);
+        let classes = comb::classes(&phased, tolerance, range);
+        // What shows in one order but should in several does not repeat: it is left out, and said.
+        let (kept, stray): (Vec<Class>, Vec<Class>) =
+            classes.into_iter().partition(|c| c.members.len() >= 2 || c.expected < 2);
+        let slope = |x: f64| map.slope(x, half, fsr);
+        if round == 0 {
+            let alone: Vec<Option<(i32, i32)>> = vec![Some((0, 0)); kept.len()];
+            let placed = place(&kept, &alone, fit, &u_of);
+            let peaks: Vec<usize> = placed.iter().map(|p| p.peak).collect();
+            let free = axis::choose(&placed, &covariance_of(&peaks, &slope), fsr, Offsets::Classes(kept.len()));
+            if let Some(choice) = free {
+                map = Map::Fitted(choice.fit);
+            }
+            continue;
+        }
+        // A tooth may be off by a part of the line's width and by what noise did to it.
+        let reach = (0.35 * apparent).clamp(0.006, 0.04).hypot((4.0 * u_phase).min(0.03));
+        let found = comb::find(&kept, reach, fsr, settings.nominal_spacing);
+        let Ok(comb) = &found else {
+            if outcome.is_some() {
+                break;
+            }
+            // Without a comb the free axis stands.
+            let placed = place(&kept, &vec![Some((0, 0)); kept.len()], fit, &u_of);
+            let peaks: Vec<usize> = placed.iter().map(|p| p.peak).collect();
+            let free = axis::choose(&placed, &covariance_of(&peaks, &slope), fsr, Offsets::Classes(kept.len()));
+            outcome = Some((kept, stray.len(), found, free.map(|choice| (placed, choice))));
+            break;
+        };
+        // A sharper axis must not lose light from the comb: if it does, what was found before stands.
+        let share = comb_share(&kept, comb, &good, fit);
+        if share < best_share - 0.02 {
+            break;
+        }
+        best_share = share;
+        let placed = place(&kept, &comb.teeth, fit, &u_of);
+        let peaks: Vec<usize> = placed.iter().map(|p| p.peak).collect();
+        let choice = axis::choose(&placed, &covariance_of(&peaks, &slope), fsr, Offsets::Comb);
         let next = choice.as_ref().map(|c| c.fit.clone());
-        outcome = Some((kept, found, choice.map(|c| (placed, c))));
-        let Some(axis) = next else { break };
-        let half = length / 2.0;
-        let axis2 = axis.clone();
-        phase = Box::new(move |x| axis.at((x - half) / half) / fsr);
-        slope = Box::new(move |x| axis2.slope((x - half) / half) / half);
-        tolerance = (0.35 * width_phase).clamp(0.004, 0.03);
+        outcome = Some((kept, stray.len(), found, choice.map(|c| (placed, c))));
+        match next {
+            Some(axis) => map = Map::Fitted(axis),
+            None => break,
+        }
     }
-    let (classes, found, solved) = outcome.ok_or(Refusal::WeakScale)?;
+    let (classes, n_stray, found, solved) = outcome.ok_or(Refusal::WeakScale)?;
+    if n_stray > 0 {
+        result.warnings.push(Warning::Stray { count: n_stray });
+    }
     let Some((placed, choice)) = solved else {
         return Err(match found {
             Err(refusal @ (Refusal::Ambiguous { .. } | Refusal::NoComb { .. })) => refusal,
             _ => Refusal::WeakScale,
         });
     };
+    if let Ok(comb) = &found {
+        let share = comb_share(&classes, comb, &good, fit);
+        let n_on = comb.teeth.iter().flatten().count();
+        if share < LEAST_COMB_SHARE || classes.len() > 2 * n_on + 1 {
+            return Err(Refusal::NoComb { share });
+        }
+    }
     let seen_orders: std::collections::BTreeSet<i32> =
         classes.iter().flat_map(|c| c.members.iter().map(|m| m.1)).collect();
     result.order_count = seen_orders.len() as u32;
@@ -305,11 +399,17 @@ fn strongest_only(classes: &[Class]) -> Vec<Option<(i32, i32)>> {
 
 fn place(classes: &[Class], teeth: &[Option<(i32, i32)>], fit: &LineFit, u_of: &dyn Fn(f64) -> f64) -> Vec<Placed> {
     let mut placed = Vec::new();
-    for (class, tooth) in classes.iter().zip(teeth) {
+    for (index, (class, tooth)) in classes.iter().zip(teeth).enumerate() {
         let Some((order, tooth)) = tooth else { continue };
         for (peak, own) in &class.members {
             // ν = own·FSR + class phase; class phase + order·FSR = tooth·Δν + const.
-            placed.push(Placed { peak: *peak, u: u_of(fit.centres[*peak]), order: own - order, tooth: *tooth });
+            placed.push(Placed {
+                peak: *peak,
+                u: u_of(fit.centres[*peak]),
+                order: own - order,
+                tooth: *tooth,
+                class: index,
+            });
         }
     }
     placed.sort_by(|a, b| a.u.total_cmp(&b.u));

@@ -73,7 +73,7 @@ pub(super) fn find(peaks: &[Seen], n_samples: usize, width: f64, spacing_over_fs
                 let bend = f64::from(step) * BEND_STEP;
                 let here = 1.0 + bend * ((a.x + b.x) / 2.0 - middle) / length;
                 let mut orders = Orders { period: distance / here, bend, middle, length, score: 0.0 };
-                let tolerance = (0.7 * width / orders.period).clamp(0.012, 0.08);
+                let tolerance = (0.7 * width / orders.period).clamp(0.025, 0.08);
                 let score = score(peaks, &orders, tolerance) - penalty(&orders);
                 orders.score = score;
                 best.push((score, orders));
@@ -84,12 +84,12 @@ pub(super) fn find(peaks: &[Seen], n_samples: usize, width: f64, spacing_over_fs
     best.truncate(12);
     let mut improved: Vec<Orders> = Vec::new();
     for (_, orders) in best {
-        let tolerance = (0.7 * width / orders.period).clamp(0.012, 0.08);
+        let tolerance = (0.7 * width / orders.period).clamp(0.025, 0.08);
         let mut refined = orders;
         for _ in 0..3 {
             refined = refine(peaks, refined, tolerance).unwrap_or(refined);
         }
-        let sharp = (0.5 * width / refined.period).clamp(0.008, 0.08);
+        let sharp = (0.5 * width / refined.period).clamp(0.018, 0.08);
         let plain = score(peaks, &refined, sharp);
         let bonus = spacing_over_fsr.map_or(0.0, |ratio| 0.15 * comb_share(peaks, &refined, ratio, width));
         refined.score = plain;
@@ -98,7 +98,7 @@ pub(super) fn find(peaks: &[Seen], n_samples: usize, width: f64, spacing_over_fs
         improved[last].score = plain + bonus - penalty(&refined);
     }
     let winner = improved.into_iter().max_by(|a, b| a.score.total_cmp(&b.score))?;
-    let sharp = (0.5 * width / winner.period).clamp(0.008, 0.08);
+    let sharp = (0.5 * width / winner.period).clamp(0.018, 0.08);
     let plain = score(peaks, &winner, sharp);
     (plain > 0.0).then_some(Orders { score: plain, ..winner })
 }

@@ -14,6 +14,11 @@ pub enum Refusal {
     },
     /// Nothing stands above the noise.
     Dark,
+    /// More peaks than any comb has.
+    Clutter {
+        /// Peaks on one ramp.
+        count: usize,
+    },
     /// Broad fringes, no peaks.
     Fringes {
         /// Width of the bumps over their distance.
@@ -57,9 +62,13 @@ impl fmt::Display for Refusal {
             Self::Dark => {
                 write!(f, "no peak stands above the noise: is the tube lit and the beam on the interferometer?")
             }
+            Self::Clutter { count } => write!(
+                f,
+                "clutter: {count} peaks on one ramp, more than any comb has; realign the interferometer, or reduce the ramp"
+            ),
             Self::Fringes { share } => write!(
                 f,
-                "broad fringes, no peaks: the bumps are {:.0} % as wide as their distance; a finesse of 5 or more is needed",
+                "broad fringes, no peaks: the bumps are {:.0} % as wide as their distance; a finesse of 6 or more is needed",
                 share * 100.0
             ),
             Self::OneOrder => write!(

@@ -3,12 +3,12 @@
 //! Main type: [`Inputs`].
 
 use std::fmt::Display;
-use std::path::{Path, PathBuf};
+use std::path::Path;
 
 use chrono::{DateTime, FixedOffset};
 
 use super::{Arguments, Format};
-use crate::cli::{Ending, Failure};
+use crate::cli::{Ending, Failure, home};
 use crate::disk::{Home, Store, demo_bench};
 use crate::instruments::CaptureFolder;
 use crate::phantom::Scenario;
@@ -45,7 +45,7 @@ pub(super) struct Inputs {
 impl Inputs {
     /// Reads and parses what the arguments name.
     pub fn read(arguments: Arguments) -> Result<Self, Failure> {
-        let home = find_home(arguments.home, arguments.reports)?;
+        let home = home::find(arguments.home, arguments.reports)?;
         let scenario = arguments.scenario.as_deref().map(read_scenario).transpose()?;
         let (name, text) = match &arguments.station {
             Some(path) => (path.display().to_string(), read_text(path)?),
@@ -93,13 +93,6 @@ impl Inputs {
     pub fn simulated(&self) -> bool {
         self.scenario.is_some()
     }
-}
-
-fn find_home(named: Option<PathBuf>, reports: Option<PathBuf>) -> Result<Home, Failure> {
-    let named = named.or_else(|| std::env::var_os("TUBEWRIGHT_HOME").filter(|home| !home.is_empty()).map(Into::into));
-    let current = std::env::current_dir()
-        .map_err(|error| Failure::new(Ending::Store, format!("cannot tell the current folder: {error}")))?;
-    Ok(Home::find(named, reports, &current))
 }
 
 /// The compiled-in station file of the bench on which the scenario has this tube.

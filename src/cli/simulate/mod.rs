@@ -2,6 +2,8 @@
 //! Must not measure anything, nor write over a file.
 //! Main types: [`SimulateArgs`], [`SimulateError`].
 
+mod truth;
+
 use std::{
     fs::{self, OpenOptions},
     io::{self, Write},
@@ -10,11 +12,11 @@ use std::{
 
 use chrono::{DateTime, FixedOffset, TimeDelta};
 use clap::Args;
-use serde::Serialize;
+use truth::{shot, truth_json};
 
 use crate::{
     instruments::{CaptureHead, simulated_capture_name, simulated_csv},
-    phantom::{Axis, BenchTruth, Incident, Scenario, Setting, TubeTruth, World},
+    phantom::{BenchTruth, Incident, Scenario, Setting, TubeTruth, World},
     quantity::{Dimension, parse_as},
 };
 
@@ -242,95 +244,6 @@ fn write_new(path: &Path, bytes: &[u8]) -> Result<(), SimulateError> {
     })
 }
 
-/// What is true, as it is written beside the captures. SI.
-#[derive(Serialize)]
-struct TruthFile {
-    note: &'static str,
-    tube_type: String,
-    seed: u64,
-    mode_spacing_hz: f64,
-    mirror_spacing_m: f64,
-    gain_ratio: f64,
-    lasing_span_hz: f64,
-    power_w: f64,
-    warmup_tau_s: f64,
-    walk_cycles: f64,
-    off_axis_ratio: f64,
-    free_spectral_range_hz: f64,
-    finesse: f64,
-    noise: f64,
-    hops: Vec<(f64, f64)>,
-    swaps_s: Vec<f64>,
-    captures: Vec<Shot>,
-}
-
-#[derive(Serialize)]
-struct Shot {
-    capture: String,
-    since_first_light_s: f64,
-    lost: bool,
-    /// Place of the comb in mode spacings, falling while the tube warms.
-    comb_place: f64,
-    modes: Vec<ShotMode>,
-}
-
-#[derive(Serialize)]
-struct ShotMode {
-    number: i64,
-    detuning_hz: f64,
-    power_w: f64,
-    across: bool,
-}
-
-fn shot(world: &World, name: &str, at_ms: i64, lost: bool) -> Shot {
-    let seconds = at_ms as f64 / 1e3;
-    let mode = |mode: &crate::phantom::Mode| ShotMode {
-        number: mode.number,
-        detuning_hz: mode.detuning,
-        power_w: mode.power,
-        across: mode.axis == Axis::Across,
-    };
-    Shot {
-        capture: name.to_owned(),
-        since_first_light_s: seconds,
-        lost,
-        comb_place: world.comb().place(world.tube(), seconds),
-        modes: world.modes(at_ms).iter().map(mode).collect(),
-    }
-}
-
-fn truth_json(args: &SimulateArgs, world: &World, captures: Vec<Shot>) -> Vec<u8> {
-    let (tube, bench, comb) = (world.tube(), world.bench(), world.comb());
-    let hops = tube
-        .incidents
-        .iter()
-        .filter_map(|i| if let Incident::Hop { at, size } = i { Some((*at, *size)) } else { None });
-    let swaps = tube.incidents.iter().filter_map(|i| if let Incident::Swap { at } = i { Some(*at) } else { None });
-    let truth = TruthFile {
-        note: "Simulated bench: not a measurement of a tube",
-        tube_type: args.tube_type.clone(),
-        seed: args.seed,
-        mode_spacing_hz: comb.mode_spacing(),
-        mirror_spacing_m: tube.mirror_spacing,
-        gain_ratio: tube.gain_ratio,
-        lasing_span_hz: 2.0 * comb.line().half_range(),
-        power_w: tube.power,
-        warmup_tau_s: tube.warmup_tau,
-        walk_cycles: tube.walk_cycles,
-        off_axis_ratio: tube.off_axis_share,
-        free_spectral_range_hz: bench.free_spectral_range,
-        finesse: bench.finesse,
-        noise: bench.noise,
-        hops: hops.collect(),
-        swaps_s: swaps.collect(),
-        captures,
-    };
-    // Numbers, texts and lists only, every number finite: this form cannot fail.
-    let mut bytes = serde_json::to_vec_pretty(&truth).unwrap_or_default();
-    bytes.push(b'\n');
-    bytes
-}
-
 fn quantity(text: &str, dimension: Dimension) -> Result<f64, String> {
     parse_as(text, dimension).map_err(|error| error.to_string())
 }
@@ -361,71 +274,4 @@ fn hop(text: &str) -> Result<Incident, String> {
 }
 
 #[cfg(test)]
-mod tests {
-    #![allow(clippy::unwrap_used)]
-    use clap::Parser;
-
-    use super::*;
-
-    #[derive(Parser)]
-    struct Program {
-        #[command(flatten)]
-        args: SimulateArgs,
-    }
-
-    fn args(folder: &Path, more: &[&str]) -> SimulateArgs {
-        let folder = folder.to_str().unwrap();
-        Program::try_parse_from(["simulate", folder].iter().chain(more)).unwrap().args
-    }
-
-    fn listing(folder: &Path) -> Vec<(String, Vec<u8>)> {
-        let mut files: Vec<_> = fs::read_dir(folder)
-            .unwrap()
-            .map(|entry| entry.unwrap())
-            .map(|entry| (entry.file_name().into_string().unwrap(), fs::read(entry.path()).unwrap()))
-            .collect();
-        files.sort();
-        files
-    }
-
-    #[test]
-    fn the_same_seed_gives_the_same_bytes() {
-        let home = tempfile::tempdir().unwrap();
-        let write = |name: &str, seed: &str| {
-            let folder = home.path().join(name);
-            run(&args(&folder, &["--captures", "3", "--seed", seed, "--hop", "600ms=50MHz"])).unwrap();
-            listing(&folder)
-        };
-        let first = write("a", "7");
-        assert_eq!(first.len(), 4);
-        assert!(first == write("b", "7"));
-        assert!(first != write("c", "8"));
-    }
-
-    #[test]
-    fn nothing_is_written_over() {
-        let home = tempfile::tempdir().unwrap();
-        fs::write(home.path().join("c00001.csv"), "mine").unwrap();
-        let refused = run(&args(home.path(), &["--captures", "3"]));
-        assert!(matches!(refused, Err(SimulateError::InTheWay(path)) if path.ends_with("c00001.csv")));
-        assert_eq!(listing(home.path()), [("c00001.csv".to_owned(), b"mine".to_vec())]);
-    }
-
-    #[test]
-    fn a_lost_capture_is_missing_and_the_truth_says_so() {
-        let home = tempfile::tempdir().unwrap();
-        let made = run(&args(home.path(), &["--captures", "4", "--lose", "600ms", "--type", "twin-150"])).unwrap();
-        assert_eq!(made, Simulated { written: 3, lost: 1 });
-        let names: Vec<String> = listing(home.path()).into_iter().map(|(name, _)| name).collect();
-        assert_eq!(names, ["c00000.csv", "c00001.csv", "c00003.csv", "truth.json"]);
-    }
-
-    #[test]
-    fn impossible_numbers_are_refused_by_name() {
-        let home = tempfile::tempdir().unwrap();
-        let folder = home.path().join("new");
-        let refused = run(&args(&folder, &["--finesse", "1"])).unwrap_err().to_string();
-        assert!(refused.starts_with("`--finesse` is 1 in SI units; expected 2 or more"), "{refused}");
-        assert!(!folder.exists());
-    }
-}
+mod tests;
