@@ -1,1 +1,3 @@
 //! Placeholder of the ground: see `DEVELOPERS.md`.
+
+pub mod check;

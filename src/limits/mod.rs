@@ -3,6 +3,7 @@
 //! Main types: [`Limits`], [`Fault`]; main function: [`judge`].
 
 mod conformance;
+mod decide;
 mod fault;
 mod judge;
 mod parse;
@@ -13,7 +14,7 @@ use std::fmt;
 
 pub use conformance::{conformance_probability, zone};
 pub use fault::{Fault, nearest};
-pub use judge::{Judging, judge};
+pub use judge::{DARK, Judging, judge};
 
 /// A limits file.
 #[derive(Debug, Clone, PartialEq)]

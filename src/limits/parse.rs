@@ -109,7 +109,7 @@ fn limit(
         None => None,
     };
     let outside = table.get("outside").map_or(Some(Outside::Fail), |item| item.word(OUTSIDE));
-    let holds = table.get("outside").is_some_and(|item| item.written().contains("hold"));
+    let holds = table.get("outside").is_some_and(|item| item.written() != "\"fail\"");
     let severity = match table.get("severity") {
         Some(item) => item.word(SEVERITIES),
         // What only holds fails nothing, so that its severity has no say.
@@ -167,7 +167,7 @@ fn bound(item: &Item<'_>, measurand: &Measurand, grades: Option<&[String]>) -> O
         if grades.is_some_and(|grades| !grades.contains(&item.name)) {
             let known = grades.unwrap_or_default();
             let message = format!("unknown grade `{}`; expected one of {}", item.name, known.join(", "));
-            item.fault(message, nearest(&item.name, known.iter().map(String::as_str)));
+            item.key_fault(message, nearest(&item.name, known.iter().map(String::as_str)));
             continue;
         }
         let value = one_bound(&item, measurand);

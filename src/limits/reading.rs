@@ -2,7 +2,7 @@
 //! Must not know what any key means: `limits`, `recipe` and `station` say that.
 //! Main types: [`Table`], [`Item`]; main function: [`read`].
 
-use std::{cell::RefCell, ops::Range};
+use std::cell::RefCell;
 
 use chrono::NaiveDate;
 use sha2::{Digest, Sha256};
@@ -65,6 +65,12 @@ pub fn read<T>(
     }
 }
 
+/// The keys of a text's top level, as far as its syntax lets them be seen.
+pub fn top_keys(text: &str) -> Vec<String> {
+    let (tree, _) = DeTable::parse_recoverable(text);
+    tree.get_ref().keys().map(|key| key.get_ref().to_string()).collect()
+}
+
 /// SHA-256 of a text, hexadecimal.
 pub fn sha256_hex(text: &str) -> String {
     Sha256::digest(text.as_bytes()).iter().map(|byte| format!("{byte:02x}")).collect()
@@ -102,8 +108,8 @@ impl<'a> Table<'a> {
 
     /// The value of a key, if the key is there.
     pub fn get(&self, key: &str) -> Option<Item<'a>> {
-        let (_, value) = self.entries.get_key_value(key)?;
-        Some(Item { name: key.to_owned(), value, collector: self.collector })
+        let (spanned, value) = self.entries.get_key_value(key)?;
+        Some(Item { name: key.to_owned(), key_at: spanned.span().start, value, collector: self.collector })
     }
 
     /// The value of a key; its absence is a fault.
@@ -121,8 +127,8 @@ impl<'a> Table<'a> {
             .entries
             .iter()
             .map(|(key, value)| {
-                let name = key.get_ref().to_string();
-                (key.span().start, Item { name, value, collector: self.collector })
+                let (name, key_at) = (key.get_ref().to_string(), key.span().start);
+                (key_at, Item { name, key_at, value, collector: self.collector })
             })
             .collect();
         all.sort_by_key(|(at, _)| *at);
@@ -144,19 +150,20 @@ impl<'a> Table<'a> {
 pub struct Item<'a> {
     /// Key it stands under.
     pub name: String,
+    key_at: usize,
     value: &'a Spanned<DeValue<'a>>,
     collector: &'a Collector<'a>,
 }
 
 impl<'a> Item<'a> {
-    /// Where it stands, for telling the order.
-    pub fn span(&self) -> Range<usize> {
-        self.value.span()
-    }
-
     /// Reports a fault at the value.
     pub fn fault(&self, message: impl Into<String>, nearest: Option<&str>) {
         self.collector.add(self.value.span().start, message.into(), nearest);
+    }
+
+    /// Reports a fault at the key.
+    pub fn key_fault(&self, message: impl Into<String>, nearest: Option<&str>) {
+        self.collector.add(self.key_at, message.into(), nearest);
     }
 
     /// The value as it is written, shortened.
@@ -250,7 +257,7 @@ impl<'a> Item<'a> {
                 None => return self.wrong("a finite number"),
             }
         } else if self.plain_number().is_some() {
-            let example = crate::quantity::units_of(dimension).last().map_or("", |unit| unit.symbol);
+            let example = crate::quantity::units_of(dimension).next().map_or("", |unit| unit.symbol);
             let name = dimension.name();
             return self.wrong(&format!("{name} in quotes with its unit, such as \"{} {example}\"", self.written()));
         } else {
@@ -285,7 +292,7 @@ impl<'a> Item<'a> {
     /// A list.
     pub fn list(&self) -> Option<Vec<Item<'a>>> {
         let Some(list) = self.value.get_ref().as_array() else { return self.wrong("a list") };
-        let item = |value| Item { name: self.name.clone(), value, collector: self.collector };
+        let item = |value| Item { name: self.name.clone(), key_at: self.key_at, value, collector: self.collector };
         Some(list.iter().map(item).collect())
     }
 

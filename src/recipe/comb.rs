@@ -16,6 +16,6 @@ impl Comb {
     pub(super) const FILLS: &[&str] = &["mode_count_min", "mode_count_max", "off_axis_ratio"];
 
     pub(super) fn read(context: &Context<'_, '_>) -> Option<Self> {
-        Some(Self { from: context.need_from(&["dwell", "sweep", "unknown"])? })
+        Some(Self { from: context.need_from(&["dwell", "sweep"])? })
     }
 }

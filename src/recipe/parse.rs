@@ -15,6 +15,9 @@ const TOP: &[&str] = &["revision", "nominal_spacing", "wavelength", "mode_floor"
 /// Kinds of a later version: known words, not yet steps.
 const LATER: &[&str] = &["envelope", "noise", "beam"];
 
+/// Stands for the kind of a step whose kind could not be read.
+const UNREAD: &str = "";
+
 type Build = fn(&Context<'_, '_>) -> Option<StepKind>;
 
 /// The kinds: word, keys beside `name` and `do`, reader.
@@ -53,7 +56,7 @@ impl<'a> Context<'a, '_> {
     pub fn from(&self, kinds: &[&str]) -> Option<Option<String>> {
         let item = self.table.get("from")?;
         let Some(name) = item.text() else { return Some(None) };
-        let fits = |kind: &str| kinds.contains(&kind);
+        let fits = |kind: &str| kind == UNREAD || kinds.contains(&kind);
         let expected = kinds.join(" or ");
         match self.before.iter().find(|(before, _)| before == name) {
             Some((_, kind)) if fits(kind) => return Some(Some(name.to_owned())),
@@ -118,7 +121,7 @@ fn step(item: &Item<'_>, number: usize, before: &mut Vec<(String, &'static str)>
     }
     let Some((word, keys, build)) = kind else {
         // A kind misspelt must not turn every `from` that names the step into a fault as well.
-        before.extend(name.map(|name| (name, "unknown")));
+        before.extend(name.map(|name| (name, UNREAD)));
         return None;
     };
     let known: Vec<&str> = ["name", "do"].into_iter().chain(keys.iter().copied()).collect();

@@ -16,6 +16,6 @@ impl Power {
     pub(super) const FILLS: &[&str] = &["power", "power_ripple", "power_drift"];
 
     pub(super) fn read(context: &Context<'_, '_>) -> Option<Self> {
-        Some(Self { from: context.need_from(&["dwell", "sweep", "unknown"])? })
+        Some(Self { from: context.need_from(&["dwell", "sweep"])? })
     }
 }

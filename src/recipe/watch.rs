@@ -20,7 +20,7 @@ impl Watch {
     pub(super) const FILLS: &[&str] = &["hop_count", "swap_count", "cycles_watched"];
 
     pub(super) fn read(context: &Context<'_, '_>) -> Option<Self> {
-        let from = context.from(&["dwell", "unknown"]);
+        let from = context.from(&["dwell"]);
         let for_s = context.or("for", None, |item| item.positive(crate::quantity::Dimension::Time).map(Some));
         match (context.table.get("from"), context.table.get("for")) {
             (Some(_), Some(item)) => item.fault("`for` stands beside `from`; expected only one of them", None),

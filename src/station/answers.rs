@@ -214,3 +214,67 @@ fn written(item: &Item<'_>) -> Option<Written> {
     }
     item.whole(0, u64::from(u32::MAX)).map(Written::Whole)
 }
+
+#[cfg(test)]
+mod tests {
+    #![allow(clippy::unwrap_used)]
+    use super::*;
+
+    const TEXT: &str = r#"
+technician = "KT"
+tube_type = "twin-150"
+time_to_answer = "4 s"
+[steps.strike]
+start_delay = "0.6 s"
+tries = 1
+start_voltage = { cannot_say = "no high-voltage probe" }
+done = true
+[steps.output_mirror]
+choise = "clean"
+"#;
+
+    fn ask(step: &str, word: &str, expects: Expects) -> Result<Answer, String> {
+        let question = Question {
+            step: step.to_owned(),
+            word: word.to_owned(),
+            text: "What is it".to_owned(),
+            expects,
+            high_voltage: false,
+        };
+        Answers::parse("answers.toml", TEXT).unwrap().answer(&question).map_err(|trouble| trouble.to_string())
+    }
+
+    fn time(highest: f64) -> Expects {
+        Expects::Number { ucum: "s".to_owned(), lowest: 0.0, highest }
+    }
+
+    #[test]
+    fn answers_what_is_asked() {
+        let answers = Answers::parse("answers.toml", TEXT).unwrap();
+        assert_eq!((answers.technician.as_deref(), answers.time_to_answer_s), (Some("KT"), 4.0));
+        assert_eq!(answers.keys().count(), 5);
+        assert_eq!(ask("strike", "start_delay", time(10.0)), Ok(Answer::Number(0.6)));
+        assert_eq!(ask("strike", "tries", Expects::Whole { lowest: 1, highest: 3 }), Ok(Answer::Whole(1)));
+        assert_eq!(ask("strike", "done", Expects::Done), Ok(Answer::Done));
+        let volts = Expects::Number { ucum: "kV".to_owned(), lowest: 0.0, highest: 2e4 };
+        let cannot = Answer::CannotSay("no high-voltage probe".to_owned());
+        assert_eq!(ask("strike", "start_voltage", volts), Ok(cannot));
+    }
+
+    #[test]
+    fn says_which_line_is_missing_or_wrong() {
+        let choice = Expects::Choice(vec!["clean".to_owned(), "film".to_owned()]);
+        assert_eq!(
+            ask("output_mirror", "choice", choice).unwrap_err(),
+            "answers.toml has no answer to `What is it`; expected `choice = …` below [steps.output_mirror] \
+             (nearest word there: choise)"
+        );
+        assert_eq!(
+            ask("strike", "start_delay", time(0.5)).unwrap_err(),
+            "answers.toml: `start_delay = \"0.6 s\"` below [steps.strike] is no answer; \
+             expected a number in quotes from 0 to 0.5 s"
+        );
+        assert!(ask("strike", "tries", Expects::Done).is_err());
+        assert!(ask("nowhere", "done", Expects::Done).is_err());
+    }
+}
