@@ -21,49 +21,51 @@ const SETS: [Set; 6] = [
         file: include_str!("../fixtures/strd/gauss1.toml"),
         curve: two_gaussians,
         parameter_digits: 10.0,
-        deviation_digits: 9.0,
+        deviation_digits: 10.0,
     },
     Set {
         name: "Gauss2",
         file: include_str!("../fixtures/strd/gauss2.toml"),
         curve: two_gaussians,
         parameter_digits: 10.0,
-        deviation_digits: 9.0,
+        deviation_digits: 10.0,
     },
     Set {
         name: "Gauss3",
         file: include_str!("../fixtures/strd/gauss3.toml"),
         curve: two_gaussians,
         parameter_digits: 10.0,
-        deviation_digits: 9.0,
+        deviation_digits: 10.0,
     },
     Set {
         name: "Lanczos3",
         file: include_str!("../fixtures/strd/lanczos3.toml"),
         curve: three_decays,
-        parameter_digits: 9.0,
-        deviation_digits: 9.0,
+        parameter_digits: 10.0,
+        deviation_digits: 10.0,
     },
     Set {
         name: "BoxBOD",
         file: include_str!("../fixtures/strd/boxbod.toml"),
         curve: saturation,
         parameter_digits: 10.0,
-        deviation_digits: 9.0,
+        deviation_digits: 10.0,
     },
     Set {
         name: "MGH09",
         file: include_str!("../fixtures/strd/mgh09.toml"),
         curve: rational,
-        parameter_digits: 9.0,
-        deviation_digits: 9.0,
+        parameter_digits: 10.0,
+        deviation_digits: 10.0,
     },
 ];
 
-/// The sum of squares hardly depends on the last digits of the parameters.
-const SUM_DIGITS: f64 = 9.0;
+/// The certified values are rounded to 11 digits, which for a leading digit 1 leaves 10.3 that can agree: so 10 is
+/// required everywhere.
+const SUM_DIGITS: f64 = 10.0;
 
-/// Formulas are compared with central differences to this fraction of the largest entry of a column; differences leave about 1e-9.
+/// Formulas are compared with central differences to this fraction of the largest entry of a column; differences
+/// leave about 1e-9.
 const DERIVATIVE_TOLERANCE: f64 = 1e-6;
 
 fn two_gaussians(x: f64, b: &[f64], dy: &mut [f64]) -> f64 {

@@ -84,6 +84,8 @@ pub(crate) struct Decay {
     /// Covariance of (C, A, τ[, A_f, τ_f]) as stated by the weights, by row.
     covariance: Vec<f64>,
     columns: usize,
+    /// Standard uncertainty of τ from the form of the model, s: how far τ moves without the first fifth of the points.
+    pub u_form: f64,
     /// Factor on every variance: reduced chi-square above 1, times the correlation between neighbouring residuals.
     pub inflation: f64,
     /// Degrees of freedom.
@@ -138,7 +140,8 @@ impl Decay {
             .collect();
         around.push(best.clone());
         let t95 = StudentsT::new(0.0, 1.0, dof).map_or(1.645, |t| t.inverse_cdf(0.95));
-        Some(Self { best, around, covariance, columns, inflation, dof, t95 })
+        let u_form = form_error(&best, bins, grid);
+        Some(Self { best, around, covariance, columns, u_form, inflation, dof, t95 })
     }
 
     /// Time constant of the slow part, s.
@@ -194,10 +197,13 @@ impl Decay {
     }
 
     /// Upper bound of that walk at one-sided 95 %: the greatest value among all (A, τ) whose sum of squares lies within t² of
-    /// the least (profile likelihood), so that a τ known badly to one side is not hidden by a tangent.
+    /// the least (profile likelihood), so that a τ known badly to one side is not hidden by a tangent; the form of the model
+    /// adds its share.
     pub fn residual_upper(&self, at: f64, horizon: f64) -> f64 {
         let allowed = self.t95().powi(2) * self.inflation;
-        self.around
+        let expected = self.residual(at, horizon);
+        let upper = self
+            .around
             .iter()
             .filter_map(|trial| {
                 let excess = trial.fit.sum_of_squares - self.best.fit.sum_of_squares;
@@ -208,7 +214,11 @@ impl Decay {
                 let u_amplitude = trial.fit.standard_error_from_weights(1)?;
                 Some(value + (allowed - excess.max(0.0)).sqrt() * u_amplitude * slope)
             })
-            .fold(self.residual(at, horizon), f64::max)
+            .fold(expected, f64::max);
+        // d/dτ of exp(−t/τ)·(1 − exp(−h/τ)), by its logarithm.
+        let tau = self.best.tau;
+        let by_tau = expected * (at - horizon / (horizon / tau).exp_m1()) / (tau * tau);
+        expected + (upper - expected).hypot(self.t95 * by_tau * self.u_form)
     }
 
     /// One-sided 95 % point of Student's t for this fit.
@@ -353,6 +363,19 @@ fn tangent(best: &Trial, bins: &[Bin]) -> Option<(Vec<f64>, usize)> {
     })?;
     let columns = if best.fast_tau.is_some() { 5 } else { 3 };
     Some((fit.covariance, columns))
+}
+
+/// Shift of τ when the first fifth of the bins is left out, as a standard uncertainty (limits of a rectangle).
+///
+/// A walk that is not quite of the form fitted gives another τ there; noise does too, so the shift is never too small.
+fn form_error(best: &Trial, bins: &[Bin], grid: &[f64]) -> f64 {
+    let late = &bins[bins.len() / 5..];
+    let again = match best.fast_tau {
+        // The fast part is over by then, or nearly: its time constant is kept.
+        Some(fast) => minimize(grid, 16, |tau| trial(late, tau, Some(fast).filter(|f| *f < 0.9 * tau))),
+        None => minimize(grid, 16, |tau| trial(late, tau, None)),
+    };
+    again.map_or(0.0, |again| (again.tau - best.tau).abs() / 3f64.sqrt())
 }
 
 /// (1 + ρ)/(1 − ρ) with ρ the correlation of neighbouring weighted residuals, within [0, 0.95].

@@ -48,8 +48,8 @@ impl GlimpseMode {
         self.position.is_finite()
             && self.u_position.is_finite()
             && self.u_position >= 0.0
-            && self.height.is_finite()
-            && self.height > 0.0
+            && self.total_height().is_finite()
+            && self.total_height() > 0.0
     }
 }
 

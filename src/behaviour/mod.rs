@@ -2,13 +2,24 @@
 //! Must not read a clock or do I/O: everything is a function of the glimpses taken.
 //! Main types: [`Glimpse`], [`Warmup`], [`Watched`], [`Counts`], [`CyclePower`].
 
+mod counts;
 mod decay;
 mod glimpse;
 mod jumps;
+mod line;
+mod power;
+mod swaps;
 #[cfg(test)]
 mod synthetic;
 mod track;
 mod warmup;
+mod watch;
 
+pub use counts::{Counts, GainPoint, count_modes, gain_points};
 pub use glimpse::{Glimpse, GlimpseMode};
+pub use power::{CyclePower, cycle_power, power_drift};
 pub use warmup::{Warmup, WarmupSettings, WarmupState};
+pub use watch::{Hop, Swap, Watched, watch};
+
+#[cfg(test)]
+mod fixture_tests;

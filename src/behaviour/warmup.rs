@@ -151,7 +151,15 @@ impl Warmup {
                 BudgetLine::direct("scatter", "scatter of the walk about its fit", Evaluation::TypeA, u, decay.dof),
             )
         };
-        state.tau = Some(scatter(decay.tau(), decay.u_tau()));
+        let mut tau = scatter(decay.tau(), decay.u_tau());
+        tau.budget.push(BudgetLine::direct(
+            "form",
+            "form of the walk: without its first fifth",
+            Evaluation::TypeB,
+            decay.u_form,
+            f64::INFINITY,
+        ));
+        state.tau = Some(tau);
         state.n_infinity = Some(scatter(decay.n_infinity(), decay.u_n_infinity()));
         state.fast_part = decay.fast_part();
         let (rate, u_rate) = decay.rate(now);

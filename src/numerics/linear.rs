@@ -29,7 +29,8 @@ impl LinearFit {
         Some((self.unscaled_variance(index)? * self.reduced_chi_square()?).sqrt())
     }
 
-    /// Standard error of coefficient `index` that follows from the weights alone (they must be 1/u); `None` for an index out of range.
+    /// Standard error of coefficient `index` that follows from the weights alone (they must be 1/u); `None` for an
+    /// index out of range.
     pub fn standard_error_from_weights(&self, index: usize) -> Option<f64> {
         Some(self.unscaled_variance(index)?.sqrt())
     }
@@ -45,7 +46,7 @@ impl LinearFit {
 pub enum LinearError {
     /// The lengths do not belong together.
     #[error(
-        "linear fit: design has {design} values for {rows} rows and {weights} weights; expected rows × columns and one weight per row"
+        "linear fit: {design} design values, {rows} rows, {weights} weights; expected rows × columns values, a weight per row"
     )]
     Lengths {
         /// Values in the design.
@@ -77,14 +78,18 @@ pub enum LinearError {
 ///
 /// * `design`: row-major, `rhs.len()` rows × n columns; n follows from the lengths.
 /// * `rhs`: the observations yᵢ.
-/// * `weights`: one per row; they multiply the residual, so they are **1/u, not 1/u²**. A row of weight 0 does not count.
+/// * `weights`: one per row; they multiply the residual, so they are **1/u, not 1/u²**. A row of weight 0 does not
+///   count.
 ///
 /// # Errors
-/// [`LinearError`] for lengths that do not belong together, values that are not finite, too few rows, or dependent columns.
+/// [`LinearError`] for lengths that do not belong together, values that are not finite, too few rows, or dependent
+/// columns.
 ///
 /// # Method
 /// 1. Multiply each row by its weight. 2. Householder QR of `[A | −y]`. 3. Back substitution; `(AᵀW²A)⁻¹ = R⁻¹R⁻ᵀ`.
-/// Source: orthogonal factorization for least squares, common practice (Golub & Van Loan, *Matrix Computations*, chapter 5; from memory).
+///
+/// Source: orthogonal factorization for least squares, common practice (Golub & Van Loan, *Matrix Computations*,
+/// chapter 5; from memory).
 ///
 /// ```
 /// use tubewright::numerics::linear::weighted;
@@ -95,7 +100,7 @@ pub enum LinearError {
 /// ```
 pub fn weighted(design: &[f64], rhs: &[f64], weights: &[f64]) -> Result<LinearFit, LinearError> {
     let rows = rhs.len();
-    if rows == 0 || weights.len() != rows || design.is_empty() || design.len() % rows != 0 {
+    if rows == 0 || weights.len() != rows || design.is_empty() || !design.len().is_multiple_of(rows) {
         return Err(LinearError::Lengths { design: design.len(), rows, weights: weights.len() });
     }
     if design.iter().chain(rhs).any(|x| !x.is_finite()) || weights.iter().any(|w| !w.is_finite() || *w < 0.0) {

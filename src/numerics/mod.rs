@@ -2,6 +2,12 @@
 //! Must not know lasers, units or files; no input may panic.
 //! Main entries: [`least_squares::fit`], [`linear::weighted`], [`peaks::find`].
 
+pub mod distributions;
 pub mod least_squares;
 pub mod linear;
+pub mod peaks;
+pub mod shapes;
+pub mod smoothing;
+pub mod spectra;
+pub mod summary;
 mod triangle;

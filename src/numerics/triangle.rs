@@ -7,9 +7,12 @@ use nalgebra::{DMatrix, DVector};
 /// Rows reduced at a time; keeps the working matrix in the processor's cache for tens of parameters.
 const BLOCK_ROWS: usize = 256;
 
-/// Smallest accepted ratio of extreme singular values of the column-scaled triangle. Below it the covariance would carry fewer
-/// than about three sound digits in double precision (2.2e-16 / 1e-13), so none is given.
+/// Smallest accepted ratio of extreme singular values of the column-scaled triangle. Below it the covariance would
+/// carry fewer than about three sound digits in double precision (2.2e-16 / 1e-13), so none is given.
 const LEAST_RECIPROCAL_CONDITION: f64 = 1e-13;
+
+/// Most sweeps of the singular value search; a few per column are usual.
+const SVD_SWEEPS: usize = 1000;
 
 /// `R` and `Qᵀr` of the factorization `J = Q·R`, with n columns.
 #[derive(Debug, Clone)]
@@ -21,7 +24,8 @@ pub(crate) struct Triangle {
 }
 
 impl Triangle {
-    /// Reduces a row-major `jacobian` (`residuals.len()` × `columns`). `None` if a length is wrong or anything is not finite.
+    /// Reduces a row-major `jacobian` (`residuals.len()` × `columns`). `None` if a length is wrong or anything is not
+    /// finite.
     pub fn reduce(jacobian: &[f64], residuals: &[f64], columns: usize) -> Option<Self> {
         if columns == 0 || residuals.len().checked_mul(columns)? != jacobian.len() {
             return None;
@@ -103,10 +107,9 @@ impl Triangle {
         let lengths = self.column_lengths();
         let scaled = DMatrix::from_fn(n, k, |i, c| self.r[(i, free[c])] / lengths[free[c]]);
         let small = scaled.qr().r();
-        let singular = small.clone().singular_values();
+        let singular = small.clone().try_svd(false, false, f64::EPSILON, SVD_SWEEPS)?.singular_values;
         let (least, largest) = (singular.min(), singular.max());
-        // Written so that NaN is refused too.
-        if !(least > LEAST_RECIPROCAL_CONDITION * largest) {
+        if least.is_nan() || least <= LEAST_RECIPROCAL_CONDITION * largest {
             return None;
         }
         let inverse = small.solve_upper_triangular(&DMatrix::identity(k, k))?;

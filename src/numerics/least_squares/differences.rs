@@ -7,7 +7,8 @@ use super::Model;
 /// Derivatives of the residuals by central differences, row-major `n_points` × `n_parameters`.
 ///
 /// * `parameters`: where; one per parameter. A wrong length gives an empty vector.
-/// * `scales`: a typical size of each parameter, for the step where the parameter itself is near 0; missing entries count as 0.
+/// * `scales`: a typical size of each parameter, for the step where the parameter itself is near 0; missing entries
+///   count as 0.
 ///
 /// # Method
 /// (r(p + h) − r(p − h)) / 2h with h = ε^(1/3)·max(|p|, |scale|), or ε^(1/3) if both are 0: balances the cubic

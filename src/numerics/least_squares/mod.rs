@@ -16,9 +16,9 @@ pub trait Model {
     /// Number of data points, at least the number of parameters.
     fn n_points(&self) -> usize;
 
-    /// Writes all `n_points` residuals **(model − data)·weight**, with weight = 1/u or 1, and, if asked, their derivatives
-    /// ∂residualᵢ/∂parameterⱼ at `jacobian[i · n_parameters + j]`. Both slices have the exact length and hold zeros or old values on entry.
-    /// A value that is not finite means "no model here": the fit steps back.
+    /// Writes all `n_points` residuals **(model − data)·weight**, with weight = 1/u or 1, and, if asked, their
+    /// derivatives ∂residualᵢ/∂parameterⱼ at `jacobian[i · n_parameters + j]`. Both slices have the exact length and
+    /// hold zeros or old values on entry. A value that is not finite means "no model here": the fit steps back.
     fn evaluate(&self, parameters: &[f64], residuals: &mut [f64], jacobian: Option<&mut [f64]>);
 }
 
@@ -29,10 +29,11 @@ pub struct Options {
     pub max_evaluations: usize,
     /// Stop when a step is below this fraction of the parameters, both measured in units of `D` (see [`fit`]).
     pub relative_step_tolerance: f64,
-    /// Stop when the part of the residual that parameters can still remove is below this fraction of the sum of squares, or
-    /// when an undisturbed step lowers the sum by less than this fraction.
+    /// Stop when the part of the residual that parameters can still remove is below this fraction of the sum of
+    /// squares, or when an undisturbed step lowers the sum by less than this fraction.
     pub relative_cost_tolerance: f64,
-    /// One `(lowest, highest)` per parameter, both allowed values; ±infinity for none; equal values hold the parameter fixed.
+    /// One `(lowest, highest)` per parameter, both allowed values; ±infinity for none; equal values hold the
+    /// parameter fixed.
     pub bounds: Option<Vec<(f64, f64)>>,
 }
 
@@ -76,8 +77,9 @@ impl StopReason {
 pub struct Fit {
     /// Best parameters found, in the model's order.
     pub parameters: Vec<f64>,
-    /// Inverse of JᵀJ at the best parameters, row-major n × n, **not scaled** by the scatter; `None` if the derivatives are
-    /// dependent. Parameters at a bound count as known: their rows and columns are 0 and [`Fit::standard_error`] is `None`.
+    /// Inverse of JᵀJ at the best parameters, row-major n × n, **not scaled** by the scatter; `None` if the
+    /// derivatives are dependent. Parameters at a bound count as known: their rows and columns are 0 and
+    /// [`Fit::standard_error`] is `None`.
     pub covariance: Option<Vec<f64>>,
     /// Residuals at the best parameters, (model − data)·weight.
     pub residuals: Vec<f64>,
@@ -100,13 +102,14 @@ impl Fit {
     }
 
     /// Standard error of parameter `index`, scaled by the scatter found: √(covarianceᵢᵢ · reduced chi-square).
-    /// `None` if there is no covariance, no degree of freedom, the parameter is at a bound, or the index is out of range.
+    /// `None` if there is no covariance, no degree of freedom, the parameter is at a bound, or the index is out of
+    /// range.
     pub fn standard_error(&self, index: usize) -> Option<f64> {
         Some((self.variance(index)? * self.reduced_chi_square()?).sqrt())
     }
 
-    /// Standard error of parameter `index` from the weights alone (they must be 1/u). `None` as for [`Fit::standard_error`],
-    /// except that no degree of freedom is needed.
+    /// Standard error of parameter `index` from the weights alone (they must be 1/u). `None` as for
+    /// [`Fit::standard_error`], except that no degree of freedom is needed.
     pub fn standard_error_from_weights(&self, index: usize) -> Option<f64> {
         Some(self.variance(index)?.sqrt())
     }

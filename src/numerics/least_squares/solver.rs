@@ -41,12 +41,13 @@ const POLISH_END: f64 = 1e-14;
 ///
 /// # Method
 /// 1. QR-reduce the Jacobian `J` and the residuals `r`, so that no digits are lost by forming `JᵀJ`.
-/// 2. Solve min |r + J·δ|² + λ·|D·δ|², `D` = the largest column lengths of `J` met so far; parameters pressed against a bound are left out,
-///    the new point is clipped to the bounds.
-/// 3. Compare the reduction with the expected one; accept, and scale λ by max(1/3, 1 − (2·gain − 1)³), or reject, and raise λ.
+/// 2. Solve min |r + J·δ|² + λ·|D·δ|², `D` = the largest column lengths of `J` met so far; parameters pressed against
+///    a bound are left out, the new point is clipped to the bounds.
+/// 3. Compare the reduction with the expected one; accept, and scale λ by max(1/3, 1 − (2·gain − 1)³), or reject, and
+///    raise λ.
 /// 4. On convergence, polish with undamped steps as long as these shrink.
-/// 5. If the model no longer depends on some parameter at the end (a long first step can carry it there), try again from the start
-///    with heavy first damping, and return the better of the two.
+/// 5. If the model no longer depends on some parameter at the end (a long first step can carry it there), try again
+///    from the start with heavy first damping, and return the better of the two.
 ///
 /// Source: Levenberg 1944, Marquardt 1963; scaling as in Moré 1978; the rule for λ: Nielsen 1999 (all from memory).
 ///
@@ -57,7 +58,7 @@ const POLISH_END: f64 = 1e-14;
 ///     fn n_parameters(&self) -> usize { 2 }
 ///     fn n_points(&self) -> usize { self.t.len() }
 ///     fn evaluate(&self, p: &[f64], residuals: &mut [f64], jacobian: Option<&mut [f64]>) {
-///         for (r, (t, y)) in residuals.iter_mut().zip(self.t.iter().zip(&self.y)) { *r = p[0] * (-t / p[1]).exp() - y; }
+///         for (i, r) in residuals.iter_mut().enumerate() { *r = p[0] * (-self.t[i] / p[1]).exp() - self.y[i]; }
 ///         if let Some(jacobian) = jacobian {
 ///             for (row, t) in jacobian.chunks_exact_mut(2).zip(&self.t) {
 ///                 row[0] = (-t / p[1]).exp();
@@ -158,11 +159,10 @@ impl<'a> Search<'a> {
             }
             match self.step(damping, &free, options) {
                 Trial::Accepted { gain, small_step, small_change } => {
-                    // A step shortened by damping says nothing about convergence.
-                    if damping <= LIGHT_DAMPING && small_step {
+                    if small_step {
                         return StopReason::SmallStep;
                     }
-                    if damping <= LIGHT_DAMPING && small_change {
+                    if small_change {
                         return StopReason::SmallCostChange;
                     }
                     damping = (damping * (1.0 - (2.0 * gain - 1.0).powi(3)).max(1.0 / 3.0)).max(LEAST_DAMPING);
@@ -182,12 +182,13 @@ impl<'a> Search<'a> {
     }
 
     fn step(&mut self, damping: f64, free: &[usize], options: &Options) -> Trial {
-        let Some(delta) = self.triangle.damped_step(damping, &self.scale, free) else { return Trial::Rejected };
-        let moved: Vec<f64> = self.parameters.iter().zip(&delta).map(|(p, d)| p + d).collect();
-        let moved = clipped(&moved, &self.bounds);
+        let Some(delta) = self.damped_step(damping, free) else { return Trial::Rejected };
+        let (moved, whole) = self.within_bounds(&delta);
         let delta: Vec<f64> = moved.iter().zip(&self.parameters).map(|(new, old)| new - old).collect();
         let expected = self.triangle.expected_reduction(&delta);
-        if expected <= f64::EPSILON * self.cost && damping <= LIGHT_DAMPING {
+        // A step cut short by a bound says nothing about convergence, nor does one shortened by damping.
+        let telling = whole && damping <= LIGHT_DAMPING;
+        if telling && expected <= f64::EPSILON * self.cost {
             return Trial::AtRounding;
         }
         let mut residuals = vec![0.0; self.residuals.len()];
@@ -199,12 +200,36 @@ impl<'a> Search<'a> {
         let acceptable = cost.is_finite() && expected > 0.0 && reduction > 0.0 && gain >= LEAST_GAIN;
         if !acceptable {
             let hidden = ROUNDING_OF_SUM * self.cost;
-            let at_rounding = damping <= LIGHT_DAMPING && expected <= hidden && reduction.abs() <= hidden;
+            let at_rounding = telling && expected <= hidden && reduction.abs() <= hidden;
             return if at_rounding { Trial::AtRounding } else { Trial::Rejected };
         }
-        let small_change = reduction.max(expected) <= options.relative_cost_tolerance * self.cost;
-        let small_step = self.relative_length(&delta, &moved) <= options.relative_step_tolerance;
+        let small_change = telling && reduction.max(expected) <= options.relative_cost_tolerance * self.cost;
+        let small_step = telling && self.relative_length(&delta, &moved) <= options.relative_step_tolerance;
         if self.move_to(moved) { Trial::Accepted { gain, small_step, small_change } } else { Trial::NotFinite }
+    }
+
+    /// Where `delta` leads within the bounds, and whether it was left whole. Of clipping each parameter and stopping at the
+    /// first bound met, the one that promises more: clipping is quick, but with correlated parameters may lead uphill.
+    fn within_bounds(&self, delta: &[f64]) -> (Vec<f64>, bool) {
+        let moved: Vec<f64> = self.parameters.iter().zip(delta).map(|(p, d)| p + d).collect();
+        let cut = clipped(&moved, &self.bounds);
+        if cut == moved {
+            return (moved, true);
+        }
+        let room = |j: usize| {
+            let (low, high) = self.bounds[j];
+            let room = if delta[j] < 0.0 { low - self.parameters[j] } else { high - self.parameters[j] };
+            if delta[j] == 0.0 { 1.0 } else { (room / delta[j]).min(1.0) }
+        };
+        let part = (0..delta.len()).map(room).fold(1.0, f64::min);
+        // The parameter that stops the step lands on its bound exactly, not a rounding beside it.
+        let stopped = |j: usize| if room(j) <= part { cut[j] } else { self.parameters[j] + part * delta[j] };
+        let short: Vec<f64> = clipped(&(0..delta.len()).map(stopped).collect::<Vec<f64>>(), &self.bounds);
+        let promise = |to: &[f64]| {
+            let way: Vec<f64> = to.iter().zip(&self.parameters).map(|(new, old)| new - old).collect();
+            self.triangle.expected_reduction(&way)
+        };
+        if promise(&cut) >= promise(&short) { (cut, false) } else { (short, false) }
     }
 
     /// Evaluates everything at `moved` and stays there; false, and nothing changed, if that is not finite.
@@ -225,7 +250,8 @@ impl<'a> Search<'a> {
         true
     }
 
-    /// Undamped steps while they shrink; the sum of squares is blind to the last digits of the parameters, the steps are not.
+    /// Undamped steps while they shrink; the sum of squares is blind to the last digits of the parameters, the steps
+    /// are not.
     fn polish(&mut self) {
         let mut last = f64::INFINITY;
         for _ in 0..POLISH_STEPS {
@@ -263,12 +289,29 @@ impl<'a> Search<'a> {
         (0..self.parameters.len()).filter(|&j| !pressed(j)).collect()
     }
 
+    /// A damped step of the `free` parameters; one that would leave a bound on which it sits is held, and the rest
+    /// solved again.
+    fn damped_step(&self, damping: f64, free: &[usize]) -> Option<Vec<f64>> {
+        let mut free = free.to_vec();
+        loop {
+            let delta = self.triangle.damped_step(damping, &self.scale, &free)?;
+            let before = free.len();
+            free.retain(|&j| {
+                let ((low, high), p) = (self.bounds[j], self.parameters[j]);
+                !(p <= low && delta[j] < 0.0 || p >= high && delta[j] > 0.0)
+            });
+            if free.len() == before {
+                return Some(delta);
+            }
+        }
+    }
+
     /// Sum of squares that an undamped step of the free parameters is expected to remove.
     fn removable(&self, free: &[usize]) -> f64 {
         if free.len() == self.parameters.len() {
             return self.triangle.projected.norm_squared();
         }
-        let step = self.triangle.damped_step(LEAST_DAMPING, &self.scale, free);
+        let step = self.damped_step(TRACE_DAMPING, free);
         step.map_or(f64::INFINITY, |delta| self.triangle.expected_reduction(&delta))
     }
 

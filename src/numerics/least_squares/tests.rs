@@ -121,3 +121,36 @@ fn bad_input_is_an_error() {
         assert_eq!(fit(&plain(2, 4, line), &[0.0; 2], &bounded), Err(FitError::Bounds { index }));
     }
 }
+
+/// Law: at a minimum within bounds the gradient is 0 for free parameters and points inward for those on a bound.
+#[test]
+fn bounded_fits_of_random_lines_and_curves_end_at_a_minimum() {
+    let mut state = 7u64;
+    let mut next = move || {
+        state = state.wrapping_mul(6364136223846793005).wrapping_add(1442695040888963407);
+        (state >> 11) as f64 / (1u64 << 53) as f64 * 2.0 - 1.0
+    };
+    for _ in 0..300 {
+        let (n, m) = (4, 9);
+        let design: Vec<f64> = (0..n * m).map(|_| next()).collect();
+        let data: Vec<f64> = (0..m).map(|_| 2.0 * next()).collect();
+        // Strongly correlated columns: the hard case for bounds.
+        let mixed: Vec<f64> = design
+            .chunks_exact(n)
+            .flat_map(|row| [row[0], row[0] + 0.1 * row[1], row[0] - 0.1 * row[2], row[3]])
+            .collect();
+        let model = plain(n, m, |i, p: &[f64]| {
+            mixed[i * n..(i + 1) * n].iter().zip(p).map(|(a, b)| a * b).sum::<f64>() - data[i]
+        });
+        let bounds: Vec<(f64, f64)> = (0..n).map(|_| (-0.3 - next().abs(), 0.3 + next().abs())).collect();
+        let found = fit(&model, &[0.0; 4], &Options { bounds: Some(bounds.clone()), ..Options::default() }).unwrap();
+        assert!(found.stopped.converged(), "{found:?}");
+        for j in 0..n {
+            let gradient: f64 = (0..m).map(|i| mixed[i * n + j] * found.residuals[i]).sum();
+            let p = found.parameters[j];
+            let inward = (p <= bounds[j].0 && gradient > 0.0) || (p >= bounds[j].1 && gradient < 0.0);
+            // The cost tolerance 1e-13 of sums near 10 leaves a gradient of about √(1e-12)·|column|.
+            assert!(inward || gradient.abs() < 1e-5, "{j}: {gradient} {found:?}");
+        }
+    }
+}

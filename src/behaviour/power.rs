@@ -1,0 +1,190 @@
+//! Power over walk cycles: mean, ripple, drift.
+//! Must not correct a meter's reading: that is done before.
+//! Main type: [`CyclePower`]; main functions: [`cycle_power`], [`power_drift`].
+
+use super::glimpse::Glimpse;
+use super::track::median;
+use crate::numerics::linear;
+use crate::uncertainty::{BudgetLine, Evaluation, Measured};
+
+/// Time over which readings are averaged, s (definition of power).
+const AVERAGE: f64 = 1.0;
+
+/// Fewest averages in a window.
+const LEAST_AVERAGES: usize = 5;
+
+/// Fewest cycles for a drift: two more than a straight line needs.
+const LEAST_CYCLES: usize = 4;
+
+/// Power over a window of whole walk cycles.
+#[derive(Debug, Clone, PartialEq)]
+pub struct CyclePower {
+    /// Mean of 1 s averages, W.
+    pub mean: Measured,
+    /// (max − min)/mean of 1 s averages, with what the noise alone would make taken off; never under 0.
+    pub ripple: Measured,
+    /// The ripple that noise alone would make.
+    pub ripple_floor: f64,
+    /// 1 s averages used.
+    pub n_averages: usize,
+}
+
+/// Mean power and ripple between two times.
+///
+/// * `glimpses`: in order of time; those without a power are passed over.
+/// * `window`: (from, to), s, of whole walk cycles.
+///
+/// `None` with fewer than five 1 s averages, or no light.
+///
+/// # Method
+/// 1. Average readings within each second. 2. Noise of an average: robust scatter about the line through its neighbours.
+/// 3. Mean: each second counts by the time it stands for, as captures need not be even; its u is noise over √n.
+/// 4. Ripple: the extremes of n averages of pure noise lie about 2√(2 ln n)·σ apart (extreme value theory, leading term); what is
+///    found is taken as √(found² − noise²), exact for none and good for much ripple.
+pub fn cycle_power(glimpses: &[Glimpse], window: (f64, f64)) -> Option<CyclePower> {
+    let averages = averages(glimpses, window);
+    let n = averages.len();
+    if n < LEAST_AVERAGES {
+        return None;
+    }
+    let noise = noise(&averages);
+    let mean = time_mean(&averages, window);
+    if !(mean.is_finite() && mean > 0.0) {
+        return None;
+    }
+    let highest = averages.iter().map(|a| a.1).fold(f64::NEG_INFINITY, f64::max);
+    let lowest = averages.iter().map(|a| a.1).fold(f64::INFINITY, f64::min);
+    let found = (highest - lowest) / mean;
+    let ripple_floor = 2.0 * (2.0 * (n as f64).ln()).sqrt() * noise / mean;
+    let dof = n as f64 - 1.0;
+    let scatter = |value: f64, u: f64| {
+        let line = BudgetLine::direct("scatter", "scatter of 1 s averages", Evaluation::TypeA, u, dof);
+        Measured::with_line(value, line)
+    };
+    Some(CyclePower {
+        mean: scatter(mean, noise / (n as f64).sqrt()),
+        ripple: scatter(
+            (found.powi(2) - ripple_floor.powi(2)).max(0.0).sqrt(),
+            std::f64::consts::SQRT_2 * noise / mean,
+        ),
+        ripple_floor,
+        n_averages: n,
+    })
+}
+
+/// Slope of cycle-averaged power against time over its mean, 1/s.
+///
+/// * `cycles`: (from, to), s, of each whole walk cycle, in order.
+///
+/// `None` with fewer than four cycles that have power.
+pub fn power_drift(glimpses: &[Glimpse], cycles: &[(f64, f64)]) -> Option<Measured> {
+    let means: Vec<(f64, f64)> = cycles
+        .iter()
+        .filter_map(|window| Some((0.5 * (window.0 + window.1), cycle_power(glimpses, *window)?.mean.value)))
+        .collect();
+    if means.len() < LEAST_CYCLES {
+        return None;
+    }
+    let mean = means.iter().map(|m| m.1).sum::<f64>() / means.len() as f64;
+    let start = means[0].0;
+    let design: Vec<f64> = means.iter().flat_map(|m| [1.0, m.0 - start]).collect();
+    let values: Vec<f64> = means.iter().map(|m| m.1 / mean).collect();
+    let fit = linear::weighted(&design, &values, &vec![1.0; values.len()]).ok()?;
+    let (slope, u) = (*fit.coefficients.get(1)?, fit.standard_error(1)?);
+    let line = BudgetLine::direct(
+        "scatter",
+        "scatter of cycle means about their line",
+        Evaluation::TypeA,
+        u,
+        fit.degrees_of_freedom as f64,
+    );
+    Some(Measured::with_line(slope, line))
+}
+
+/// (mean time, mean power) of each second of the window that has readings.
+fn averages(glimpses: &[Glimpse], (from, to): (f64, f64)) -> Vec<(f64, f64)> {
+    let readings: Vec<(f64, f64)> = glimpses
+        .iter()
+        .filter(|g| g.at >= from && g.at <= to)
+        .filter_map(|g| Some((g.at, g.power.filter(|p| p.is_finite())?)))
+        .collect();
+    readings
+        .chunk_by(|a, b| ((a.0 - from) / AVERAGE).floor() == ((b.0 - from) / AVERAGE).floor())
+        .map(|second| {
+            let n = second.len() as f64;
+            (second.iter().map(|r| r.0).sum::<f64>() / n, second.iter().map(|r| r.1).sum::<f64>() / n)
+        })
+        .collect()
+}
+
+/// Mean over time: each average stands for half the way to its neighbours, and to the ends of the window.
+fn time_mean(averages: &[(f64, f64)], (from, to): (f64, f64)) -> f64 {
+    let last = averages.len() - 1;
+    let (mut sum, mut time) = (0.0, 0.0);
+    for (i, (at, power)) in averages.iter().enumerate() {
+        let left = if i == 0 { from } else { 0.5 * (averages[i - 1].0 + at) };
+        let right = if i == last { to } else { 0.5 * (at + averages[i + 1].0) };
+        sum += power * (right - left);
+        time += right - left;
+    }
+    sum / time
+}
+
+fn noise(averages: &[(f64, f64)]) -> f64 {
+    // √1.5: a value less the mean of its two neighbours. 1.4826: normal standard deviation over median absolute deviation.
+    let off = averages.windows(3).map(|w| (w[1].1 - 0.5 * (w[0].1 + w[2].1)).abs() / 1.5f64.sqrt());
+    1.4826 * median(off.collect())
+}
+
+#[cfg(test)]
+mod tests {
+    #![allow(clippy::unwrap_used)]
+    use super::*;
+    use crate::behaviour::synthetic::Noise;
+
+    fn glimpses(seed: u64, u: f64, power: impl Fn(f64) -> f64) -> Vec<Glimpse> {
+        let mut noise = Noise(seed);
+        (0..600)
+            .map(|i| f64::from(i) * 0.5)
+            .map(|at| Glimpse { at, power: Some(power(at) + u * noise.normal()), ..Glimpse::default() })
+            .collect()
+    }
+
+    #[test]
+    fn mean_and_ripple_of_a_known_wave() {
+        // One cycle a minute, 5 % from least to greatest, 0.2 % noise.
+        let wave = |at: f64| 1e-3 * (1.0 + 0.025 * (at / 60.0 * std::f64::consts::TAU).sin());
+        let power = cycle_power(&glimpses(1, 2e-6, wave), (60.0, 240.0)).unwrap();
+        // Three whole cycles: the mean of the wave is 1 mW; 4 u.
+        assert!((power.mean.value - 1e-3).abs() < 4.0 * power.mean.u(), "{power:?}");
+        // Two captures a second: averages have 0.14 % noise, extremes of 180 of them add about 0.3 %.
+        assert!((power.ripple.value - 0.05).abs() < 0.005, "{power:?}");
+    }
+
+    #[test]
+    fn noise_alone_is_hardly_ripple() {
+        // 1 % noise makes 0.7 % an average and 4 % of apparent ripple over 180; what stays is within three of its own u.
+        for seed in 1..=20 {
+            let power = cycle_power(&glimpses(seed, 1e-5, |_| 1e-3), (60.0, 240.0)).unwrap();
+            assert!(power.ripple.value < 3.0 * power.ripple.u() && power.ripple_floor > 0.03, "{power:?}");
+        }
+    }
+
+    #[test]
+    fn drift_of_a_known_slope() {
+        let cycles: Vec<(f64, f64)> = (0..4).map(|i| (f64::from(i) * 60.0, f64::from(i + 1) * 60.0)).collect();
+        // 3 % an hour.
+        let slope = 0.03 / 3600.0;
+        let drift = power_drift(&glimpses(3, 1e-6, |at| 1e-3 * (1.0 + slope * at)), &cycles).unwrap();
+        assert!((drift.value - slope).abs() < 4.0 * drift.u(), "{drift:?}");
+        assert_eq!(power_drift(&[], &cycles), None);
+    }
+
+    #[test]
+    fn too_little_or_no_light_gives_nothing() {
+        assert_eq!(cycle_power(&[], (0.0, 10.0)), None);
+        assert_eq!(cycle_power(&glimpses(1, 0.0, |_| 0.0), (0.0, 100.0)), None);
+        assert_eq!(cycle_power(&glimpses(1, 0.0, |_| 1.0), (0.0, 3.0)), None);
+        assert_eq!(cycle_power(&glimpses(1, 0.0, |_| 1.0), (f64::NAN, 3.0)), None);
+    }
+}
