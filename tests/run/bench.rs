@@ -224,8 +224,7 @@ impl Driver {
             sheets: Vec::new(),
             run,
         };
-        let mut driver =
-            Self { script, tube, noise: Noise(1), now_ms: 0, lit_ms: 0, polarizer: None, every };
+        let mut driver = Self { script, tube, noise: Noise(1), now_ms: 0, lit_ms: 0, polarizer: None, every };
         let Texts { recipe, limits, station } = texts.clone();
         driver.happen(Happening::Opened(Box::new(Opened { identity, recipe, limits, station })));
         driver

@@ -372,12 +372,8 @@ fn answers_out_of_bounds_are_asked_again() {
     let (texts, tube) = twin();
     let mut driver = Driver::new(&texts, identity(), tube, 10_000);
     let before = driver.run().wants();
-    let answered = |answer| Happening::Answered {
-        step: "strike".into(),
-        word: "start_delay".into(),
-        answer,
-        by: "KT".into(),
-    };
+    let answered =
+        |answer| Happening::Answered { step: "strike".into(), word: "start_delay".into(), answer, by: "KT".into() };
     for answer in [Answer::Number(-1.0), Answer::Number(f64::NAN), Answer::Done] {
         driver.happen(answered(answer));
         assert_eq!(driver.run().wants(), before);
