@@ -15,9 +15,6 @@ use crate::{
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
 
-/// Phases of the walk that a count needs, in twentieths of a cycle (definition of the measurand).
-const PHASES: usize = 20;
-
 /// The step.
 pub(super) struct Comb {
     from: String,
@@ -54,15 +51,23 @@ fn counts(room: &Room<'_>, from: &str, cycles: f64) -> [Filled; 2] {
     let glimpses: Vec<_> = captures.iter().map(|seen| seen.glimpse.clone()).collect();
     let spacing = room.book.spacing.as_ref().map_or(room.plan.recipe.nominal_spacing, |spacing| spacing.value);
     match count_modes(&glimpses, room.plan.recipe.mode_floor, spacing) {
-        Some(counts) if counts.phases_seen >= PHASES => [
-            Filled::count(keys[0], counts.min.into(), counts.min.into(), counts.min.into()),
-            Filled::count(keys[1], counts.max.into(), counts.max.into(), counts.max.into()),
+        Some(counts) => [
+            counted(keys[0], counts.min, counts.min_doubt, counts.min_probability),
+            counted(keys[1], counts.max, counts.max_doubt, counts.max_probability),
         ],
-        Some(counts) => {
-            let reason = format!("{} of {PHASES} phases of the walk cycle seen", counts.phases_seen);
-            keys.map(|key| Filled::absent(key, reason.as_str()))
-        }
-        None => keys.map(|key| Filled::absent(key, "no modes could be counted")),
+        None => keys.map(|key| Filled::absent(key, "under one walk cycle or 20 phases of it could be counted")),
+    }
+}
+
+/// A count; in doubt, the mode nearest to the floor may belong or not.
+fn counted(key: &str, n: u32, doubt: bool, probability: f64) -> Filled {
+    let n = u64::from(n);
+    let by = u64::from(doubt);
+    let row = Filled::count(key, n, n.saturating_sub(by), n + by);
+    if doubt {
+        row.noted(format!("the mode nearest to the floor: {:.3} that it is on the side found", probability))
+    } else {
+        row
     }
 }
 
