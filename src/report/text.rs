@@ -27,12 +27,12 @@ pub fn value_text(row: &Row) -> ValueText {
     let unit = known.map_or("", |m| m.unit().symbol).to_owned();
     let shown = |si: f64| known.map_or(si, |m| m.shown(si));
     match &row.value {
-        Value::Number { value, .. } if !value.is_finite() => {
+        Value::Number { value, .. } if !shown(*value).is_finite() => {
             ValueText { absent: "not a finite number".to_owned(), ..ValueText::default() }
         }
         Value::Number { value, expanded, .. } => {
             let (number, spread) = rounded(shown(*value), shown(*expanded), known.map_or(6, |m| m.decimals));
-            let spread = if expanded.is_finite() { format!("± {}", typeset(&spread)) } else { String::new() };
+            let spread = if shown(*expanded).is_finite() { format!("± {}", typeset(&spread)) } else { String::new() };
             ValueText { value: typeset(&number), spread, unit, absent: String::new() }
         }
         Value::Count { value, low, high } => {

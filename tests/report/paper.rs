@@ -221,6 +221,10 @@ fn the_file_can_be_read_back() {
     for words in ["DEMO-0004", "998.7", "± 3.0", "MHz", "µm", "not sealed", "τ 6.30 ± 0.30 min"] {
         assert!(text.contains(words), "{words} in:\n{text}");
     }
+    let info = file.trailer.get(b"Info").and_then(|info| info.as_reference()).unwrap();
+    let title = file.get_dictionary(info).unwrap().get(b"Title").and_then(|title| title.as_str()).unwrap();
+    let units: Vec<u16> = title.chunks(2).map(|pair| u16::from_be_bytes([pair[0], pair[1]])).collect();
+    assert!(String::from_utf16(&units).unwrap().contains("Simulated bench: not a measurement of a tube"));
     let csv = tubewright::report::record_csv(&sheet);
     let carried = file.objects.values().filter_map(|object| object.as_stream().ok());
     assert!(carried.into_iter().any(|stream| stream.get_plain_content().is_ok_and(|bytes| bytes == csv)));

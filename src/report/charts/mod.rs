@@ -154,7 +154,7 @@ mod tests {
         let texts = |from, to, n| ticks((from, to), n).into_iter().map(|(_, text)| text).collect::<Vec<_>>();
         assert_eq!(texts(0.0, 10.0, 2), ["0", "5", "10"]);
         assert_eq!(texts(-700.0, 700.0, 3), ["−500", "0", "500"]);
-        assert_eq!(texts(0.0, 1.05, 2), ["0", "1"]);
+        assert_eq!(texts(0.0, 1.05, 2), ["0.0", "0.5", "1.0"]);
         assert!(ticks((0.0, f64::NAN), 3).is_empty());
         assert!(ticks((1e300, 1e300 * (1.0 + 1e-15)), 3).len() <= 13);
     }

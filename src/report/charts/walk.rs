@@ -84,7 +84,12 @@ fn sayings(scene: &mut Scene, face: &Typeface, chart: &WalkChart, plot: &Plot) {
     lines.extend(
         chart.ready.filter(sound).map(|ready| (format!("ready {}", minutes(ready)), Style { ink: BLUE, ..TICK })),
     );
-    lines.extend(chart.dwell_end.map(|end| (format!("dwell ended at {:.1} min", end / MINUTE), TICK)));
+    lines.extend(
+        chart
+            .dwell_end
+            .filter(|end| end.is_finite())
+            .map(|end| (format!("dwell ended at {:.1} min", end / MINUTE), TICK)),
+    );
     let rust = Style { ink: RUST, ..TICK };
     if !chart.hops.is_empty() {
         lines.push((format!("{} (cross)", plural(chart.hops.len(), "hop", "hops")), rust));

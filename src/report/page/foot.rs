@@ -14,9 +14,8 @@ use crate::record::sheet::Sheet;
 /// Baseline of the last line of every page.
 pub const LAST_LINE: f64 = 806.0;
 const SMALL: Style = Style::plain(6.8, GREY);
-const EXPLAINED: &str = "U is the expanded uncertainty for 95.45 %. \"conforms\": probability that the tube is inside its \
-     bounds, no prior knowledge of it assumed. Brackets: bounds, best grade first. Relates only to the tube \
-     tested.";
+const EXPLAINED: &str = "U: expanded uncertainty for 95.45 %. \"conforms\": probability of being inside, no prior \
+     knowledge assumed. Brackets: bounds, best grade first. Valid for this tube only.";
 
 /// The foot and where it begins; drawn from the bottom of the page upwards.
 ///
@@ -63,7 +62,9 @@ pub fn last_line(sheet: &Sheet, face: &Typeface, record_sha256: &str, (page, pag
     let mut scene = Scene::default();
     let style = Style::plain(6.0, GREY);
     let end = if page == pages { " · end" } else { "" };
-    let program = format!("tubewright {} · page {page} of {pages}{end}", sheet.identity.program_version);
+    let version = sheet.identity.program_version.as_str();
+    let name = ["tubewright", version].join(" ");
+    let program = format!("{} · page {page} of {pages}{end}", name.trim_end());
     let run = format!("run {}", sheet.identity.run_id);
     let hash = format!("record.csv sha256 {}", grouped(record_sha256));
     let run_width = scene.fitted(face, (LEFT, LAST_LINE), Anchor::Start, &run, style, 140.0);

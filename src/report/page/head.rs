@@ -31,8 +31,7 @@ pub fn head(sheet: &Sheet, face: &Typeface) -> (Scene, f64) {
     let box_end = verdict_box(&mut scene, face, &sheet.verdict);
     let rule = f64::max(title_end, box_end) + 11.0;
     scene.line(vec![(LEFT, rule), (RIGHT, rule)], Stroke::solid(DARK, 0.6));
-    let columns: [(&str, Vec<(String, String, bool)>); 3] =
-        [("Tube", tube(sheet)), ("Bench", bench(sheet)), ("Run", run(sheet))];
+    let columns = [("Tube", tube(sheet)), ("Bench", bench(sheet)), ("Run", run(sheet))];
     let mut end = rule + 20.0;
     for (i, (title, lines)) in columns.into_iter().enumerate() {
         let left = LEFT + 174.0 * i as f64;

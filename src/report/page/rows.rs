@@ -102,7 +102,7 @@ fn row_block(row: &Row, face: &Typeface, density: &Density) -> Block {
     }
     let mut height = density.pitch.max(end + density.pitch - baseline);
     if row.deciding {
-        height += 3.0;
+        height += 4.5;
         scene = opened(scene, height);
     }
     Block { height, is_heading: false, scene }
@@ -115,7 +115,7 @@ fn opened(scene: Scene, height: f64) -> Scene {
     for y in [0.5, height - 0.5] {
         open.line(vec![(LEFT - 7.0, y), (RIGHT, y)], Stroke::solid(GREY, 0.6));
     }
-    open.append(scene.lowered(1.0));
+    open.append(scene.lowered(2.0));
     open
 }
 

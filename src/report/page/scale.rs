@@ -41,7 +41,9 @@ pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
         return rows::for_information(scene, face, y + size * 0.3, size);
     }
     let known = measurand::find(&row.measurand);
-    let axis = Axis::around(&bounds, value, expanded, known);
+    // To scale around the bounds that tell most: those of another grade would squeeze a doubt into a dot.
+    let telling: Vec<(f64, f64)> = rows::telling(row).and_then(bounds_of).into_iter().collect();
+    let axis = Axis::around(if telling.is_empty() { &bounds } else { &telling }, value, expanded, known);
     let half = pitch * 0.235;
     scene.line(vec![(LEFT_END, y), (RIGHT_END, y)], Stroke::solid(RULE, 0.5));
     let widest = bounds.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |a, b| (a.0.min(b.0), a.1.max(b.1)));
@@ -54,8 +56,8 @@ pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
         }
     }
     for &(lower, upper) in &bounds {
-        bracket(scene, lower.is_finite().then(|| axis.place(lower)), 2.2, y, half + 1.4);
-        bracket(scene, upper.is_finite().then(|| axis.place(upper)), -2.2, y, half + 1.4);
+        bracket(scene, axis.inside(lower), 2.2, y, half + 1.4);
+        bracket(scene, axis.inside(upper), -2.2, y, half + 1.4);
     }
     numbers(scene, face, row, known, y, pitch);
     mark(scene, &axis, (value, expanded), y, crossed(row), open);
@@ -100,6 +102,11 @@ impl Axis {
         }
         let margin = ((to - from) * 0.14).max(span * 0.02);
         Self { from: if starts_at_zero { 0.0 } else { from - margin }, to: to + margin }
+    }
+
+    /// Place on the page, if the axis reaches that far.
+    fn inside(&self, value: f64) -> Option<f64> {
+        (self.from..=self.to).contains(&value).then(|| self.place(value))
     }
 
     /// Place on the page; beyond the ends, the end.
