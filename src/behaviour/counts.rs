@@ -2,12 +2,11 @@
 //! Must not decide which peaks are modes: that is the sweep's.
 //! Main types: [`Counts`], [`GainPoint`].
 
-use statrs::distribution::{ContinuousCDF, Normal};
-
 use super::glimpse::Glimpse;
 use super::jumps;
 use super::line::{Line, Placed, place_modes};
 use super::track::{Track, pooled_spacing};
+use crate::numerics::distributions::normal_cdf;
 
 /// Phases of a walk cycle at which the comb must have been seen (definition of mode_count).
 const LEAST_PHASES: usize = 20;
@@ -77,12 +76,11 @@ pub fn count_modes(glimpses: &[Glimpse], floor: f64, spacing: f64) -> Option<Cou
     let clearest = |n: u32| seen.iter().filter(|s| s.0 == n).map(|s| s.1).fold(0.0, f64::max);
     let min = seen.iter().map(|s| s.0).min()?;
     let max = seen.iter().map(|s| s.0).max()?;
-    let probability = |sigmas: f64| Normal::standard().cdf(sigmas);
     Some(Counts {
         min,
         max,
-        min_probability: probability(clearest(min)),
-        max_probability: probability(clearest(max)),
+        min_probability: normal_cdf(clearest(min)),
+        max_probability: normal_cdf(clearest(max)),
         min_doubt: clearest(min) < DOUBT_SIGMAS,
         max_doubt: clearest(max) < DOUBT_SIGMAS,
         cycles,

@@ -2,8 +2,9 @@
 //! Must not unwrap phases or decide when a dwell ends.
 //! Main type: [`Decay`].
 
-use statrs::distribution::{ContinuousCDF, FisherSnedecor, StudentsT};
+use statrs::distribution::{ContinuousCDF, FisherSnedecor};
 
+use crate::numerics::distributions::student_t_quantile;
 use crate::numerics::linear::{self, LinearFit};
 
 /// Bins that the points are gathered in: what a fit costs does not grow with the length of the warm-up.
@@ -139,7 +140,7 @@ impl Decay {
             })
             .collect();
         around.push(best.clone());
-        let t95 = StudentsT::new(0.0, 1.0, dof).map_or(1.645, |t| t.inverse_cdf(0.95));
+        let t95 = student_t_quantile(0.95, dof).unwrap_or(1.645);
         let u_form = form_error(&best, bins, grid);
         Some(Self { best, around, covariance, columns, u_form, inflation, dof, t95 })
     }

@@ -2,8 +2,10 @@
 //! Must not read a clock or do I/O: everything is a function of the glimpses taken.
 //! Main types: [`Glimpse`], [`Warmup`], [`Watched`], [`Counts`], [`CyclePower`].
 
+mod attribution;
 mod counts;
 mod decay;
+mod drift;
 mod glimpse;
 mod jumps;
 mod line;
@@ -16,6 +18,7 @@ mod warmup;
 mod watch;
 
 pub use counts::{Counts, GainPoint, count_modes, gain_points};
+pub use drift::line_drift;
 pub use glimpse::{Glimpse, GlimpseMode};
 pub use power::{CyclePower, cycle_power, power_drift};
 pub use warmup::{Warmup, WarmupSettings, WarmupState};

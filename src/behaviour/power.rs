@@ -3,8 +3,7 @@
 //! Main type: [`CyclePower`]; main functions: [`cycle_power`], [`power_drift`].
 
 use super::glimpse::Glimpse;
-use super::track::median;
-use crate::numerics::linear;
+use crate::numerics::summary::{NORMAL_SD_PER_MAD, median, straight_line};
 use crate::uncertainty::{BudgetLine, Evaluation, Measured};
 
 /// Time over which readings are averaged, s (definition of power).
@@ -86,19 +85,16 @@ pub fn power_drift(glimpses: &[Glimpse], cycles: &[(f64, f64)]) -> Option<Measur
         return None;
     }
     let mean = means.iter().map(|m| m.1).sum::<f64>() / means.len() as f64;
-    let start = means[0].0;
-    let design: Vec<f64> = means.iter().flat_map(|m| [1.0, m.0 - start]).collect();
-    let values: Vec<f64> = means.iter().map(|m| m.1 / mean).collect();
-    let fit = linear::weighted(&design, &values, &vec![1.0; values.len()]).ok()?;
-    let (slope, u) = (*fit.coefficients.get(1)?, fit.standard_error(1)?);
+    let (times, values): (Vec<f64>, Vec<f64>) = means.iter().map(|m| (m.0, m.1 / mean)).unzip();
+    let fit = straight_line(&times, &values).ok()?;
     let line = BudgetLine::direct(
         "scatter",
         "scatter of cycle means about their line",
         Evaluation::TypeA,
-        u,
+        fit.u_slope?,
         fit.degrees_of_freedom as f64,
     );
-    Some(Measured::with_line(slope, line))
+    Some(Measured::with_line(fit.slope, line))
 }
 
 /// (mean time, mean power) of each second of the window that has readings.
@@ -131,9 +127,9 @@ fn time_mean(averages: &[(f64, f64)], (from, to): (f64, f64)) -> f64 {
 }
 
 fn noise(averages: &[(f64, f64)]) -> f64 {
-    // √1.5: a value less the mean of its two neighbours. 1.4826: normal standard deviation over median absolute deviation.
-    let off = averages.windows(3).map(|w| (w[1].1 - 0.5 * (w[0].1 + w[2].1)).abs() / 1.5f64.sqrt());
-    1.4826 * median(off.collect())
+    // √1.5: a value less the mean of its two neighbours.
+    let off: Vec<f64> = averages.windows(3).map(|w| (w[1].1 - 0.5 * (w[0].1 + w[2].1)).abs() / 1.5f64.sqrt()).collect();
+    NORMAL_SD_PER_MAD * median(&off).unwrap_or(0.0)
 }
 
 #[cfg(test)]

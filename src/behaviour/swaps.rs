@@ -4,7 +4,8 @@
 
 use super::jumps::Jump;
 use super::line::Placed;
-use super::track::{Track, median};
+use super::track::Track;
+use crate::numerics::summary::median;
 
 /// Glimpses that must agree on either side of an exchange: it must persist over three captures.
 const PERSIST: usize = 3;
@@ -72,7 +73,10 @@ fn levels(shares: Vec<f64>) -> Option<(f64, f64)> {
     let highest = shares.iter().copied().fold(f64::NEG_INFINITY, f64::max);
     let middle = 0.5 * (lowest + highest);
     let (lower, upper): (Vec<f64>, Vec<f64>) = shares.into_iter().partition(|q| *q < middle);
-    (lower.len() >= PERSIST && upper.len() >= PERSIST).then(|| (median(lower), median(upper)))
+    if lower.len() < PERSIST || upper.len() < PERSIST {
+        return None;
+    }
+    Some((median(&lower)?, median(&upper)?))
 }
 
 /// +1 or −1 where the modes of a glimpse agree, weighted by height; `None` where they do not say.

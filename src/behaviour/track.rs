@@ -5,6 +5,7 @@
 use std::f64::consts::TAU;
 
 use super::glimpse::{Glimpse, GlimpseMode};
+use crate::numerics::summary::{NORMAL_SD_PER_MAD, median};
 
 /// Least uncertainty of a mode's position when modes are averaged, Hz: below it a stated uncertainty is not believed to
 /// differ between the modes of one capture.
@@ -131,6 +132,21 @@ impl Track {
         }
     }
 
+    /// First of the points before `point` that make up `cycles` of walk and at least `least` points.
+    pub fn reach_back(&self, point: usize, cycles: f64, least: usize) -> usize {
+        let Some(end) = self.points.get(point) else { return 0 };
+        let far = |i: &usize| (self.points[*i].phase - end.phase).abs() >= cycles && *i + least <= point;
+        (0..point).rev().find(far).unwrap_or(0)
+    }
+
+    /// One past the last of the points from `point` on that make up `cycles` of walk and at least `least` points.
+    pub fn reach_on(&self, point: usize, cycles: f64, least: usize) -> usize {
+        let n = self.points.len();
+        let Some(start) = self.points.get(point) else { return n };
+        let far = |i: &usize| (self.points[*i].phase - start.phase).abs() >= cycles && *i >= point + least;
+        (point..n).find(far).map_or(n, |i| i + 1)
+    }
+
     /// Position of a mode, unfolded near the cluster of its point, Hz from the origin of the track.
     pub fn unfolded(&self, point: &TrackPoint, mode: &GlimpseMode, free_spectral_range: f64) -> f64 {
         unfold(mode.position - self.origin, point.cluster, free_spectral_range)
@@ -152,7 +168,7 @@ pub(crate) fn pooled_spacing(glimpses: &[Glimpse], nominal: f64) -> f64 {
     if measured.len() < ENOUGH {
         return nominal;
     }
-    let pooled = median(measured);
+    let Some(pooled) = median(&measured) else { return nominal };
     let ratio = (pooled / nominal).round();
     if ratio >= 2.0 && (pooled / nominal / ratio - 1.0).abs() < 0.05 { pooled / ratio } else { pooled }
 }
@@ -208,19 +224,6 @@ fn scatter(points: &[TrackPoint]) -> f64 {
             (w[1].phase - line) / (1.0 + share.powi(2) + (1.0 - share).powi(2)).sqrt()
         })
         .collect();
-    if residuals.is_empty() {
-        return 0.0;
-    }
-    // 1.4826: standard deviation over median absolute deviation of a normal distribution.
-    1.4826 * median(residuals.iter().map(|r| r.abs()).collect())
-}
-
-/// Middle value of finite numbers; 0 of none.
-pub(crate) fn median(mut values: Vec<f64>) -> f64 {
-    if values.is_empty() {
-        return 0.0;
-    }
-    values.sort_by(f64::total_cmp);
-    let middle = values.len() / 2;
-    if values.len() % 2 == 1 { values[middle] } else { 0.5 * (values[middle - 1] + values[middle]) }
+    let sizes: Vec<f64> = residuals.iter().map(|r| r.abs()).collect();
+    NORMAL_SD_PER_MAD * median(&sizes).unwrap_or(0.0)
 }
