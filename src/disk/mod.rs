@@ -58,7 +58,7 @@ pub enum DiskError {
 fn hint(error: &std::io::Error) -> &'static str {
     use std::io::ErrorKind;
     match error.kind() {
-        ErrorKind::StorageFull | ErrorKind::QuotaExceeded => {
+        ErrorKind::StorageFull | ErrorKind::QuotaExceeded | ErrorKind::FileTooLarge => {
             "; what was stored is whole: make room and give the same command again"
         }
         ErrorKind::NotADirectory | ErrorKind::AlreadyExists => {

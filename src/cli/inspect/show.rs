@@ -77,8 +77,9 @@ impl Show {
         }
     }
 
-    fn rows(&mut self, sheet: &Sheet, done: &HashSet<&str>) {
-        for row in sheet.rows.iter().filter(|row| done.contains(row.step.as_str())) {
+    /// Shows the rows of steps that are done, each once.
+    fn rows(&mut self, sheet: &Sheet, is_done: impl Fn(&str) -> bool) {
+        for row in sheet.rows.iter().filter(|row| is_done(&row.step)) {
             if self.shown.insert((row.step.clone(), row.measurand.clone())) {
                 self.clear();
                 let line = match self.format {
@@ -120,6 +121,8 @@ impl Show {
 
     /// The record is frozen.
     pub fn ended(&mut self, sheet: &Sheet, folder: &Path) -> Result<(), Failure> {
+        // What an early end left unmeasured says why.
+        self.rows(sheet, |_| true);
         if let Some(failure) = self.failed.take() {
             return Err(failure);
         }
@@ -163,9 +166,8 @@ impl Watcher for Show {
         let progress = run.progress();
         if progress.done_steps > self.done_steps {
             self.done_steps = progress.done_steps;
-            let done =
-                run.plan().recipe.steps.iter().take(progress.done_steps).map(|step| step.name.as_str()).collect();
-            self.rows(&run.sheet(), &done);
+            let done = run.plan().recipe.steps.get(..progress.done_steps).unwrap_or_default();
+            self.rows(&run.sheet(), |name| done.iter().any(|step| step.name == name));
         }
         self.progress(run, event.elapsed_s);
     }
