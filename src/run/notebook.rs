@@ -1,0 +1,168 @@
+//! What a run has seen so far and later steps lean on: captures by step, dwells, first light, charts, remarks.
+//! Must not decide what comes next.
+//! Main types: [`Notebook`], [`Seen`], [`Dwelt`].
+
+use crate::{
+    behaviour::{Glimpse, GlimpseMode, Hop, Swap, Warmup},
+    record::{
+        event::Captured,
+        finding::{CaptureFinding, ModeFinding},
+        sheet::{GainChart, SweepChart},
+    },
+    uncertainty::Measured,
+};
+
+/// One capture with light that could be measured.
+#[derive(Debug, Clone)]
+pub(crate) struct Seen {
+    /// As `behaviour` takes it; `at` counts from first light.
+    pub glimpse: Glimpse,
+    /// The finding, its trace taken out.
+    pub finding: CaptureFinding,
+}
+
+/// How a dwell ended.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) enum DwellEnd {
+    /// The prediction of the residual walk is inside its bound and the wanted cycles were seen.
+    Settled,
+    /// `longest` came first.
+    Longest,
+    /// The captures were at their end.
+    SourceEnded,
+    /// No light.
+    Dark,
+}
+
+/// A dwell as later steps see it.
+pub(crate) struct Dwelt {
+    /// Its step.
+    pub step: String,
+    /// The warm-up fitted so far.
+    pub warmup: Warmup,
+    /// How it ended; none while it lasts.
+    pub end: Option<DwellEnd>,
+    /// Seconds from first light to its last moment.
+    pub seconds: f64,
+    /// Walk cycles that the recipe wants whole.
+    pub cycles: f64,
+    /// `longest` of the recipe, s.
+    pub longest: f64,
+}
+
+/// What was seen so far.
+#[derive(Default)]
+pub(crate) struct Notebook {
+    /// Monotonic ms of first light.
+    pub first_light_ms: Option<u64>,
+    /// The tube gives no light, and how that was seen.
+    pub dark: Option<String>,
+    /// Captures of each step, in the order of the steps.
+    captures: Vec<(String, Vec<Seen>)>,
+    /// Dwells.
+    pub dwells: Vec<Dwelt>,
+    /// Mode spacing as it stands on the sheet.
+    pub spacing: Option<Measured>,
+    /// Greatest power at any point of the walk: (W, standard uncertainty W).
+    pub greatest_power: Option<(f64, f64)>,
+    /// Hops seen over a dwell.
+    pub hops: Vec<Hop>,
+    /// Swaps seen over a dwell.
+    pub swaps: Vec<Swap>,
+    /// Chart of one sweep.
+    pub sweep_chart: Option<SweepChart>,
+    /// Chart of heights along the gain line.
+    pub gain_chart: Option<GainChart>,
+    /// For a reader of the sheet.
+    pub remarks: Vec<String>,
+}
+
+impl Notebook {
+    /// Seconds since first light, negative before it; since the opening while there was no light yet.
+    pub fn since_first_light(&self, seconds_since_opened: f64) -> f64 {
+        seconds_since_opened - self.first_light_ms.unwrap_or(0) as f64 / 1e3
+    }
+
+    /// Keeps a capture of a step. A refused or dark one, or one out of the order of time, is not kept: `false`.
+    pub fn keep(&mut self, captured: &Captured) -> bool {
+        let finding = &captured.finding;
+        let at = self.since_first_light(captured.fact.taken_s);
+        if finding.refused.is_some() || finding.dark || !at.is_finite() {
+            return false;
+        }
+        let glimpse = glimpse_of(captured, at);
+        let seen = Seen { glimpse, finding: CaptureFinding { trace: None, ..finding.clone() } };
+        let place = match self.captures.iter().position(|(step, _)| *step == captured.step) {
+            Some(place) => place,
+            None => {
+                self.captures.push((captured.step.clone(), Vec::new()));
+                self.captures.len() - 1
+            }
+        };
+        let list = &mut self.captures[place].1;
+        if list.last().is_some_and(|last| last.glimpse.at >= at) {
+            return false;
+        }
+        list.push(seen);
+        true
+    }
+
+    /// Captures of a step, in the order of time.
+    pub fn of(&self, step: &str) -> &[Seen] {
+        self.captures.iter().find(|(name, _)| name == step).map_or(&[], |(_, list)| list)
+    }
+
+    /// Captures of a step inside a window of seconds since first light, ends inclusive.
+    pub fn of_within(&self, step: &str, window: (f64, f64)) -> &[Seen] {
+        let list = self.of(step);
+        let first = list.partition_point(|seen| seen.glimpse.at < window.0);
+        let end = list.partition_point(|seen| seen.glimpse.at <= window.1);
+        list.get(first..end).unwrap_or(&[])
+    }
+
+    /// Every capture of every dwell.
+    pub fn of_dwells(&self) -> impl Iterator<Item = &Seen> {
+        self.dwells.iter().flat_map(|dwelt| self.of(&dwelt.step))
+    }
+
+    /// A dwell by the name of its step.
+    pub fn dwelt(&self, step: &str) -> Option<&Dwelt> {
+        self.dwells.iter().find(|dwelt| dwelt.step == step)
+    }
+
+    /// Raises the greatest power seen.
+    pub fn power_seen(&mut self, power: f64, u: f64) {
+        if power.is_finite() && u.is_finite() && self.greatest_power.is_none_or(|(greatest, _)| power > greatest) {
+            self.greatest_power = Some((power, u));
+        }
+    }
+
+    /// Puts a sentence on the sheet, once.
+    pub fn remark(&mut self, sentence: impl Into<String>) {
+        let sentence = sentence.into();
+        if !self.remarks.contains(&sentence) {
+            self.remarks.push(sentence);
+        }
+    }
+}
+
+/// The capture as `behaviour` takes it; modes with numbers that are not finite are left out.
+fn glimpse_of(captured: &Captured, at: f64) -> Glimpse {
+    let sound = |mode: &&ModeFinding| {
+        [mode.position, mode.u_position, mode.peak_height, mode.u_peak_height].iter().all(|x| x.is_finite())
+    };
+    let modes = captured.finding.modes.iter().filter(sound).map(|mode| GlimpseMode {
+        position: mode.position,
+        u_position: mode.u_position,
+        height: mode.peak_height,
+        u_height: mode.u_peak_height,
+        crossed: mode.crossed_height.filter(|height| height.is_finite()),
+    });
+    Glimpse {
+        at,
+        modes: modes.collect(),
+        free_spectral_range: captured.finding.free_spectral_range,
+        mode_spacing: captured.finding.mode_spacing.filter(|spacing| spacing.is_finite() && *spacing > 0.0),
+        power: captured.fact.power.filter(|power| power.is_finite()),
+    }
+}

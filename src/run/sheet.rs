@@ -1,0 +1,151 @@
+//! Puts the sheet of a run together: head, rows, verdict, charts, caution, foot.
+//! Must not measure; `limits::judge` decides.
+//! Main function: [`sheet_of`].
+
+use chrono::NaiveDate;
+
+use super::{Run, caution::caution, charts, filled::Filled};
+use crate::{
+    limits::{Judging, judge},
+    measurand,
+    quantity::{FrequencyDifference, Resistance},
+    record::sheet::{Instrument, MeasuredBy, Outcome, Revision, Row, Sheet, TubeVerdict, Value},
+    station::file::StationFile,
+    uncertainty::Certificate,
+};
+
+/// Stands on every record of the simulated bench (`architecture.md`, same input, same bytes).
+const SIMULATED: &str = "Simulated bench: not a measurement of a tube.";
+
+/// The sheet at this moment.
+pub(super) fn sheet_of(run: &Run) -> Sheet {
+    let plan = &run.plan;
+    let finished = run.ending.as_ref().filter(|ending| !ending.unsafe_yet);
+    let mut rows = rows(run);
+    let day = run.opened_at.map(|at| at.date_naive());
+    let holds = day.map_or_else(Vec::new, |day| plan.station.overdue_on(day));
+    let complete = finished.is_some_and(|ending| ending.stopped.is_none());
+    let dark = run.book.dark.is_some();
+    let judged =
+        judge(Judging { limits: &plan.limits, rows: &mut rows, bench_holds: &holds, finished: complete, dark });
+    let verdict = match run.ending.as_ref().and_then(|ending| ending.stopped.as_ref()) {
+        Some(reason) => stopped(reason),
+        None => judged,
+    };
+    let initials = &run.identity.technician;
+    let measured_by = finished.filter(|_| complete && !initials.is_empty()).map(|ending| MeasuredBy {
+        initials: initials.clone(),
+        at: ending.at,
+        meaning: "measured".into(),
+    });
+    Sheet {
+        identity: run.identity.clone(),
+        title: plan.limits.title.clone(),
+        station: plan.station.station.clone(),
+        started_at: run.opened_at,
+        ended_at: finished.map(|ending| ending.at),
+        dwell: run.book.dwells.last().filter(|dwelt| dwelt.end.is_some()).map(|dwelt| dwelt.seconds),
+        recipe: Revision { revision: plan.recipe.revision, sha256: plan.recipe.sha256.clone() },
+        limits: Revision { revision: plan.limits.revision, sha256: plan.limits.sha256.clone() },
+        station_file: Revision { revision: 0, sha256: plan.station.sha256.clone() },
+        rule: plan.limits.rule.to_string(),
+        instruments: instruments(&plan.station, day),
+        verdict,
+        rows,
+        sweep_chart: run.book.sweep_chart.clone(),
+        gain_chart: run.book.gain_chart.clone(),
+        walk_chart: charts::walk_chart(&run.book),
+        remarks: remarks(run),
+        caution: caution(run.book.greatest_power),
+        measured_by,
+    }
+}
+
+fn stopped(reason: &str) -> TubeVerdict {
+    TubeVerdict {
+        outcome: Outcome::Stopped,
+        grade: None,
+        reject_code: None,
+        sentence: "stopped.".into(),
+        reason: reason.to_owned(),
+    }
+}
+
+/// Every row of the recipe, filled or empty with the reason, in the order of the catalogue.
+fn rows(run: &Run) -> Vec<Row> {
+    let mut rows: Vec<(&'static str, Row)> = Vec::new();
+    for (index, (step, state)) in run.plan.recipe.steps.iter().zip(&run.steps).enumerate() {
+        let filled = state.filled();
+        let pending =
+            step.kind.fills(&step.name).into_iter().filter(|key| filled.iter().all(|row| row.measurand != *key));
+        let why = why_open(run, index);
+        let pending = pending.map(|key| Filled::absent(&key, why.as_str()));
+        for row in filled.iter().cloned().chain(pending) {
+            put(&mut rows, step.kind.word(), row, &step.name);
+        }
+    }
+    let mut rows: Vec<Row> = rows.into_iter().map(|(_, row)| row).collect();
+    // Stable: equal ranks stay in the order of the recipe.
+    rows.sort_by_key(|row| measurand::rank(&row.measurand));
+    rows
+}
+
+/// Two steps of one kind both keep their row; of two kinds that can fill the same row, the first that has a value fills it.
+fn put(rows: &mut Vec<(&'static str, Row)>, kind: &'static str, row: Filled, step: &str) {
+    let other = rows.iter().position(|(word, other)| *word != kind && other.measurand == row.measurand);
+    match other {
+        Some(place) if row.is_absent() || !matches!(rows[place].1.value, Value::Absent(_)) => {}
+        Some(place) => rows[place] = (kind, row.into_row(step)),
+        None => rows.push((kind, row.into_row(step))),
+    }
+}
+
+/// Why a step has not filled its row.
+fn why_open(run: &Run, index: usize) -> String {
+    if run.book.dark.is_some() {
+        return "the tube gives no light".into();
+    }
+    match &run.ending {
+        Some(ending) if ending.stopped.is_some() => "stopped before it was measured".into(),
+        _ if index < run.current => "the step gave no value".into(),
+        _ => "not measured yet".into(),
+    }
+}
+
+fn remarks(run: &Run) -> Vec<String> {
+    let simulated = run.identity.simulated.then(|| SIMULATED.to_owned());
+    let captures = run.identity.from_captures.then(|| "Measured from a folder of captures, not at a bench.".to_owned());
+    let dark = run.book.dark.as_ref().map(|how| format!("Dark tube: {how}."));
+    let stopped = run.ending.as_ref().and_then(|ending| ending.stopped.as_ref()).map(|why| format!("Stopped: {why}"));
+    let all = simulated.into_iter().chain(captures).chain(dark).chain(stopped);
+    all.chain(run.book.remarks.iter().cloned()).collect()
+}
+
+/// The instruments of the station with what their certificates say.
+fn instruments(station: &StationFile, day: Option<NaiveDate>) -> Vec<Instrument> {
+    let percent = |u: f64| format!("{} %", (u * 1e6).round() / 1e4);
+    let one = |role: &str, what: String, certificate: Option<&Certificate>| Instrument {
+        role: role.into(),
+        what,
+        certificate: certificate.map_or_else(String::new, |certificate| certificate.number.clone()),
+        due: certificate.map(|certificate| certificate.due),
+        overdue: certificate.zip(day).is_some_and(|(certificate, day)| certificate.overdue_on(day)),
+    };
+    let interferometer = station.interferometer.as_ref().map(|it| {
+        let what = format!("{} ± {}", FrequencyDifference::from_si(it.fsr), percent(it.fsr_u));
+        one("interferometer", what, it.certificate.as_ref())
+    });
+    let power_meter = station.power_meter.as_ref().map(|it| {
+        let what = format!("reading × {} ± {}", it.factor, percent(it.u));
+        one("power meter", what, it.certificate.as_ref())
+    });
+    let supply = station.supply.as_ref().map(|it| {
+        let what = format!("ballast {}, readings ± {}", Resistance::from_si(it.ballast), percent(it.u));
+        one("supply", what, it.certificate.as_ref())
+    });
+    let polarizer = station.polarizer.as_ref().map(|it| {
+        let u_angle = (it.u_angle.to_degrees() * 1e4).round() / 1e4;
+        one("polarizer", format!("{}:1, angle ± {u_angle}°", it.extinction), None)
+    });
+    [interferometer, power_meter, supply, polarizer].into_iter().flatten().collect()
+}

@@ -1,0 +1,135 @@
+//! Counts of modes and off-axis light over the captures of an earlier step. It wants nothing.
+//! Must not count itself: `behaviour` does.
+//! Main type: [`Comb`].
+
+use super::{Given, Room, Step, Wish};
+use crate::{
+    behaviour::count_modes,
+    recipe,
+    record::finding::ModeFinding,
+    run::{
+        filled::Filled,
+        notebook::{DwellEnd, Notebook, Seen},
+        spacing,
+    },
+    uncertainty::{BudgetLine, Evaluation, Measured},
+};
+
+/// The step.
+pub(super) struct Comb {
+    from: String,
+    done: bool,
+    filled: Vec<Filled>,
+}
+
+impl Comb {
+    pub fn new(keys: &recipe::Comb) -> Self {
+        Self { from: keys.from.clone(), done: false, filled: Vec::new() }
+    }
+}
+
+/// The window of seconds since first light in which whole cycles of a step lie; all of a step that is no dwell.
+///
+/// Errors: why there is none, for the row.
+pub(super) fn whole_cycles(book: &Notebook, from: &str, cycles: f64) -> Result<(f64, f64), String> {
+    let Some(dwelt) = book.dwelt(from) else { return Ok((f64::NEG_INFINITY, f64::INFINITY)) };
+    if dwelt.end == Some(DwellEnd::Longest) {
+        return Err(format!("{from} did not settle within {:.0} min", dwelt.longest / 60.0));
+    }
+    dwelt.warmup.last_cycles(cycles).ok_or_else(|| format!("{from} shows no {cycles} whole walk cycles"))
+}
+
+fn counts(room: &Room<'_>, from: &str, cycles: f64) -> [Filled; 2] {
+    let keys = ["mode_count_min", "mode_count_max"];
+    if room.book.dwelt(from).is_none() {
+        return keys.map(|key| Filled::absent(key, format!("{from} is at rest: no walk cycle was seen")));
+    }
+    let captures = match whole_cycles(room.book, from, cycles).or_else(|_| whole_cycles(room.book, from, 1.0)) {
+        Ok(window) => room.book.of_within(from, window),
+        Err(reason) => return keys.map(|key| Filled::absent(key, reason.as_str())),
+    };
+    let glimpses: Vec<_> = captures.iter().map(|seen| seen.glimpse.clone()).collect();
+    let spacing = room.book.spacing.as_ref().map_or(room.plan.recipe.nominal_spacing, |spacing| spacing.value);
+    match count_modes(&glimpses, room.plan.recipe.mode_floor, spacing) {
+        Some(counts) => [
+            counted(keys[0], counts.min, counts.min_doubt, counts.min_probability),
+            counted(keys[1], counts.max, counts.max_doubt, counts.max_probability),
+        ],
+        None => keys.map(|key| Filled::absent(key, "under one walk cycle or 20 phases of it could be counted")),
+    }
+}
+
+/// A count; in doubt, the mode nearest to the floor may belong or not.
+fn counted(key: &str, n: u32, doubt: bool, probability: f64) -> Filled {
+    let n = u64::from(n);
+    let by = u64::from(doubt);
+    let row = Filled::count(key, n, n.saturating_sub(by), n + by);
+    if doubt {
+        row.noted(format!("the mode nearest to the floor: {:.3} that it is on the side found", probability))
+    } else {
+        row
+    }
+}
+
+/// Highest off-axis area over highest comb area in one capture, with its standard uncertainty; without a peak off the comb
+/// 0 ± the noise of a height over the highest.
+fn ratio(seen: &Seen) -> Option<(f64, f64)> {
+    let greatest = |peaks: &[ModeFinding]| peaks.iter().max_by(|a, b| a.area.total_cmp(&b.area)).cloned();
+    let comb = greatest(&seen.finding.modes).filter(|mode| mode.area > 0.0 && mode.peak_height > 0.0)?;
+    let relative = |mode: &ModeFinding| mode.u_peak_height / mode.peak_height;
+    let (value, u) = match greatest(&seen.finding.off_axis).filter(|peak| peak.area > 0.0 && peak.peak_height > 0.0) {
+        Some(peak) => {
+            let value = peak.area / comb.area;
+            (value, value * relative(&peak).hypot(relative(&comb)))
+        }
+        None => (0.0, relative(&comb)),
+    };
+    (value.is_finite() && u.is_finite()).then_some((value, u))
+}
+
+fn off_axis(captures: &[Seen]) -> Filled {
+    match captures.iter().filter_map(ratio).max_by(|a, b| a.0.total_cmp(&b.0)) {
+        Some((value, u)) => {
+            let words = if value > 0.0 { "scatter of both peaks" } else { "noise of a peak's height" };
+            let line = BudgetLine::direct("scatter", words, Evaluation::TypeA, u, f64::INFINITY);
+            let note = if value > 0.0 { "" } else { "no peak off the comb" };
+            Filled::number("off_axis_ratio", &Measured::with_line(value, line)).noted(note)
+        }
+        None => Filled::absent("off_axis_ratio", "no capture could be measured"),
+    }
+}
+
+impl Step for Comb {
+    fn begin(&mut self, room: &mut Room<'_>) {
+        self.done = true;
+        let cycles = room.book.dwelt(&self.from).map_or(1.0, |dwelt| dwelt.cycles);
+        let window = whole_cycles(room.book, &self.from, cycles).or_else(|_| whole_cycles(room.book, &self.from, 1.0));
+        if room.book.spacing.is_none() {
+            let captures = match &window {
+                Ok(window) => room.book.of_within(&self.from, *window),
+                Err(_) => room.book.of(&self.from),
+            };
+            let pooled = spacing::pooled(captures);
+            self.filled.extend(spacing::rows(pooled, &format!("of {}", self.from), room.book).into_iter().flatten());
+        }
+        self.filled.extend(counts(room, &self.from, cycles));
+        self.filled.push(match window {
+            Ok(window) => off_axis(room.book.of_within(&self.from, window)),
+            Err(reason) => Filled::absent("off_axis_ratio", reason),
+        });
+    }
+
+    fn wants(&self) -> Wish {
+        Wish::Nothing
+    }
+
+    fn take(&mut self, _given: Given<'_>, _room: &mut Room<'_>) {}
+
+    fn filled(&self) -> &[Filled] {
+        &self.filled
+    }
+
+    fn expected_s(&self, _book: &Notebook) -> Option<f64> {
+        Some(0.0)
+    }
+}

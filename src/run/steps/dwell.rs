@@ -1,0 +1,225 @@
+//! The dwell: captures on a grid of times from first light until the walk has settled. It is no timer.
+//! Must not fit anything itself: `behaviour` does.
+//! Main type: [`Dwell`].
+
+use super::{Given, Room, Step, Wish};
+use crate::{
+    behaviour::{Warmup, WarmupSettings, WarmupState},
+    recipe,
+    run::{
+        charts,
+        filled::Filled,
+        grid::Grid,
+        notebook::{DwellEnd, Dwelt, Notebook},
+    },
+    uncertainty::{BudgetLine, Evaluation, Measured},
+};
+
+/// Captures dark for longer than this after first light, or after the last light: a dark tube, ms.
+const DARK_AFTER_MS: u64 = 30_000;
+/// Captures between two looks at the state for the chart, once the walk is long: the end is looked for at each.
+const KEYS: [&str; 5] = ["warmup_tau", "warmup_ready", "walk_cycles", "walk_growth", "walk_rate"];
+
+/// The step.
+pub(super) struct Dwell {
+    keys: recipe::Dwell,
+    grid: Grid,
+    next_ms: u64,
+    wavelength: f64,
+    /// Monotonic ms of the last light seen, at first of first light.
+    lit_ms: u64,
+    any_light: bool,
+    any_dark: bool,
+    n_lost: u64,
+    begun: bool,
+    done: bool,
+    filled: Vec<Filled>,
+}
+
+impl Dwell {
+    pub fn new(keys: &recipe::Dwell) -> Self {
+        Self {
+            grid: Grid::new(0, keys.early_every_s, keys.early_for_s, keys.every_s),
+            keys: keys.clone(),
+            next_ms: 0,
+            wavelength: 0.0,
+            lit_ms: 0,
+            any_light: false,
+            any_dark: false,
+            n_lost: 0,
+            begun: false,
+            done: false,
+            filled: Vec::new(),
+        }
+    }
+
+    /// Goes on to the next time of the grid, or ends at `longest`.
+    fn go_on(&mut self, room: &mut Room<'_>) {
+        self.next_ms = self.grid.after(self.next_ms.max(room.now_ms));
+        let first = room.book.first_light_ms.unwrap_or(0);
+        if self.next_ms.saturating_sub(first) as f64 > self.keys.longest_s * 1e3 {
+            self.end(DwellEnd::Longest, room);
+        }
+    }
+
+    fn captured(&mut self, captured: &crate::record::event::Captured, room: &mut Room<'_>) {
+        if captured.finding.dark {
+            self.any_dark = true;
+            if room.now_ms.saturating_sub(self.lit_ms) > DARK_AFTER_MS {
+                return self.end(DwellEnd::Dark, room);
+            }
+            return self.go_on(room);
+        }
+        if captured.finding.refused.is_some() || !room.book.keep(captured) {
+            self.n_lost += 1;
+            return self.go_on(room);
+        }
+        self.lit_ms = room.now_ms;
+        self.any_light = true;
+        if self.settled(room) { self.end(DwellEnd::Settled, room) } else { self.go_on(room) }
+    }
+
+    /// Feeds the last capture to the warm-up and asks whether the dwell is over.
+    fn settled(&self, room: &mut Room<'_>) -> bool {
+        let Some(glimpse) = room.book.of(room.step).last().map(|seen| seen.glimpse.clone()) else { return false };
+        let step = room.step;
+        let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) else { return false };
+        dwelt.warmup.take(&glimpse);
+        dwelt.seconds = glimpse.at;
+        dwelt.warmup.state().settled
+    }
+
+    fn end(&mut self, end: DwellEnd, room: &mut Room<'_>) {
+        self.done = true;
+        let step = room.step;
+        let now = room.book.since_first_light(room.now_ms as f64 / 1e3);
+        let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) else { return };
+        dwelt.end = Some(end);
+        if end != DwellEnd::SourceEnded || dwelt.seconds <= 0.0 {
+            dwelt.seconds = now.max(dwelt.seconds);
+        }
+        let state = dwelt.warmup.state();
+        let longest = self.keys.longest_s / 60.0;
+        match end {
+            DwellEnd::Dark => room.book.dark = Some("no light in the captures for 30 s".into()),
+            DwellEnd::Longest => room.book.remark(format!(
+                "The walk had not settled when the dwell ended at its longest, {longest:.0} min: what needs whole cycles is empty."
+            )),
+            DwellEnd::SourceEnded if self.any_dark && !self.any_light => {
+                room.book.dark = Some("no light in any capture of the dwell".into());
+            }
+            _ => {}
+        }
+        if self.n_lost > 0 {
+            room.book.remark(format!("{} captures of step {step} could not be read.", self.n_lost));
+        }
+        if room.book.dark.is_none() {
+            self.filled = self.rows(end, &state, room);
+            room.book.gain_chart = charts::gain_chart(room.book, step);
+        }
+    }
+
+    fn rows(&self, end: DwellEnd, state: &WarmupState, room: &Room<'_>) -> Vec<Filled> {
+        let why = why_empty(end, &self.keys, state);
+        let mut rows = Vec::new();
+        let settled = state.settled;
+        let tau_stands = settled || end == DwellEnd::SourceEnded;
+        rows.push(some_number(KEYS[0], state.tau.as_ref().filter(|_| tau_stands), &why));
+        rows.push(some_number(KEYS[1], state.ready.as_ref().filter(|_| settled), &why));
+        if self.any_light && state.walked.is_finite() && !room.book.of(room.step).is_empty() {
+            let line =
+                BudgetLine::direct("walk", "tube phase at both ends", Evaluation::TypeA, state.u_walked, f64::INFINITY);
+            let cycles = Measured::with_line(state.walked, line);
+            let note = if state.early_unknown {
+                "early cycles unknown: counted from the first that could be followed"
+            } else {
+                ""
+            };
+            rows.push(Filled::number(KEYS[2], &cycles).noted(note));
+            rows.push(Filled::number(KEYS[3], &cycles.scaled(self.wavelength / 2.0)).noted(note));
+        }
+        rows.push(some_number(KEYS[4], state.rate.as_ref(), "the rate of the walk could not be found"));
+        rows
+    }
+}
+
+fn some_number(key: &str, measured: Option<&Measured>, why: &str) -> Filled {
+    measured.map_or_else(|| Filled::absent(key, why), |measured| Filled::number(key, measured))
+}
+
+fn why_empty(end: DwellEnd, keys: &recipe::Dwell, state: &WarmupState) -> String {
+    let residual = state.residual_upper.filter(|residual| residual.is_finite());
+    let residual = residual.map_or(String::new(), |cycles| format!("; predicted walk up to {cycles:.1} spacings"));
+    match end {
+        DwellEnd::Longest => format!("not settled within {:.0} min{residual}", keys.longest_s / 60.0),
+        DwellEnd::SourceEnded => format!("the captures ended before the walk settled{residual}"),
+        _ => "the warm-up could not be fitted".into(),
+    }
+}
+
+impl Step for Dwell {
+    fn begin(&mut self, room: &mut Room<'_>) {
+        let first_light = *room.book.first_light_ms.get_or_insert(room.now_ms);
+        let recipe = &room.plan.recipe;
+        self.wavelength = recipe.wavelength;
+        self.grid = Grid::new(first_light, self.keys.early_every_s, self.keys.early_for_s, self.keys.every_s);
+        // Without a strike, first light is now and so is the first capture.
+        self.next_ms = self.grid.at_or_after(room.now_ms);
+        self.lit_ms = room.now_ms;
+        self.begun = true;
+        let settings = WarmupSettings {
+            nominal_spacing: recipe.nominal_spacing,
+            residual_walk: self.keys.residual_walk,
+            horizon: self.keys.horizon_s,
+            cycles: self.keys.cycles,
+        };
+        room.book.dwells.push(Dwelt {
+            step: room.step.into(),
+            warmup: Warmup::new(settings),
+            end: None,
+            seconds: 0.0,
+            cycles: self.keys.cycles,
+            longest: self.keys.longest_s,
+        });
+    }
+
+    fn wants(&self) -> Wish {
+        if self.done {
+            return Wish::Nothing;
+        }
+        Wish::Capture { not_before_ms: self.next_ms, samples: self.keys.samples, keep: false, trace: false }
+    }
+
+    fn take(&mut self, given: Given<'_>, room: &mut Room<'_>) {
+        match given {
+            Given::Capture(captured) => self.captured(captured, room),
+            Given::Lost { for_good: true, reason } => {
+                if !self.any_light && !self.any_dark {
+                    self.filled = KEYS.iter().map(|key| Filled::absent(key, reason)).collect();
+                    self.done = true;
+                } else {
+                    self.end(DwellEnd::SourceEnded, room);
+                }
+            }
+            Given::Lost { for_good: false, .. } => {
+                self.n_lost += 1;
+                self.go_on(room);
+            }
+            _ => {}
+        }
+    }
+
+    fn filled(&self) -> &[Filled] {
+        &self.filled
+    }
+
+    fn expected_s(&self, book: &Notebook) -> Option<f64> {
+        if self.done {
+            return Some(0.0);
+        }
+        if !self.begun {
+            return None;
+        }
+        book.dwells.iter().rfind(|dwelt| dwelt.end.is_none()).and_then(|dwelt| dwelt.warmup.remaining())
+    }
+}

@@ -1,0 +1,118 @@
+//! The strike: supply on, time to first light, tries, start voltage.
+//! Must not switch anything itself: a person does, and high voltage is asked for by name.
+//! Main type: [`Strike`].
+
+use super::{Given, Room, Step, Wish};
+use crate::{
+    recipe,
+    record::question::{Answer, Expects},
+    run::{filled::Filled, notebook::Notebook},
+    uncertainty::{BudgetLine, Evaluation, Measured},
+};
+
+/// Standard uncertainty of a time taken by hand, s (two reactions of a person; from memory).
+const U_BY_HAND: f64 = 0.05;
+/// Relative standard uncertainty of a start voltage from an instrument that no certificate names (from memory).
+const U_NO_CERTIFICATE: f64 = 0.05;
+
+const SWITCH_ON: &str = "Tube seated, leads covered, beam stop in place, hands clear: switch the supply on and time \
+    it until first light. Start pulses of up to 10 kV; laser radiation";
+
+/// The step.
+pub(super) struct Strike {
+    tries_at_most: u64,
+    stage: usize,
+    filled: Vec<Filled>,
+}
+
+impl Strike {
+    pub fn new(keys: &recipe::Strike) -> Self {
+        Self { tries_at_most: keys.tries_at_most.max(1), stage: 0, filled: Vec::new() }
+    }
+
+    fn start_delay(&mut self, answer: &Answer, room: &mut Room<'_>) {
+        room.book.first_light_ms = Some(room.now_ms);
+        self.filled.push(match answer {
+            Answer::Number(delay) => {
+                let line =
+                    BudgetLine::direct("by hand", "time taken by hand", Evaluation::TypeB, U_BY_HAND, f64::INFINITY);
+                Filled::number("start_delay", &Measured::with_line(*delay, line))
+            }
+            answer => absent("start_delay", answer),
+        });
+    }
+
+    fn tries(&mut self, answer: &Answer, room: &mut Room<'_>) {
+        self.filled.push(match answer {
+            Answer::Whole(0) => {
+                room.book.dark = Some(format!("no light after {} tries", self.tries_at_most));
+                Filled::absent("start_tries", "the tube did not light")
+            }
+            Answer::Whole(tries) => Filled::count("start_tries", *tries, *tries, *tries),
+            answer => absent("start_tries", answer),
+        });
+    }
+
+    fn start_voltage(&mut self, answer: &Answer, room: &Room<'_>) {
+        self.filled.push(match answer {
+            Answer::Number(voltage) => {
+                let supply = room.plan.station.supply.as_ref();
+                let u = supply.map_or(U_NO_CERTIFICATE, |supply| supply.u);
+                let source = super::supply::voltage_source(supply);
+                let mut line = BudgetLine::direct(&source, "voltage reading", Evaluation::TypeB, u, f64::INFINITY);
+                line.sensitivity = *voltage;
+                Filled::number("start_voltage", &Measured::with_line(*voltage, line))
+            }
+            answer => absent("start_voltage", answer),
+        });
+    }
+}
+
+/// A row that an answer leaves empty.
+pub(super) fn absent(key: &str, answer: &Answer) -> Filled {
+    match answer {
+        Answer::CannotSay(reason) => Filled::absent(key, reason.as_str()),
+        _ => Filled::absent(key, "the answer gave no value"),
+    }
+}
+
+impl Step for Strike {
+    fn begin(&mut self, _room: &mut Room<'_>) {}
+
+    fn wants(&self) -> Wish {
+        match self.stage {
+            0 => Wish::Ask {
+                word: "start_delay".into(),
+                text: SWITCH_ON.into(),
+                expects: Expects::Number { ucum: "s".into(), lowest: 0.0, highest: 600.0 },
+                high_voltage: true,
+            },
+            1 => Wish::Ask {
+                word: "tries".into(),
+                text: format!("Tries to start, at most {}; 0 if there was no light", self.tries_at_most),
+                expects: Expects::Whole { lowest: 0, highest: self.tries_at_most },
+                high_voltage: false,
+            },
+            2 => Wish::number("start_voltage", "Highest voltage at the anode in the first try", "kV", 0.0, 30e3),
+            _ => Wish::Nothing,
+        }
+    }
+
+    fn take(&mut self, given: Given<'_>, room: &mut Room<'_>) {
+        let Given::Answer(answer) = given else { return };
+        match self.stage {
+            0 => self.start_delay(answer, room),
+            1 => self.tries(answer, room),
+            _ => self.start_voltage(answer, room),
+        }
+        self.stage += 1;
+    }
+
+    fn filled(&self) -> &[Filled] {
+        &self.filled
+    }
+
+    fn expected_s(&self, _book: &Notebook) -> Option<f64> {
+        Some(5.0 * 3_usize.saturating_sub(self.stage) as f64)
+    }
+}

@@ -1,0 +1,161 @@
+//! Whole captures at rest: mode spacing, mirror spacing, finesse, and the chart of one sweep.
+//! Must not fit a sweep: findings come in.
+//! Main type: [`Sweep`].
+
+use super::{Given, Room, Step, Wish};
+use crate::{
+    recipe,
+    record::event::Captured,
+    run::{charts, filled::Filled, notebook::Notebook, pool::pool, spacing},
+    uncertainty::{BudgetLine, Evaluation, Measured},
+};
+
+/// Relative standard uncertainty of a finesse from one capture, where no scatter is seen (common practice).
+const U_FINESSE: f64 = 0.05;
+
+/// Reasons shown on the sheet.
+const SHOWN: usize = 3;
+
+/// The step.
+pub(super) struct Sweep {
+    keys: recipe::Sweep,
+    taken: u64,
+    dark: u64,
+    trace_all: bool,
+    done: bool,
+    finesse: Vec<f64>,
+    /// Why captures are missing, first reason first.
+    reasons: Vec<String>,
+    filled: Vec<Filled>,
+}
+
+impl Sweep {
+    pub fn new(keys: &recipe::Sweep) -> Self {
+        Self {
+            keys: keys.clone(),
+            taken: 0,
+            dark: 0,
+            trace_all: false,
+            done: false,
+            finesse: Vec::new(),
+            reasons: Vec::new(),
+            filled: Vec::new(),
+        }
+    }
+
+    fn captured(&mut self, captured: &Captured, room: &mut Room<'_>) {
+        let finding = &captured.finding;
+        self.dark += u64::from(finding.dark);
+        match &finding.refused {
+            Some(reason) => self.reasons.push(format!("capture {}: {reason}", captured.number)),
+            None if finding.dark => self.reasons.push(format!("capture {}: no light", captured.number)),
+            None => {
+                if !room.book.keep(captured) {
+                    self.reasons.push(format!("capture {}: out of the order of time", captured.number));
+                }
+                self.finesse.extend(finding.finesse.filter(|finesse| finesse.is_finite()));
+                if let Some(chart) = charts::sweep_chart(captured, room) {
+                    room.book.sweep_chart = Some(chart);
+                }
+            }
+        }
+    }
+
+    fn finish(&mut self, room: &mut Room<'_>) {
+        self.done = true;
+        if self.dark > 0 && self.dark == self.taken {
+            room.book.dark = Some(format!("no light in any of {} captures", self.dark));
+            return;
+        }
+        let own = room.book.of(room.step);
+        let n_own = own.len();
+        let mut pooled = spacing::pooled(own);
+        let mut from = "at rest".to_owned();
+        if pooled.is_none() {
+            pooled = spacing::pooled(room.book.of_dwells());
+            from = if n_own > 0 { "of the dwell: one mode alone at rest" } else { "of the dwell: none at rest" }.into();
+        }
+        match spacing::rows(pooled, &from, room.book) {
+            Some(rows) => self.filled.extend(rows),
+            None => {
+                let reason = match self.reasons.first() {
+                    Some(reason) if n_own == 0 => reason.clone(),
+                    _ => "no capture shows two modes".into(),
+                };
+                self.filled.push(Filled::absent("mode_spacing", reason.as_str()));
+                self.filled.push(Filled::absent("mirror_spacing", reason));
+            }
+        }
+        self.filled.push(finesse(&self.finesse));
+        if !self.reasons.is_empty() {
+            let step = room.step;
+            let more = self.reasons.len().saturating_sub(SHOWN);
+            let more = if more > 0 { format!("; and {more} more") } else { String::new() };
+            let shown = self.reasons.get(..SHOWN).unwrap_or(&self.reasons).join("; ");
+            room.book.remark(format!("Step {step}: {shown}{more}."));
+        }
+    }
+}
+
+/// Mean over captures with its scatter.
+fn finesse(values: &[f64]) -> Filled {
+    let pairs: Vec<_> = values.iter().map(|value| (*value, &[][..])).collect();
+    let Some(pooled) = pool(&pairs) else {
+        return Filled::absent("finesse", "no capture gave a finesse");
+    };
+    let mut measured = pooled.measured;
+    if pooled.used == 1 {
+        let u = U_FINESSE * measured.value;
+        let line =
+            BudgetLine::direct("one capture", "no scatter from one capture", Evaluation::TypeB, u, f64::INFINITY);
+        measured = Measured::with_line(measured.value, line);
+    }
+    Filled::number("finesse", &measured)
+}
+
+impl Step for Sweep {
+    fn begin(&mut self, room: &mut Room<'_>) {
+        self.trace_all = room.from_captures;
+    }
+
+    fn wants(&self) -> Wish {
+        if self.done {
+            return Wish::Nothing;
+        }
+        // Of a folder nobody knows which capture is the last.
+        let trace = self.trace_all || self.taken + 1 >= self.keys.captures;
+        Wish::Capture { not_before_ms: 0, samples: self.keys.samples, keep: self.keys.keep, trace }
+    }
+
+    fn take(&mut self, given: Given<'_>, room: &mut Room<'_>) {
+        self.taken += 1;
+        match given {
+            Given::Capture(captured) => self.captured(captured, room),
+            Given::Lost { reason, for_good } => {
+                if !for_good {
+                    self.reasons.push(reason.to_owned());
+                } else {
+                    // The end of a folder is no capture.
+                    self.taken -= 1;
+                    if self.taken == 0 {
+                        self.reasons.push(reason.to_owned());
+                    }
+                    return self.finish(room);
+                }
+            }
+            _ => {}
+        }
+        if self.taken >= self.keys.captures {
+            self.finish(room);
+        }
+    }
+
+    fn filled(&self) -> &[Filled] {
+        &self.filled
+    }
+
+    fn expected_s(&self, _book: &Notebook) -> Option<f64> {
+        // About a second a capture on a bench (practice).
+        Some(if self.done { 0.0 } else { self.keys.captures.saturating_sub(self.taken) as f64 })
+    }
+}

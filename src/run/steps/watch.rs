@@ -1,0 +1,150 @@
+//! Hops and swaps, over a dwell or over captures of its own at rest.
+//! Must not look for them itself: `behaviour` does.
+//! Main type: [`Watch`].
+
+use super::{Given, Room, Step, Wish};
+use crate::{
+    behaviour::{Glimpse, watch},
+    recipe,
+    run::{filled::Filled, grid::Grid, notebook::Notebook},
+    uncertainty::{BudgetLine, Evaluation, Measured},
+};
+
+const KEYS: [&str; 3] = ["hop_count", "swap_count", "cycles_watched"];
+/// Samples of a capture at rest: short ones, as in a dwell.
+const SAMPLES: usize = 2_000;
+/// −ln 0.05: with none seen, the expected number is below this with 95 % (Poisson).
+const NONE_SEEN: f64 = 2.9957;
+
+/// The step.
+pub(super) struct Watch {
+    keys: recipe::Watch,
+    grid: Grid,
+    next_ms: u64,
+    end_ms: u64,
+    n_lost: u64,
+    done: bool,
+    filled: Vec<Filled>,
+}
+
+impl Watch {
+    pub fn new(keys: &recipe::Watch) -> Self {
+        let grid = Grid::new(0, keys.every_s, 0.0, keys.every_s);
+        Self { keys: keys.clone(), grid, next_ms: 0, end_ms: 0, n_lost: 0, done: false, filled: Vec::new() }
+    }
+
+    fn go_on(&mut self, room: &mut Room<'_>) {
+        self.next_ms = self.grid.after(self.next_ms.max(room.now_ms));
+        if self.next_ms > self.end_ms {
+            self.finish(room);
+        }
+    }
+
+    fn finish(&mut self, room: &mut Room<'_>) {
+        self.done = true;
+        let from = self.keys.from.as_deref().unwrap_or(room.step);
+        let over_dwell = room.book.dwelt(from).is_some();
+        let glimpses: Vec<Glimpse> = room.book.of(from).iter().map(|seen| seen.glimpse.clone()).collect();
+        let (Some(first), Some(last)) = (glimpses.first(), glimpses.last()) else {
+            self.filled = KEYS.map(|key| Filled::absent(key, "no capture was watched")).to_vec();
+            return;
+        };
+        let spacing = room.book.spacing.as_ref().map_or(room.plan.recipe.nominal_spacing, |spacing| spacing.value);
+        let watched = watch(&glimpses, spacing);
+        let seconds = last.at - first.at;
+        let hops = match watched.unattributed.first() {
+            Some(hop) => Filled::absent(
+                KEYS[0],
+                format!(
+                    "unattributed jump of {:.1} MHz at {:.1} s: tube or interferometer, repeat the watch",
+                    hop.size / 1e6,
+                    hop.at
+                ),
+            ),
+            None => counted(KEYS[0], watched.hops.len(), seconds),
+        };
+        let swaps = if watched.axes_seen {
+            counted(KEYS[1], watched.swaps.len(), seconds)
+        } else {
+            let crossed = glimpses.iter().any(|glimpse| glimpse.modes.iter().any(|mode| mode.crossed.is_some()));
+            let reason = if crossed {
+                "the axes of the modes could not be told apart"
+            } else {
+                "the captures have no crossed photodiode"
+            };
+            Filled::absent(KEYS[1], reason)
+        };
+        let u = phase_u(first, spacing).hypot(phase_u(last, spacing));
+        let line = BudgetLine::direct("walk", "tube phase at both ends", Evaluation::TypeA, u, f64::INFINITY);
+        self.filled = vec![hops, swaps, Filled::number(KEYS[2], &Measured::with_line(watched.cycles, line))];
+        if over_dwell {
+            room.book.hops = watched.hops;
+            room.book.swaps = watched.swaps;
+        }
+        if self.n_lost > 0 {
+            let step = room.step;
+            room.book.remark(format!("{} captures of step {step} could not be read.", self.n_lost));
+        }
+    }
+}
+
+/// A count with what it says about the rate.
+fn counted(key: &str, n: usize, seconds: f64) -> Filled {
+    let n = n as u64;
+    let row = Filled::count(key, n, n, n);
+    if n == 0 && seconds > 0.0 {
+        row.noted(format!(
+            "none in {:.1} min: fewer than {:.0} an hour (95 %)",
+            seconds / 60.0,
+            NONE_SEEN * 3600.0 / seconds
+        ))
+    } else {
+        row
+    }
+}
+
+/// Standard uncertainty of the comb's phase in one capture, in spacings.
+fn phase_u(glimpse: &Glimpse, spacing: f64) -> f64 {
+    let weights: f64 = glimpse.modes.iter().filter(|m| m.u_position > 0.0).map(|m| m.u_position.powi(-2)).sum();
+    if weights > 0.0 && spacing > 0.0 { weights.sqrt().recip() / spacing } else { 0.0 }
+}
+
+impl Step for Watch {
+    fn begin(&mut self, room: &mut Room<'_>) {
+        match (&self.keys.from, self.keys.for_s) {
+            (None, Some(seconds)) => {
+                self.grid = Grid::new(room.now_ms, self.keys.every_s, 0.0, self.keys.every_s);
+                self.next_ms = self.grid.at_or_after(room.now_ms);
+                // `as` saturates.
+                self.end_ms = room.now_ms.saturating_add((seconds * 1e3) as u64);
+            }
+            _ => self.finish(room),
+        }
+    }
+
+    fn wants(&self) -> Wish {
+        if self.done {
+            return Wish::Nothing;
+        }
+        Wish::Capture { not_before_ms: self.next_ms, samples: SAMPLES, keep: false, trace: false }
+    }
+
+    fn take(&mut self, given: Given<'_>, room: &mut Room<'_>) {
+        match given {
+            Given::Capture(captured) => self.n_lost += u64::from(!room.book.keep(captured)),
+            Given::Lost { for_good: true, .. } => return self.finish(room),
+            Given::Lost { .. } => self.n_lost += 1,
+            _ => {}
+        }
+        self.go_on(room);
+    }
+
+    fn filled(&self) -> &[Filled] {
+        &self.filled
+    }
+
+    fn expected_s(&self, _book: &Notebook) -> Option<f64> {
+        let left = if self.done { 0.0 } else { self.end_ms.saturating_sub(self.next_ms) as f64 / 1e3 };
+        Some(if self.end_ms == 0 { self.keys.for_s.unwrap_or(0.0) } else { left })
+    }
+}
