@@ -117,7 +117,11 @@ impl Tube {
                 u_peak_height: 0.002,
                 fwhm: 32e6,
                 area: height * through * 50e6,
-                crossed_height: (!self.linear).then_some(height * through * if even { 0.2 } else { 0.8 }),
+                crossed_height: (!self.linear).then_some(match polarizer {
+                    // The splitter turns with the polarizer.
+                    Some(_) => height * (1.0 - through) + 0.001 * noise.next(),
+                    None => height * if even { 0.2 } else { 0.8 },
+                }),
             });
         }
         let line = |source_id: &str, type_a: bool, u: f64| StoredLine {

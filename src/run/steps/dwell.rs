@@ -17,7 +17,9 @@ use crate::{
 
 /// Captures dark for longer than this after first light, or after the last light: a dark tube, ms.
 const DARK_AFTER_MS: u64 = 30_000;
-/// Captures between two looks at the state for the chart, once the walk is long: the end is looked for at each.
+/// Standard uncertainty of the rate at which an interferometer's body moves, Hz/s: aluminium moves 1,090 MHz for 0.1 K
+/// (`measurement.md` 8), taken as within 0.1 K an hour, rectangular (the hour from memory).
+const U_DRIFT: f64 = 1.09e9 / 3600.0 / 1.732_050_8;
 const KEYS: [&str; 5] = ["warmup_tau", "warmup_ready", "walk_cycles", "walk_growth", "walk_rate"];
 
 /// The step.
@@ -98,6 +100,7 @@ impl Dwell {
         if end != DwellEnd::SourceEnded || dwelt.seconds <= 0.0 {
             dwelt.seconds = now.max(dwelt.seconds);
         }
+        dwelt.warmup.finish();
         let state = dwelt.warmup.state();
         let longest = self.keys.longest_s / 60.0;
         match end {
@@ -115,14 +118,14 @@ impl Dwell {
         }
         if room.book.dark.is_none() {
             self.filled = self.rows(end, &state, room);
-            room.book.gain_chart = charts::gain_chart(room.book, step);
+            room.book.gain_chart = charts::gain_chart(room.book, step, room.plan.recipe.nominal_spacing);
         }
     }
 
     fn rows(&self, end: DwellEnd, state: &WarmupState, room: &Room<'_>) -> Vec<Filled> {
         let why = why_empty(end, &self.keys, state);
         let mut rows = Vec::new();
-        let settled = state.settled;
+        let settled = state.settled || end == DwellEnd::Settled;
         let tau_stands = settled || end == DwellEnd::SourceEnded;
         rows.push(some_number(KEYS[0], state.tau.as_ref().filter(|_| tau_stands), &why));
         rows.push(some_number(KEYS[1], state.ready.as_ref().filter(|_| settled), &why));
@@ -138,9 +141,17 @@ impl Dwell {
             rows.push(Filled::number(KEYS[2], &cycles).noted(note));
             rows.push(Filled::number(KEYS[3], &cycles.scaled(self.wavelength / 2.0)).noted(note));
         }
-        rows.push(some_number(KEYS[4], state.rate.as_ref(), "the rate of the walk could not be found"));
+        let rate = state.rate.clone().map(with_drift);
+        rows.push(some_number(KEYS[4], rate.as_ref(), "the rate of the walk could not be found"));
         rows
     }
+}
+
+/// Peak positions alone cannot tell the tube's walk from the interferometer's.
+fn with_drift(mut rate: Measured) -> Measured {
+    let line = "drift of the interferometer";
+    rate.budget.push(BudgetLine::direct("interferometer drift", line, Evaluation::TypeB, U_DRIFT, f64::INFINITY));
+    rate
 }
 
 fn some_number(key: &str, measured: Option<&Measured>, why: &str) -> Filled {
