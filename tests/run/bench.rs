@@ -247,7 +247,7 @@ impl Driver {
         assert!(remarks.iter().all(|remark| !remark.text.contains("wanted")), "{remarks:?}");
         script.events.push((happening, at));
         script.wants.push(script.run.wants());
-        if script.events.len() % self.every == 0 {
+        if script.events.len().is_multiple_of(self.every) {
             script.sheets.push((script.events.len(), script.run.sheet()));
         }
     }
@@ -280,7 +280,7 @@ impl Driver {
         while !stop(&self.script.run.wants()) && self.one() {}
     }
 
-    pub fn to_the_end(mut self) -> Script {
+    pub fn finish(mut self) -> Script {
         while self.one() {
             assert!(self.script.events.len() < 20_000, "a run that never ends");
         }

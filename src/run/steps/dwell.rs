@@ -33,6 +33,8 @@ pub(super) struct Dwell {
     any_light: bool,
     any_dark: bool,
     n_lost: u64,
+    /// Why the first of them was lost.
+    first_lost: Option<String>,
     begun: bool,
     done: bool,
     filled: Vec<Filled>,
@@ -49,6 +51,7 @@ impl Dwell {
             any_light: false,
             any_dark: false,
             n_lost: 0,
+            first_lost: None,
             begun: false,
             done: false,
             filled: Vec::new(),
@@ -64,6 +67,11 @@ impl Dwell {
         }
     }
 
+    fn lose(&mut self, why: &str) {
+        self.n_lost += 1;
+        self.first_lost.get_or_insert_with(|| why.to_owned());
+    }
+
     fn captured(&mut self, captured: &crate::record::event::Captured, room: &mut Room<'_>) {
         if captured.finding.dark {
             self.any_dark = true;
@@ -73,7 +81,8 @@ impl Dwell {
             return self.go_on(room);
         }
         if captured.finding.refused.is_some() || !room.book.keep(captured) {
-            self.n_lost += 1;
+            let why = captured.finding.refused.as_deref().unwrap_or("out of the order of time");
+            self.lose(why);
             return self.go_on(room);
         }
         self.lit_ms = room.now_ms;
@@ -114,7 +123,8 @@ impl Dwell {
             _ => {}
         }
         if self.n_lost > 0 {
-            room.book.remark(format!("{} captures of step {step} could not be read.", self.n_lost));
+            let why = self.first_lost.as_deref().unwrap_or_default();
+            room.book.remark(format!("{} captures of step {step} could not be read; the first: {why}.", self.n_lost));
         }
         if room.book.dark.is_none() {
             self.filled = self.rows(end, &state, room);
@@ -206,14 +216,15 @@ impl Step for Dwell {
             Given::Capture(captured) => self.captured(captured, room),
             Given::Lost { for_good: true, reason } => {
                 if !self.any_light && !self.any_dark {
+                    let reason = self.first_lost.as_deref().unwrap_or(reason);
                     self.filled = KEYS.iter().map(|key| Filled::absent(key, reason)).collect();
                     self.done = true;
                 } else {
                     self.end(DwellEnd::SourceEnded, room);
                 }
             }
-            Given::Lost { for_good: false, .. } => {
-                self.n_lost += 1;
+            Given::Lost { for_good: false, reason } => {
+                self.lose(reason);
                 self.go_on(room);
             }
             _ => {}
