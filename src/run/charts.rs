@@ -5,13 +5,16 @@
 use chrono::{DateTime, FixedOffset, TimeDelta};
 
 use super::{
-    notebook::{DwellEnd, Notebook, Seen},
+    notebook::{DwellEnd, Notebook},
     steps::Room,
 };
-use crate::record::{
-    event::Captured,
-    finding::ModeFinding,
-    sheet::{ChartMode, GainChart, SweepChart, WalkChart},
+use crate::{
+    behaviour::{GainPoint, gain_points},
+    record::{
+        event::Captured,
+        finding::ModeFinding,
+        sheet::{ChartMode, GainChart, SweepChart, WalkChart},
+    },
 };
 
 /// Most points of a chart.
@@ -43,46 +46,15 @@ fn moment(opened_at: Option<DateTime<FixedOffset>>, seconds: f64) -> Option<Date
     opened_at?.checked_add_signed(TimeDelta::try_milliseconds((seconds * 1e3).round() as i64)?)
 }
 
-/// Heights along the gain line over the last whole cycles of a dwell; none without cycles or where the line is wider than an order.
-pub(crate) fn gain_chart(book: &Notebook, step: &str) -> Option<GainChart> {
+/// Heights along the gain line over the last whole cycles of a dwell; none without cycles.
+pub(crate) fn gain_chart(book: &Notebook, step: &str, nominal_spacing: f64) -> Option<GainChart> {
     let dwelt = book.dwelt(step)?;
     let (window, cycles) = [dwelt.cycles, 1.0].iter().find_map(|n| Some((dwelt.warmup.last_cycles(*n)?, *n)))?;
-    let captures = book.of_within(step, window);
-    let fsr = captures.first().map(|seen| seen.glimpse.free_spectral_range).filter(|fsr| *fsr > 0.0)?;
-    let modes = || captures.iter().flat_map(|seen| seen.glimpse.modes.iter());
-    let greatest = modes().map(|mode| mode.height).fold(0.0, f64::max);
-    if greatest <= 0.0 {
-        return None;
-    }
-    // Middle of the line: circular mean of the positions, weighted by height.
-    let turn = std::f64::consts::TAU / fsr;
-    let cos: f64 = modes().map(|mode| mode.height * (turn * mode.position).cos()).sum();
-    let sin: f64 = modes().map(|mode| mode.height * (turn * mode.position).sin()).sum();
-    let middle = sin.atan2(cos) / turn;
-    let sign = direction(captures, fsr);
-    let detuning = |position: f64| sign * folded(position - middle, fsr);
-    let all: Vec<_> =
-        modes().map(|mode| (detuning(mode.position), mode.height / greatest, mode.u_height / greatest)).collect();
-    let points: Vec<_> =
-        thinned(&all).into_iter().filter(|(d, h, u)| d.is_finite() && h.is_finite() && u.is_finite()).collect();
-    (!points.is_empty()).then_some(GainChart { cycles, points })
-}
-
-fn folded(difference: f64, fsr: f64) -> f64 {
-    difference - fsr * (difference / fsr).round()
-}
-
-/// −1 where modes move up on the scan axis: in warm-up they move down in frequency, so the axis is reversed.
-fn direction(captures: &[Seen], fsr: f64) -> f64 {
-    let mut up = 0.0;
-    for pair in captures.windows(2) {
-        let (before, after) = (&pair[0].glimpse.modes, &pair[1].glimpse.modes);
-        for mode in after {
-            let moves = before.iter().map(|other| folded(mode.position - other.position, fsr));
-            up += moves.min_by(|a, b| a.abs().total_cmp(&b.abs())).unwrap_or(0.0);
-        }
-    }
-    if up > 0.0 { -1.0 } else { 1.0 }
+    let glimpses: Vec<_> = book.of_within(step, window).iter().map(|seen| seen.glimpse.clone()).collect();
+    let finite = |point: &&GainPoint| [point.detuning, point.height, point.u_height].iter().all(|x| x.is_finite());
+    let all = gain_points(&glimpses, nominal_spacing);
+    let all: Vec<_> = all.iter().filter(finite).map(|point| (point.detuning, point.height, point.u_height)).collect();
+    (!all.is_empty()).then(|| GainChart { cycles, points: thinned(&all) })
 }
 
 /// The walk of the last dwell begun.
@@ -94,12 +66,13 @@ pub(crate) fn walk_chart(book: &Notebook) -> Option<WalkChart> {
     }
     let pair = |measured: &crate::uncertainty::Measured| (measured.value, measured.expanded());
     let finite = |(a, b): &(f64, f64)| a.is_finite() && b.is_finite();
+    let settled = state.settled || dwelt.end == Some(DwellEnd::Settled);
     let ended = dwelt.end.is_some_and(|end| end != DwellEnd::Dark);
     Some(WalkChart {
         points: thinned(&state.points).into_iter().filter(finite).collect(),
         prediction: thinned(&state.prediction).into_iter().filter(finite).collect(),
         tau: state.tau.as_ref().map(pair).filter(finite),
-        ready: state.ready.as_ref().filter(|_| state.settled).map(pair).filter(finite),
+        ready: state.ready.as_ref().filter(|_| settled).map(pair).filter(finite),
         dwell_end: ended.then_some(dwelt.seconds),
         hops: book.hops.iter().map(|hop| (hop.at, hop.size)).filter(finite).collect(),
         swaps: book.swaps.iter().map(|swap| swap.at).filter(|at| at.is_finite()).collect(),

@@ -31,7 +31,11 @@ impl Run {
         match happening {
             Happening::Opened(opened) => self.opened(&opened.identity.run_id),
             Happening::Asked { question } => self.asked(question),
-            Happening::Answered { step, word, answer, .. } => self.answered(step, word, answer),
+            Happening::Answered { step, word, answer, by } => {
+                self.answered(step, word, answer)?;
+                self.answered_by.clone_from(by);
+                Ok(())
+            }
             Happening::Captured(captured) => self.captured(captured),
             Happening::CaptureLost { step, number, reason, for_good } => self.lost(step, *number, reason, *for_good),
             Happening::Reading { step, what, value, reason } => self.read(step, what, *value, reason.as_deref()),

@@ -87,6 +87,8 @@ pub struct Run {
     /// Taken up again while such a question was open: high voltage off first.
     interrupted: bool,
     high_voltage: bool,
+    /// Who answered last, for a run opened without a technician.
+    answered_by: String,
     ending: Option<Ending>,
 }
 
@@ -119,6 +121,7 @@ impl Run {
             pending: None,
             interrupted: false,
             high_voltage: false,
+            answered_by: String::new(),
             ending: None,
         };
         run.begin();

@@ -73,6 +73,8 @@ pub(crate) struct Notebook {
     pub sweep_chart: Option<SweepChart>,
     /// Chart of heights along the gain line.
     pub gain_chart: Option<GainChart>,
+    /// Why there can be no verdict on the tube, as sentences.
+    pub holds: Vec<String>,
     /// For a reader of the sheet.
     pub remarks: Vec<String>,
 }
@@ -100,7 +102,7 @@ impl Notebook {
             }
         };
         let list = &mut self.captures[place].1;
-        if list.last().is_some_and(|last| last.glimpse.at >= at) {
+        if list.last().is_some_and(|last| last.glimpse.at > at) {
             return false;
         }
         list.push(seen);
@@ -120,9 +122,12 @@ impl Notebook {
         list.get(first..end).unwrap_or(&[])
     }
 
-    /// Every capture of every dwell.
+    /// Captures of the last whole cycles of every dwell; all of a dwell that has none.
     pub fn of_dwells(&self) -> impl Iterator<Item = &Seen> {
-        self.dwells.iter().flat_map(|dwelt| self.of(&dwelt.step))
+        self.dwells.iter().flat_map(|dwelt| match dwelt.warmup.last_cycles(dwelt.cycles) {
+            Some(window) => self.of_within(&dwelt.step, window),
+            None => self.of(&dwelt.step),
+        })
     }
 
     /// A dwell by the name of its step.

@@ -23,7 +23,8 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
     let finished = run.ending.as_ref().filter(|ending| !ending.unsafe_yet);
     let mut rows = rows(run);
     let day = run.opened_at.map(|at| at.date_naive());
-    let holds = day.map_or_else(Vec::new, |day| plan.station.overdue_on(day));
+    let mut holds = day.map_or_else(Vec::new, |day| plan.station.overdue_on(day));
+    holds.extend(run.book.holds.iter().cloned());
     let complete = finished.is_some_and(|ending| ending.stopped.is_none());
     let dark = run.book.dark.is_some();
     let judged =
@@ -32,7 +33,7 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
         Some(reason) => stopped(reason),
         None => judged,
     };
-    let initials = &run.identity.technician;
+    let initials = if run.identity.technician.is_empty() { &run.answered_by } else { &run.identity.technician };
     let measured_by = finished.filter(|_| complete && !initials.is_empty()).map(|ending| MeasuredBy {
         initials: initials.clone(),
         at: ending.at,

@@ -117,7 +117,11 @@ impl Tube {
                 u_peak_height: 0.002,
                 fwhm: 32e6,
                 area: height * through * 50e6,
-                crossed_height: (!self.linear).then_some(height * through * if even { 0.2 } else { 0.8 }),
+                crossed_height: (!self.linear).then_some(match polarizer {
+                    // The splitter turns with the polarizer.
+                    Some(_) => height * (1.0 - through) + 0.001 * noise.next(),
+                    None => height * if even { 0.2 } else { 0.8 },
+                }),
             });
         }
         let line = |source_id: &str, type_a: bool, u: f64| StoredLine {
@@ -243,7 +247,7 @@ impl Driver {
         assert!(remarks.iter().all(|remark| !remark.text.contains("wanted")), "{remarks:?}");
         script.events.push((happening, at));
         script.wants.push(script.run.wants());
-        if script.events.len() % self.every == 0 {
+        if script.events.len().is_multiple_of(self.every) {
             script.sheets.push((script.events.len(), script.run.sheet()));
         }
     }
@@ -276,7 +280,7 @@ impl Driver {
         while !stop(&self.script.run.wants()) && self.one() {}
     }
 
-    pub fn to_the_end(mut self) -> Script {
+    pub fn finish(mut self) -> Script {
         while self.one() {
             assert!(self.script.events.len() < 20_000, "a run that never ends");
         }

@@ -17,7 +17,9 @@ use crate::{
 
 /// Captures dark for longer than this after first light, or after the last light: a dark tube, ms.
 const DARK_AFTER_MS: u64 = 30_000;
-/// Captures between two looks at the state for the chart, once the walk is long: the end is looked for at each.
+/// Standard uncertainty of the rate at which an interferometer's body moves, Hz/s: aluminium moves 1,090 MHz for 0.1 K
+/// (`measurement.md` 8), taken as within 0.1 K an hour, rectangular (the hour from memory).
+const U_DRIFT: f64 = 1.09e9 / 3600.0 / 1.732_050_8;
 const KEYS: [&str; 5] = ["warmup_tau", "warmup_ready", "walk_cycles", "walk_growth", "walk_rate"];
 
 /// The step.
@@ -31,6 +33,8 @@ pub(super) struct Dwell {
     any_light: bool,
     any_dark: bool,
     n_lost: u64,
+    /// Why the first of them was lost.
+    first_lost: Option<String>,
     begun: bool,
     done: bool,
     filled: Vec<Filled>,
@@ -47,6 +51,7 @@ impl Dwell {
             any_light: false,
             any_dark: false,
             n_lost: 0,
+            first_lost: None,
             begun: false,
             done: false,
             filled: Vec::new(),
@@ -62,6 +67,11 @@ impl Dwell {
         }
     }
 
+    fn lose(&mut self, why: &str) {
+        self.n_lost += 1;
+        self.first_lost.get_or_insert_with(|| why.to_owned());
+    }
+
     fn captured(&mut self, captured: &crate::record::event::Captured, room: &mut Room<'_>) {
         if captured.finding.dark {
             self.any_dark = true;
@@ -71,7 +81,8 @@ impl Dwell {
             return self.go_on(room);
         }
         if captured.finding.refused.is_some() || !room.book.keep(captured) {
-            self.n_lost += 1;
+            let why = captured.finding.refused.as_deref().unwrap_or("out of the order of time");
+            self.lose(why);
             return self.go_on(room);
         }
         self.lit_ms = room.now_ms;
@@ -98,6 +109,7 @@ impl Dwell {
         if end != DwellEnd::SourceEnded || dwelt.seconds <= 0.0 {
             dwelt.seconds = now.max(dwelt.seconds);
         }
+        dwelt.warmup.finish();
         let state = dwelt.warmup.state();
         let longest = self.keys.longest_s / 60.0;
         match end {
@@ -111,18 +123,19 @@ impl Dwell {
             _ => {}
         }
         if self.n_lost > 0 {
-            room.book.remark(format!("{} captures of step {step} could not be read.", self.n_lost));
+            let why = self.first_lost.as_deref().unwrap_or_default();
+            room.book.remark(format!("{} captures of step {step} could not be read; the first: {why}.", self.n_lost));
         }
         if room.book.dark.is_none() {
             self.filled = self.rows(end, &state, room);
-            room.book.gain_chart = charts::gain_chart(room.book, step);
+            room.book.gain_chart = charts::gain_chart(room.book, step, room.plan.recipe.nominal_spacing);
         }
     }
 
     fn rows(&self, end: DwellEnd, state: &WarmupState, room: &Room<'_>) -> Vec<Filled> {
         let why = why_empty(end, &self.keys, state);
         let mut rows = Vec::new();
-        let settled = state.settled;
+        let settled = state.settled || end == DwellEnd::Settled;
         let tau_stands = settled || end == DwellEnd::SourceEnded;
         rows.push(some_number(KEYS[0], state.tau.as_ref().filter(|_| tau_stands), &why));
         rows.push(some_number(KEYS[1], state.ready.as_ref().filter(|_| settled), &why));
@@ -138,9 +151,17 @@ impl Dwell {
             rows.push(Filled::number(KEYS[2], &cycles).noted(note));
             rows.push(Filled::number(KEYS[3], &cycles.scaled(self.wavelength / 2.0)).noted(note));
         }
-        rows.push(some_number(KEYS[4], state.rate.as_ref(), "the rate of the walk could not be found"));
+        let rate = state.rate.clone().map(with_drift);
+        rows.push(some_number(KEYS[4], rate.as_ref(), "the rate of the walk could not be found"));
         rows
     }
+}
+
+/// Peak positions alone cannot tell the tube's walk from the interferometer's.
+fn with_drift(mut rate: Measured) -> Measured {
+    let line = "drift of the interferometer";
+    rate.budget.push(BudgetLine::direct("interferometer drift", line, Evaluation::TypeB, U_DRIFT, f64::INFINITY));
+    rate
 }
 
 fn some_number(key: &str, measured: Option<&Measured>, why: &str) -> Filled {
@@ -195,14 +216,15 @@ impl Step for Dwell {
             Given::Capture(captured) => self.captured(captured, room),
             Given::Lost { for_good: true, reason } => {
                 if !self.any_light && !self.any_dark {
+                    let reason = self.first_lost.as_deref().unwrap_or(reason);
                     self.filled = KEYS.iter().map(|key| Filled::absent(key, reason)).collect();
                     self.done = true;
                 } else {
                     self.end(DwellEnd::SourceEnded, room);
                 }
             }
-            Given::Lost { for_good: false, .. } => {
-                self.n_lost += 1;
+            Given::Lost { for_good: false, reason } => {
+                self.lose(reason);
                 self.go_on(room);
             }
             _ => {}

@@ -47,7 +47,12 @@ impl Sweep {
         let finding = &captured.finding;
         self.dark += u64::from(finding.dark);
         match &finding.refused {
-            Some(reason) => self.reasons.push(format!("capture {}: {reason}", captured.number)),
+            Some(reason) => {
+                let number = captured.number;
+                self.reasons.push(format!("capture {number}: {reason}"));
+                // A verdict leans on these captures singly (`formats.md`: one that cannot be read gives hold).
+                room.book.holds.push(format!("Capture {number} could not be read: {reason}."));
+            }
             None if finding.dark => self.reasons.push(format!("capture {}: no light", captured.number)),
             None => {
                 if !room.book.keep(captured) {
@@ -133,7 +138,9 @@ impl Step for Sweep {
             Given::Capture(captured) => self.captured(captured, room),
             Given::Lost { reason, for_good } => {
                 if !for_good {
+                    let step = room.step;
                     self.reasons.push(reason.to_owned());
+                    room.book.holds.push(format!("A capture of step {step} could not be had or read: {reason}."));
                 } else {
                     // The end of a folder is no capture.
                     self.taken -= 1;

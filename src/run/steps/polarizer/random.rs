@@ -5,7 +5,7 @@
 use super::{take_out, turn};
 use crate::{
     recipe::Polarizer,
-    record::{event::Captured, question::Answer},
+    record::{event::Captured, finding::ModeFinding, question::Answer},
     run::{
         filled::Filled,
         malus::{self, Malus},
@@ -17,14 +17,29 @@ use crate::{
 
 /// Fewest captures that a fit of three unknowns shows a scatter with.
 const FEWEST: usize = 5;
+/// Turns through all angles, until modes of both families were seen: a short tube at rest may show one mode alone for long.
+const MOST_ROUNDS: u32 = 8;
 const KEYS: [&str; 2] = ["polarization_azimuth", "mode_orthogonality"];
 
 /// One mode followed over the captures.
 struct Track {
     /// Number of its place on the comb.
     place: i64,
-    /// (angle, height); a mode that a capture hides has height 0 there.
-    points: Vec<(f64, f64)>,
+    /// What a capture shows of it.
+    sightings: Vec<Sighting>,
+}
+
+/// A mode in one capture.
+#[derive(Clone, Copy)]
+struct Sighting {
+    /// Index of the capture.
+    capture: usize,
+    /// Polarizer, rad.
+    angle: f64,
+    /// Share of the mode's light that passes, where the crossed photodiode shows the rest; else its height, V.
+    signal: f64,
+    /// It is a share: free of how high the mode stands on the gain line.
+    share: bool,
 }
 
 /// The step.
@@ -33,13 +48,16 @@ pub(super) struct Random {
     u_angle: f64,
     spacing: f64,
     index: usize,
+    round: u32,
     turned: bool,
     out: bool,
     done: bool,
-    /// Where the comb's place 0 stood last, and how fast it moves: Hz on the scan axis, Hz a capture.
-    origin: Option<f64>,
-    step: f64,
+    /// Where the comb's place 0 stood last, and when: Hz on the scan axis, s.
+    origin: Option<(f64, f64)>,
+    /// How fast it moves, Hz/s.
+    rate: f64,
     tracks: Vec<Track>,
+    /// Polarizer of each capture that could be used, rad.
     angles: Vec<f64>,
     reason: Option<String>,
     filled: Vec<Filled>,
@@ -52,11 +70,12 @@ impl Random {
             u_angle: 0.0,
             spacing: 0.0,
             index: 0,
+            round: 1,
             turned: false,
             out: false,
             done: false,
             origin: None,
-            step: 0.0,
+            rate: 0.0,
             tracks: Vec::new(),
             angles: Vec::new(),
             reason: None,
@@ -68,70 +87,96 @@ impl Random {
         self.keys.angles.get(self.index).map(|angle| turn(*angle))
     }
 
+    /// The next angle; after the last another round, unless both families were seen.
+    fn go_on(&mut self) {
+        self.turned = false;
+        self.index += 1;
+        if self.index < self.keys.angles.len() {
+            return;
+        }
+        let axes = self.axes();
+        if (family(&axes, 0).is_some() && family(&axes, 1).is_some()) || self.round >= MOST_ROUNDS {
+            self.out = true;
+        } else {
+            self.round += 1;
+            self.index = 0;
+        }
+    }
+
     fn captured(&mut self, captured: &Captured) {
         let finding = &captured.finding;
-        if let Some(reason) = &finding.refused {
-            self.reason.get_or_insert_with(|| reason.clone());
+        if finding.refused.is_some() || finding.dark || finding.modes.is_empty() {
+            // Across a single mode's axis nothing is left to measure.
+            let why = finding.refused.clone().unwrap_or_else(|| "no mode through the polarizer".into());
+            self.reason.get_or_insert(why);
             return;
         }
         let set = self.angle().map_or(0.0, |(angle, _)| angle);
         let angle = captured.fact.polarizer.filter(|angle| angle.is_finite()).unwrap_or(set);
-        let modes: Vec<(f64, f64)> = finding
-            .modes
-            .iter()
-            .filter(|mode| mode.position.is_finite() && mode.peak_height.is_finite())
-            .map(|mode| (mode.position, mode.peak_height))
-            .collect();
+        let sound =
+            |mode: &&ModeFinding| mode.position.is_finite() && mode.peak_height.is_finite() && mode.peak_height > 0.0;
+        let modes: Vec<&ModeFinding> = finding.modes.iter().filter(sound).collect();
         self.angles.push(angle);
-        self.follow(angle, &modes, finding.free_spectral_range);
+        self.follow(angle, captured.fact.taken_s, &modes, finding.free_spectral_range);
     }
 
-    /// Gives each mode its place on the comb; the comb may have walked by less than half a spacing beyond what it did before.
-    fn follow(&mut self, angle: f64, modes: &[(f64, f64)], fsr: f64) {
-        let strongest = modes.iter().max_by(|a, b| a.1.total_cmp(&b.1));
-        let Some((reference, _)) = strongest else { return };
-        let expected = self.origin.map_or(*reference, |origin| origin + self.step);
+    /// Gives each mode its place on the comb; it may have walked by less than half a spacing beyond what it did before.
+    fn follow(&mut self, angle: f64, at: f64, modes: &[&ModeFinding], fsr: f64) {
+        let Some(strongest) = modes.iter().max_by(|a, b| a.peak_height.total_cmp(&b.peak_height)) else { return };
+        let expected = self.origin.map_or(strongest.position, |(origin, then)| origin + self.rate * (at - then));
         // Departure of each mode from the places of the comb, as a circular mean weighted by height.
         let (mut cos, mut sin) = (0.0, 0.0);
-        for (position, height) in modes {
-            let phase = std::f64::consts::TAU * folded(position - expected, fsr) / self.spacing;
-            cos += height * phase.cos();
-            sin += height * phase.sin();
+        for mode in modes {
+            let phase = std::f64::consts::TAU * folded(mode.position - expected, fsr) / self.spacing;
+            cos += mode.peak_height * phase.cos();
+            sin += mode.peak_height * phase.sin();
         }
-        let shift = self.spacing * sin.atan2(cos) / std::f64::consts::TAU;
-        if !shift.is_finite() {
+        let origin = expected + self.spacing * sin.atan2(cos) / std::f64::consts::TAU;
+        if !origin.is_finite() || !at.is_finite() {
             return;
         }
-        if let Some(origin) = self.origin {
-            self.step = expected + shift - origin;
+        if let Some((before, then)) = self.origin.filter(|(_, then)| at > *then) {
+            self.rate = (origin - before) / (at - then);
         }
-        let origin = expected + shift;
-        self.origin = Some(origin);
-        for (position, height) in modes {
-            let place = (folded(position - origin, fsr) / self.spacing).round() as i64;
+        self.origin = Some((origin, at));
+        for mode in modes {
+            let place = (folded(mode.position - origin, fsr) / self.spacing).round() as i64;
+            let crossed = mode.crossed_height.filter(|crossed| crossed.is_finite());
+            let (signal, share) = match crossed {
+                Some(crossed) => (mode.peak_height / (mode.peak_height + crossed.max(0.0)), true),
+                None => (mode.peak_height, false),
+            };
+            let sighting = Sighting { capture: self.angles.len(), angle, signal, share };
             match self.tracks.iter_mut().find(|track| track.place == place) {
-                Some(track) => track.points.push((angle, *height)),
-                None => self.tracks.push(Track { place, points: vec![(angle, *height)] }),
+                Some(track) => track.sightings.push(sighting),
+                None => self.tracks.push(Track { place, sightings: vec![sighting] }),
             }
         }
     }
 
     /// Axis of each mode, by place.
     fn axes(&self) -> Vec<(i64, Malus)> {
-        let mut axes = Vec::new();
-        for track in &self.tracks {
-            let mut points = track.points.clone();
-            // Hidden by the polarizer where the capture shows others only.
-            points.extend(self.angles.iter().filter(|a| !track.points.iter().any(|(b, _)| a == &b)).map(|a| (*a, 0.0)));
-            // A mode that shows at two angles or fewer came or went at the edge of the line.
-            if track.points.len() >= 3
-                && let Some(fit) = malus::fit(&points)
-            {
-                axes.push((track.place, fit));
-            }
-        }
+        let fitted = |track: &Track| {
+            let fit = malus::fit(&self.points(track))?;
+            // Its axis must be known to be told from its neighbour's: 10°.
+            (fit.dof > 0 && fit.u_axis < 10f64.to_radians()).then_some((track.place, fit))
+        };
+        let mut axes: Vec<_> = self.tracks.iter().filter_map(fitted).collect();
         axes.sort_by_key(|(place, _)| *place);
         axes
+    }
+
+    /// (angle, signal) of a mode; heights alone are 0 in captures between two sightings that do not show it.
+    fn points(&self, track: &Track) -> Vec<(f64, f64)> {
+        let shares = track.sightings.iter().any(|sighting| sighting.share);
+        let seen = track.sightings.iter().filter(|sighting| sighting.share == shares);
+        let mut points: Vec<_> = seen.map(|sighting| (sighting.angle, sighting.signal)).collect();
+        if let (false, Some(first), Some(last)) = (shares, track.sightings.first(), track.sightings.last()) {
+            let hidden = (first.capture..=last.capture).filter(|n| track.sightings.iter().all(|s| s.capture != *n));
+            // Captures count from 1 there.
+            points.extend(hidden.filter_map(|n| Some((*self.angles.get(n.checked_sub(1)?)?, 0.0))));
+        }
+        points
     }
 
     fn finish(&mut self) {
@@ -237,9 +282,8 @@ impl Step for Random {
     }
 
     fn take(&mut self, given: Given<'_>, _room: &mut Room<'_>) {
-        let asked = self.out || self.index >= self.keys.angles.len();
         match given {
-            _ if asked => self.finish(),
+            _ if self.out || self.keys.angles.is_empty() => self.finish(),
             Given::Answer(Answer::Done) => self.turned = true,
             Given::Answer(Answer::CannotSay(reason)) => {
                 self.reason = Some(reason.clone());
@@ -248,14 +292,12 @@ impl Step for Random {
             }
             Given::Capture(captured) => {
                 self.captured(captured);
-                self.turned = false;
-                self.index += 1;
+                self.go_on();
             }
             Given::Lost { reason, for_good } => {
                 self.reason.get_or_insert_with(|| reason.to_owned());
-                self.turned = false;
-                self.index += 1;
-                self.out = for_good;
+                self.go_on();
+                self.out |= for_good;
             }
             _ => {}
         }
