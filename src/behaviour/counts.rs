@@ -2,12 +2,11 @@
 //! Must not decide which peaks are modes: that is the sweep's.
 //! Main types: [`Counts`], [`GainPoint`].
 
-use statrs::distribution::{ContinuousCDF, Normal};
-
 use super::glimpse::Glimpse;
 use super::jumps;
 use super::line::{Line, Placed, place_modes};
 use super::track::{Track, pooled_spacing};
+use crate::numerics::distributions::normal_cdf;
 
 /// Phases of a walk cycle at which the comb must have been seen (definition of mode_count).
 const LEAST_PHASES: usize = 20;
@@ -28,8 +27,8 @@ pub struct Counts {
     pub min: u32,
     /// Greatest number.
     pub max: u32,
-    /// Probability that the least number is right: that the mode nearest to the floor is on the side found, in the clearest glimpse
-    /// with that number.
+    /// Probability that the least number is right: that the mode nearest to the floor is on the side found, in the
+    /// clearest glimpse with that number.
     pub min_probability: f64,
     /// The same for the greatest number.
     pub max_probability: f64,
@@ -77,12 +76,11 @@ pub fn count_modes(glimpses: &[Glimpse], floor: f64, spacing: f64) -> Option<Cou
     let clearest = |n: u32| seen.iter().filter(|s| s.0 == n).map(|s| s.1).fold(0.0, f64::max);
     let min = seen.iter().map(|s| s.0).min()?;
     let max = seen.iter().map(|s| s.0).max()?;
-    let probability = |sigmas: f64| Normal::standard().cdf(sigmas);
     Some(Counts {
         min,
         max,
-        min_probability: probability(clearest(min)),
-        max_probability: probability(clearest(max)),
+        min_probability: normal_cdf(clearest(min)),
+        max_probability: normal_cdf(clearest(max)),
         min_doubt: clearest(min) < DOUBT_SIGMAS,
         max_doubt: clearest(max) < DOUBT_SIGMAS,
         cycles,
@@ -106,7 +104,8 @@ fn count(glimpse: &Glimpse, floor: f64) -> Option<(u32, f64)> {
     (n > 0).then_some((n, nearest))
 }
 
-/// Points of the gain line: every mode of every glimpse at its distance from the middle, which is the centroid of the profile.
+/// Points of the gain line: every mode of every glimpse at its distance from the middle, which is the centroid of the
+/// profile.
 ///
 /// Heights are the sum of both photodiodes. Empty where there are too few modes for a profile.
 pub fn gain_points(glimpses: &[Glimpse], spacing: f64) -> Vec<GainPoint> {

@@ -2,12 +2,11 @@
 //! Must not unwrap phases or decide when a dwell ends.
 //! Main type: [`Decay`].
 
-use statrs::distribution::{ContinuousCDF, FisherSnedecor, StudentsT};
+use statrs::distribution::{ContinuousCDF, FisherSnedecor};
 
-use crate::numerics::linear::{self, LinearFit};
-
-/// Bins that the points are gathered in: what a fit costs does not grow with the length of the warm-up.
-const BINS: usize = 96;
+pub(crate) use super::trial::WalkPoint;
+use super::trial::{Bin, Trial, correlation_factor, gather, minimize, polished, tangent, trial, with_fast_part};
+use crate::numerics::distributions::student_t_quantile;
 
 /// Fewest bins to fit.
 const LEAST_BINS: usize = 8;
@@ -17,63 +16,6 @@ const FAST_LEVEL: f64 = 1e-3;
 
 /// Time constants tried, per fit: from 1/20 of the time seen to 60 times.
 const SLOW_STEPS: usize = 28;
-
-/// Ratios τ_f/τ tried at first.
-const FAST_RATIOS: [f64; 7] = [0.02, 0.035, 0.06, 0.1, 0.17, 0.28, 0.42];
-
-/// One observation of the walk.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub(crate) struct WalkPoint {
-    /// Seconds since first light.
-    pub at: f64,
-    /// Spacings walked.
-    pub walked: f64,
-    /// Its standard uncertainty.
-    pub u: f64,
-}
-
-/// A bin of neighbouring observations.
-#[derive(Debug, Clone, Copy)]
-struct Bin {
-    at: f64,
-    /// Variance of the times in it: the mean of exp(−t/τ) is exp(−t̄/τ)·(1 + var/2τ²) to second order.
-    spread: f64,
-    walked: f64,
-    weight: f64,
-}
-
-impl Bin {
-    fn exponential(&self, tau: f64) -> f64 {
-        (-self.at / tau).exp() * (1.0 + 0.5 * self.spread / (tau * tau))
-    }
-}
-
-/// Time constants of a trial and the best linear coefficients that go with them.
-#[derive(Debug, Clone)]
-struct Trial {
-    tau: f64,
-    fast_tau: Option<f64>,
-    /// C, A, A_f.
-    fit: LinearFit,
-}
-
-impl Trial {
-    fn amplitude(&self) -> f64 {
-        self.fit.coefficients[1]
-    }
-
-    fn fast_amplitude(&self) -> f64 {
-        self.fit.coefficients.get(2).copied().unwrap_or(0.0)
-    }
-
-    /// Walk expected between `at` and `at + horizon`, and its sensitivity to A.
-    fn residual(&self, at: f64, horizon: f64) -> (f64, f64) {
-        let left = |tau: f64| (-at / tau).exp() * -(-horizon / tau).exp_m1();
-        let slope = left(self.tau);
-        let fast = self.fast_tau.map_or(0.0, |tau| self.fast_amplitude() * left(tau));
-        (self.amplitude() * slope + fast, slope)
-    }
-}
 
 /// The fitted walk.
 #[derive(Debug, Clone)]
@@ -98,8 +40,9 @@ impl Decay {
     /// Fits the walk, or `None` where the points do not allow it.
     ///
     /// # Method
-    /// 1. Gather the points in bins. 2. Variable projection: for each trial τ the offset and amplitudes are a weighted linear
-    ///    fit; the sum of squares is then searched over τ, by grid and golden section (Golub & Pereyra 1973).
+    /// 1. Gather the points in bins. 2. Variable projection: for each trial τ the offset and amplitudes are a weighted
+    ///    linear fit; the sum of squares is then searched over τ, by grid, golden section and Gauss-Newton (Golub &
+    ///    Pereyra 1973).
     /// 3. The same with a fast part, kept where it passes an F-test at 0.1 %.
     /// 4. Variances times max(1, reduced χ²) times (1 + ρ)/(1 − ρ), ρ the correlation of neighbouring residuals.
     pub fn fit(points: &[WalkPoint]) -> Option<Self> {
@@ -114,8 +57,10 @@ impl Decay {
         }
         let grid: Vec<f64> =
             (0..SLOW_STEPS).map(|k| span / 20.0 * 1200f64.powf(k as f64 / (SLOW_STEPS - 1) as f64)).collect();
-        let single = minimize(&grid, 24, |tau| trial(&bins, tau, None))?;
-        let double = with_fast_part(&bins, &grid, span);
+        let single = polished(&bins, minimize(&grid, 6, |tau| trial(&bins, tau, None))?, true, 8);
+        // A slow part far beyond the time seen cannot be told from a straight line.
+        let slow: Vec<f64> = grid.iter().copied().filter(|tau| *tau < 10.0 * span).collect();
+        let double = if bins.len() < LEAST_BINS + 4 { None } else { with_fast_part(&bins, &slow) };
         let best = match double {
             Some(double) if is_significant(&single, &double) => double,
             _ => single,
@@ -124,22 +69,27 @@ impl Decay {
     }
 
     fn account(best: Trial, bins: &[Bin], grid: &[f64]) -> Option<Self> {
-        let (covariance, columns) = tangent(&best, bins)?;
+        let fit = tangent(&best, bins, true)?;
+        let (covariance, columns) = (fit.covariance, fit.coefficients.len());
         let dof = (bins.len() as f64 - columns as f64).max(1.0);
         let inflation = (best.fit.sum_of_squares / dof).max(1.0) * correlation_factor(&best, bins);
         let u_ln_tau = (covariance[2 * columns + 2] * inflation).sqrt() / best.tau;
-        let mut taus: Vec<f64> = grid.to_vec();
         let reach = if u_ln_tau.is_finite() { u_ln_tau.clamp(1e-6, 1.0) } else { 1.0 };
-        taus.extend((1..=10).flat_map(|k| [-1.0, 1.0].map(|s| best.tau * (s * 0.3 * f64::from(k) * reach).exp())));
-        let mut around: Vec<Trial> = taus
-            .into_iter()
-            .filter_map(|tau| match best.fast_tau {
-                Some(fast) => best_fast(bins, tau, &[fast / tau * 0.7, fast / tau, fast / tau * 1.4], 6),
-                None => trial(bins, tau, None),
-            })
-            .collect();
+        let mut taus: Vec<f64> =
+            (1..=12).flat_map(|k| [-1.0, 1.0].map(|s| best.tau * (s * 0.3 * f64::from(k) * reach).exp())).collect();
+        if reach > 0.1 {
+            // The tangent is no guide here: look everywhere.
+            taus.extend(grid);
+        }
+        // The fast part follows τ from one trial to the next.
+        let follow = |tau: f64| {
+            let start = trial(bins, tau, best.fast_tau)?;
+            Some(if best.fast_tau.is_some() { polished(bins, start, false, 3) } else { start })
+        };
+        let mut around: Vec<Trial> =
+            taus.into_iter().filter(|tau| best.fast_tau.is_none_or(|f| f < *tau)).filter_map(follow).collect();
         around.push(best.clone());
-        let t95 = StudentsT::new(0.0, 1.0, dof).map_or(1.645, |t| t.inverse_cdf(0.95));
+        let t95 = student_t_quantile(0.95, dof).unwrap_or(1.645);
         let u_form = form_error(&best, bins, grid);
         Some(Self { best, around, covariance, columns, u_form, inflation, dof, t95 })
     }
@@ -196,9 +146,9 @@ impl Decay {
         self.best.residual(at, horizon).0
     }
 
-    /// Upper bound of that walk at one-sided 95 %: the greatest value among all (A, τ) whose sum of squares lies within t² of
-    /// the least (profile likelihood), so that a τ known badly to one side is not hidden by a tangent; the form of the model
-    /// adds its share.
+    /// Upper bound of that walk at one-sided 95 %: the greatest value among all (A, τ) whose sum of squares lies within
+    /// t² of the least (profile likelihood), so that a τ known badly to one side is not hidden by a tangent; the form
+    /// of the model adds its share.
     pub fn residual_upper(&self, at: f64, horizon: f64) -> f64 {
         let allowed = self.t95().powi(2) * self.inflation;
         let expected = self.residual(at, horizon);
@@ -257,89 +207,6 @@ impl Decay {
     }
 }
 
-fn gather(points: &[WalkPoint]) -> Vec<Bin> {
-    let usable: Vec<&WalkPoint> =
-        points.iter().filter(|p| p.at.is_finite() && p.walked.is_finite() && p.u.is_finite() && p.u > 0.0).collect();
-    let size = usable.len().div_ceil(BINS).max(1);
-    usable
-        .chunks(size)
-        .map(|chunk| {
-            let weight: f64 = chunk.iter().map(|p| p.u.powi(-2)).sum();
-            let mean = |f: &dyn Fn(&WalkPoint) -> f64| chunk.iter().map(|p| f(p) * p.u.powi(-2)).sum::<f64>() / weight;
-            let at = mean(&|p| p.at);
-            Bin { at, spread: mean(&|p| (p.at - at).powi(2)), walked: mean(&|p| p.walked), weight: weight.sqrt() }
-        })
-        .collect()
-}
-
-fn solve(bins: &[Bin], rows: impl Fn(&Bin) -> Vec<f64>) -> Option<LinearFit> {
-    let design: Vec<f64> = bins.iter().flat_map(rows).collect();
-    let values: Vec<f64> = bins.iter().map(|b| b.walked).collect();
-    let weights: Vec<f64> = bins.iter().map(|b| b.weight).collect();
-    linear::weighted(&design, &values, &weights).ok()
-}
-
-fn trial(bins: &[Bin], tau: f64, fast_tau: Option<f64>) -> Option<Trial> {
-    let fit = solve(bins, |b| match fast_tau {
-        Some(fast) => vec![1.0, -b.exponential(tau), -b.exponential(fast)],
-        None => vec![1.0, -b.exponential(tau)],
-    })?;
-    Some(Trial { tau, fast_tau, fit })
-}
-
-/// Best trial over a grid of positive numbers, refined by golden section on the logarithm.
-fn minimize(grid: &[f64], rounds: usize, at: impl Fn(f64) -> Option<Trial>) -> Option<Trial> {
-    const GOLDEN: f64 = 0.618_033_988_749_894_9;
-    let cost = |t: &Option<Trial>| t.as_ref().map_or(f64::INFINITY, |t| t.fit.sum_of_squares);
-    let trials: Vec<Option<Trial>> = grid.iter().map(|x| at(*x)).collect();
-    let (place, _) = trials.iter().enumerate().min_by(|a, b| cost(a.1).total_cmp(&cost(b.1)))?;
-    let mut best = trials[place].clone()?;
-    let mut low = grid[place.saturating_sub(1)].ln();
-    let mut high = grid[(place + 1).min(grid.len() - 1)].ln();
-    let (mut left, mut right) = (high - GOLDEN * (high - low), low + GOLDEN * (high - low));
-    let (mut at_left, mut at_right) = (at(left.exp()), at(right.exp()));
-    for _ in 0..rounds {
-        if cost(&at_left) < cost(&at_right) {
-            high = right;
-            (right, at_right) = (left, at_left);
-            left = high - GOLDEN * (high - low);
-            at_left = at(left.exp());
-        } else {
-            low = left;
-            (left, at_left) = (right, at_right);
-            right = low + GOLDEN * (high - low);
-            at_right = at(right.exp());
-        }
-    }
-    for candidate in [at_left, at_right].into_iter().flatten() {
-        if candidate.fit.sum_of_squares < best.fit.sum_of_squares {
-            best = candidate;
-        }
-    }
-    Some(best)
-}
-
-/// Best fast part for a given τ; both amplitudes must be positive: a warming tube grows.
-fn best_fast(bins: &[Bin], tau: f64, ratios: &[f64], rounds: usize) -> Option<Trial> {
-    let growing = |t: Trial| (t.amplitude() > 0.0 && t.fast_amplitude() > 0.0).then_some(t);
-    minimize(ratios, rounds, |ratio| trial(bins, tau, Some(ratio * tau)).and_then(growing))
-}
-
-fn with_fast_part(bins: &[Bin], grid: &[f64], span: f64) -> Option<Trial> {
-    if bins.len() < LEAST_BINS + 4 {
-        return None;
-    }
-    // A fast part shorter than the time between bins cannot be seen, a slow one far beyond the time seen not be told.
-    let slow: Vec<f64> = grid.iter().copied().filter(|tau| *tau < 10.0 * span).collect();
-    let rough = minimize(&slow, 0, |tau| best_fast(bins, tau, &FAST_RATIOS, 0))?;
-    let ratio = rough.fast_tau? / rough.tau;
-    let near: Vec<f64> = [0.6, 0.75, 0.87, 1.0, 1.15, 1.33, 1.7].iter().map(|f| f * rough.tau).collect();
-    minimize(&near, 12, |tau| {
-        let ratio = ratio * rough.tau / tau;
-        best_fast(bins, tau, &[ratio * 0.5, ratio * 0.7, ratio, ratio * 1.4, (ratio * 2.0).min(0.6)], 8)
-    })
-}
-
 fn is_significant(single: &Trial, double: &Trial) -> bool {
     let dof = double.fit.degrees_of_freedom as f64 - 1.0;
     let gain = single.fit.sum_of_squares - double.fit.sum_of_squares;
@@ -351,20 +218,6 @@ fn is_significant(single: &Trial, double: &Trial) -> bool {
     FisherSnedecor::new(2.0, dof).is_ok_and(|d| d.sf(f) < FAST_LEVEL)
 }
 
-/// Covariance by the tangent at the best trial, columns (C, A, τ[, A_f, τ_f]).
-fn tangent(best: &Trial, bins: &[Bin]) -> Option<(Vec<f64>, usize)> {
-    let by_tau = |b: &Bin, amplitude: f64, tau: f64| -amplitude * b.exponential(tau) * b.at / (tau * tau);
-    let fit = solve(bins, |b| {
-        let mut row = vec![1.0, -b.exponential(best.tau), by_tau(b, best.amplitude(), best.tau)];
-        if let Some(fast) = best.fast_tau {
-            row.extend([-b.exponential(fast), by_tau(b, best.fast_amplitude(), fast)]);
-        }
-        row
-    })?;
-    let columns = if best.fast_tau.is_some() { 5 } else { 3 };
-    Some((fit.covariance, columns))
-}
-
 /// Shift of τ when the first fifth of the bins is left out, as a standard uncertainty (limits of a rectangle).
 ///
 /// A walk that is not quite of the form fitted gives another τ there; noise does too, so the shift is never too small.
@@ -373,26 +226,8 @@ fn form_error(best: &Trial, bins: &[Bin], grid: &[f64]) -> f64 {
     let again = match best.fast_tau {
         // The fast part is over by then, or nearly: its time constant is kept.
         Some(fast) => minimize(grid, 16, |tau| trial(late, tau, Some(fast).filter(|f| *f < 0.9 * tau))),
-        None => minimize(grid, 16, |tau| trial(late, tau, None)),
+        None => None,
     };
+    let again = again.or_else(|| minimize(grid, 16, |tau| trial(late, tau, None)));
     again.map_or(0.0, |again| (again.tau - best.tau).abs() / 3f64.sqrt())
-}
-
-/// (1 + ρ)/(1 − ρ) with ρ the correlation of neighbouring weighted residuals, within [0, 0.95].
-fn correlation_factor(best: &Trial, bins: &[Bin]) -> f64 {
-    let residuals: Vec<f64> = bins
-        .iter()
-        .map(|b| {
-            let fast = best.fast_tau.map_or(0.0, |tau| best.fast_amplitude() * b.exponential(tau));
-            let model = best.fit.coefficients[0] - best.amplitude() * b.exponential(best.tau) - fast;
-            (b.walked - model) * b.weight
-        })
-        .collect();
-    let square: f64 = residuals.iter().map(|r| r * r).sum();
-    if square <= 0.0 {
-        return 1.0;
-    }
-    let lagged: f64 = residuals.windows(2).map(|w| w[0] * w[1]).sum();
-    let rho = (lagged / square).clamp(0.0, 0.95);
-    (1.0 + rho) / (1.0 - rho)
 }

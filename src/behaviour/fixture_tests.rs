@@ -44,23 +44,10 @@ fn walk_tau_hop_and_swap() {
     warmup.finish();
     let state = warmup.state();
     let tau = state.tau.unwrap();
-    println!(
-        "{} ± {}, tau {} ± {} fast {:?} n {:?} ready {:?} settled {} window {:?}",
-        state.walked,
-        state.u_walked,
-        tau.value,
-        tau.u(),
-        state.fast_part,
-        state.n_infinity,
-        state.ready,
-        state.settled,
-        warmup.last_cycles(1.0)
-    );
     assert!((state.walked - 22.30437).abs() < 0.02);
     assert!((tau.value - 90.0).abs() < (3.0 * tau.u()).min(0.9), "{} ± {}", tau.value, tau.u());
 
     let watched = watch(&glimpses, NOMINAL);
-    println!("{watched:?}");
     assert_eq!((watched.hops.len(), watched.swaps.len()), (1, 1));
     assert!(watched.unattributed.is_empty() && watched.interferometer.is_empty());
     assert!((watched.hops[0].at - 150.2).abs() <= 3.0 && (watched.swaps[0].at - 200.3).abs() <= 3.0);

@@ -1,9 +1,11 @@
-//! What a tube does over time: walk and warm-up, hops and swaps, mode counts, points of the gain line, power over walk cycles.
+//! What a tube does over time: walk and warm-up, hops and swaps, mode counts, gain line, power over walk cycles.
 //! Must not read a clock or do I/O: everything is a function of the glimpses taken.
 //! Main types: [`Glimpse`], [`Warmup`], [`Watched`], [`Counts`], [`CyclePower`].
 
+mod attribution;
 mod counts;
 mod decay;
+mod drift;
 mod glimpse;
 mod jumps;
 mod line;
@@ -12,10 +14,12 @@ mod swaps;
 #[cfg(test)]
 mod synthetic;
 mod track;
+mod trial;
 mod warmup;
 mod watch;
 
 pub use counts::{Counts, GainPoint, count_modes, gain_points};
+pub use drift::line_drift;
 pub use glimpse::{Glimpse, GlimpseMode};
 pub use power::{CyclePower, cycle_power, power_drift};
 pub use warmup::{Warmup, WarmupSettings, WarmupState};

@@ -3,8 +3,7 @@
 //! Main type: [`CyclePower`]; main functions: [`cycle_power`], [`power_drift`].
 
 use super::glimpse::Glimpse;
-use super::track::median;
-use crate::numerics::linear;
+use crate::numerics::summary::{NORMAL_SD_PER_MAD, median, straight_line};
 use crate::uncertainty::{BudgetLine, Evaluation, Measured};
 
 /// Time over which readings are averaged, s (definition of power).
@@ -37,10 +36,11 @@ pub struct CyclePower {
 /// `None` with fewer than five 1 s averages, or no light.
 ///
 /// # Method
-/// 1. Average readings within each second. 2. Noise of an average: robust scatter about the line through its neighbours.
+/// 1. Average readings within each second. 2. Noise of an average: robust scatter about the line through its
+///    neighbours.
 /// 3. Mean: each second counts by the time it stands for, as captures need not be even; its u is noise over √n.
-/// 4. Ripple: the extremes of n averages of pure noise lie about 2√(2 ln n)·σ apart (extreme value theory, leading term); what is
-///    found is taken as √(found² − noise²), exact for none and good for much ripple.
+/// 4. Ripple: the extremes of n averages of pure noise lie about 2√(2 ln n)·σ apart (extreme value theory, leading
+///    term); what is found is taken as √(found² − noise²), exact for none and good for much ripple.
 pub fn cycle_power(glimpses: &[Glimpse], window: (f64, f64)) -> Option<CyclePower> {
     let averages = averages(glimpses, window);
     let n = averages.len();
@@ -86,19 +86,16 @@ pub fn power_drift(glimpses: &[Glimpse], cycles: &[(f64, f64)]) -> Option<Measur
         return None;
     }
     let mean = means.iter().map(|m| m.1).sum::<f64>() / means.len() as f64;
-    let start = means[0].0;
-    let design: Vec<f64> = means.iter().flat_map(|m| [1.0, m.0 - start]).collect();
-    let values: Vec<f64> = means.iter().map(|m| m.1 / mean).collect();
-    let fit = linear::weighted(&design, &values, &vec![1.0; values.len()]).ok()?;
-    let (slope, u) = (*fit.coefficients.get(1)?, fit.standard_error(1)?);
+    let (times, values): (Vec<f64>, Vec<f64>) = means.iter().map(|m| (m.0, m.1 / mean)).unzip();
+    let fit = straight_line(&times, &values).ok()?;
     let line = BudgetLine::direct(
         "scatter",
         "scatter of cycle means about their line",
         Evaluation::TypeA,
-        u,
+        fit.u_slope?,
         fit.degrees_of_freedom as f64,
     );
-    Some(Measured::with_line(slope, line))
+    Some(Measured::with_line(fit.slope, line))
 }
 
 /// (mean time, mean power) of each second of the window that has readings.
@@ -131,9 +128,9 @@ fn time_mean(averages: &[(f64, f64)], (from, to): (f64, f64)) -> f64 {
 }
 
 fn noise(averages: &[(f64, f64)]) -> f64 {
-    // √1.5: a value less the mean of its two neighbours. 1.4826: normal standard deviation over median absolute deviation.
-    let off = averages.windows(3).map(|w| (w[1].1 - 0.5 * (w[0].1 + w[2].1)).abs() / 1.5f64.sqrt());
-    1.4826 * median(off.collect())
+    // √1.5: a value less the mean of its two neighbours.
+    let off: Vec<f64> = averages.windows(3).map(|w| (w[1].1 - 0.5 * (w[0].1 + w[2].1)).abs() / 1.5f64.sqrt()).collect();
+    NORMAL_SD_PER_MAD * median(&off).unwrap_or(0.0)
 }
 
 #[cfg(test)]
@@ -163,7 +160,8 @@ mod tests {
 
     #[test]
     fn noise_alone_is_hardly_ripple() {
-        // 1 % noise makes 0.7 % an average and 4 % of apparent ripple over 180; what stays is within three of its own u.
+        // 1 % noise makes 0.7 % an average and 4 % of apparent ripple over 180; what stays is within three of its own
+        // u.
         for seed in 1..=20 {
             let power = cycle_power(&glimpses(seed, 1e-5, |_| 1e-3), (60.0, 240.0)).unwrap();
             assert!(power.ripple.value < 3.0 * power.ripple.u() && power.ripple_floor > 0.03, "{power:?}");

@@ -4,7 +4,8 @@
 
 use super::jumps::Jump;
 use super::line::Placed;
-use super::track::{Track, median};
+use super::track::Track;
+use crate::numerics::summary::median;
 
 /// Glimpses that must agree on either side of an exchange: it must persist over three captures.
 const PERSIST: usize = 3;
@@ -27,11 +28,12 @@ pub(crate) struct Exchanges {
 /// Exchanges of axis.
 ///
 /// # Method
-/// 1. Share of crossed light q of each mode; the families' levels are the middles of the lower and upper half of all shares.
-/// 2. A mode keeps its number on the comb while it walks, and neighbours are at right angles: the sign of (−1)^k·(q − middle)
-///    is one and the same for all modes of all glimpses. A glimpse's sense is that sign where its modes agree.
-/// 3. An exchange is a change of sense between glimpses that follow each other, with three of one sense before and three of
-///    the other after. A jump of the comb (known only modulo one spacing) starts a new count.
+/// 1. Share of crossed light q of each mode; the families' levels are the middles of the lower and upper half of all
+///    shares.
+/// 2. A mode keeps its number on the comb while it walks, and neighbours are at right angles: the sign of (−1)^k·(q −
+///    middle) is one and the same for all modes of all glimpses. A glimpse's sense is that sign where its modes agree.
+/// 3. An exchange is a change of sense between glimpses that follow each other, with three of one sense before and
+///    three of the other after. A jump of the comb (known only modulo one spacing) starts a new count.
 pub(crate) fn find(track: &Track, placed: &[Placed], jumps: &[Jump]) -> Exchanges {
     let shares: Vec<f64> = placed.iter().filter_map(share).collect();
     let Some((low, high)) = levels(shares) else { return Exchanges::default() };
@@ -72,7 +74,10 @@ fn levels(shares: Vec<f64>) -> Option<(f64, f64)> {
     let highest = shares.iter().copied().fold(f64::NEG_INFINITY, f64::max);
     let middle = 0.5 * (lowest + highest);
     let (lower, upper): (Vec<f64>, Vec<f64>) = shares.into_iter().partition(|q| *q < middle);
-    (lower.len() >= PERSIST && upper.len() >= PERSIST).then(|| (median(lower), median(upper)))
+    if lower.len() < PERSIST || upper.len() < PERSIST {
+        return None;
+    }
+    Some((median(&lower)?, median(&upper)?))
 }
 
 /// +1 or −1 where the modes of a glimpse agree, weighted by height; `None` where they do not say.

@@ -28,6 +28,8 @@ pub(crate) struct Synthetic {
     /// Displacements of the interferometer: comb and line together.
     pub shifts: Vec<(f64, f64)>,
     pub swaps: Vec<f64>,
+    /// Drift of the interferometer, Hz/s: comb and line together.
+    pub drift: f64,
     /// (from, to, factor) on every height.
     pub knocks: Vec<(f64, f64, f64)>,
     /// Share of a mode's light in its own photodiode.
@@ -52,6 +54,7 @@ impl Synthetic {
             hops: vec![],
             shifts: vec![],
             swaps: vec![],
+            drift: 0.0,
             knocks: vec![],
             polarizer: 0.95,
         }
@@ -72,7 +75,7 @@ impl Synthetic {
         let mut noise = Noise(self.seed.wrapping_mul(0x9E37_79B9_7F4A_7C15) ^ at.to_bits());
         noise.normal();
         let sum = |events: &[(f64, f64)]| events.iter().filter(|e| e.0 <= at).map(|e| e.1).sum::<f64>();
-        let line = self.line + sum(&self.shifts);
+        let line = self.line + sum(&self.shifts) + self.drift * at;
         let comb = line + 0.3e9 + self.direction * self.spacing * self.walked(at) + sum(&self.hops);
         let swapped = self.swaps.iter().filter(|s| **s <= at).count() as i64;
         let knock: f64 = self.knocks.iter().filter(|k| k.0 <= at && at < k.1).map(|k| k.2).product();

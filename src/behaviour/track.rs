@@ -5,6 +5,7 @@
 use std::f64::consts::TAU;
 
 use super::glimpse::{Glimpse, GlimpseMode};
+use crate::numerics::summary::{NORMAL_SD_PER_MAD, median};
 
 /// Least uncertainty of a mode's position when modes are averaged, Hz: below it a stated uncertainty is not believed to
 /// differ between the modes of one capture.
@@ -22,7 +23,8 @@ const CLUSTER_START: usize = 16;
 /// Points over which the rate of walk is taken to predict the next phase.
 const LOOK_BACK: usize = 4;
 
-/// Largest error of a predicted step, in cycles, at which the phase may still be unwrapped. Half a cycle is the hard bound.
+/// Largest error of a predicted step, in cycles, at which the phase may still be unwrapped. Half a cycle is the hard
+/// bound.
 const LARGEST_STEP_ERROR: f64 = 0.3;
 
 /// Shortest time over which the rate of walk changes by itself, s (the fast part of a warm-up; common practice).
@@ -65,11 +67,11 @@ impl Track {
     /// * `spacing`: mode spacing, Hz; 1 % off does no harm.
     ///
     /// # Method
-    /// 1. Unfold each position to within half an order of the running place of the cluster of modes, so that the cut between
-    ///    orders lies opposite to the gain line.
+    /// 1. Unfold each position to within half an order of the running place of the cluster of modes, so that the cut
+    ///    between orders lies opposite to the gain line.
     /// 2. Phase of a glimpse: argument of the weighted mean of exp(2πi·position/spacing) over its modes.
-    /// 3. Unwrap from the last glimpse backward, each step nearest to what the rate just after it predicts: the walk slows
-    ///    down, so the end is the safe place to start. Stop where the rate can no longer say which cycle it is.
+    /// 3. Unwrap from the last glimpse backward, each step nearest to what the rate just after it predicts: the walk
+    ///    slows down, so the end is the safe place to start. Stop where the rate can no longer say which cycle it is.
     pub fn follow(glimpses: &[Glimpse], spacing: f64) -> Self {
         let mut track = Self { spacing, origin: 0.0, points: Vec::new(), early_unknown: false, scatter: 0.0 };
         if !(spacing.is_finite() && spacing > 0.0) {
@@ -131,6 +133,21 @@ impl Track {
         }
     }
 
+    /// First of the points before `point` that make up `cycles` of walk and at least `least` points.
+    pub fn reach_back(&self, point: usize, cycles: f64, least: usize) -> usize {
+        let Some(end) = self.points.get(point) else { return 0 };
+        let far = |i: &usize| (self.points[*i].phase - end.phase).abs() >= cycles && *i + least <= point;
+        (0..point).rev().find(far).unwrap_or(0)
+    }
+
+    /// One past the last of the points from `point` on that make up `cycles` of walk and at least `least` points.
+    pub fn reach_on(&self, point: usize, cycles: f64, least: usize) -> usize {
+        let n = self.points.len();
+        let Some(start) = self.points.get(point) else { return n };
+        let far = |i: &usize| (self.points[*i].phase - start.phase).abs() >= cycles && *i >= point + least;
+        (point..n).find(far).map_or(n, |i| i + 1)
+    }
+
     /// Position of a mode, unfolded near the cluster of its point, Hz from the origin of the track.
     pub fn unfolded(&self, point: &TrackPoint, mode: &GlimpseMode, free_spectral_range: f64) -> f64 {
         unfold(mode.position - self.origin, point.cluster, free_spectral_range)
@@ -152,7 +169,7 @@ pub(crate) fn pooled_spacing(glimpses: &[Glimpse], nominal: f64) -> f64 {
     if measured.len() < ENOUGH {
         return nominal;
     }
-    let pooled = median(measured);
+    let Some(pooled) = median(&measured) else { return nominal };
     let ratio = (pooled / nominal).round();
     if ratio >= 2.0 && (pooled / nominal / ratio - 1.0).abs() < 0.05 { pooled / ratio } else { pooled }
 }
@@ -208,19 +225,6 @@ fn scatter(points: &[TrackPoint]) -> f64 {
             (w[1].phase - line) / (1.0 + share.powi(2) + (1.0 - share).powi(2)).sqrt()
         })
         .collect();
-    if residuals.is_empty() {
-        return 0.0;
-    }
-    // 1.4826: standard deviation over median absolute deviation of a normal distribution.
-    1.4826 * median(residuals.iter().map(|r| r.abs()).collect())
-}
-
-/// Middle value of finite numbers; 0 of none.
-pub(crate) fn median(mut values: Vec<f64>) -> f64 {
-    if values.is_empty() {
-        return 0.0;
-    }
-    values.sort_by(f64::total_cmp);
-    let middle = values.len() / 2;
-    if values.len() % 2 == 1 { values[middle] } else { 0.5 * (values[middle - 1] + values[middle]) }
+    let sizes: Vec<f64> = residuals.iter().map(|r| r.abs()).collect();
+    NORMAL_SD_PER_MAD * median(&sizes).unwrap_or(0.0)
 }

@@ -43,8 +43,9 @@ pub struct Warmup {
 /// What is known of a warm-up.
 #[derive(Debug, Clone, PartialEq, Default)]
 pub struct WarmupState {
-    /// Mode spacings walked from first light to the last glimpse, sudden jumps taken out. The part before the first glimpse is
-    /// taken from the fit; where [`Self::early_unknown`], it counts from the first glimpse that could be followed.
+    /// Mode spacings walked from first light to the last glimpse, sudden jumps taken out. The part before the first
+    /// glimpse is taken from the fit; where [`Self::early_unknown`], it counts from the first glimpse that could be
+    /// followed.
     pub walked: f64,
     /// Its standard uncertainty.
     pub u_walked: f64,
@@ -56,7 +57,8 @@ pub struct WarmupState {
     pub n_infinity: Option<Measured>,
     /// Time constant, s, and share of the fast part, where one is significant at 0.1 %.
     pub fast_part: Option<(f64, f64)>,
-    /// Earliest time after which the upper 95 % prediction of the walk over the horizon stays below the bound, s since first light.
+    /// Earliest time after which the upper 95 % prediction of the walk over the horizon stays below the bound, s since
+    /// first light.
     pub ready: Option<Measured>,
     /// Expected walk over the horizon from the last glimpse on, mode spacings.
     pub residual: Option<f64>,
@@ -93,7 +95,8 @@ impl Warmup {
         Self { settings, glimpses: Vec::new(), due: 0, analysis: OnceLock::new() }
     }
 
-    /// Takes the next glimpse, in order of time. Glimpses without modes, and ones not later than the last, are passed over.
+    /// Takes the next glimpse, in order of time. Glimpses without modes, and ones not later than the last, are passed
+    /// over.
     pub fn take(&mut self, glimpse: &Glimpse) {
         if !glimpse.is_usable() || self.glimpses.last().is_some_and(|last| glimpse.at <= last.at) {
             return;

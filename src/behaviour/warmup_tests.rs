@@ -121,7 +121,8 @@ fn a_fast_part_is_found_and_does_not_spoil_tau() {
 
 #[test]
 fn either_sense_of_the_axis_any_fold_and_a_fast_start() {
-    // 1.5 spacings a second at first: 0.3 between captures; a line at the cut between orders; the nominal spacing 1 % off.
+    // 1.5 spacings a second at first: 0.3 between captures; a line at the cut between orders; the nominal spacing 1 %
+    // off.
     for (direction, line) in [(-1.0, 2.9e9), (1.0, 2.9e9), (-1.0, 0.02e9), (1.0, 6.39e9)] {
         for mut tube in [Synthetic::quad(7), Synthetic::twin(7)] {
             tube = Synthetic { direction, line, fast: Some((13.0, 10.0)), ..tube };
