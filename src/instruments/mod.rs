@@ -1,1 +1,20 @@
-//! Placeholder of the ground: see `DEVELOPERS.md`.
+//! The instruments behind the traits of `station`: the simulated bench, a folder of captures, a person at the terminal, answers from
+//! a file, the clock on the wall.
+//! Must not decide anything about a tube.
+//! Main types: [`SimulatedBench`], [`SimulatedOptions`], [`CaptureFolder`], [`TerminalPerson`], [`FilePerson`], [`WallClock`].
+
+mod answers;
+mod folder;
+mod nobody;
+mod simulated;
+mod terminal;
+mod typed;
+mod wall;
+
+pub use answers::FilePerson;
+pub use folder::{CaptureFolder, FolderError, folder_bench};
+pub use nobody::{NoInstrument, Nobody};
+pub use simulated::{CaptureHead, SimulatedBench, SimulatedOptions, simulated_capture_name, simulated_csv};
+pub use terminal::TerminalPerson;
+pub use typed::{expected, parse_answer};
+pub use wall::WallClock;

@@ -1,1 +1,25 @@
-//! Placeholder of the ground: see `DEVELOPERS.md`.
+//! A model of a helium-neon tube on a bench: captures and readings from stated truths, and the scenario file.
+//! Must not share code with the engine that measures it, do I/O or read a clock; takes quantities and constants only.
+//! Main types: [`World`], [`Scenario`].
+
+mod bench;
+mod comb;
+mod gain;
+mod noise;
+mod ramp;
+mod scenario;
+mod trace;
+mod tube;
+mod walk;
+mod world;
+
+pub use bench::BenchTruth;
+pub use comb::{Axis, Comb, Mode};
+pub use gain::GainLine;
+pub use scenario::{Scenario, ScenarioError, ScenarioFault, ScenarioTube};
+pub use trace::RawTrace;
+pub use tube::{Incident, TubeTruth};
+pub use world::{Setting, World};
+
+#[cfg(test)]
+mod tests;

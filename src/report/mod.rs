@@ -1,1 +1,64 @@
-//! Placeholder of the ground: see `DEVELOPERS.md`.
+//! A sheet turned into what leaves the house: record.csv, budget.csv with their metadata, and record.pdf.
+//! Must not open a file, read a clock or decide anything: every verdict comes in with the sheet.
+//! Main functions: [`record_csv`], [`budget_csv`], [`csv_metadata`], [`record_pdf`], [`value_text`].
+
+mod charts;
+mod csv;
+mod escape;
+mod metadata;
+mod page;
+mod pdf;
+pub mod scene;
+mod text;
+mod typeface;
+
+pub use self::csv::{BUDGET_COLUMNS, RECORD_COLUMNS, budget_csv, record_csv};
+pub use self::escape::{neutralise, restore};
+pub use self::metadata::csv_metadata;
+pub use self::page::{Page, Part};
+pub use self::pdf::PdfError;
+pub use self::text::{ValueText, bound_text, probability_text, row_line, value_text};
+
+/// Said in the head, the CSV and the PDF title of every record of a simulated bench.
+pub const SIMULATED: &str = "Simulated bench: not a measurement of a tube";
+
+use self::typeface::Typeface;
+use crate::record::sheet::Sheet;
+
+/// The sheet laid out, page by page and part by part, before it becomes a PDF or anything else.
+///
+/// * `record_sha256`: SHA-256 of record.csv, hexadecimal; shown at the foot.
+///
+/// Errors only if the program's own typeface is damaged.
+pub fn sheet_pages(sheet: &Sheet, record_sha256: &str) -> Result<Vec<Page>, PdfError> {
+    Ok(page::pages(sheet, Typeface::embedded().ok_or(PdfError::Typeface)?, record_sha256))
+}
+
+/// record.pdf: the sheet on A4 with record.csv inside it; the same sheet gives the same bytes.
+///
+/// * `record_sha256`: SHA-256 of record.csv, hexadecimal; shown at the foot, and the id of the document.
+pub fn record_pdf(sheet: &Sheet, record_sha256: &str) -> Result<Vec<u8>, PdfError> {
+    let face = Typeface::embedded().ok_or(PdfError::Typeface)?;
+    let scenes: Vec<_> = page::pages(sheet, face, record_sha256).iter().map(Page::scene).collect();
+    let who = &sheet.identity;
+    let title = format!("Record of tube {}", who.serial);
+    let about = pdf::About {
+        title: if who.simulated { format!("{title}. {SIMULATED}") } else { title },
+        program: format!("tubewright {}", who.program_version),
+        date: sheet.ended_at.or(sheet.started_at),
+        id: document_id(record_sha256, &who.run_id),
+        attached: ("record.csv", "text/csv", record_csv(sheet)),
+    };
+    pdf::write(&scenes, face, about)
+}
+
+/// Sixteen bytes from the hash of the record, or from the run's id where there is no hash.
+fn document_id(record_sha256: &str, run_id: &str) -> Vec<u8> {
+    let bytes = |text: &str| text.bytes().filter(u8::is_ascii_hexdigit).take(32).collect::<Vec<u8>>();
+    let digits = if record_sha256.len() >= 32 { bytes(record_sha256) } else { bytes(run_id) };
+    let value = |digit: u8| (digit as char).to_digit(16).unwrap_or(0) as u8;
+    let mut id: Vec<u8> =
+        digits.chunks(2).map(|pair| pair.iter().fold(0, |byte, &digit| byte << 4 | value(digit))).collect();
+    id.resize(16, 0);
+    id
+}

@@ -5,7 +5,9 @@
 pub mod answers;
 mod bench;
 pub mod file;
+mod journal;
 mod want;
 
 pub use bench::{Bench, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, Trouble};
+pub use journal::{Durability, Journal, JournalError};
 pub use want::{CaptureRequest, ReadingKind, ReadingRequest, Want};

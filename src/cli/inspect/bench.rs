@@ -1,0 +1,93 @@
+//! The bench that the inputs describe, and who answers at it.
+//! Must not touch an instrument yet.
+//! Main function: [`build`].
+
+use std::io::{self, BufReader};
+
+use chrono::{DateTime, FixedOffset};
+
+use super::inputs::Inputs;
+use crate::cli::Failure;
+use crate::instruments::{
+    FilePerson, NoInstrument, Nobody, SimulatedBench, SimulatedOptions, TerminalPerson, WallClock, folder_bench,
+};
+use crate::station::{Bench, Person};
+
+/// Why a question is passed over where only captures are looked at.
+const CAPTURES_ONLY: &str = "captures only: nobody at a bench";
+/// Said of a bench without what is wanted.
+const NOT_ON_THIS_BENCH: &str = "not on this bench";
+
+/// A person at this terminal; initials not known yet.
+pub(super) fn terminal() -> TerminalPerson {
+    TerminalPerson::new(String::new(), Box::new(BufReader::new(io::stdin())), Box::new(io::stderr()))
+}
+
+/// Builds the bench.
+///
+/// * `started_at`: when the run was opened.
+/// * `technician`: initials; filled in if empty.
+pub(super) fn build(
+    inputs: &Inputs,
+    started_at: DateTime<FixedOffset>,
+    technician: &mut String,
+) -> Result<Bench, Failure> {
+    let person = person(inputs, technician);
+    if let Some(folder) = &inputs.captures {
+        let nobody = || Box::new(Nobody::PassesOver(CAPTURES_ONLY.to_owned()));
+        return Ok(folder_bench(folder.clone(), started_at, person.unwrap_or_else(|| nobody())));
+    }
+    if inputs.scenario.is_some() {
+        return simulated(inputs, started_at, person, technician);
+    }
+    let none = || Box::new(NoInstrument { reason: NOT_ON_THIS_BENCH.to_owned() });
+    let hint = "give `--ask` to answer at this terminal, or `--answers FILE`".to_owned();
+    Ok(Bench {
+        clock: Box::new(WallClock::start(inputs.station.1.time_zone)),
+        captures: none(),
+        meters: none(),
+        person: person.unwrap_or_else(|| Box::new(Nobody::LeavesOpen(hint))),
+        interlock: none(),
+    })
+}
+
+/// Who was named to answer: a person here, or a file.
+fn person(inputs: &Inputs, technician: &mut String) -> Option<Box<dyn Person>> {
+    if inputs.ask {
+        let mut person = terminal();
+        if technician.is_empty() {
+            *technician = person.ask_line("Your initials").unwrap_or_default();
+        }
+        person.set_initials(technician.clone());
+        return Some(Box::new(person));
+    }
+    let answers = inputs.answers.as_ref()?;
+    if technician.is_empty() {
+        *technician = answers.technician.clone().unwrap_or_default();
+    }
+    let pass_over = inputs.captures.is_some().then(|| CAPTURES_ONLY.to_owned());
+    Some(Box::new(FilePerson::new(answers.clone(), pass_over)))
+}
+
+fn simulated(
+    inputs: &Inputs,
+    started_at: DateTime<FixedOffset>,
+    person: Option<Box<dyn Person>>,
+    technician: &mut String,
+) -> Result<Bench, Failure> {
+    let unknown = || Failure::unusable(format!("the simulated bench has no tube `{}`", inputs.serial));
+    let scenario = inputs.scenario.as_ref().ok_or_else(unknown)?;
+    let tube = scenario.tube(&inputs.serial).ok_or_else(unknown)?;
+    let world = scenario.world(&inputs.serial, inputs.seed).ok_or_else(unknown)?;
+    if person.is_none() && technician.is_empty() {
+        *technician = scenario.technician.clone();
+    }
+    let of_answers = inputs.answers.as_ref().map(|answers| (answers.time_to_answer_s * 1000.0).round() as u64);
+    let options = SimulatedOptions {
+        started_at,
+        pace: inputs.pace.unwrap_or(f64::INFINITY),
+        time_to_answer_ms: of_answers.unwrap_or(scenario.time_to_answer_ms),
+        looks: tube.looks.clone(),
+    };
+    Ok(SimulatedBench::new(world, options).bench_with(person))
+}

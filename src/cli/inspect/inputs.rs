@@ -1,0 +1,157 @@
+//! Arguments of `inspect` made ready to use: every file read and parsed, nothing written.
+//! Must not open a run.
+//! Main type: [`Inputs`].
+
+use std::fmt::Display;
+use std::path::Path;
+
+use chrono::{DateTime, FixedOffset};
+
+use super::{Arguments, Format};
+use crate::cli::{Ending, Failure, home};
+use crate::disk::{Home, Store, demo_bench};
+use crate::instruments::CaptureFolder;
+use crate::phantom::Scenario;
+use crate::station::{
+    answers::Answers,
+    file::{Source, StationFile},
+};
+
+/// The station where none is named and no scenario says another.
+const DEMO_BENCH: &str = "bench-1";
+/// Bench seconds in a wall second on the simulated bench, unless said otherwise.
+const PACE: f64 = 60.0;
+
+/// Everything that was given, read and parsed.
+pub(super) struct Inputs {
+    pub serial: String,
+    pub tube_type: Option<String>,
+    pub home: Home,
+    pub store: Store,
+    /// Text of the station file, and what it says.
+    pub station: (String, StationFile),
+    /// The scenario of a simulated bench.
+    pub scenario: Option<Scenario>,
+    pub captures: Option<CaptureFolder>,
+    pub answers: Option<Answers>,
+    pub ask: bool,
+    /// Ceiling on bench time; none on a bench that is not simulated.
+    pub pace: Option<f64>,
+    pub seed: Option<u64>,
+    pub start: Option<DateTime<FixedOffset>>,
+    pub format: Format,
+}
+
+impl Inputs {
+    /// Reads and parses what the arguments name.
+    pub fn read(arguments: Arguments) -> Result<Self, Failure> {
+        let home = home::find(arguments.home, arguments.reports)?;
+        let scenario = arguments.scenario.as_deref().map(read_scenario).transpose()?;
+        let (name, text) = match &arguments.station {
+            Some(path) => (path.display().to_string(), read_text(path)?),
+            None => demo_station(scenario.as_ref(), &arguments.serial)?,
+        };
+        let station = StationFile::parse(&name, &text).map_err(|faults| faulty("station file", &faults))?;
+        let captures = arguments.captures.as_deref().map(CaptureFolder::open).transpose();
+        let captures = captures.map_err(|error| Failure::unusable(error.to_string()))?;
+        let simulated = captures.is_none() && is_simulated(&station, &name)?;
+        let scenario = match (simulated, scenario) {
+            (true, scenario) => Some(scenario.unwrap_or_else(Scenario::demo)),
+            (false, None) => None,
+            (false, Some(_)) => {
+                return Err(Failure::unusable(format!("`{name}` is no simulated bench: leave out `--scenario`")));
+            }
+        };
+        if !simulated && arguments.pace.is_some() {
+            return Err(Failure::unusable(format!(
+                "`{name}` is no simulated bench, and only that has a pace: leave out `--pace`"
+            )));
+        }
+        if captures.is_some() && station.interferometer.is_none() {
+            return Err(Failure::unusable(format!(
+                "`{name}` has no [interferometer]; expected one, since captures need its free spectral range `fsr`"
+            )));
+        }
+        Ok(Self {
+            serial: arguments.serial,
+            tube_type: arguments.tube_type,
+            store: Store::new(home.reports()),
+            home,
+            station: (text, station),
+            scenario,
+            captures,
+            answers: arguments.answers.as_deref().map(read_answers).transpose()?,
+            ask: arguments.ask,
+            pace: simulated.then(|| arguments.pace.unwrap_or(PACE)),
+            seed: arguments.seed,
+            start: arguments.start,
+            format: arguments.format,
+        })
+    }
+
+    /// Everything comes from the simulated bench.
+    pub fn simulated(&self) -> bool {
+        self.scenario.is_some()
+    }
+}
+
+/// The compiled-in station file of the bench on which the scenario has this tube.
+fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, String), Failure> {
+    let demo;
+    let scenario = match scenario {
+        Some(scenario) => scenario,
+        None => {
+            demo = Scenario::demo();
+            &demo
+        }
+    };
+    let bench = scenario.tube(serial).map_or(DEMO_BENCH, |tube| tube.bench.as_str());
+    match demo_bench(bench) {
+        Some(text) => Ok((format!("{bench}.toml"), text.to_owned())),
+        None => Err(Failure::unusable(format!(
+            "the scenario puts `{serial}` on `{bench}`, whose station file the program does not bring with it: \
+             give it with `--station FILE`"
+        ))),
+    }
+}
+
+/// Whether captures come from the simulated bench; a source that needs something more is said.
+fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
+    match station.interferometer.as_ref().map(|interferometer| &interferometer.source) {
+        Some(Source::Simulated) => Ok(true),
+        Some(Source::Folder) => {
+            Err(Failure::unusable(format!("`{name}` takes captures from a folder: name it with `--captures FOLDER`")))
+        }
+        Some(Source::Profile(profile)) => Err(Failure::unusable(format!(
+            "`{name}` names the instrument profile `{profile}`, which this version cannot use: \
+             record captures and give `--captures FOLDER`"
+        ))),
+        Some(Source::Typed) | None => Ok(false),
+    }
+}
+
+fn read_text(path: &Path) -> Result<String, Failure> {
+    std::fs::read_to_string(path)
+        .map_err(|error| Failure::unusable(format!("cannot read `{}`: {error}", path.display())))
+}
+
+fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
+    Scenario::parse(&path.display().to_string(), &read_text(path)?)
+        .map_err(|error| Failure::unusable(format!("the scenario cannot be used:\n{error}")))
+}
+
+fn read_answers(path: &Path) -> Result<Answers, Failure> {
+    let answers = Answers::parse(&path.display().to_string(), &read_text(path)?)
+        .map_err(|faults| faulty("answer file", &faults))?;
+    if answers.technician.is_none() {
+        let message = format!("an answer is missing: `{}` has no `technician = \"…\"` (initials)", path.display());
+        return Err(Failure::new(Ending::Unfinished, message));
+    }
+    Ok(answers)
+}
+
+/// Every fault of a file, a line each.
+pub(super) fn faulty(what: &str, faults: &[impl Display]) -> Failure {
+    let lines: Vec<String> = faults.iter().map(ToString::to_string).collect();
+    Failure::unusable(format!("the {what} cannot be used:\n{}", lines.join("\n")))
+}

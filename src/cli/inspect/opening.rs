@@ -1,0 +1,195 @@
+//! Which run it will be: an unfinished one of this serial taken up again, or a new one with plan and identity.
+//! Must not write before everything is known to be usable.
+//! Main type: [`Opening`].
+
+use std::path::PathBuf;
+
+use chrono::{DateTime, Datelike as _, FixedOffset, Utc};
+
+use super::{
+    bench,
+    inputs::{Inputs, faulty},
+    run_id::run_id,
+};
+use crate::cli::Failure;
+use crate::disk::{FoundRun, RunFolder, SerialLock, TypeTexts};
+use crate::limits::{Limits, nearest};
+use crate::recipe::Recipe;
+use crate::record::event::{Event, Happening, Identity, Opened};
+use crate::run::Plan;
+use crate::station::{Bench, Moment};
+
+/// A run about to be driven.
+pub(super) struct Opening {
+    pub plan: Plan,
+    pub identity: Identity,
+    pub bench: Bench,
+    path: PathBuf,
+    /// The first event of a new run; none if it is taken up again.
+    first: Option<(Moment, Happening)>,
+    _lock: SerialLock,
+}
+
+impl Opening {
+    /// Finds the type, parses the plan, takes the serial.
+    pub fn decide(inputs: &Inputs) -> Result<Self, Failure> {
+        let runs = inputs.store.runs_of(&inputs.serial).map_err(|error| Failure::store(&error))?;
+        // Before the lock, so that input which cannot be used leaves nothing behind.
+        if !runs.iter().any(|run| !run.frozen) {
+            new_plan(inputs, &runs)?;
+        }
+        let since = Utc::now().format("%Y-%m-%dT%H:%M:%SZ").to_string();
+        let lock =
+            SerialLock::take(inputs.store.reports(), &inputs.serial, &since).map_err(|error| Failure::store(&error))?;
+        // Another process may have finished its run meanwhile.
+        let runs = inputs.store.runs_of(&inputs.serial).map_err(|error| Failure::store(&error))?;
+        match runs.iter().rfind(|run| !run.frozen) {
+            Some(open) => Self::again(inputs, open, lock),
+            None => Self::anew(inputs, &runs, lock),
+        }
+    }
+
+    fn again(inputs: &Inputs, open: &FoundRun, lock: SerialLock) -> Result<Self, Failure> {
+        let Opened { identity, recipe, limits, station } = &open.opened;
+        let other = |what: &str| {
+            Err(Failure::unusable(format!(
+                "`{}` is unfinished and {what}; give the command it was started with, or end it with `--ask` and `stop: why`",
+                open.path.display()
+            )))
+        };
+        if inputs.tube_type.as_ref().is_some_and(|given| *given != identity.tube_type) {
+            return other(&format!("of type `{}`", identity.tube_type));
+        }
+        if identity.from_captures != inputs.captures.is_some() {
+            return other(if identity.from_captures { "was fed from captures" } else { "was not fed from captures" });
+        }
+        if identity.simulated != inputs.simulated() {
+            return other(if identity.simulated { "is on a simulated bench" } else { "is on a real bench" });
+        }
+        let plan = Plan::from_texts(recipe, limits, station).map_err(|faults| faulty("stored plan", &faults))?;
+        let started_at = DateTime::parse_from_rfc3339(&identity.started_at).unwrap_or_default();
+        let bench = bench::build(inputs, started_at, &mut identity.technician.clone())?;
+        Ok(Self { plan, identity: identity.clone(), bench, path: open.path.clone(), first: None, _lock: lock })
+    }
+
+    fn anew(inputs: &Inputs, runs: &[FoundRun], lock: SerialLock) -> Result<Self, Failure> {
+        let (tube_type, texts, plan) = new_plan(inputs, runs)?;
+        let (station_text, station) = &inputs.station;
+        let started_at = started_at(inputs).with_timezone(&station.time_zone).fixed_offset();
+        let mut technician = String::new();
+        let bench = bench::build(inputs, started_at, &mut technician)?;
+        let tube = inputs.scenario.as_ref().and_then(|scenario| scenario.tube(&inputs.serial));
+        let of_tube =
+            |field: fn(&crate::phantom::ScenarioTube) -> &String| tube.map(field).cloned().unwrap_or_default();
+        let seed = inputs.seed.or(inputs.scenario.as_ref().map(|scenario| scenario.seed));
+        let identity = Identity {
+            run_id: run_id(started_at.timestamp_millis(), &inputs.serial, runs.len(), seed),
+            serial: inputs.serial.clone(),
+            tube_type,
+            supplier: of_tube(|tube| &tube.supplier),
+            lot: of_tube(|tube| &tube.lot),
+            condition: of_tube(|tube| &tube.condition),
+            received: of_tube(|tube| &tube.received),
+            technician,
+            started_at: started_at.to_rfc3339_opts(chrono::SecondsFormat::Millis, false),
+            time_zone: station.time_zone.name().to_owned(),
+            simulated: inputs.simulated(),
+            from_captures: inputs.captures.is_some(),
+            program_version: env!("CARGO_PKG_VERSION").to_owned(),
+        };
+        let opened = Opened {
+            identity: identity.clone(),
+            recipe: texts.recipe,
+            limits: texts.limits,
+            station: station_text.clone(),
+        };
+        let path = inputs.store.run_path(started_at.year(), &inputs.serial, &identity.run_id);
+        let first = (Moment { wall: started_at, elapsed_ms: 0 }, Happening::Opened(Box::new(opened)));
+        Ok(Self { plan, identity, bench, path, first: Some(first), _lock: lock })
+    }
+
+    /// The run's folder, made now if the run is new, and the events it holds.
+    pub fn folder(&mut self) -> Result<(RunFolder, Vec<Event>), Failure> {
+        match self.first.take() {
+            Some((at, opened)) => {
+                RunFolder::create(&self.path, at, &opened).map(|(folder, event)| (folder, vec![event]))
+            }
+            None => RunFolder::reopen(&self.path),
+        }
+        .map_err(|error| Failure::store(&error))
+    }
+}
+
+/// When a new run starts: as told, else as the scenario or the first capture says, else now.
+fn started_at(inputs: &Inputs) -> DateTime<FixedOffset> {
+    let of_scenario = || inputs.scenario.as_ref()?.tube(&inputs.serial).map(|tube| tube.started_at);
+    let of_captures = || inputs.captures.as_ref()?.first_at();
+    inputs.start.or_else(of_scenario).or_else(of_captures).unwrap_or_else(|| Utc::now().fixed_offset())
+}
+
+/// Type, texts and plan of a new run.
+fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<(String, TypeTexts, Plan), Failure> {
+    if let Some(scenario) = inputs.scenario.as_ref().filter(|scenario| scenario.tube(&inputs.serial).is_none()) {
+        let known: Vec<&str> = scenario.tubes.iter().map(|tube| tube.serial.as_str()).collect();
+        return Err(Failure::unusable(format!(
+            "the simulated bench has no tube `{}`; it has {}",
+            inputs.serial,
+            known.join(", ")
+        )));
+    }
+    let tube_type = tube_type(inputs, runs)?;
+    let texts = match inputs.home.read_type(&tube_type).map_err(|error| Failure::unusable(error.to_string()))? {
+        Some(texts) => texts,
+        None => return Err(unknown_type(inputs, Some(&tube_type))),
+    };
+    let limits = Limits::parse(&texts.limits_name, &texts.limits).map_err(|faults| faulty("limits file", &faults))?;
+    let recipe = Recipe::parse(&texts.recipe_name, &texts.recipe).map_err(|faults| faulty("recipe", &faults))?;
+    let plan = Plan { recipe, limits, station: inputs.station.1.clone() };
+    same_revision_same_text(&tube_type, &texts, &plan, runs)?;
+    Ok((tube_type, texts, plan))
+}
+
+/// `--type`, else the answers, else the serial's last run, else the scenario, else a person.
+fn tube_type(inputs: &Inputs, runs: &[FoundRun]) -> Result<String, Failure> {
+    let of_answers = || inputs.answers.as_ref()?.tube_type.clone();
+    let of_last = || runs.last().map(|run| run.opened.identity.tube_type.clone());
+    let of_scenario = || Some(inputs.scenario.as_ref()?.tube(&inputs.serial)?.tube_type.clone());
+    let asked = || inputs.ask.then(|| bench::terminal().ask_line("Tube type")).flatten();
+    let given = inputs.tube_type.clone().or_else(of_answers).or_else(of_last).or_else(of_scenario).or_else(asked);
+    given.ok_or_else(|| unknown_type(inputs, None))
+}
+
+fn unknown_type(inputs: &Inputs, found: Option<&str>) -> Failure {
+    let types = match inputs.home.types() {
+        Ok(types) => types,
+        Err(error) => return Failure::unusable(error.to_string()),
+    };
+    let known = types.join(", ");
+    Failure::unusable(match found {
+        None => format!("the type of `{}` is not known; give it with `--type`, one of {known}", inputs.serial),
+        Some(found) => {
+            let near = nearest(found, types.iter().map(String::as_str));
+            let near = near.map_or_else(String::new, |word| format!("\n  nearest known type: {word}"));
+            format!("unknown tube type `{found}`; expected one of {known}{near}")
+        }
+    })
+}
+
+/// Refuses a file that was changed without raising its revision, as far as this serial's runs can tell.
+fn same_revision_same_text(tube_type: &str, texts: &TypeTexts, plan: &Plan, runs: &[FoundRun]) -> Result<(), Failure> {
+    for run in runs.iter().filter(|run| run.opened.identity.tube_type == tube_type) {
+        let id = &run.opened.identity.run_id;
+        let limits = Limits::parse("limits.toml", &run.opened.limits).map(|limits| limits.revision);
+        let recipe = Recipe::parse("recipe.toml", &run.opened.recipe).map(|recipe| recipe.revision);
+        let changed = [
+            (&texts.limits_name, limits == Ok(plan.limits.revision) && run.opened.limits != texts.limits),
+            (&texts.recipe_name, recipe == Ok(plan.recipe.revision) && run.opened.recipe != texts.recipe),
+        ];
+        if let Some((name, _)) = changed.iter().find(|(_, changed)| *changed) {
+            return Err(Failure::unusable(format!(
+                "`{name}` is not what run {id} used, yet has the same revision: raise `revision`"
+            )));
+        }
+    }
+    Ok(())
+}

@@ -1,0 +1,25 @@
+//! Results to standard output, talk to standard error; a stream that is gone never panics.
+//! Must not format anything.
+//! Main functions: [`result`], [`talk`].
+
+use std::io::{self, Write as _};
+
+use super::{Ending, Failure};
+
+/// One line of results.
+///
+/// Errors: it could not be written, a full disk say. A reader that went away (`| head`) is no error.
+pub fn result(line: &str) -> Result<(), Failure> {
+    let mut out = io::stdout().lock();
+    match writeln!(out, "{line}").and_then(|()| out.flush()) {
+        Err(error) if error.kind() != io::ErrorKind::BrokenPipe => {
+            Err(Failure::new(Ending::Store, format!("cannot write to standard output: {error}")))
+        }
+        _ => Ok(()),
+    }
+}
+
+/// One line of talk. If nobody can hear it there is nobody to tell.
+pub fn talk(line: &str) {
+    let _ = writeln!(io::stderr().lock(), "{line}");
+}

@@ -1,0 +1,87 @@
+//! Boxes for a counted row: one a whole number, solid where allowed, dashed where not, the count marked in its box.
+//! Must not let meaning rest on colour.
+//! Main function: [`draw`].
+
+use super::{
+    super::{
+        scene::{Anchor, BEST, DARK, GREY, MIST, Point, Scene, Stroke, Style, corners},
+        typeface::Typeface,
+    },
+    rows,
+    scale::{CROSS, LEFT_END},
+};
+use crate::record::sheet::{Row, RowVerdict, Value};
+
+/// Most boxes of a row.
+const MOST: usize = 5;
+/// From box to box, pt.
+const STEP: f64 = 38.0;
+
+/// The boxes, their middle at `y`; "for information" where nothing is limited.
+pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
+    let Value::Count { value, low, high } = row.value else { return };
+    let Some(judged) = row.judged.last() else {
+        let size = pitch * 0.63;
+        return rows::for_information(scene, face, y + size * 0.3, size);
+    };
+    let allowed = |n: u64| {
+        let n = n as f64;
+        judged.lower.is_none_or(|lower| n >= lower) && judged.upper.is_none_or(|upper| n <= upper)
+    };
+    let numbers = shown(value, judged.lower, judged.upper);
+    let height = (pitch * 0.47).min(6.4);
+    for (i, &n) in numbers.iter().enumerate() {
+        let left = LEFT_END + 4.0 + STEP * i as f64;
+        let frame: (Point, Point) = ((left, y - height / 2.0), (15.0, height));
+        if allowed(n) {
+            scene.block(frame.0, frame.1, BEST);
+            scene.outline(corners(frame.0, frame.1), Stroke::solid(GREY, 0.5));
+        } else {
+            scene.outline(corners(frame.0, frame.1), Stroke::dashed(MIST, 0.5, 1.5, 1.5));
+        }
+        let middle = (left + 7.5, y);
+        if n == value && (judged.verdict == RowVerdict::Fail || !allowed(n)) {
+            scene.cross(middle, 2.8, CROSS);
+        } else if n == value {
+            scene.disc(middle, 2.2, DARK);
+        } else if (low..=high).contains(&n) {
+            scene.ring(middle, 1.9, Stroke::solid(DARK, 0.7));
+        }
+        let style = Style::plain((pitch * 0.45).clamp(5.0, 6.2), GREY);
+        // What follows in the row is further than one: said by an ellipsis.
+        let gap = numbers.get(i + 1).is_some_and(|&next| next > n + 1);
+        let text = if gap { format!("{n} …") } else { n.to_string() };
+        scene.fitted(face, (left + 18.0, y + style.size * 0.35), Anchor::Start, &text, style, STEP - 21.0);
+    }
+}
+
+/// The numbers that get a box: the count, the bounds, and their neighbours; ascending.
+fn shown(value: u64, lower: Option<f64>, upper: Option<f64>) -> Vec<u64> {
+    let whole = |bound: Option<f64>| bound.filter(|b| b.is_finite() && *b >= 0.0).map(|b| b as u64);
+    let mut wanted = vec![value];
+    for bound in [whole(upper), whole(lower)].into_iter().flatten() {
+        wanted.extend([bound, bound.saturating_add(1), bound.saturating_sub(1)]);
+    }
+    wanted.extend([value.saturating_sub(1), value.saturating_add(1), 0]);
+    let mut kept: Vec<u64> = Vec::new();
+    for n in wanted {
+        if kept.len() < MOST && !kept.contains(&n) {
+            kept.push(n);
+        }
+    }
+    kept.sort_unstable();
+    kept
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn boxes_hold_the_count_and_the_bounds() {
+        assert_eq!(shown(0, None, Some(0.0)), [0, 1]);
+        assert_eq!(shown(2, Some(1.0), Some(2.0)), [0, 1, 2, 3]);
+        assert_eq!(shown(37, None, Some(2.0)), [1, 2, 3, 36, 37]);
+        assert_eq!(shown(u64::MAX, None, None), [0, u64::MAX - 1, u64::MAX]);
+    }
+}

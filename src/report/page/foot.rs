@@ -1,0 +1,104 @@
+//! Foot of the sheet: remarks, who measured, "not sealed", cautions, run id, hash of record.csv, page.
+//! Must not claim a seal.
+//! Main function: [`foot`].
+
+use super::{
+    super::{
+        scene::{Anchor, DARK, GREY, RULE, RUST, Scene, Stroke, Style},
+        typeface::Typeface,
+    },
+    LEFT, RIGHT,
+};
+use crate::record::sheet::Sheet;
+
+/// Baseline of the last line of every page.
+pub const LAST_LINE: f64 = 806.0;
+const SMALL: Style = Style::plain(6.8, GREY);
+const EXPLAINED: &str = "U: expanded uncertainty for 95.45 %. \"conforms\": probability of being inside, no prior \
+     knowledge assumed. Brackets: bounds, best grade first. Valid for this tube only.";
+
+/// The foot and where it begins; drawn from the bottom of the page upwards.
+///
+/// * `page`: number of the page and of all pages.
+pub fn foot(sheet: &Sheet, face: &Typeface, record_sha256: &str, page: (usize, usize)) -> (Scene, f64) {
+    let mut scene = last_line(sheet, face, record_sha256, page);
+    let mut lines = face.wrap(&sheet.caution, SMALL, RIGHT - LEFT, 4);
+    lines.extend(face.wrap(EXPLAINED, SMALL, RIGHT - LEFT, 2));
+    let first = LAST_LINE - 15.0 - 9.6 * (lines.len() as f64 - 1.0);
+    for (i, line) in lines.iter().enumerate() {
+        scene.text(face, (LEFT, first + 9.6 * i as f64), Anchor::Start, line, SMALL);
+    }
+    let mut top = signatures(&mut scene, face, sheet, first - 19.0);
+    let remarks = remark_lines(sheet, face);
+    if !remarks.is_empty() {
+        let title = top - 4.0 - 9.6 * remarks.len() as f64;
+        scene.text(face, (LEFT, title), Anchor::Start, "Remarks", Style::bold(7.2, DARK));
+        for (i, line) in remarks.iter().enumerate() {
+            let y = title + 9.6 * (i as f64 + 1.0);
+            scene.text(face, (LEFT, y), Anchor::Start, line, REMARK);
+        }
+        top = title - 8.0;
+    }
+    (scene, top)
+}
+
+const REMARK: Style = Style::plain(7.2, DARK);
+/// More remarks than this would push the rows off the page; record.csv holds them all.
+const MOST_REMARKS: usize = 5;
+
+fn remark_lines(sheet: &Sheet, face: &Typeface) -> Vec<String> {
+    let room = RIGHT - LEFT;
+    let mut lines: Vec<String> =
+        sheet.remarks.iter().flat_map(|remark| face.wrap(remark, REMARK, room, MOST_REMARKS)).collect();
+    if lines.len() > MOST_REMARKS {
+        lines.truncate(MOST_REMARKS - 1);
+        lines.push("… and more: see the note in the first line of record.csv.".to_owned());
+    }
+    lines
+}
+
+/// The last line alone, for a page that another one follows.
+pub fn last_line(sheet: &Sheet, face: &Typeface, record_sha256: &str, (page, pages): (usize, usize)) -> Scene {
+    let mut scene = Scene::default();
+    let style = Style::plain(6.0, GREY);
+    let end = if page == pages { " · end" } else { "" };
+    let version = sheet.identity.program_version.as_str();
+    let name = ["tubewright", version].join(" ");
+    let program = format!("{} · page {page} of {pages}{end}", name.trim_end());
+    let run = format!("run {}", sheet.identity.run_id);
+    let hash = format!("record.csv sha256 {}", grouped(record_sha256));
+    let run_width = scene.fitted(face, (LEFT, LAST_LINE), Anchor::Start, &run, style, 140.0);
+    scene.fitted(face, (LEFT + run_width + 10.0, LAST_LINE), Anchor::Start, &hash, style, 265.0);
+    scene.fitted(face, (RIGHT, LAST_LINE), Anchor::End, &program, style, 95.0);
+    scene
+}
+
+/// Hexadecimal in groups of eight, as people compare it.
+fn grouped(hex: &str) -> String {
+    let digits: Vec<char> = hex.chars().collect();
+    digits.chunks(8).map(|group| group.iter().collect::<String>()).collect::<Vec<_>>().join(" ")
+}
+
+/// Who measured, the empty line of who reviews, and that no seal is on it. Returns where the block begins.
+fn signatures(scene: &mut Scene, face: &Typeface, sheet: &Sheet, baseline: f64) -> f64 {
+    let label = Style::plain(7.2, GREY);
+    let rule = |scene: &mut Scene, from: f64, to: f64| {
+        scene.line(vec![(from, baseline + 5.0), (to, baseline + 5.0)], Stroke::solid(RULE, 0.6));
+    };
+    scene.text(face, (LEFT, baseline - 14.0), Anchor::Start, "Measured by", label);
+    scene.text(face, (300.0, baseline - 14.0), Anchor::Start, "Reviewed by", label);
+    rule(scene, LEFT, 282.0);
+    rule(scene, 300.0, 440.0);
+    if let Some(by) = &sheet.measured_by {
+        let width = scene.fitted(face, (LEFT, baseline), Anchor::Start, &by.initials, Style::bold(11.0, DARK), 80.0);
+        let at = by.at.format("%Y-%m-%d %H:%M:%S %:z").to_string();
+        let (x, style) = (LEFT + width.max(24.0) + 10.0, Style::plain(8.0, DARK));
+        let at_width = scene.text(face, (x, baseline), Anchor::Start, &at, style);
+        let x = x + at_width + 8.0;
+        scene.fitted(face, (x, baseline), Anchor::Start, &by.meaning, Style::plain(8.0, GREY), 280.0 - x);
+    }
+    scene.text(face, (RIGHT, baseline), Anchor::End, "not sealed", Style::bold(9.0, RUST));
+    let top = baseline - 25.0;
+    scene.line(vec![(LEFT, top), (RIGHT, top)], Stroke::solid(DARK, 0.8));
+    top - 6.0
+}

@@ -1,0 +1,185 @@
+//! The measured rows: headings, name, value ± U, unit, scale drawing, probability; the row that decides opened by its note.
+//! Must not show a status column or a table of bounds: the drawing carries them.
+//! Main function: [`blocks`].
+
+use super::{
+    super::{
+        scene::{Anchor, DARK, GREY, RULE, Scene, Stroke, Style},
+        text::{probability_text, value_text},
+        typeface::Typeface,
+    },
+    Density, LEFT, RIGHT, counts, scale,
+};
+use crate::{
+    measurand::{self, Group},
+    record::sheet::{Judged, Row, RowVerdict, Sheet, Value},
+};
+
+/// Right end of the values.
+const VALUE_END: f64 = 210.0;
+/// Left end of the spreads.
+const SPREAD: f64 = 214.0;
+/// Left end of the units.
+const UNIT: f64 = 251.0;
+/// Left end of words that stand in place of a value.
+const WORDS: f64 = 163.0;
+/// Left end of the probabilities' column.
+const CONFORMS: f64 = 525.0;
+
+/// A piece of the table that is never parted.
+pub struct Block {
+    /// Its height, pt.
+    pub height: f64,
+    /// A heading, which stays with the block after it.
+    pub is_heading: bool,
+    /// Drawn from 0 downwards.
+    pub scene: Scene,
+}
+
+/// What stands above the rows, its baseline at 12.
+pub fn table_head(face: &Typeface) -> Scene {
+    let mut scene = Scene::default();
+    let style = Style::plain(7.0, GREY);
+    scene.text(face, (LEFT, 12.0), Anchor::Start, "Measured", Style::bold(8.0, DARK));
+    scene.text(face, (SPREAD + 22.0, 12.0), Anchor::End, "value ± U", style);
+    scene.text(face, (scale::LEFT_END, 12.0), Anchor::Start, "limits, value, uncertainty", style);
+    scene.text(face, (RIGHT, 12.0), Anchor::End, "conforms", style);
+    scene
+}
+
+/// Headings and rows, in the order of the sheet.
+pub fn blocks(sheet: &Sheet, face: &Typeface, density: &Density) -> Vec<Block> {
+    let mut blocks = Vec::new();
+    let mut last = None;
+    for row in &sheet.rows {
+        let group = measurand::find(&row.measurand).map_or(Group::Visual, |m| m.group);
+        if last != Some(group) {
+            last = Some(group);
+            blocks.push(heading(group.heading(), face, density));
+        }
+        blocks.push(row_block(row, face, density));
+    }
+    blocks
+}
+
+fn heading(text: &str, face: &Typeface, density: &Density) -> Block {
+    let mut scene = Scene::default();
+    let y = density.heading - 3.0;
+    let width = scene.text(face, (LEFT, y), Anchor::Start, text, Style::bold(density.size.min(7.2), GREY).spaced(0.6));
+    scene.line(vec![(LEFT + width + 8.0, y - 2.4), (RIGHT, y - 2.4)], Stroke::solid(RULE, 0.5));
+    Block { height: density.heading, is_heading: true, scene }
+}
+
+fn row_block(row: &Row, face: &Typeface, density: &Density) -> Block {
+    let mut scene = Scene::default();
+    let size = density.size;
+    let baseline = density.pitch * 0.5 + size * 0.33;
+    let label = Style { bold: row.deciding, ..Style::plain(size, DARK) };
+    scene.fitted(face, (LEFT, baseline), Anchor::Start, &row.label, label, WORDS - 5.0 - LEFT);
+    let mut end = baseline;
+    match &row.value {
+        Value::Word(word) => {
+            let style = Style::bold(size, DARK);
+            let short = face.width(&face.printable(word), style) <= VALUE_END - WORDS;
+            let (at, anchor) = if short { (VALUE_END, Anchor::End) } else { (WORDS, Anchor::Start) };
+            scene.fitted(face, (at, baseline), anchor, word, style, scale::LABEL_LEFT - 4.0 - WORDS);
+        }
+        _ => end = value(&mut scene, face, row, baseline, size),
+    }
+    let middle = baseline - size * 0.3;
+    match &row.value {
+        Value::Number { value, .. } if !value.is_finite() => {}
+        Value::Absent(_) => {}
+        Value::Number { .. } | Value::AtLeast(_) => scale::draw(&mut scene, face, row, middle, density.pitch),
+        Value::Count { .. } => counts::draw(&mut scene, face, row, middle, density.pitch),
+        Value::Word(word) => wanted(&mut scene, face, row, word, baseline, size),
+    }
+    conforms(&mut scene, face, row, baseline, size);
+    let note = Style::plain(size * 0.86, if row.deciding { DARK } else { GREY });
+    for line in face.wrap(&row.note, note, RIGHT - LEFT, 2) {
+        end += size * 1.1;
+        scene.text(face, (LEFT, end), Anchor::Start, &line, note);
+    }
+    let mut height = density.pitch.max(end + density.pitch - baseline);
+    if row.deciding {
+        height += 4.5;
+        scene = opened(scene, height);
+    }
+    Block { height, is_heading: false, scene }
+}
+
+/// The row that decides stands between two rules with a bar at the margin.
+fn opened(scene: Scene, height: f64) -> Scene {
+    let mut open = Scene::default();
+    open.block((LEFT - 7.0, 0.5), (2.4, height - 1.0), DARK);
+    for y in [0.5, height - 0.5] {
+        open.line(vec![(LEFT - 7.0, y), (RIGHT, y)], Stroke::solid(GREY, 0.6));
+    }
+    open.append(scene.lowered(2.0));
+    open
+}
+
+/// Value, spread and unit, or in words why there is none. Returns the last baseline.
+fn value(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) -> f64 {
+    let text = value_text(row);
+    if !text.absent.is_empty() {
+        let style = Style::plain(size * 0.9, GREY);
+        let lines = face.wrap(&format!("no value: {}", text.absent), style, CONFORMS - 8.0 - WORDS, 2);
+        let mut y = baseline;
+        for (i, line) in lines.iter().enumerate() {
+            y = baseline + size * 1.1 * i as f64;
+            scene.text(face, (WORDS, y), Anchor::Start, line, style);
+        }
+        return y;
+    }
+    let style = Style::bold(size * 1.02, DARK);
+    scene.fitted(face, (VALUE_END, baseline), Anchor::End, &text.value, style, VALUE_END - WORDS);
+    let style = Style::plain(size * 0.9, GREY);
+    scene.fitted(face, (SPREAD, baseline), Anchor::Start, &text.spread, style, UNIT - 2.0 - SPREAD);
+    scene.fitted(face, (UNIT, baseline), Anchor::Start, &text.unit, style, scale::LABEL_LEFT - 2.0 - UNIT);
+    baseline
+}
+
+/// What a look should have said, and whether it did.
+fn wanted(scene: &mut Scene, face: &Typeface, row: &Row, word: &str, baseline: f64, size: f64) {
+    let style = Style::plain(size * 0.84, GREY);
+    let Some(judged) = row.judged.last() else {
+        return for_information(scene, face, baseline, size);
+    };
+    let (x, y) = (scale::LEFT_END + 5.0, baseline - size * 0.3);
+    scene.outline(super::super::scene::corners((x - 5.0, y - 3.0), (10.0, 6.0)), Stroke::solid(GREY, 0.6));
+    if judged.wanted.iter().any(|wanted| wanted == word) {
+        scene.disc((x, y), 2.2, DARK);
+    } else {
+        scene.cross((x, y), 2.6, scale::CROSS);
+    }
+    let text = format!("wanted: {}", judged.wanted.join(" or "));
+    scene.fitted(face, (x + 10.0, baseline), Anchor::Start, &text, style, CONFORMS - 8.0 - x - 10.0);
+}
+
+/// Said where nothing is limited.
+pub fn for_information(scene: &mut Scene, face: &Typeface, baseline: f64, size: f64) {
+    scene.text(face, (scale::LEFT_END, baseline), Anchor::Start, "for information", Style::plain(size * 0.84, GREY));
+}
+
+/// The judgement that says most: the best grade lost, or the one that decides.
+pub fn telling(row: &Row) -> Option<&Judged> {
+    let last = row.judged.last()?;
+    if last.verdict == RowVerdict::Pass {
+        row.judged.iter().find(|judged| judged.verdict != RowVerdict::Pass).or(Some(last))
+    } else {
+        Some(last)
+    }
+}
+
+fn conforms(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) {
+    let Some(judged) = telling(row) else { return };
+    let text = match (&row.value, judged.conformance_probability) {
+        (Value::Count { .. }, _) => "exact".to_owned(),
+        (Value::Word(_), _) => "by eye".to_owned(),
+        (_, Some(p)) if p.is_finite() => probability_text(p),
+        _ => "–".to_owned(),
+    };
+    let style = if row.deciding { Style::bold(size * 0.9, DARK) } else { Style::plain(size * 0.9, GREY) };
+    scene.fitted(face, (RIGHT, baseline), Anchor::End, &text, style, RIGHT - CONFORMS);
+}

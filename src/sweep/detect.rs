@@ -1,0 +1,96 @@
+//! First look at a ramp: where peaks stand, how high and how wide.
+//! Must not fit.
+//! Main entry: [`detect`].
+
+use super::segment::Segment;
+use crate::numerics::{peaks, smoothing};
+
+/// A peak as first seen.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Seen {
+    /// Sample position in the segment.
+    pub x: f64,
+    /// Height above the baseline, V.
+    pub height: f64,
+    /// Full width at half of its prominence, samples.
+    pub width: f64,
+}
+
+/// Share of the signal's range that a peak must stand out by.
+const LEAST_SHARE: f64 = 0.012;
+/// Noise deviations that a peak must stand out by after smoothing.
+const LEAST_SIGMA: f64 = 6.0;
+/// More peaks than this are clutter, not modes.
+const MOST: usize = 160;
+
+/// What the first look found.
+pub(super) struct Look {
+    /// Peaks by position.
+    pub peaks: Vec<Seen>,
+    /// Baseline, V.
+    pub baseline: f64,
+    /// Typical width of the strong peaks, samples.
+    pub width: f64,
+}
+
+/// Finds peaks in two passes: the second on a signal smoothed by a third of the width the first one found.
+pub(super) fn detect(segment: &Segment) -> Look {
+    let signal = &segment.signal;
+    let mut sorted = signal.clone();
+    sorted.sort_by(f64::total_cmp);
+    let at = |q: f64| sorted.get(((sorted.len().max(1) - 1) as f64 * q) as usize).copied().unwrap_or(0.0);
+    let baseline = at(0.05);
+    let range = at(1.0) - baseline;
+    let first = pass(signal, baseline, (LEAST_SIGMA * segment.noise * 1.4).max(0.05 * range));
+    let rough = typical_width(&first);
+    // Noise can break a top into several peaks, each too narrow: smooth once and look again.
+    let smoothed = smoothing::moving_mean(signal, half_window(rough));
+    let again = pass(&smoothed, baseline, (LEAST_SIGMA * segment.noise).max(0.05 * range));
+    let width = typical_width(&again).max(1.0);
+    let half = half_window(width);
+    let smoothed = smoothing::moving_mean(signal, half);
+    let noise = segment.noise / (2.0 * half as f64 + 1.0).sqrt();
+    let top = smoothed.iter().cloned().fold(f64::MIN, f64::max) - baseline;
+    let mut peaks = pass(&smoothed, baseline, (LEAST_SIGMA * noise).max(LEAST_SHARE * top));
+    peaks.truncate_strongest(MOST);
+    Look { peaks, baseline, width }
+}
+
+trait Truncate {
+    fn truncate_strongest(&mut self, most: usize);
+}
+
+impl Truncate for Vec<Seen> {
+    fn truncate_strongest(&mut self, most: usize) {
+        if self.len() > most {
+            self.sort_by(|a, b| b.height.total_cmp(&a.height));
+            self.truncate(most);
+            self.sort_by(|a, b| a.x.total_cmp(&b.x));
+        }
+    }
+}
+
+/// Half of a smoothing window that spans a third of a line's width.
+fn half_window(width: f64) -> usize {
+    (width / 6.0).round().clamp(0.0, 1e5) as usize
+}
+
+fn pass(signal: &[f64], baseline: f64, prominence: f64) -> Vec<Seen> {
+    let options = peaks::Options { min_prominence: Some(prominence), ..Default::default() };
+    peaks::find(signal, &options)
+        .into_iter()
+        .map(|peak| Seen {
+            x: peak.index as f64,
+            height: peak.height - baseline,
+            width: peak.width_at_half_prominence.max(1.0),
+        })
+        .collect()
+}
+
+/// Median width of the peaks at least half as high as the highest.
+fn typical_width(peaks: &[Seen]) -> f64 {
+    let top = peaks.iter().map(|p| p.height).fold(0.0, f64::max);
+    let mut widths: Vec<f64> = peaks.iter().filter(|p| p.height >= 0.4 * top).map(|p| p.width).collect();
+    widths.sort_by(f64::total_cmp);
+    widths.get(widths.len() / 2).copied().unwrap_or(1.0)
+}

@@ -1,0 +1,214 @@
+//! From a capture to one ramp: where it runs one way, which way the signal points, its noise, what is clipped.
+//! Must not look for peaks.
+//! Main type: [`Segment`].
+
+use crate::capture::Capture;
+
+/// One ramp of a capture, signal pointing up.
+#[derive(Debug, Clone)]
+pub(super) struct Segment {
+    /// First sample in the capture.
+    pub start: usize,
+    /// One past the last.
+    pub end: usize,
+    /// Signal, upward.
+    pub signal: Vec<f64>,
+    /// Crossed photodiode, upward.
+    pub crossed: Option<Vec<f64>>,
+    /// Samples that may be fitted (not clipped).
+    pub usable: Vec<bool>,
+    /// The ramp rises.
+    pub rising: bool,
+    /// The signal was turned over.
+    pub inverted: bool,
+    /// A ramp channel was usable.
+    pub has_ramp: bool,
+    /// Standard deviation of the noise, V.
+    pub noise: f64,
+    /// Smallest step of the digitizer seen, V.
+    pub step: f64,
+    /// Sample position (in the segment) of the reference voltage.
+    pub reference: f64,
+    /// Samples left out as clipped.
+    pub n_clipped: usize,
+    /// Seconds a sample.
+    pub dt: f64,
+}
+
+/// Blocks the ramp is thinned to before its slope is judged: fine enough to find the turn within 1 %.
+const BLOCKS: usize = 128;
+/// A block belongs to a ramp while its slope is at least this share of the median slope.
+const SLOPE_SHARE: f64 = 0.3;
+
+/// Finds the longest one-way ramp of a capture and prepares its signal.
+pub(super) fn find(capture: &Capture) -> Segment {
+    let n = capture.photodiode.len();
+    let found = capture.ramp.as_deref().filter(|ramp| ramp.len() == n).and_then(longest_ramp);
+    let has_ramp = found.is_some();
+    let (start, end) = found.unwrap_or((0, n));
+    let (rising, reference) = match (&capture.ramp, has_ramp) {
+        (Some(ramp), true) => ramp_reference(&ramp[start..end]),
+        _ => (true, (end - start) as f64 / 2.0),
+    };
+    let raw = &capture.photodiode[start..end];
+    let inverted = points_down(raw);
+    let sign = if inverted { -1.0 } else { 1.0 };
+    let signal: Vec<f64> = raw.iter().map(|v| sign * v).collect();
+    let crossed = capture
+        .crossed
+        .as_ref()
+        .filter(|crossed| crossed.len() == n)
+        .map(|crossed| crossed[start..end].iter().map(|v| sign * v).collect());
+    let (noise, step) = noise_of(&signal);
+    let (usable, n_clipped) = unclipped(&signal, noise, step);
+    Segment {
+        start,
+        end,
+        signal,
+        crossed,
+        usable,
+        rising,
+        inverted,
+        has_ramp,
+        noise,
+        step,
+        reference,
+        n_clipped,
+        dt: capture.time.step,
+    }
+}
+
+/// Longest stretch over which the ramp runs one way, as (first, one past last); none if it does not ramp.
+fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
+    let n = ramp.len();
+    let block = n.div_ceil(BLOCKS).max(1);
+    let means: Vec<f64> = ramp.chunks(block).map(|c| c.iter().sum::<f64>() / c.len() as f64).collect();
+    if means.len() < 8 {
+        return None;
+    }
+    let slopes: Vec<f64> = means.windows(2).map(|w| w[1] - w[0]).collect();
+    let mut sizes: Vec<f64> = slopes.iter().map(|s| s.abs()).collect();
+    sizes.sort_by(f64::total_cmp);
+    let median = sizes[sizes.len() / 2];
+    let range = means.iter().cloned().fold(f64::MIN, f64::max) - means.iter().cloned().fold(f64::MAX, f64::min);
+    // A trigger's square wave or a constant has no slope in most blocks.
+    if !(range > 0.0) || median < 0.1 * range / means.len() as f64 {
+        return None;
+    }
+    let way = |s: f64| {
+        if s > SLOPE_SHARE * median {
+            1
+        } else if s < -SLOPE_SHARE * median {
+            -1
+        } else {
+            0
+        }
+    };
+    let mut runs: Vec<(usize, usize)> = Vec::new();
+    let mut from = 0;
+    for i in 1..=slopes.len() {
+        if i == slopes.len() || way(slopes[i]) != way(slopes[from]) {
+            if way(slopes[from]) != 0 {
+                runs.push((from, i));
+            }
+            from = i;
+        }
+    }
+    // One odd block inside a ramp (noise of a coarse monitor) does not end it.
+    let mut joined: Vec<(usize, usize)> = Vec::new();
+    for run in runs {
+        match joined.last_mut() {
+            Some(last) if run.0 - last.1 <= 1 && way(slopes[run.0]) == way(slopes[last.0]) => last.1 = run.1,
+            _ => joined.push(run),
+        }
+    }
+    let span = |r: &(usize, usize)| (means[r.1] - means[r.0]).abs();
+    let widest = joined.iter().map(span).fold(0.0, f64::max);
+    let best = joined.iter().filter(|r| span(r) >= 0.5 * widest).max_by_key(|r| r.1 - r.0)?;
+    // Block means stand in the middle of their block: run[0] to run[1] in means; keep whole blocks between.
+    let start = (best.0 * block + block / 2).min(n);
+    let end = (best.1 * block + block / 2 + 1).min(n);
+    let start = if best.0 == 0 { 0 } else { start };
+    let end = if best.1 + 1 >= means.len() { n } else { end };
+    (end > start + 8).then_some((start, end))
+}
+
+/// Whether a ramp rises, and the sample at which a straight line through it passes the reference voltage.
+///
+/// The reference is the middle of the ramp, rounded to a tenth of its range, so that it is the same in every capture.
+fn ramp_reference(ramp: &[f64]) -> (bool, f64) {
+    let n = ramp.len() as f64;
+    let mean_i = (n - 1.0) / 2.0;
+    let mean_v = ramp.iter().sum::<f64>() / n;
+    let (mut sxy, mut sxx) = (0.0, 0.0);
+    for (i, v) in ramp.iter().enumerate() {
+        let d = i as f64 - mean_i;
+        sxy += d * (v - mean_v);
+        sxx += d * d;
+    }
+    let slope = if sxx > 0.0 { sxy / sxx } else { 0.0 };
+    if slope == 0.0 || !slope.is_finite() {
+        return (true, n / 2.0);
+    }
+    let range = (slope * n).abs();
+    let decade = 10f64.powf(range.log10().floor());
+    let unit = (range / decade).round().max(1.0) * decade / 10.0;
+    let reference = (mean_v / unit).round() * unit;
+    (slope > 0.0, mean_i + (reference - mean_v) / slope)
+}
+
+/// Whether the peaks point downward: the signal leans further below its median than above.
+fn points_down(signal: &[f64]) -> bool {
+    let mut sorted: Vec<f64> = signal.to_vec();
+    sorted.sort_by(f64::total_cmp);
+    let at = |q: f64| sorted[((sorted.len() - 1) as f64 * q) as usize];
+    let (low, median, high) = (at(0.001), at(0.5), at(0.999));
+    median - low > 2.0 * (high - median)
+}
+
+/// Noise from the median size of differences of neighbours, and the smallest step between levels.
+fn noise_of(signal: &[f64]) -> (f64, f64) {
+    let mut sizes: Vec<f64> = signal.windows(2).map(|w| (w[1] - w[0]).abs()).collect();
+    if sizes.is_empty() {
+        return (0.0, 0.0);
+    }
+    sizes.sort_by(f64::total_cmp);
+    let largest = sizes[sizes.len() - 1];
+    let step = sizes.iter().copied().find(|s| *s > 1e-9 * largest).unwrap_or(0.0);
+    // |difference| of two normal deviates has its median at 0.6745·√2 σ.
+    let by_median = sizes[sizes.len() / 2] / (0.674_489_75 * std::f64::consts::SQRT_2);
+    // With few levels the median is 0 or one step: take the mean of the smaller 80 % too.
+    let kept = &sizes[..(sizes.len() * 4 / 5).max(1)];
+    let by_mean = kept.iter().sum::<f64>() / kept.len() as f64;
+    (by_median.max(if by_median < 1.5 * step { by_mean } else { 0.0 }).max(step / 12f64.sqrt() * 0.5), step)
+}
+
+/// Marks samples on flat tops at the greatest level.
+fn unclipped(signal: &[f64], noise: f64, step: f64) -> (Vec<bool>, usize) {
+    let top = signal.iter().cloned().fold(f64::MIN, f64::max);
+    let bottom = signal.iter().cloned().fold(f64::MAX, f64::min);
+    let mut usable = vec![true; signal.len()];
+    // Noise on a real top spreads it over many levels; on a clipped one all samples share the last level.
+    let near = (1e-6 * (top - bottom)).max(1e-3 * step);
+    let mut n_clipped = 0;
+    let mut from = 0;
+    while from < signal.len() {
+        if top - signal[from] > near {
+            from += 1;
+            continue;
+        }
+        let mut to = from;
+        while to < signal.len() && top - signal[to] <= near {
+            to += 1;
+        }
+        // Coarse steps make short runs on any top; a run of five whose neighbours fall away by more than noise is a flat top.
+        if to - from >= 5 && step < 0.02 * (top - bottom) && noise > 0.0 {
+            for flag in &mut usable[from..to] {
+                *flag = false;
+            }
+            n_clipped += to - from;
+        }
+        from = to;
+    }
+    (usable, n_clipped)
+}
