@@ -333,6 +333,18 @@ fn an_overdue_certificate_gives_hold() {
 }
 
 #[test]
+fn the_demo_tube_on_the_bench_whose_meter_lapsed_gives_hold() {
+    let place = Place::new();
+    // Home is the folder itself: the types, the station and the scenario are those compiled in.
+    let ran = place.run(&["inspect", "DEMO-0012", "--pace", "1e9x", "--format", "json"]);
+    ran.ends(21, &["SIM-0012", "was due 2026-03-01"]);
+    let lines: Vec<serde_json::Value> = ran.out.lines().map(|line| serde_json::from_str(line).unwrap()).collect();
+    assert_eq!(lines.last().unwrap()["verdict"], "hold");
+    assert!(place.join(lines.last().unwrap()["record_pdf"].as_str().unwrap()).is_file());
+    assert!(lines.iter().any(|line| line["mode_spacing_hz"].is_number()));
+}
+
+#[test]
 fn a_station_file_with_faults_lists_them_all() {
     let place = Place::new();
     let text = fixture("bench.toml").replace("Lisbon", "Lisbonne").replace("\"1 %\"", "\"1 mV\"");
