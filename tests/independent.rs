@@ -50,12 +50,14 @@ fn truth(name: &str) -> Truth {
     let mut modes: Vec<(f64, f64)> =
         axial.iter().map(|mode| (mode.0.rem_euclid(free_spectral_range), mode.1)).collect();
     modes.sort_by(|a, b| a.0.total_cmp(&b.0));
-    // The first mode after the largest gap comes first.
+    // The first mode after the largest gap comes first; of equal gaps (to 1 kHz) that at the lowest ramp voltage: in
+    // `interleaved`, the one capture with equal gaps, the strongest mode is the first on the ramp, at 0.385 V.
     let gap = |k: usize| {
         let before = if k == 0 { modes[modes.len() - 1].0 - free_spectral_range } else { modes[k - 1].0 };
-        modes[k].0 - before
+        ((modes[k].0 - before) / 1e3).round()
     };
-    let first = (0..modes.len()).max_by(|&a, &b| gap(a).total_cmp(&gap(b))).unwrap();
+    let rank = |k: usize| (gap(k), modes[k].1);
+    let first = (0..modes.len()).max_by(|&a, &b| rank(a).partial_cmp(&rank(b)).unwrap()).unwrap();
     let origin = modes[first].0;
     modes.rotate_left(first);
     let offset = |mode: &(f64, f64)| ((mode.0 - origin).rem_euclid(free_spectral_range), mode.1);
