@@ -31,7 +31,8 @@ pub(crate) fn sweep_chart(captured: &Captured, room: &Room<'_>) -> Option<SweepC
 }
 
 fn chart_mode(index: usize, mode: &ModeFinding, off_axis: bool) -> ChartMode {
-    ChartMode { name: letter(index), offset: mode.offset, peak_height: mode.peak_height, fwhm: mode.fwhm, off_axis }
+    let peak_height = mode.peak_height + mode.crossed_height.unwrap_or(0.0);
+    ChartMode { name: letter(index), offset: mode.offset, peak_height, fwhm: mode.fwhm, off_axis }
 }
 
 /// a … z, then a1, b1 …

@@ -10,7 +10,7 @@ use crate::{
         charts,
         filled::Filled,
         grid::Grid,
-        notebook::{DwellEnd, Dwelt, Notebook},
+        notebook::{DwellEnd, Dwelt, Kept, Notebook},
     },
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
@@ -80,31 +80,58 @@ impl Dwell {
             }
             return self.go_on(room);
         }
-        if captured.finding.refused.is_some() || !room.book.keep(captured) {
+        let kept = room.book.keep(captured);
+        if kept == Kept::No {
             let why = captured.finding.refused.as_deref().unwrap_or("out of the order of time");
             self.lose(why);
             return self.go_on(room);
         }
         self.lit_ms = room.now_ms;
         self.any_light = true;
-        if self.settled(room) { self.end(DwellEnd::Settled, room) } else { self.go_on(room) }
+        if kept == Kept::Redrawn {
+            self.follow_again(room);
+        }
+        if self.settled(kept, room) { self.end(DwellEnd::Settled, room) } else { self.go_on(room) }
     }
 
-    /// Feeds the last capture to the warm-up and asks whether the dwell is over.
-    fn settled(&self, room: &mut Room<'_>) -> bool {
+    /// Asks whether the dwell is over, once the warm-up has the last capture.
+    fn settled(&self, kept: Kept, room: &mut Room<'_>) -> bool {
         let Some(glimpse) = room.book.of(room.step).last().map(|seen| seen.glimpse.clone()) else { return false };
         let step = room.step;
         let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) else { return false };
-        dwelt.warmup.take(&glimpse);
+        if kept == Kept::Added {
+            dwelt.warmup.take(&glimpse);
+        }
         dwelt.seconds = glimpse.at;
-        let state = dwelt.warmup.state();
-        // A time constant known to no better than a half predicts nothing: a walk misread early must not end the dwell.
-        state.settled && state.tau.is_none_or(|tau| tau.expanded() <= 0.5 * tau.value.abs())
+        dwelt.warmup.state().settled
+    }
+
+    /// Follows the warm-up from its beginning again, after its positions were drawn anew.
+    fn follow_again(&self, room: &mut Room<'_>) {
+        let mut warmup = Warmup::new(self.settings(room));
+        for seen in room.book.of(room.step) {
+            warmup.take(&seen.glimpse);
+        }
+        let step = room.step;
+        if let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) {
+            dwelt.warmup = warmup;
+        }
+    }
+
+    fn settings(&self, room: &Room<'_>) -> WarmupSettings {
+        WarmupSettings {
+            nominal_spacing: room.plan.recipe.nominal_spacing,
+            residual_walk: self.keys.residual_walk,
+            horizon: self.keys.horizon_s,
+            cycles: self.keys.cycles,
+        }
     }
 
     fn end(&mut self, end: DwellEnd, room: &mut Room<'_>) {
         self.done = true;
         let step = room.step;
+        room.book.redraw(step);
+        self.follow_again(room);
         let now = room.book.since_first_light(room.now_ms as f64 / 1e3);
         let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) else { return };
         dwelt.end = Some(end);
@@ -183,19 +210,13 @@ fn why_empty(end: DwellEnd, keys: &recipe::Dwell, state: &WarmupState) -> String
 impl Step for Dwell {
     fn begin(&mut self, room: &mut Room<'_>) {
         let first_light = *room.book.first_light_ms.get_or_insert(room.now_ms);
-        let recipe = &room.plan.recipe;
-        self.wavelength = recipe.wavelength;
+        self.wavelength = room.plan.recipe.wavelength;
         self.grid = Grid::new(first_light, self.keys.early_every_s, self.keys.early_for_s, self.keys.every_s);
         // Without a strike, first light is now and so is the first capture.
         self.next_ms = self.grid.at_or_after(room.now_ms);
         self.lit_ms = room.now_ms;
         self.begun = true;
-        let settings = WarmupSettings {
-            nominal_spacing: recipe.nominal_spacing,
-            residual_walk: self.keys.residual_walk,
-            horizon: self.keys.horizon_s,
-            cycles: self.keys.cycles,
-        };
+        let settings = self.settings(room);
         room.book.dwells.push(Dwelt {
             step: room.step.into(),
             warmup: Warmup::new(settings),
