@@ -30,6 +30,8 @@ pub struct Tube {
     pub half_span: f64,
     pub tau: f64,
     pub n_infinity: f64,
+    /// Amplitude, mode spacings, of a draught with a period of 12 s, from 15 s on.
+    pub draught: f64,
     /// One axis for all modes, or two at right angles.
     pub linear: bool,
     /// Both families exchange their axes once a cycle, at a fixed place under the line.
@@ -51,6 +53,7 @@ impl Tube {
             half_span: 0.75e9,
             tau: 20.0,
             n_infinity: 12.0,
+            draught: 0.0,
             linear: false,
             swaps: false,
             axis: 0.3,
@@ -71,7 +74,8 @@ impl Tube {
 
     /// Spacings walked.
     fn walked(&self, t: f64) -> f64 {
-        self.n_infinity * (1.0 - (-t / self.tau).exp())
+        let draught = self.draught * (std::f64::consts::TAU * (t - 15.0).max(0.0) / 12.0).sin();
+        self.n_infinity * (1.0 - (-t / self.tau).exp()) + draught
     }
 
     /// (index, detuning from the middle Hz, height V) of the modes.

@@ -191,6 +191,14 @@ fn the_dwell_is_no_timer() {
 }
 
 #[test]
+fn a_draught_never_settles() {
+    let (texts, tube) = quad();
+    let sheet = driven((texts, Tube { draught: 0.6, ..tube }), 10_000).run.sheet();
+    assert!(absent(&sheet, "warmup_ready").contains("not settled"));
+    assert_eq!(sheet.verdict.outcome, Outcome::Hold);
+}
+
+#[test]
 fn longest_reached_leaves_cycle_rows_empty() {
     let (mut texts, tube) = quad();
     texts.recipe = texts.recipe.replace("residual_walk = 1", "residual_walk = 0.001").replace("3 min", "40 s");

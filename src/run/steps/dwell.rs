@@ -99,7 +99,10 @@ impl Dwell {
         dwelt.seconds = glimpse.at;
         let state = dwelt.warmup.state();
         // A time constant known to no better than a half predicts nothing: a walk misread early must not end the dwell.
-        state.settled && state.tau.is_none_or(|tau| tau.expanded() <= 0.5 * tau.value.abs())
+        let tau_known = state.tau.as_ref().is_none_or(|tau| tau.expanded() <= 0.5 * tau.value.abs());
+        // What strayed from the fit over the last horizon (a draught) may stray again over the next.
+        let upper = state.residual_upper.unwrap_or(0.0) + strayed(&state, self.keys.horizon_s);
+        state.settled && tau_known && upper < self.keys.residual_walk
     }
 
     fn end(&mut self, end: DwellEnd, room: &mut Room<'_>) {
@@ -137,7 +140,7 @@ impl Dwell {
     fn rows(&self, end: DwellEnd, state: &WarmupState, room: &Room<'_>) -> Vec<Filled> {
         let why = why_empty(end, &self.keys, state);
         let mut rows = Vec::new();
-        let settled = state.settled || end == DwellEnd::Settled;
+        let settled = end == DwellEnd::Settled || (end == DwellEnd::SourceEnded && state.settled);
         let tau_stands = settled || end == DwellEnd::SourceEnded;
         rows.push(some_number(KEYS[0], state.tau.as_ref().filter(|_| tau_stands), &why));
         rows.push(some_number(KEYS[1], state.ready.as_ref().filter(|_| settled), &why));
@@ -157,6 +160,22 @@ impl Dwell {
         rows.push(some_number(KEYS[4], rate.as_ref(), "the rate of the walk could not be found"));
         rows
     }
+}
+
+/// Greatest less least departure of the walk from its fit over the last horizon, mode spacings; 0 without a fit.
+fn strayed(state: &WarmupState, horizon: f64) -> f64 {
+    let Some((last, _)) = state.points.last() else { return 0.0 };
+    let (mut least, mut greatest) = (f64::INFINITY, f64::NEG_INFINITY);
+    for (at, walked) in state.points.iter().filter(|(at, _)| *at >= last - horizon) {
+        let after = state.prediction.partition_point(|(time, _)| time < at).max(1);
+        let (Some(left), Some(right)) = (state.prediction.get(after - 1), state.prediction.get(after)) else {
+            continue;
+        };
+        let share = if right.0 > left.0 { (at - left.0) / (right.0 - left.0) } else { 0.0 };
+        let departure = walked - (left.1 + share * (right.1 - left.1));
+        (least, greatest) = (least.min(departure), greatest.max(departure));
+    }
+    if greatest >= least { greatest - least } else { 0.0 }
 }
 
 /// Peak positions alone cannot tell the tube's walk from the interferometer's.
