@@ -78,6 +78,12 @@ fn table(samples: &[Vec<String>], head: &str, columns: &[usize]) -> String {
     samples.iter().fold(head.to_owned(), |text, cells| text + &row(cells) + "\n")
 }
 
+/// The result of the capture with its first photodiode alone.
+fn without_crossed(place: &Place, samples: &[Vec<String>]) -> Found {
+    place.write("plain.csv", table(samples, "time_s,ramp_V,photodiode_V\n", &[0, 1, 2]));
+    only(&measure(place, &["plain.csv"]))
+}
+
 /// The same samples give the same spacing, whatever the layout.
 #[track_caller]
 fn same_spacing(found: &Found, plain: &Found) {
@@ -95,7 +101,8 @@ fn columns_say_which_column_is_which() {
     place.write("turned.csv", table(&samples, "", &[2, 3, 1, 0]));
     let columns = "time=4,ramp=3,photodiode=1,crossed=2";
     same_spacing(&only(&measure(&place, &["--columns", columns, "turned.csv"])), &plain);
-    // The ramp in a file of its own.
+    // The ramp in a file of its own, and no crossed photodiode.
+    let plain = without_crossed(&place, &samples);
     place.write("light.csv", table(&samples, "", &[0, 2]));
     place.write("push.csv", table(&samples, "", &[0, 1]));
     let columns = "time=1,ramp=push.csv:2,photodiode=2";
@@ -107,8 +114,8 @@ fn columns_say_which_column_is_which() {
 #[test]
 fn every_channel_may_be_in_a_file_of_its_own() {
     let place = made(1, &[]);
-    let plain = only(&measure(&place, &["made/c00000.csv"]));
     let samples = samples(&place);
+    let plain = without_crossed(&place, &samples);
     place.write("light.csv", table(&samples, "", &[0, 2]));
     place.write("push.csv", table(&samples, "", &[0, 1]));
     let columns = "time=push.csv:1,ramp=push.csv:2,photodiode=light.csv:2";
@@ -127,8 +134,8 @@ fn wrong_columns_are_wrong_usage() {
 #[test]
 fn files_named_as_channels_are_one_capture() {
     let place = made(1, &[]);
-    let plain = only(&measure(&place, &["made/c00000.csv"]));
     let samples = samples(&place);
+    let plain = without_crossed(&place, &samples);
     place.write("tube7CH1.csv", table(&samples, "time_s,photodiode_V\n", &[0, 2]));
     place.write("tube7CH2.csv", table(&samples, "time_s,ramp_V\n", &[0, 1]));
     for order in [["tube7CH1.csv", "tube7CH2.csv"], ["tube7CH2.csv", "tube7CH1.csv"]] {
