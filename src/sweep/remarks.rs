@@ -12,6 +12,11 @@ pub enum Refusal {
         /// Samples on the longest ramp.
         samples: usize,
     },
+    /// A sample is no finite number.
+    NotFinite {
+        /// Its place in the capture, from 0.
+        sample: usize,
+    },
     /// Nothing stands above the noise.
     Dark,
     /// More peaks than any comb has.
@@ -77,7 +82,8 @@ impl fmt::Display for Refusal {
             ),
             Self::NoRepeat { share } => write!(
                 f,
-                "the peaks do not repeat: only {:.0} % of their height is found again one order on; realign, or reduce the ramp",
+                "the peaks do not repeat: only {:.0} % of their height is found again one order on; raise the ramp until every mode \
+                 shows twice, or realign the interferometer",
                 share * 100.0
             ),
             Self::NoComb { share } => write!(
