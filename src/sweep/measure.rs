@@ -44,6 +44,9 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
     if let Some(sample) = first_not_finite(capture) {
         return Err(Refusal::NotFinite { sample });
     }
+    if capture.photodiode.len() < FEWEST_SAMPLES {
+        return Err(Refusal::TooShort { samples: capture.photodiode.len() });
+    }
     let segment = segment::find(capture);
     result.noise = Some(segment.noise);
     if segment.signal.len() < FEWEST_SAMPLES {

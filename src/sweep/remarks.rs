@@ -64,6 +64,7 @@ impl fmt::Display for Refusal {
             Self::TooShort { samples } => {
                 write!(f, "the longest ramp has {samples} samples; at least 100 are needed: record more samples a ramp")
             }
+            Self::NotFinite { sample } => write!(f, "sample {sample} is not a finite number; record the capture again"),
             Self::Dark => {
                 write!(f, "no peak stands above the noise: is the tube lit and the beam on the interferometer?")
             }
