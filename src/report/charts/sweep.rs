@@ -79,25 +79,55 @@ fn fitted_curve(chart: &SweepChart, (from, to): (f64, f64)) -> Vec<Point> {
 /// A triangle and a letter over each fitted mode, every order; an open triangle off the comb.
 fn names(scene: &mut Scene, face: &Typeface, chart: &SweepChart, plot: &Plot, shifted: &dyn Fn(f64) -> f64) {
     let style = Style::bold(6.8, BLUE);
-    let mut free_from = f64::NEG_INFINITY;
+    let tip = plot.top + 1.0;
     let mut marks = chart.trace.marks.clone();
     marks.sort_by(|a, b| a.1.total_cmp(&b.1));
+    let mut labels: Vec<Label> = Vec::new();
     for (index, at) in marks {
         let (Some(mode), x) = (chart.modes.get(index), shifted(at)) else { continue };
         if !plot.holds(x) {
             continue;
         }
-        let (x, tip) = (plot.at_x(x), plot.top + 1.0);
-        let triangle = vec![(x - 2.6, tip - 4.4), (x + 2.6, tip - 4.4), (x, tip)];
+        let x = plot.at_x(x);
+        let triangle = vec![(x - TRIANGLE, tip - 4.4), (x + TRIANGLE, tip - 4.4), (x, tip)];
         if mode.off_axis {
             scene.outline(triangle, Stroke::solid(BLUE, 0.7));
         } else {
             scene.area(triangle, BLUE);
         }
-        let half = face.width(&face.printable(&mode.name), style) / 2.0;
-        if x - half > free_from {
-            scene.fitted(face, (x, tip - 6.0), Anchor::Middle, &mode.name, style, 20.0);
-            free_from = x + half.min(10.0) + 1.0;
+        let name = face.shorten(&face.printable(&mode.name), style, 20.0);
+        let mut label = Label { half: face.width(&name, style) / 2.0, name, from: x, to: x };
+        while labels.last().is_some_and(|before| before.middle() + before.half + 1.0 > label.middle() - label.half) {
+            if let Some(before) = labels.pop() {
+                label = before.joined(&label, face, style);
+            }
         }
+        labels.push(label);
+    }
+    for label in labels {
+        let middle = label.middle().clamp(plot.left, plot.right);
+        scene.fitted(face, (middle, tip - 6.0), Anchor::Middle, &label.name, style, 40.0);
+    }
+}
+
+/// Half the width of a mark's triangle, pt.
+const TRIANGLE: f64 = 1.9;
+
+/// One letter, or the letters of neighbours too close to be named apart, in their order.
+struct Label {
+    name: String,
+    from: f64,
+    to: f64,
+    half: f64,
+}
+
+impl Label {
+    fn middle(&self) -> f64 {
+        (self.from + self.to) / 2.0
+    }
+
+    fn joined(&self, after: &Self, face: &Typeface, style: Style) -> Self {
+        let name = format!("{}{}", self.name, after.name);
+        Self { half: face.width(&name, style) / 2.0, name, from: self.from, to: after.to }
     }
 }

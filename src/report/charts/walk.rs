@@ -4,9 +4,11 @@
 
 use super::{Frame, Plot, TICK, missing, range, titles};
 use crate::{
+    measurand,
     record::sheet::WalkChart,
     report::{
         scene::{Anchor, BLUE, DARK, Point, RUST, Scene, Stroke, Style},
+        text::spread_text,
         typeface::Typeface,
     },
     uncertainty::joint,
@@ -73,16 +75,20 @@ fn on_curve(chart: &WalkChart, t: f64, plot: &Plot) -> Option<Point> {
 
 /// Time constant, ready, and what the marks mean, where the walk leaves room: low at the right.
 fn sayings(scene: &mut Scene, face: &Typeface, chart: &WalkChart, plot: &Plot) {
-    let minutes = |(value, expanded): (f64, f64)| {
-        let (value, expanded) = joint(value / MINUTE, expanded / MINUTE, 2);
-        format!("{value} ± {expanded} min")
+    let minutes = |key: &str, (value, expanded): (f64, f64)| {
+        let most = measurand::find(key).map_or(2, |m| m.decimals);
+        let (value, expanded) = joint(value / MINUTE, expanded / MINUTE, most);
+        format!("{value} {} min", spread_text(&expanded))
     };
     let sound = |pair: &(f64, f64)| pair.0.is_finite() && pair.1.is_finite();
     let plural = |n: usize, one: &str, many: &str| format!("{n} {}", if n == 1 { one } else { many });
     let mut lines = Vec::new();
-    lines.extend(chart.tau.filter(sound).map(|tau| (format!("τ {}", minutes(tau)), TICK)));
+    lines.extend(chart.tau.filter(sound).map(|tau| (format!("τ {}", minutes("warmup_tau", tau)), TICK)));
     lines.extend(
-        chart.ready.filter(sound).map(|ready| (format!("ready {}", minutes(ready)), Style { ink: BLUE, ..TICK })),
+        chart
+            .ready
+            .filter(sound)
+            .map(|ready| (format!("ready {}", minutes("warmup_ready", ready)), Style { ink: BLUE, ..TICK })),
     );
     lines.extend(
         chart

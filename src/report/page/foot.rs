@@ -4,8 +4,9 @@
 
 use super::{
     super::{
+        remarks,
         scene::{Anchor, DARK, GREY, RULE, RUST, Scene, Stroke, Style},
-        typeface::Typeface,
+        typeface::{SMALLEST, Typeface},
     },
     LEFT, RIGHT,
 };
@@ -31,25 +32,26 @@ pub fn foot(sheet: &Sheet, face: &Typeface, record_sha256: &str, page: (usize, u
     let mut top = signatures(&mut scene, face, sheet, first - 19.0);
     let remarks = remark_lines(sheet, face);
     if !remarks.is_empty() {
-        let title = top - 4.0 - 9.6 * remarks.len() as f64;
-        scene.text(face, (LEFT, title), Anchor::Start, "Remarks", Style::bold(7.2, DARK));
+        let first = top - 1.0 - 9.6 * (remarks.len() as f64 - 1.0);
+        scene.text(face, (LEFT, first), Anchor::Start, "Remarks", Style::bold(7.2, DARK));
         for (i, line) in remarks.iter().enumerate() {
-            let y = title + 9.6 * (i as f64 + 1.0);
-            scene.text(face, (LEFT, y), Anchor::Start, line, REMARK);
+            let y = first + 9.6 * i as f64;
+            scene.text(face, (LEFT + REMARK_INDENT, y), Anchor::Start, line, REMARK);
         }
-        top = title - 8.0;
+        top = first - 11.0;
     }
     (scene, top)
 }
 
 const REMARK: Style = Style::plain(7.2, DARK);
+const REMARK_INDENT: f64 = 38.0;
 /// More remarks than this would push the rows off the page; record.csv holds them all.
 const MOST_REMARKS: usize = 5;
 
 fn remark_lines(sheet: &Sheet, face: &Typeface) -> Vec<String> {
-    let room = RIGHT - LEFT;
+    let room = RIGHT - LEFT - REMARK_INDENT;
     let mut lines: Vec<String> =
-        sheet.remarks.iter().flat_map(|remark| face.wrap(remark, REMARK, room, MOST_REMARKS)).collect();
+        remarks(sheet).flat_map(|remark| face.wrap(remark, REMARK, room, MOST_REMARKS)).collect();
     if lines.len() > MOST_REMARKS {
         lines.truncate(MOST_REMARKS - 1);
         lines.push("… and more: see the note in the first line of record.csv.".to_owned());
@@ -60,7 +62,7 @@ fn remark_lines(sheet: &Sheet, face: &Typeface) -> Vec<String> {
 /// The last line alone, for a page that another one follows.
 pub fn last_line(sheet: &Sheet, face: &Typeface, record_sha256: &str, (page, pages): (usize, usize)) -> Scene {
     let mut scene = Scene::default();
-    let style = Style::plain(6.0, GREY);
+    let style = Style::plain(SMALLEST, GREY);
     let end = if page == pages { " · end" } else { "" };
     let version = sheet.identity.program_version.as_str();
     let name = ["tubewright", version].join(" ");
