@@ -2,18 +2,24 @@
 //! Must not open a file, and never takes volts for hertz: the repeat of the orders is the frequency scale.
 //! Main entry: [`measure`]; main type: [`Measurement`].
 
+mod assign;
 mod axis;
 mod comb;
 mod detect;
+mod fitted;
 mod lines;
 mod measure;
+mod model;
 mod orders;
+mod outcome;
 mod remarks;
 mod segment;
+mod shared;
 mod trace;
 
 pub use measure::measure;
 pub use remarks::{Refusal, Warning};
+pub use shared::SharedAxis;
 pub use trace::{ThinTrace, thin_trace};
 
 use crate::uncertainty::Measured;
@@ -47,18 +53,31 @@ pub struct Mode {
     pub offset: f64,
     /// Its standard uncertainty, Hz.
     pub u_offset: f64,
-    /// Height, V, mean over the orders.
+    /// Height in the main photodiode, V, mean over the orders.
     pub peak_height: f64,
     /// Its standard uncertainty, V.
     pub u_peak_height: f64,
-    /// Height over that of the strongest mode.
+    /// Height over that of the strongest mode, both photodiodes together.
     pub relative_height: f64,
-    /// Area, V·Hz: π/2 · height · FWHM of a Lorentzian.
+    /// Area of all light, both photodiodes together, V·Hz: π/2 · height · FWHM of a Lorentzian.
     pub area: f64,
     /// Full width at half maximum with the detector's pole out, Hz.
     pub fwhm: f64,
     /// Height in the crossed photodiode, V.
     pub crossed_height: Option<f64>,
+    /// Where on the ramp it was seen, once an order.
+    pub places: Vec<Place>,
+    /// Standard uncertainty of one such place, V.
+    pub u_ramp: f64,
+}
+
+/// A mode in one order.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Place {
+    /// Ramp voltage, V (seconds since the capture's first sample where there is no ramp channel).
+    pub ramp: f64,
+    /// Order, ascending with ramp voltage; its zero means nothing.
+    pub order: i32,
 }
 
 /// What one capture says.
@@ -90,6 +109,8 @@ pub struct Measurement {
     pub mean_level: Option<f64>,
     /// Standard deviation of the noise, V.
     pub noise: Option<f64>,
+    /// Ramp voltage at both ends of the ramp that was measured, V, in the order of time; none without a ramp channel.
+    pub ramp_ends: Option<(f64, f64)>,
     /// The scan axis found, for drawing.
     pub axis: Option<ScanAxis>,
 }
