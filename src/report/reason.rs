@@ -58,8 +58,8 @@ fn said(row: &Row, margin: &Margin) -> String {
     let text = value_text(row);
     let unit = if text.unit.is_empty() { String::new() } else { format!("\u{a0}{}", text.unit) };
     let bound = bound_text(measurand::find(&row.measurand), margin.bound);
-    let side = if margin.upper { "at most" } else { "at least" };
-    format!("the nearest is {}, {}{unit} of {side} {bound}{unit}", lower_first(&row.label), text.value)
+    let side = if margin.upper { "at\u{a0}most" } else { "at\u{a0}least" };
+    format!("the nearest is {}, {}{unit} of {side}\u{a0}{bound}{unit}", lower_first(&row.label), text.value)
 }
 
 /// "Power ripple" inside a sentence.

@@ -51,13 +51,12 @@ fn strongest(chart: &SweepChart) -> f64 {
     [fitted, seen].into_iter().find(|height| *height > 0.0).unwrap_or(1.0)
 }
 
-/// Sum of the fitted lines over every order shown, sampled evenly and closer around each line.
+/// Sum of the fitted lines over every order shown and the next beyond either end, whose flanks may reach in; sampled
+/// evenly and closer around each line.
 fn fitted_curve(chart: &SweepChart, (from, to): (f64, f64)) -> Vec<Point> {
-    let lines: Vec<(f64, &ChartMode)> = chart
-        .trace
-        .marks
-        .iter()
-        .filter_map(|&(index, at)| chart.modes.get(index).map(|mode| (at, mode)))
+    let lines: Vec<(f64, &ChartMode)> = marks_and_beyond(chart, (from, to))
+        .into_iter()
+        .filter_map(|(index, at)| chart.modes.get(index).map(|mode| (at, mode)))
         .filter(|(at, mode)| at.is_finite() && mode.fwhm > 0.0 && mode.fwhm.is_finite() && mode.peak_height.is_finite())
         .collect();
     if lines.is_empty() {
@@ -74,6 +73,19 @@ fn fitted_curve(chart: &SweepChart, (from, to): (f64, f64)) -> Vec<Point> {
         lines.iter().map(one).sum::<f64>()
     };
     places.into_iter().map(|x| (x, height(x))).collect()
+}
+
+/// The marked lines, and those of the orders just outside the trace.
+fn marks_and_beyond(chart: &SweepChart, (from, to): (f64, f64)) -> Vec<(usize, f64)> {
+    let mut marks = chart.trace.marks.clone();
+    for index in 0..chart.modes.len() {
+        let of_mode = chart.trace.marks.iter().filter(|mark| mark.0 == index).map(|mark| mark.1);
+        if let Some((first, last)) = range(of_mode) {
+            let beyond = [first - chart.free_spectral_range, last + chart.free_spectral_range];
+            marks.extend(beyond.into_iter().filter(|at| *at < from || *at > to).map(|at| (index, at)));
+        }
+    }
+    marks
 }
 
 /// A triangle and a letter over each fitted mode, every order; an open triangle off the comb.

@@ -14,14 +14,14 @@ use super::{
 use crate::record::sheet::{Row, Sheet, Value};
 
 const COLUMNS: usize = 3;
-const GAP: f64 = 18.0;
+const GAP: f64 = 12.0;
 const COLUMN: f64 = (RIGHT - LEFT - GAP * (COLUMNS as f64 - 1.0)) / COLUMNS as f64;
 /// Right end of the values, from the left end of their column.
-const VALUE_END: f64 = 100.0;
+const VALUE_END: f64 = 104.0;
 /// Left end of the spreads.
-const SPREAD: f64 = 103.0;
+const SPREAD: f64 = 107.0;
 /// Left end of the units.
-const UNIT: f64 = 135.0;
+const UNIT: f64 = 138.0;
 /// Longest reason for an absent value, in characters; record.csv has it whole.
 const REASON: usize = 90;
 
@@ -36,7 +36,8 @@ pub fn blocks(sheet: &Sheet, face: &Typeface, density: &Density) -> Vec<Block> {
     if rows.is_empty() {
         return vec![];
     }
-    let mut blocks = vec![heading("Also measured, for information", face, density)];
+    let air = Block { height: 3.0, is_heading: true, scene: Scene::default() };
+    let mut blocks = vec![air, heading("Also measured, for information", face, density)];
     let entries = entries(&rows);
     let lines = entries.len().div_ceil(COLUMNS);
     for line in 0..lines {
@@ -102,11 +103,17 @@ fn draw(scene: &mut Scene, face: &Typeface, entry: &Entry, left: f64, density: &
     // A word that needs the room of spread and unit takes it.
     let is_long = face.width(&face.printable(&entry.value), bold) > VALUE_END * 0.5 && entry.spread.is_empty();
     let end = if is_long { COLUMN } else { VALUE_END };
-    let width = scene.fitted(face, at(end), Anchor::End, &entry.value, bold, end * 0.5);
-    scene.fitted(face, at(0.0), Anchor::Start, &entry.name, Style::plain(size, DARK), end - width - 5.0);
+    // The name is written first: who copies the text gets it in reading order.
+    let (value, bold) = face.fit(&entry.value, bold, end * 0.5);
+    let room = end - face.width(&value, bold) - 5.0;
+    scene.fitted(face, at(0.0), Anchor::Start, &entry.name, Style::plain(size, DARK), room);
+    scene.text(face, at(end), Anchor::End, &value, bold);
     let small = Style::plain((size * 0.92).max(6.6), GREY);
-    scene.fitted(face, at(SPREAD), Anchor::Start, &entry.spread, small, UNIT - 1.5 - SPREAD);
-    scene.fitted(face, at(UNIT), Anchor::Start, &entry.unit, small, COLUMN - UNIT);
+    let spread_room = if entry.unit.is_empty() { COLUMN - SPREAD } else { UNIT - 1.5 - SPREAD };
+    let spread_end = SPREAD + scene.fitted(face, at(SPREAD), Anchor::Start, &entry.spread, small, spread_room);
+    // A long unit begins a little before its place, but never within the spread.
+    let unit = (COLUMN - face.width(&face.printable(&entry.unit), small)).min(UNIT).max(spread_end + 2.0);
+    scene.fitted(face, at(unit), Anchor::Start, &entry.unit, small, COLUMN - unit);
 }
 
 /// One paragraph on the rows without a value, rows of one reason together.

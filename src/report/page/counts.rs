@@ -49,7 +49,7 @@ pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) -
         let text = if gap { format!("{n} …") } else { n.to_string() };
         scene.fitted(face, (left + 18.0, y + style.size * 0.35), Anchor::Start, &text, style, STEP - 21.0);
     }
-    Some(LEFT_END + 4.0 + STEP * numbers.len() as f64 - 10.0)
+    Some(LEFT_END + 4.0 + STEP * numbers.len() as f64 - 15.0)
 }
 
 /// The numbers that get a box: the count, the bounds, and their neighbours; ascending.

@@ -118,7 +118,7 @@ fn laid_out(sheet: &Sheet, face: &Typeface, record_sha256: &str, density: &Densi
         let foot = if i + 1 == total {
             foot::foot(sheet, face, record_sha256, (total, total)).0
         } else {
-            foot::last_line(sheet, face, record_sha256, (i + 1, total))
+            foot::last_lines(sheet, face, record_sha256, (i + 1, total))
         };
         page.parts.push((Part::Foot, foot));
     }
@@ -149,7 +149,7 @@ impl Flow {
     /// The rows; on a page that is not the last they may go down to the last line.
     fn rows(&mut self, blocks: Vec<rows::Block>, sheet: &Sheet, face: &Typeface) {
         let mut blocks = blocks.into_iter().peekable();
-        let bottom = foot::LAST_LINE - 16.0;
+        let bottom = foot::BOTTOM;
         let mut scene = self.table_head(face);
         while let Some(block) = blocks.next() {
             // A heading stays with its first row.
@@ -178,7 +178,7 @@ impl Flow {
         let charts = [
             (Part::Sweep, charts::sweep(sheet.sweep_chart.as_ref(), face, frame(0.0))),
             (Part::Gain, charts::gain(sheet.gain_chart.as_ref(), face, frame(1.0))),
-            (Part::Walk, charts::walk(sheet.walk_chart.as_ref(), face, frame(2.0))),
+            (Part::Walk, charts::walk(sheet.walk_chart.as_ref(), &sheet.rows, face, frame(2.0))),
         ];
         self.page.parts.extend(charts);
     }

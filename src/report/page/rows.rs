@@ -6,7 +6,7 @@ use super::{
     super::{
         scene::{Anchor, DARK, GREY, RULE, Scene, Stroke, Style},
         text::{probability_text, value_text},
-        typeface::Typeface,
+        typeface::{SMALLEST, Typeface},
     },
     Density, LEFT, RIGHT, also, counts, scale,
 };
@@ -101,14 +101,16 @@ fn row_block(row: &Row, face: &Typeface, density: &Density, notes: bool) -> Bloc
         Value::Count { .. } => counts::draw(&mut scene, face, row, middle, density.pitch),
         Value::Word(word) => wanted(&mut scene, face, row, word, baseline, size),
     };
-    conforms(&mut scene, face, row, baseline, size);
+    let conforms = conforms(&mut scene, face, row, baseline, size);
     let mut end = placed.end;
     let note = Style::plain((size * 0.82).max(6.6), if row.deciding { DARK } else { GREY });
-    let rooms = [(LEFT + label_width + 7.0, placed.left - 7.0), (drawn.unwrap_or(CONFORMS) + 7.0, CONFORMS - 7.0)];
-    let width = face.width(&face.printable(&row.note), note);
+    // Behind the drawing, or between name and value.
+    let rooms =
+        [(drawn.map_or(conforms, |end| end + 7.0), conforms - 7.0), (LEFT + label_width + 7.0, placed.left - 12.0)];
+    let width = face.width(&face.printable(&row.note), note.sized(SMALLEST));
     let room = rooms.into_iter().find(|(from, to)| !row.deciding && width <= to - from);
-    if let Some((from, _)) = room {
-        scene.text(face, (from, baseline), Anchor::Start, &row.note, note);
+    if let Some((from, to)) = room {
+        scene.fitted(face, (from, baseline), Anchor::Start, &row.note, note, to - from);
     } else if row.deciding || notes {
         for line in face.wrap(&row.note, note, RIGHT - LEFT, if row.deciding { 2 } else { 1 }) {
             end += size * 1.1;
@@ -130,7 +132,7 @@ fn opened(scene: Scene, height: f64) -> Scene {
     for y in [0.5, height - 0.5] {
         open.line(vec![(LEFT - 7.0, y), (RIGHT, y)], Stroke::solid(GREY, 0.6));
     }
-    open.append(scene.lowered(2.0));
+    open.append(scene.lowered(3.0));
     open
 }
 
@@ -195,8 +197,9 @@ pub fn telling(row: &Row) -> Option<&Judged> {
     }
 }
 
-fn conforms(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) {
-    let Some(judged) = telling(row) else { return };
+/// The probability, or why there is none. Returns where it begins.
+fn conforms(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) -> f64 {
+    let Some(judged) = telling(row) else { return RIGHT };
     let text = match (&row.value, judged.conformance_probability) {
         (Value::Count { .. }, _) => "exact".to_owned(),
         (Value::Word(_), _) => "by eye".to_owned(),
@@ -204,5 +207,5 @@ fn conforms(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: 
         _ => "–".to_owned(),
     };
     let style = if row.deciding { Style::bold(size * 0.9, DARK) } else { Style::plain(size * 0.9, GREY) };
-    scene.fitted(face, (RIGHT, baseline), Anchor::End, &text, style, RIGHT - CONFORMS);
+    RIGHT - scene.fitted(face, (RIGHT, baseline), Anchor::End, &text, style, RIGHT - CONFORMS)
 }
