@@ -4,7 +4,8 @@
 
 use super::{Given, Room, Step, Wish};
 use crate::{
-    behaviour::{Glimpse, watch},
+    behaviour::{Glimpse, Hop, Swap, watch},
+    numerics::summary,
     recipe,
     run::{
         filled::Filled,
@@ -19,6 +20,9 @@ const KEYS: [&str; 3] = ["hop_count", "swap_count", "cycles_watched"];
 const SAMPLES: usize = 2_000;
 /// −ln 0.05: with none seen, the expected number is below this with 95 % (Poisson).
 const NONE_SEEN: f64 = 2.9957;
+
+/// Hops or swaps that a note names one by one; the chart of the walk shows all.
+const NAMED: usize = 4;
 
 /// The step.
 pub(super) struct Watch {
@@ -68,10 +72,10 @@ impl Watch {
                     hop.at
                 ),
             ),
-            None => counted(KEYS[0], watched.hops.len(), seconds),
+            None => counted(KEYS[0], watched.hops.len(), seconds, hops_named(&watched.hops)),
         };
         let swaps = if watched.axes_seen {
-            counted(KEYS[1], watched.swaps.len(), seconds)
+            counted(KEYS[1], watched.swaps.len(), seconds, swaps_named(&watched.swaps, watched.cycles))
         } else {
             let crossed = glimpses.iter().any(|glimpse| glimpse.modes.iter().any(|mode| mode.crossed.is_some()));
             let reason = if crossed {
@@ -95,8 +99,8 @@ impl Watch {
     }
 }
 
-/// A count with what it says about the rate.
-fn counted(key: &str, n: usize, seconds: f64) -> Filled {
+/// A count with when they were, or with what none says about the rate.
+fn counted(key: &str, n: usize, seconds: f64, named: String) -> Filled {
     let n = n as u64;
     let row = Filled::count(key, n, n, n);
     if n == 0 && seconds > 0.0 {
@@ -106,8 +110,38 @@ fn counted(key: &str, n: usize, seconds: f64) -> Filled {
             NONE_SEEN * 3600.0 / seconds
         ))
     } else {
-        row
+        row.noted(named)
     }
+}
+
+/// When each hop was and how far it went, modulo one spacing: "at 150.8 s (+210 MHz), …".
+fn hops_named(hops: &[Hop]) -> String {
+    let named = hops.iter().take(NAMED).map(|hop| format!("at {:.1} s ({})", hop.at, signed_megahertz(hop.size)));
+    and_more(named.collect(), hops.len())
+}
+
+/// When each swap was; of many, also how many a cycle and at what detuning: a tube that swaps does so at one place.
+fn swaps_named(swaps: &[Swap], cycles: f64) -> String {
+    let named = swaps.iter().take(NAMED).map(|swap| format!("at {:.1} s", swap.at));
+    let named = and_more(named.collect(), swaps.len());
+    if swaps.len() <= NAMED || cycles <= 0.0 {
+        return named;
+    }
+    let place = match summary::median(&swaps.iter().filter_map(|swap| swap.detuning).collect::<Vec<f64>>()) {
+        Some(detuning) => format!(", {} from the middle of the line", signed_megahertz(detuning)),
+        None => String::new(),
+    };
+    format!("{:.1} a walk cycle{place}; {named}", swaps.len() as f64 / cycles)
+}
+
+fn and_more(named: Vec<String>, n: usize) -> String {
+    let more = n - named.len();
+    let named = named.join(", ");
+    if more > 0 { format!("{named} and {more} more") } else { named }
+}
+
+fn signed_megahertz(hertz: f64) -> String {
+    format!("{:+.0} MHz", hertz / 1e6)
 }
 
 /// Standard uncertainty of the comb's phase in one capture, in spacings.
@@ -153,5 +187,35 @@ impl Step for Watch {
     fn expected_s(&self, _book: &Notebook) -> Option<f64> {
         let left = if self.done { 0.0 } else { self.end_ms.saturating_sub(self.next_ms) as f64 / 1e3 };
         Some(if self.end_ms == 0 { self.keys.for_s.unwrap_or(0.0) } else { left })
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn hop(at: f64, size: f64) -> Hop {
+        Hop { at, size, u_size: 1e6, attributed: true }
+    }
+
+    #[test]
+    fn notes_name_when() {
+        assert_eq!(
+            hops_named(&[hop(150.83, 210.2e6), hop(161.0, -90e6)]),
+            "at 150.8 s (+210 MHz), at 161.0 s (-90 MHz)"
+        );
+        let swap = |at| Swap { at, detuning: Some(-180e6) };
+        assert_eq!(swaps_named(&[swap(3.04), swap(9.0)], 4.0), "at 3.0 s, at 9.0 s");
+        let many: Vec<Swap> = (1..=6).map(|k| swap(f64::from(k))).collect();
+        assert_eq!(
+            swaps_named(&many, 6.0),
+            "1.0 a walk cycle, -180 MHz from the middle of the line; at 1.0 s, at 2.0 s, at 3.0 s, at 4.0 s and 2 more"
+        );
+    }
+
+    #[test]
+    fn none_seen_bounds_the_rate() {
+        // 3.00 expected at most in a quarter of an hour: 12 an hour.
+        assert!(counted(KEYS[0], 0, 900.0, String::new()).note.ends_with("fewer than 12 an hour (95 %)"));
     }
 }

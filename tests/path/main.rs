@@ -1,0 +1,8 @@
+//! The whole path: what is true of a tube → bytes of captures → engine → run → behaviour → sheet.
+//! Must not look inside any part: only truths in, only the sheet out.
+
+#![allow(clippy::unwrap_used, clippy::panic, missing_docs)]
+
+mod bench;
+mod warmup;
+mod watch;
