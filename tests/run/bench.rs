@@ -132,6 +132,7 @@ impl Tube {
                     Some(_) => height * (1.0 - through) + 0.001 * noise.next(),
                     None => height * if even { 0.2 } else { 0.8 },
                 }),
+                ..ModeFinding::default()
             });
         }
         let line = |source_id: &str, type_a: bool, u: f64| StoredLine {
