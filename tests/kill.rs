@@ -85,3 +85,34 @@ fn events_cut_at_any_byte_end_in_the_same_record() {
         assert!(record(&place) == expected, "cut after byte {cut} of {}", events.len());
     }
 }
+
+#[test]
+fn a_run_fed_from_captures_goes_on_with_the_next_capture() {
+    let place = Place::new();
+    let station = program::fixture("bench.toml").replacen("\"simulated\"", "\"folder\"", 1);
+    place.write("station.toml", station);
+    // Without times of their own: order and time of the captures are the program's.
+    let simulate = ["simulate", "captures", "--type", "twin-150", "--captures", "120", "--samples", "1500"];
+    place.run(&simulate).ends(0, &[]);
+    for entry in fs::read_dir(place.join("captures")).unwrap() {
+        let path = entry.unwrap().path();
+        let text = fs::read_to_string(&path).unwrap();
+        fs::write(&path, text.replace("# captured_at", "# taken")).unwrap();
+    }
+    let more = ["--type", "brisk-150", "--station", "station.toml", "--captures", "captures"];
+    let more = [&more[..], &["--seed", "1", "--start", "2026-03-02T08:00:00Z"]].concat();
+    let first = place.inspect("C-1", &more);
+    let status = first.status.unwrap();
+    assert!([0, 20, 21].contains(&status), "{}", first.err);
+    let expected = record(&place);
+    let path = place.find("events.jsonl").unwrap();
+    let events = fs::read(&path).unwrap();
+    let mut random = ChaCha8Rng::seed_from_u64(SEED + 2);
+    for _ in 0..6 {
+        let cut = usize::try_from(random.next_u64()).unwrap() % events.len();
+        fs::write(&path, &events[..cut]).unwrap();
+        fs::remove_file(path.with_file_name("record.csv")).unwrap();
+        place.inspect("C-1", &more).ends(status, &[]);
+        assert!(record(&place) == expected, "cut after byte {cut} of {}", events.len());
+    }
+}

@@ -5,6 +5,8 @@
 mod drive;
 mod engine;
 mod finding;
+#[cfg(test)]
+mod tests;
 
 pub use drive::{Driver, Watcher, resume};
 pub use engine::Engine;

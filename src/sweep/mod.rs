@@ -2,18 +2,24 @@
 //! Must not open a file, and never takes volts for hertz: the repeat of the orders is the frequency scale.
 //! Main entry: [`measure`]; main type: [`Measurement`].
 
+mod assign;
 mod axis;
 mod comb;
 mod detect;
+mod fitted;
 mod lines;
 mod measure;
+mod model;
 mod orders;
+mod outcome;
 mod remarks;
 mod segment;
+mod shared;
 mod trace;
 
 pub use measure::measure;
 pub use remarks::{Refusal, Warning};
+pub use shared::SharedAxis;
 pub use trace::{ThinTrace, thin_trace};
 
 use crate::uncertainty::Measured;
@@ -59,6 +65,19 @@ pub struct Mode {
     pub fwhm: f64,
     /// Height in the crossed photodiode, V.
     pub crossed_height: Option<f64>,
+    /// Where on the ramp it was seen, once an order.
+    pub places: Vec<Place>,
+    /// Standard uncertainty of one such place, V.
+    pub u_ramp: f64,
+}
+
+/// A mode in one order.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Place {
+    /// Ramp voltage, V (seconds since the capture's first sample where there is no ramp channel).
+    pub ramp: f64,
+    /// Order, ascending with ramp voltage; its zero means nothing.
+    pub order: i32,
 }
 
 /// What one capture says.
@@ -90,6 +109,8 @@ pub struct Measurement {
     pub mean_level: Option<f64>,
     /// Standard deviation of the noise, V.
     pub noise: Option<f64>,
+    /// Ramp voltage at both ends of the ramp that was measured, V, in the order of time; none without a ramp channel.
+    pub ramp_ends: Option<(f64, f64)>,
     /// The scan axis found, for drawing.
     pub axis: Option<ScanAxis>,
 }

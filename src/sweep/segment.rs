@@ -29,10 +29,21 @@ pub(super) struct Segment {
     pub step: f64,
     /// Sample position (in the segment) of the reference voltage.
     pub reference: f64,
+    /// Ramp voltage at the segment's first sample, V, of the straight line through the ramp; seconds without a ramp.
+    pub ramp_start: f64,
+    /// Volts (seconds) a sample.
+    pub ramp_slope: f64,
     /// Samples left out as clipped.
     pub n_clipped: usize,
     /// Seconds a sample.
     pub dt: f64,
+}
+
+impl Segment {
+    /// Ramp voltage at a sample position, V.
+    pub fn ramp_at(&self, x: f64) -> f64 {
+        self.ramp_start + self.ramp_slope * x
+    }
 }
 
 /// Blocks the ramp is thinned to before its slope is judged: fine enough to find the turn within 1 %.
@@ -46,10 +57,14 @@ pub(super) fn find(capture: &Capture) -> Segment {
     let found = capture.ramp.as_deref().filter(|ramp| ramp.len() == n).and_then(longest_ramp);
     let has_ramp = found.is_some();
     let (start, end) = found.unwrap_or((0, n));
-    let (rising, reference) = match (&capture.ramp, has_ramp) {
-        (Some(ramp), true) => ramp_reference(&ramp[start..end]),
-        _ => (true, (end - start) as f64 / 2.0),
+    let line = match (&capture.ramp, has_ramp) {
+        (Some(ramp), true) => ramp_line(&ramp[start..end]),
+        _ => None,
     };
+    // Without a ramp, time stands for it.
+    let (ramp_start, ramp_slope) = line.unwrap_or((start as f64 * capture.time.step, capture.time.step));
+    let rising = ramp_slope > 0.0 || line.is_none();
+    let reference = line.map_or((end - start) as f64 / 2.0, |line| reference_on(line, end - start));
     let raw = &capture.photodiode[start..end];
     let inverted = points_down(raw);
     let sign = if inverted { -1.0 } else { 1.0 };
@@ -73,6 +88,8 @@ pub(super) fn find(capture: &Capture) -> Segment {
         noise,
         step,
         reference,
+        ramp_start,
+        ramp_slope,
         n_clipped,
         dt: capture.time.step,
     }
@@ -133,10 +150,8 @@ fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
     (end > start + 8).then_some((start, end))
 }
 
-/// Whether a ramp rises, and the sample at which a straight line through it passes the reference voltage.
-///
-/// The reference is the middle of the ramp, rounded to a tenth of its range, so that it is the same in every capture.
-fn ramp_reference(ramp: &[f64]) -> (bool, f64) {
+/// Straight line through a ramp: (V at the first sample, V a sample); none if it is flat.
+fn ramp_line(ramp: &[f64]) -> Option<(f64, f64)> {
     let n = ramp.len() as f64;
     let mean_i = (n - 1.0) / 2.0;
     let mean_v = ramp.iter().sum::<f64>() / n;
@@ -146,15 +161,18 @@ fn ramp_reference(ramp: &[f64]) -> (bool, f64) {
         sxy += d * (v - mean_v);
         sxx += d * d;
     }
-    let slope = if sxx > 0.0 { sxy / sxx } else { 0.0 };
-    if slope == 0.0 || !slope.is_finite() {
-        return (true, n / 2.0);
-    }
-    let range = (slope * n).abs();
+    let slope = sxy / sxx;
+    (slope.is_finite() && slope != 0.0).then_some((mean_v - slope * mean_i, slope))
+}
+
+/// Sample at which the line passes the reference voltage: the middle of the ramp, rounded to a tenth of its range, so
+/// that it is the same in every capture.
+fn reference_on((start, slope): (f64, f64), n: usize) -> f64 {
+    let range = (slope * n as f64).abs();
     let decade = 10f64.powf(range.log10().floor());
     let unit = (range / decade).round().max(1.0) * decade / 10.0;
-    let reference = (mean_v / unit).round() * unit;
-    (slope > 0.0, mean_i + (reference - mean_v) / slope)
+    let middle = start + slope * (n as f64 - 1.0) / 2.0;
+    ((middle / unit).round() * unit - start) / slope
 }
 
 /// Whether the peaks point downward: the signal leans further below its median than above.

@@ -2,7 +2,7 @@
 //! Must not touch an instrument yet.
 //! Main function: [`build`].
 
-use std::io::{self, BufReader};
+use std::io;
 
 use chrono::{DateTime, FixedOffset};
 
@@ -20,7 +20,8 @@ const NOT_ON_THIS_BENCH: &str = "not on this bench";
 
 /// A person at this terminal; initials not known yet.
 pub(super) fn terminal() -> TerminalPerson {
-    TerminalPerson::new(String::new(), Box::new(BufReader::new(io::stdin())), Box::new(io::stderr()))
+    // The lock reads through the one buffer of the process: a second terminal loses nothing of a pipe.
+    TerminalPerson::new(String::new(), Box::new(io::stdin().lock()), Box::new(io::stderr()))
 }
 
 /// Builds the bench.

@@ -35,17 +35,17 @@ impl Opening {
     pub fn decide(inputs: &Inputs) -> Result<Self, Failure> {
         let runs = inputs.store.runs_of(&inputs.serial).map_err(|error| Failure::store(&error))?;
         // Before the lock, so that input which cannot be used leaves nothing behind.
-        if !runs.iter().any(|run| !run.frozen) {
-            new_plan(inputs, &runs)?;
-        }
+        let is_open = |run: &&FoundRun| !run.frozen;
+        let planned = if runs.iter().any(|run| is_open(&run)) { None } else { Some(new_plan(inputs, &runs)?) };
         let since = Utc::now().format("%Y-%m-%dT%H:%M:%SZ").to_string();
         let lock =
             SerialLock::take(inputs.store.reports(), &inputs.serial, &since).map_err(|error| Failure::store(&error))?;
         // Another process may have finished its run meanwhile.
         let runs = inputs.store.runs_of(&inputs.serial).map_err(|error| Failure::store(&error))?;
-        match runs.iter().rfind(|run| !run.frozen) {
-            Some(open) => Self::again(inputs, open, lock),
-            None => Self::anew(inputs, &runs, lock),
+        match (runs.iter().rfind(is_open), planned) {
+            (Some(open), _) => Self::again(inputs, open, lock),
+            (None, Some(planned)) => Self::anew(inputs, planned, runs.len(), lock),
+            (None, None) => Self::anew(inputs, new_plan(inputs, &runs)?, runs.len(), lock),
         }
     }
 
@@ -72,8 +72,9 @@ impl Opening {
         Ok(Self { plan, identity: identity.clone(), bench, path: open.path.clone(), first: None, _lock: lock })
     }
 
-    fn anew(inputs: &Inputs, runs: &[FoundRun], lock: SerialLock) -> Result<Self, Failure> {
-        let (tube_type, texts, plan) = new_plan(inputs, runs)?;
+    /// * `earlier`: how many runs of this serial there are already.
+    fn anew(inputs: &Inputs, planned: Planned, earlier: usize, lock: SerialLock) -> Result<Self, Failure> {
+        let Planned { tube_type, texts, plan } = planned;
         let (station_text, station) = &inputs.station;
         let started_at = started_at(inputs).with_timezone(&station.time_zone).fixed_offset();
         let mut technician = String::new();
@@ -83,7 +84,7 @@ impl Opening {
             |field: fn(&crate::phantom::ScenarioTube) -> &String| tube.map(field).cloned().unwrap_or_default();
         let seed = inputs.seed.or(inputs.scenario.as_ref().map(|scenario| scenario.seed));
         let identity = Identity {
-            run_id: run_id(started_at.timestamp_millis(), &inputs.serial, runs.len(), seed),
+            run_id: run_id(started_at.timestamp_millis(), &inputs.serial, earlier, seed),
             serial: inputs.serial.clone(),
             tube_type,
             supplier: of_tube(|tube| &tube.supplier),
@@ -127,8 +128,15 @@ fn started_at(inputs: &Inputs) -> DateTime<FixedOffset> {
     inputs.start.or_else(of_scenario).or_else(of_captures).unwrap_or_else(|| Utc::now().fixed_offset())
 }
 
+/// What a new run will be.
+struct Planned {
+    tube_type: String,
+    texts: TypeTexts,
+    plan: Plan,
+}
+
 /// Type, texts and plan of a new run.
-fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<(String, TypeTexts, Plan), Failure> {
+fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<Planned, Failure> {
     if let Some(scenario) = inputs.scenario.as_ref().filter(|scenario| scenario.tube(&inputs.serial).is_none()) {
         let known: Vec<&str> = scenario.tubes.iter().map(|tube| tube.serial.as_str()).collect();
         return Err(Failure::unusable(format!(
@@ -146,7 +154,7 @@ fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<(String, TypeTexts, Pl
     let recipe = Recipe::parse(&texts.recipe_name, &texts.recipe).map_err(|faults| faulty("recipe", &faults))?;
     let plan = Plan { recipe, limits, station: inputs.station.1.clone() };
     same_revision_same_text(&tube_type, &texts, &plan, runs)?;
-    Ok((tube_type, texts, plan))
+    Ok(Planned { tube_type, texts, plan })
 }
 
 /// `--type`, else the answers, else the serial's last run, else the scenario, else a person.

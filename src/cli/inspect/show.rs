@@ -7,7 +7,7 @@ use std::io::{self, IsTerminal as _, Write as _};
 use std::path::Path;
 use std::time::{Duration, Instant};
 
-use serde_json::{Map, Value as Json, json};
+use serde_json::{Value as Json, json};
 
 use super::Format;
 use crate::cli::{Failure, output};
@@ -84,7 +84,7 @@ impl Show {
                 self.clear();
                 let line = match self.format {
                     Format::Text => row_line(row),
-                    Format::Json => row_json(row).to_string(),
+                    Format::Json => row_json(row),
                 };
                 if let Err(failure) = output::result(&line) {
                     self.failed.get_or_insert(failure);
@@ -129,20 +129,17 @@ impl Show {
         let verdict = &sheet.verdict;
         let (csv, pdf) = (folder.join("record.csv"), folder.join("record.pdf"));
         match self.format {
-            Format::Json => output::result(
-                &json!({
-                    "run_id": sheet.identity.run_id,
-                    "serial": sheet.identity.serial,
-                    "verdict": verdict.outcome.word(),
-                    "grade": verdict.grade,
-                    "reject_code": verdict.reject_code,
-                    "sentence": verdict.sentence,
-                    "reason": verdict.reason,
-                    "record_csv": csv.to_string_lossy(),
-                    "record_pdf": pdf.to_string_lossy(),
-                })
-                .to_string(),
-            ),
+            Format::Json => output::result(&object(&[
+                ("run_id", json!(sheet.identity.run_id)),
+                ("serial", json!(sheet.identity.serial)),
+                ("verdict", json!(verdict.outcome.word())),
+                ("grade", json!(verdict.grade)),
+                ("reject_code", json!(verdict.reject_code)),
+                ("sentence", json!(verdict.sentence)),
+                ("reason", json!(verdict.reason)),
+                ("record_csv", json!(csv.to_string_lossy())),
+                ("record_pdf", json!(pdf.to_string_lossy())),
+            ])),
             Format::Text => {
                 output::result("")?;
                 output::result(&format!("{}: {}", sheet.identity.serial, verdict.sentence))?;
@@ -188,13 +185,9 @@ fn time_left(seconds: f64) -> String {
 }
 
 /// A row as JSON: the value in SI under the measurand's key with the unit's suffix, unknown null.
-fn row_json(row: &Row) -> Json {
+fn row_json(row: &Row) -> String {
     let known = measurand::find(&row.measurand);
     let key = known.map_or_else(|| row.measurand.clone(), measurand::Measurand::json_key);
-    let suffix = known.map_or("", |m| m.unit().dimension.suffix());
-    let mut object = Map::new();
-    object.insert("step".to_owned(), json!(row.step));
-    object.insert("measurand".to_owned(), json!(row.measurand));
     let (value, u, absent) = match &row.value {
         Value::Number { value, u, .. } => (json!(value), json!(u), Json::Null),
         Value::Count { value, .. } => (json!(value), Json::Null, Json::Null),
@@ -202,12 +195,21 @@ fn row_json(row: &Row) -> Json {
         Value::Word(word) => (json!(word), Json::Null, Json::Null),
         Value::Absent(reason) => (Json::Null, Json::Null, json!(reason)),
     };
-    object.insert(key, value);
-    object.insert(format!("{}_u{suffix}", row.measurand), u);
-    object.insert("lower_bound".to_owned(), json!(matches!(row.value, Value::AtLeast(_))));
-    object.insert("absent".to_owned(), absent);
+    let mut fields = vec![("step", json!(row.step)), ("measurand", json!(row.measurand)), (key.as_str(), value)];
+    let u_key = known.map(|m| format!("{}_u{}", m.key, m.unit().dimension.suffix()));
+    if let Some(u_key) = &u_key {
+        fields.push((u_key, u));
+    }
     let verdicts = row.judged.iter().map(|judged| json!({ "grade": judged.grade, "verdict": judged.verdict.word() }));
-    object.insert("judged".to_owned(), verdicts.collect());
-    object.insert("note".to_owned(), json!(row.note));
-    Json::Object(object)
+    fields.push(("is_lower_bound", json!(matches!(row.value, Value::AtLeast(_)))));
+    fields.push(("absent", absent));
+    fields.push(("judged", verdicts.collect()));
+    fields.push(("note", json!(row.note)));
+    object(&fields)
+}
+
+/// A JSON object whose fields stay in the order given.
+fn object(fields: &[(&str, Json)]) -> String {
+    let fields: Vec<String> = fields.iter().map(|(key, value)| format!("{}:{value}", json!(key))).collect();
+    format!("{{{}}}", fields.join(","))
 }

@@ -87,8 +87,18 @@ fn ratio(seen: &Seen) -> Option<(f64, f64)> {
     (value.is_finite() && u.is_finite()).then_some((value, u))
 }
 
+/// Largest ratio over the captures that stays for three in a row: light off the comb lasts for a stretch of the walk, a capture
+/// misread once does not. Of fewer than three captures, the largest.
 fn off_axis(captures: &[Seen]) -> Filled {
-    match captures.iter().filter_map(ratio).max_by(|a, b| a.0.total_cmp(&b.0)) {
+    let ratios: Vec<(f64, f64)> = captures.iter().filter_map(ratio).collect();
+    let by_value = |a: &(f64, f64), b: &(f64, f64)| a.0.total_cmp(&b.0);
+    let middle = |three: &[(f64, f64)]| {
+        let mut three = three.to_vec();
+        three.sort_by(by_value);
+        three.get(1).copied()
+    };
+    let lasting = if ratios.len() < 3 { ratios } else { ratios.windows(3).filter_map(middle).collect() };
+    match lasting.into_iter().max_by(by_value) {
         Some((value, u)) => {
             let words = if value > 0.0 { "scatter of both peaks" } else { "noise of a peak's height" };
             let line = BudgetLine::direct("scatter", words, Evaluation::TypeA, u, f64::INFINITY);

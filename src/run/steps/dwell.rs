@@ -97,7 +97,9 @@ impl Dwell {
         let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) else { return false };
         dwelt.warmup.take(&glimpse);
         dwelt.seconds = glimpse.at;
-        dwelt.warmup.state().settled
+        let state = dwelt.warmup.state();
+        // A time constant known to no better than a half predicts nothing: a walk misread early must not end the dwell.
+        state.settled && state.tau.is_none_or(|tau| tau.expanded() <= 0.5 * tau.value.abs())
     }
 
     fn end(&mut self, end: DwellEnd, room: &mut Room<'_>) {

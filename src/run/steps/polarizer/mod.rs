@@ -3,6 +3,7 @@
 //! Main function: [`step_of`].
 
 mod linear;
+mod neighbours;
 mod random;
 
 use super::{Step, Wish};

@@ -2,7 +2,10 @@
 //! Must not turn anything itself.
 //! Main type: [`Random`].
 
-use super::{take_out, turn};
+use super::{
+    neighbours::{Between, Neighbours},
+    take_out, turn,
+};
 use crate::{
     recipe::Polarizer,
     record::{event::Captured, finding::ModeFinding, question::Answer},
@@ -19,6 +22,8 @@ use crate::{
 const FEWEST: usize = 5;
 /// Turns through all angles, until modes of both families were seen: a short tube at rest may show one mode alone for long.
 const MOST_ROUNDS: u32 = 8;
+/// An angle between neighbours with a greater expanded uncertainty is none, degrees.
+const WORST: f64 = 20.0;
 const KEYS: [&str; 2] = ["polarization_azimuth", "mode_orthogonality"];
 
 /// One mode followed over the captures.
@@ -57,6 +62,7 @@ pub(super) struct Random {
     /// How fast it moves, Hz/s.
     rate: f64,
     tracks: Vec<Track>,
+    neighbours: Neighbours,
     /// Polarizer of each capture that could be used, rad.
     angles: Vec<f64>,
     reason: Option<String>,
@@ -77,6 +83,7 @@ impl Random {
             origin: None,
             rate: 0.0,
             tracks: Vec::new(),
+            neighbours: Neighbours::default(),
             angles: Vec::new(),
             reason: None,
             filled: Vec::new(),
@@ -94,8 +101,8 @@ impl Random {
         if self.index < self.keys.angles.len() {
             return;
         }
-        let axes = self.axes();
-        if (family(&axes, 0).is_some() && family(&axes, 1).is_some()) || self.round >= MOST_ROUNDS {
+        let between = self.between().is_some_and(|row| !row.is_absent());
+        if between || self.round >= MOST_ROUNDS {
             self.out = true;
         } else {
             self.round += 1;
@@ -139,6 +146,7 @@ impl Random {
             self.rate = (origin - before) / (at - then);
         }
         self.origin = Some((origin, at));
+        let mut shares = Vec::new();
         for mode in modes {
             let place = (folded(mode.position - origin, fsr) / self.spacing).round() as i64;
             let crossed = mode.crossed_height.filter(|crossed| crossed.is_finite());
@@ -146,12 +154,16 @@ impl Random {
                 Some(crossed) => (mode.peak_height / (mode.peak_height + crossed.max(0.0)), true),
                 None => (mode.peak_height, false),
             };
+            if share {
+                shares.push((place, signal));
+            }
             let sighting = Sighting { capture: self.angles.len(), angle, signal, share };
             match self.tracks.iter_mut().find(|track| track.place == place) {
                 Some(track) => track.sightings.push(sighting),
                 None => self.tracks.push(Track { place, sightings: vec![sighting] }),
             }
         }
+        self.neighbours.take(angle, &shares);
     }
 
     /// Axis of each mode, by place.
@@ -188,16 +200,31 @@ impl Random {
             return;
         }
         let axes = self.axes();
-        let even = family(&axes, 0);
-        let odd = family(&axes, 1);
-        self.filled = match (even, odd) {
-            (Some(even), Some(odd)) => vec![self.azimuth(&even), self.between(&even, &odd)],
-            (Some(one), None) | (None, Some(one)) => {
-                let reason = "modes of one family alone were seen: no neighbours";
-                vec![self.azimuth(&one), Filled::absent(KEYS[1], reason)]
-            }
-            (None, None) => KEYS.map(|key| Filled::absent(key, "no mode could be followed over the angles")).to_vec(),
+        let families: Vec<Family> = (0..2).filter_map(|parity| family(&axes, parity)).collect();
+        // Of two axes at right angles one lies below 90°.
+        let first = families.iter().find(|family| family.axis < std::f64::consts::FRAC_PI_2).or(families.first());
+        let azimuth = match first {
+            Some(family) => self.azimuth(family),
+            None => Filled::absent(KEYS[0], "no mode kept its axis over the angles"),
         };
+        let between = self.between();
+        self.filled =
+            vec![azimuth, between.unwrap_or_else(|| Filled::absent(KEYS[1], "no neighbours were seen together"))];
+    }
+
+    /// The angle between neighbours, by families that kept their axes, else by pairs seen at once.
+    fn between(&self) -> Option<Filled> {
+        let axes = self.axes();
+        let families = family(&axes, 0).zip(family(&axes, 1)).map(|(even, odd)| self.between_families(&even, &odd));
+        let pairs = || self.neighbours.between().map(|between| self.between_pairs(&between));
+        families.filter(|row| !row.is_absent()).or_else(pairs)
+    }
+
+    fn between_pairs(&self, found: &Between) -> Filled {
+        let words = "scatter of shares of neighbours";
+        let scatter = BudgetLine::direct("scatter", words, Evaluation::TypeA, found.u, found.dof as f64);
+        let row = known(&Measured { value: found.angle, budget: vec![scatter, self.scale_line()] });
+        if row.is_absent() { row } else { row.noted("from captures that show both at once") }
     }
 
     fn scale_line(&self) -> BudgetLine {
@@ -213,12 +240,21 @@ impl Random {
     }
 
     /// In [0°, 180°): which neighbour comes first is chance, so 90.3° and 89.7° say the same.
-    fn between(&self, even: &Family, odd: &Family) -> Filled {
+    fn between_families(&self, even: &Family, odd: &Family) -> Filled {
         let value = malus::turned(odd.axis - even.axis);
         let one = BudgetLine::direct("scatter", "axis of one family", Evaluation::TypeA, even.u, even.dof);
         let other = BudgetLine::direct("scatter, neighbours", "axis of the other", Evaluation::TypeA, odd.u, odd.dof);
-        let measured = Measured { value, budget: vec![one, other, self.scale_line()] };
-        Filled::number(KEYS[1], &measured)
+        known(&Measured { value, budget: vec![one, other, self.scale_line()] })
+    }
+}
+
+/// The row on the angle between neighbours; one that is hardly known decides nothing.
+fn known(measured: &Measured) -> Filled {
+    let expanded = measured.expanded().to_degrees();
+    if expanded <= WORST {
+        Filled::number(KEYS[1], measured)
+    } else {
+        Filled::absent(KEYS[1], format!("the axes of neighbours are known to {expanded:.0}° only"))
     }
 }
 
