@@ -124,11 +124,11 @@ fn score(peaks: &[Seen], orders: &Orders, tolerance: f64) -> f64 {
                 continue;
             }
             sought += p.height;
-            if let Some((q, distance)) = partner(peaks, orders, wanted) {
-                if distance < tolerance {
-                    let nearness = 1.0 - (distance / tolerance).powi(2);
-                    found += p.height * nearness * p.height.min(q.height) / p.height.max(q.height);
-                }
+            if let Some((q, distance)) = partner(peaks, orders, wanted)
+                && distance < tolerance
+            {
+                let nearness = 1.0 - (distance / tolerance).powi(2);
+                found += p.height * nearness * p.height.min(q.height) / p.height.max(q.height);
             }
         }
     }
@@ -154,7 +154,7 @@ fn refine(peaks: &[Seen], orders: Orders, tolerance: f64) -> Option<Orders> {
         t0 += weight * period;
         t1 += weight * z * period;
     }
-    if !(s0 > 0.0) {
+    if s0.is_nan() || s0 <= 0.0 {
         return None;
     }
     let determinant = s0 * s2 - s1 * s1;

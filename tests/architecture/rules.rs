@@ -12,7 +12,7 @@ const FIRST_WITH_IO: usize = 5;
 /// Most lines of code in a file: lines that are neither blank nor comment alone; unit tests count.
 const MOST_LINES: usize = 400;
 /// Files over that for now, and how long they may be until they are split. Only ever shorten this list.
-const TOO_LONG: &[(&str, usize)] = &[("sweep/measure.rs", 560)];
+const TOO_LONG: &[(&str, usize)] = &[];
 
 /// Parts of the standard library that reach the world.
 const STD_IO: &[&str] = &["fs", "net", "env", "io", "process", "thread", "os"];
