@@ -62,6 +62,29 @@ pub fn line_drift(glimpses: &[Glimpse], spacing: f64) -> Option<Measured> {
     Some(Measured::with_line(-direction * fit.slope, line))
 }
 
+/// Change of a fitted time constant for each unit of a steady slope under the walk.
+///
+/// * `tau`: s. * `n_infinity`: mode spacings. * `seconds`: length of what was fitted, s.
+///
+/// Returns ∂τ/∂slope, s per (mode spacing a second); none if the fit does not tell the slope's shape from its own.
+///
+/// The slope t is projected on the derivatives of a + N(1 − e^(−t/τ)) by a, N and τ, at evenly spread times; the share
+/// of the last is what the fit takes for a change of τ (first order; JCGM 100:2008, 5.1.3 for the use of it).
+pub fn tau_per_slope(tau: f64, n_infinity: f64, seconds: f64) -> Option<f64> {
+    const POINTS: usize = 200;
+    if !(tau > 0.0 && seconds > 0.0 && n_infinity.is_finite()) {
+        return None;
+    }
+    let times: Vec<f64> = (0..POINTS).map(|i| seconds * i as f64 / (POINTS - 1) as f64).collect();
+    let row = |t: &f64| {
+        let decay = (-t / tau).exp();
+        [1.0, 1.0 - decay, -n_infinity * t / (tau * tau) * decay]
+    };
+    let design: Vec<f64> = times.iter().flat_map(row).collect();
+    let fit = weighted(&design, &times, &[1.0; POINTS]).ok()?;
+    fit.coefficients.get(2).copied().filter(|share| share.is_finite())
+}
+
 #[cfg(test)]
 mod tests {
     #![allow(clippy::unwrap_used)]

@@ -19,7 +19,7 @@ mod warmup;
 mod watch;
 
 pub use counts::{Counts, GainPoint, count_modes, gain_points};
-pub use drift::line_drift;
+pub use drift::{line_drift, tau_per_slope};
 pub use glimpse::{Glimpse, GlimpseMode};
 pub use power::{CyclePower, cycle_power, power_drift};
 pub use warmup::{Warmup, WarmupSettings, WarmupState};

@@ -22,6 +22,7 @@ pub fn finding_of(measurement: &Measurement) -> CaptureFinding {
         finesse: measurement.finesse,
         mean_level: measurement.mean_level,
         noise: measurement.noise,
+        ramp_ends: measurement.ramp_ends,
         modes: measurement.modes.iter().map(mode_finding).collect(),
         off_axis: measurement.off_axis.iter().map(mode_finding).collect(),
         warnings,
@@ -57,5 +58,7 @@ fn mode_finding(mode: &Mode) -> ModeFinding {
         fwhm: mode.fwhm,
         area: mode.area,
         crossed_height: mode.crossed_height,
+        places: mode.places.iter().map(|place| (place.order, place.ramp)).collect(),
+        u_ramp: mode.u_ramp,
     }
 }

@@ -34,6 +34,9 @@ pub struct CaptureFinding {
     /// Standard deviation of the photodiode's noise, V.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub noise: Option<f64>,
+    /// Ramp voltage at both ends of the ramp measured, V.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub ramp_ends: Option<(f64, f64)>,
     /// Axial modes, ascending on the scan axis.
     pub modes: Vec<ModeFinding>,
     /// Peaks off the comb.
@@ -58,17 +61,23 @@ pub struct ModeFinding {
     pub offset: f64,
     /// Its standard uncertainty, Hz.
     pub u_offset: f64,
-    /// Height of the fitted line, V, mean over orders.
+    /// Height of the fitted line in the main photodiode, V, mean over orders.
     pub peak_height: f64,
     /// Its standard uncertainty, V.
     pub u_peak_height: f64,
     /// Full width at half maximum, Hz.
     pub fwhm: f64,
-    /// Area, V·Hz.
+    /// Area of all light, both photodiodes together, V·Hz.
     pub area: f64,
     /// Height in the crossed photodiode, V, where the bench has one.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub crossed_height: Option<f64>,
+    /// (order, ramp voltage V) wherever it was seen.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub places: Vec<(i32, f64)>,
+    /// Standard uncertainty of one such voltage, V.
+    #[serde(default)]
+    pub u_ramp: f64,
 }
 
 /// One line of a budget.

@@ -31,7 +31,8 @@ pub(crate) fn sweep_chart(captured: &Captured, room: &Room<'_>) -> Option<SweepC
 }
 
 fn chart_mode(index: usize, mode: &ModeFinding, off_axis: bool) -> ChartMode {
-    ChartMode { name: letter(index), offset: mode.offset, peak_height: mode.peak_height, fwhm: mode.fwhm, off_axis }
+    let peak_height = mode.peak_height + mode.crossed_height.unwrap_or(0.0);
+    ChartMode { name: letter(index), offset: mode.offset, peak_height, fwhm: mode.fwhm, off_axis }
 }
 
 /// a … z, then a1, b1 …
@@ -66,7 +67,11 @@ pub(crate) fn walk_chart(book: &Notebook) -> Option<WalkChart> {
     }
     let pair = |measured: &crate::uncertainty::Measured| (measured.value, measured.expanded());
     let finite = |(a, b): &(f64, f64)| a.is_finite() && b.is_finite();
-    let settled = state.settled || dwelt.end == Some(DwellEnd::Settled);
+    let settled = match dwelt.end {
+        Some(DwellEnd::Settled) => true,
+        Some(DwellEnd::Longest | DwellEnd::Dark) => false,
+        Some(DwellEnd::SourceEnded) | None => state.settled,
+    };
     let ended = dwelt.end.is_some_and(|end| end != DwellEnd::Dark);
     Some(WalkChart {
         points: thinned(&state.points).into_iter().filter(finite).collect(),

@@ -9,6 +9,7 @@ use crate::{
         finding::{CaptureFinding, ModeFinding},
         sheet::{GainChart, SweepChart},
     },
+    sweep::{Place, SharedAxis},
     uncertainty::Measured,
 };
 
@@ -19,6 +20,30 @@ pub(crate) struct Seen {
     pub glimpse: Glimpse,
     /// The finding, its trace taken out.
     pub finding: CaptureFinding,
+}
+
+/// The captures of one step, on one scan axis.
+struct Taken {
+    step: String,
+    seen: Vec<Seen>,
+    axis: Option<SharedAxis>,
+    /// The axis is solved again at this many captures.
+    solve_at: usize,
+}
+
+/// The scan axis of a step is solved at this many captures, then whenever they have doubled: early positions are drawn
+/// again a few times only, and always at the same captures.
+const FIRST_AXIS: usize = 8;
+
+/// What became of a capture.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) enum Kept {
+    /// Refused, dark, or out of the order of time.
+    No,
+    /// Kept behind the others.
+    Added,
+    /// Kept, and the positions of all captures of the step were drawn again on a better axis.
+    Redrawn,
 }
 
 /// How a dwell ended.
@@ -58,7 +83,7 @@ pub(crate) struct Notebook {
     /// The tube gives no light, and how that was seen.
     pub dark: Option<String>,
     /// Captures of each step, in the order of the steps.
-    captures: Vec<(String, Vec<Seen>)>,
+    captures: Vec<Taken>,
     /// Dwells.
     pub dwells: Vec<Dwelt>,
     /// Mode spacing as it stands on the sheet.
@@ -85,33 +110,46 @@ impl Notebook {
         seconds_since_opened - self.first_light_ms.unwrap_or(0) as f64 / 1e3
     }
 
-    /// Keeps a capture of a step. A refused or dark one, or one out of the order of time, is not kept: `false`.
-    pub fn keep(&mut self, captured: &Captured) -> bool {
+    /// Keeps a capture of a step.
+    pub fn keep(&mut self, captured: &Captured) -> Kept {
         let finding = &captured.finding;
         let at = self.since_first_light(captured.fact.taken_s);
         if finding.refused.is_some() || finding.dark || !at.is_finite() {
-            return false;
+            return Kept::No;
         }
-        let glimpse = glimpse_of(captured, at);
-        let seen = Seen { glimpse, finding: CaptureFinding { trace: None, ..finding.clone() } };
-        let place = match self.captures.iter().position(|(step, _)| *step == captured.step) {
+        let place = match self.captures.iter().position(|taken| taken.step == captured.step) {
             Some(place) => place,
             None => {
-                self.captures.push((captured.step.clone(), Vec::new()));
+                let step = captured.step.clone();
+                self.captures.push(Taken { step, seen: Vec::new(), axis: None, solve_at: FIRST_AXIS });
                 self.captures.len() - 1
             }
         };
-        let list = &mut self.captures[place].1;
-        if list.last().is_some_and(|last| last.glimpse.at > at) {
-            return false;
+        let taken = &mut self.captures[place];
+        if taken.seen.last().is_some_and(|last| last.glimpse.at > at) {
+            return Kept::No;
         }
-        list.push(seen);
-        true
+        taken.repeats(finding);
+        let glimpse = glimpse_of(captured, at, taken.axis.as_ref());
+        taken.seen.push(Seen { glimpse, finding: CaptureFinding { trace: None, ..finding.clone() } });
+        if taken.seen.len() < taken.solve_at {
+            return Kept::Added;
+        }
+        taken.solve_at *= 2;
+        taken.redraw();
+        Kept::Redrawn
+    }
+
+    /// Draws the positions of all captures of a step again, on the axis of everything seen.
+    pub fn redraw(&mut self, step: &str) {
+        if let Some(taken) = self.captures.iter_mut().find(|taken| taken.step == step) {
+            taken.redraw();
+        }
     }
 
     /// Captures of a step, in the order of time.
     pub fn of(&self, step: &str) -> &[Seen] {
-        self.captures.iter().find(|(name, _)| name == step).map_or(&[], |(_, list)| list)
+        self.captures.iter().find(|taken| taken.step == step).map_or(&[], |taken| &taken.seen)
     }
 
     /// Captures of a step inside a window of seconds since first light, ends inclusive.
@@ -151,17 +189,55 @@ impl Notebook {
     }
 }
 
+impl Taken {
+    /// Gives the axis what repeats in one capture.
+    fn repeats(&mut self, finding: &CaptureFinding) {
+        let Some(ends) = finding.ramp_ends else { return };
+        let axis = self.axis.get_or_insert_with(|| SharedAxis::new(ends, finding.free_spectral_range));
+        for mode in &finding.modes {
+            axis.add(&places(mode), mode.u_ramp);
+        }
+    }
+
+    fn redraw(&mut self) {
+        let Some(axis) = &mut self.axis else { return };
+        if !axis.solve() {
+            return;
+        }
+        for seen in &mut self.seen {
+            for (drawn, mode) in seen.glimpse.modes.iter_mut().zip(seen.finding.modes.iter().filter(sound)) {
+                (drawn.position, drawn.u_position) = position(mode, Some(axis));
+            }
+        }
+    }
+}
+
+/// Position and its standard uncertainty, Hz: on the shared axis, else as the capture alone gave it.
+fn position(mode: &ModeFinding, axis: Option<&SharedAxis>) -> (f64, f64) {
+    let shared = axis.and_then(|axis| axis.position(&places(mode), mode.u_ramp));
+    shared.filter(|(value, u)| value.is_finite() && u.is_finite()).unwrap_or((mode.position, mode.u_position))
+}
+
+fn places(mode: &ModeFinding) -> Vec<Place> {
+    mode.places.iter().map(|(order, ramp)| Place { order: *order, ramp: *ramp }).collect()
+}
+
+/// Every number of the mode is finite.
+fn sound(mode: &&ModeFinding) -> bool {
+    [mode.position, mode.u_position, mode.peak_height, mode.u_peak_height].iter().all(|x| x.is_finite())
+}
+
 /// The capture as `behaviour` takes it; modes with numbers that are not finite are left out.
-fn glimpse_of(captured: &Captured, at: f64) -> Glimpse {
-    let sound = |mode: &&ModeFinding| {
-        [mode.position, mode.u_position, mode.peak_height, mode.u_peak_height].iter().all(|x| x.is_finite())
-    };
-    let modes = captured.finding.modes.iter().filter(sound).map(|mode| GlimpseMode {
-        position: mode.position,
-        u_position: mode.u_position,
-        height: mode.peak_height,
-        u_height: mode.u_peak_height,
-        crossed: mode.crossed_height.filter(|height| height.is_finite()),
+fn glimpse_of(captured: &Captured, at: f64, axis: Option<&SharedAxis>) -> Glimpse {
+    let modes = captured.finding.modes.iter().filter(sound).map(|mode| {
+        let (position, u_position) = position(mode, axis);
+        GlimpseMode {
+            position,
+            u_position,
+            height: mode.peak_height,
+            u_height: mode.u_peak_height,
+            crossed: mode.crossed_height.filter(|height| height.is_finite()),
+        }
     });
     Glimpse {
         at,

@@ -246,8 +246,15 @@ fn memory_factor(residuals: &[f64], width: f64) -> f64 {
     (1.0 + 2.0 * sum - 2.0 * (4.0 * lags as f64 / n as f64).sqrt()).max(1.0)
 }
 
-/// Heights of the same lines in another signal (the crossed photodiode), centres, width and pole held.
-pub(super) fn heights_in(signal: &[f64], usable: &[bool], fit: &LineFit, stretch: &[f64]) -> Option<Vec<f64>> {
+/// Heights of the same lines in one photodiode alone, centres, width and pole held.
+///
+/// Returns heights and their standard uncertainties, V; none if the lines lie on each other.
+pub(super) fn heights_in(
+    signal: &[f64],
+    usable: &[bool],
+    fit: &LineFit,
+    stretch: &[f64],
+) -> Option<(Vec<f64>, Vec<f64>)> {
     let samples = Samples::new(signal, usable, fit.width);
     let n_peaks = fit.centres.len();
     let problem = Problem { samples: &samples, stretch, with_pole: fit.pole.is_some() };
@@ -261,9 +268,14 @@ pub(super) fn heights_in(signal: &[f64], usable: &[bool], fit: &LineFit, stretch
     let tail = columns.split_off(columns.len() - 2);
     let mut linear: Vec<Column> = columns.drain(n_peaks..2 * n_peaks).collect();
     linear.extend(tail);
-    let residuals: Vec<f64> =
-        samples.signal.iter().zip(&samples.usable).map(|(s, u)| if *u { *s } else { 0.0 }).collect();
-    let (normal, gradient) = normal_equations(&linear, &residuals);
-    let solved = normal.cholesky()?.solve(&gradient);
-    Some(solved.iter().take(n_peaks).copied().collect())
+    let used: Vec<f64> = samples.signal.iter().zip(&samples.usable).map(|(s, u)| if *u { *s } else { 0.0 }).collect();
+    let (normal, gradient) = normal_equations(&linear, &used);
+    let inverse = scaled_inverse(&normal)?;
+    let solved = &inverse * &gradient;
+    // ‖y − Ax‖² = y·y − x·Aᵀy for the least-squares x.
+    let left = used.iter().map(|y| y * y).sum::<f64>() - solved.dot(&gradient);
+    let n_used = samples.usable.iter().filter(|u| **u).count();
+    let variance = (left / (n_used.saturating_sub(linear.len())).max(1) as f64).max(0.0);
+    let heights = solved.iter().take(n_peaks).copied().collect();
+    Some((heights, (0..n_peaks).map(|i| (inverse[(i, i)] * variance).max(0.0).sqrt()).collect()))
 }

@@ -53,13 +53,13 @@ pub struct Mode {
     pub offset: f64,
     /// Its standard uncertainty, Hz.
     pub u_offset: f64,
-    /// Height, V, mean over the orders.
+    /// Height in the main photodiode, V, mean over the orders.
     pub peak_height: f64,
     /// Its standard uncertainty, V.
     pub u_peak_height: f64,
-    /// Height over that of the strongest mode.
+    /// Height over that of the strongest mode, both photodiodes together.
     pub relative_height: f64,
-    /// Area, V·Hz: π/2 · height · FWHM of a Lorentzian.
+    /// Area of all light, both photodiodes together, V·Hz: π/2 · height · FWHM of a Lorentzian.
     pub area: f64,
     /// Full width at half maximum with the detector's pole out, Hz.
     pub fwhm: f64,

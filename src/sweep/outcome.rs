@@ -18,6 +18,12 @@ const EVEN_ALLOWANCE: f64 = 100e3;
 /// Degrees of freedom of a scatter taken from thousands of samples: as good as infinite, and finite in JSON.
 const DOF_OF_SAMPLES: f64 = 1e3;
 
+/// Heights in the two photodiodes apart, with their standard uncertainties, V.
+struct Apart {
+    main: (Vec<f64>, Vec<f64>),
+    crossed: (Vec<f64>, Vec<f64>),
+}
+
 /// One ramp with its axis.
 struct Scale<'a> {
     segment: &'a Segment,
@@ -43,14 +49,19 @@ impl Scale<'_> {
     }
 
     /// One class as a mode; offsets and relative height are set later.
-    fn mode(&self, class: &Class, fwhm: f64, crossed: Option<&[f64]>) -> Mode {
+    fn mode(&self, class: &Class, fwhm: f64, apart: Option<&Apart>) -> Mode {
         let n = class.members.len() as f64;
         let mean = |value: &dyn Fn(usize) -> f64| class.members.iter().map(|m| value(m.0)).sum::<f64>() / n;
         let folded = |(i, own): &(usize, i32)| self.at(self.fit.centres[*i]) - f64::from(*own) * self.fsr;
         let frequency = class.members.iter().map(folded).sum::<f64>() / n;
         let variance = |i: usize| self.fit.centre_covariance[(i, i)].max(0.0);
         let u_of = |i: usize| variance(i) * self.slope(self.fit.centres[i]).powi(2);
-        let peak_height = mean(&|i| self.fit.heights[i]);
+        let all = mean(&|i| self.fit.heights[i]);
+        let mean_u = |u: &[f64]| (mean(&|i| u[i].powi(2)) / n).sqrt();
+        let (peak_height, u_peak_height) = match apart {
+            Some(apart) => (mean(&|i| apart.main.0[i]), mean_u(&apart.main.1)),
+            None => (all, mean_u(&self.fit.u_heights)),
+        };
         let place = |(i, own): &(usize, i32)| Place {
             ramp: self.segment.ramp_at(self.fit.centres[*i]),
             order: if self.sign > 0.0 { *own } else { -own },
@@ -59,10 +70,10 @@ impl Scale<'_> {
             position: (self.sign * (frequency - self.reference)).rem_euclid(self.fsr),
             u_position: (mean(&u_of) / n).sqrt() * self.birge,
             peak_height,
-            u_peak_height: (mean(&|i| self.fit.u_heights[i].powi(2)) / n).sqrt(),
-            area: std::f64::consts::FRAC_PI_2 * peak_height * fwhm,
+            u_peak_height,
+            area: std::f64::consts::FRAC_PI_2 * all * fwhm,
             fwhm,
-            crossed_height: crossed.map(|c| mean(&|i| c[i])),
+            crossed_height: apart.map(|apart| mean(&|i| apart.crossed.0[i])),
             places: class.members.iter().map(place).collect(),
             u_ramp: mean(&variance).sqrt() * self.segment.ramp_slope.abs(),
             ..Mode::default()
@@ -100,11 +111,14 @@ pub(super) fn fill(
         Ok(_) => result.mode_spacing = spacing_with_budget(choice, settings),
         Err(refusal) => result.no_spacing = Some(refusal.clone()),
     }
-    let crossed =
-        segment.crossed.as_ref().and_then(|signal| lines::heights_in(signal, &segment.usable, fit, &fitted.stretch));
+    let heights = |signal: &[f64]| lines::heights_in(signal, &segment.usable, fit, &fitted.stretch);
+    let apart = segment
+        .pair
+        .as_ref()
+        .and_then(|(main, crossed)| Some(Apart { main: heights(main)?, crossed: heights(crossed)? }));
     let (mut modes, mut off_axis) = (Vec::new(), Vec::new());
     for (class, tooth) in assigned.classes.iter().zip(&teeth) {
-        let mode = scale.mode(class, fwhm, crossed.as_deref());
+        let mode = scale.mode(class, fwhm, apart.as_ref());
         if tooth.is_some() { &mut modes } else { &mut off_axis }.push((mode.position, mode));
     }
     finish_modes(modes, off_axis, fsr, result);
@@ -151,7 +165,7 @@ fn spacing_with_budget(choice: &Choice, settings: &Settings) -> Option<Measured>
 fn finish_modes(mut modes: Vec<(f64, Mode)>, mut off_axis: Vec<(f64, Mode)>, fsr: f64, result: &mut Measurement) {
     modes.sort_by(|a, b| a.0.total_cmp(&b.0));
     let n = modes.len();
-    let top = modes.iter().map(|m| m.1.peak_height).fold(0.0, f64::max);
+    let top = modes.iter().map(|m| m.1.area).fold(0.0, f64::max);
     let gap_before = |i: usize| {
         let previous = if i == 0 { modes[n - 1].0 - fsr } else { modes[i - 1].0 };
         modes[i].0 - previous
@@ -170,7 +184,7 @@ fn finish_modes(mut modes: Vec<(f64, Mode)>, mut off_axis: Vec<(f64, Mode)>, fsr
             mode.offset = (*position - from).rem_euclid(fsr);
             mode.u_offset = if i == 0 && n > 0 { 0.0 } else { mode.u_position.hypot(u_from) };
         }
-        mode.relative_height = if top > 0.0 { mode.peak_height / top } else { 0.0 };
+        mode.relative_height = if top > 0.0 { mode.area / top } else { 0.0 };
     }
     // An off-axis peak just below the first mode reads as a small negative offset, not almost a whole order.
     let span = modes.last().map_or(0.0, |m| m.1.offset);

@@ -11,10 +11,10 @@ pub(super) struct Segment {
     pub start: usize,
     /// One past the last.
     pub end: usize,
-    /// Signal, upward.
+    /// Signal, upward: all light, both photodiodes together where the bench has two.
     pub signal: Vec<f64>,
-    /// Crossed photodiode, upward.
-    pub crossed: Option<Vec<f64>>,
+    /// The two photodiodes apart, upward: main and crossed.
+    pub pair: Option<(Vec<f64>, Vec<f64>)>,
     /// Samples that may be fitted (not clipped).
     pub usable: Vec<bool>,
     /// The ramp rises.
@@ -65,22 +65,33 @@ pub(super) fn find(capture: &Capture) -> Segment {
     let (ramp_start, ramp_slope) = line.unwrap_or((start as f64 * capture.time.step, capture.time.step));
     let rising = ramp_slope > 0.0 || line.is_none();
     let reference = line.map_or((end - start) as f64 / 2.0, |line| reference_on(line, end - start));
-    let raw = &capture.photodiode[start..end];
-    let inverted = points_down(raw);
-    let sign = if inverted { -1.0 } else { 1.0 };
-    let signal: Vec<f64> = raw.iter().map(|v| sign * v).collect();
-    let crossed = capture
-        .crossed
-        .as_ref()
-        .filter(|crossed| crossed.len() == n)
-        .map(|crossed| crossed[start..end].iter().map(|v| sign * v).collect());
+    let main = &capture.photodiode[start..end];
+    let crossed = capture.crossed.as_ref().filter(|crossed| crossed.len() == n).map(|crossed| &crossed[start..end]);
+    // One photodiode may see one family of modes only: peaks are sought in both together.
+    let all: Vec<f64> = match crossed {
+        Some(crossed) => main.iter().zip(crossed).map(|(a, b)| a + b).collect(),
+        None => main.to_vec(),
+    };
+    let inverted = points_down(&all);
+    let upward = |values: &[f64]| if inverted { values.iter().map(|v| -v).collect() } else { values.to_vec() };
+    let pair = crossed.map(|crossed| (upward(main), upward(crossed)));
+    let signal = upward(&all);
     let (noise, step) = noise_of(&signal);
-    let (usable, n_clipped) = unclipped(&signal, noise, step);
+    let (mut usable, mut n_clipped) = unclipped(&signal, noise, step);
+    if let Some((main, crossed)) = &pair {
+        // Either photodiode may clip while their sum does not look flat.
+        for one in [main, crossed] {
+            let (noise, step) = noise_of(one);
+            let (flags, _) = unclipped(one, noise, step);
+            usable.iter_mut().zip(flags).for_each(|(all, flag)| *all &= flag);
+        }
+        n_clipped = usable.iter().filter(|flag| !**flag).count();
+    }
     Segment {
         start,
         end,
         signal,
-        crossed,
+        pair,
         usable,
         rising,
         inverted,

@@ -7,8 +7,10 @@ use nalgebra::{DMatrix, DVector};
 use super::Place;
 use super::axis::legendre_sum;
 
-/// Highest degree; captures of a walking comb probe the ramp everywhere, so that this many are well seen.
+/// Highest degree gathered; how many are used depends on how many orders the ramp holds.
 const MOST_TERMS: usize = 8;
+/// Terms beyond the number of whole orders. More could draw a wave that repeats from order to order, which no repeat sees.
+const TERMS_BEYOND_ORDERS: f64 = 2.0;
 /// Chi-square a further term must earn: one degree of freedom at 0.1 %.
 const SIGNIFICANT: f64 = 10.83;
 /// Repeats wanted for every term.
@@ -74,7 +76,10 @@ impl SharedAxis {
 
     /// Solves with what was taken so far; `false` leaves the axis as it was.
     pub fn solve(&mut self) -> bool {
-        let most = ((self.n_pairs / PAIRS_A_TERM) as usize).clamp(1, MOST_TERMS);
+        // A straight first fit tells how many orders the ramp holds: P₁ runs over 2, one order is 1.
+        let Some((line, _)) = self.with_terms(1) else { return false };
+        let seen = ((2.0 * line[0].abs()).floor() + TERMS_BEYOND_ORDERS) as usize;
+        let most = ((self.n_pairs / PAIRS_A_TERM) as usize).min(seen).clamp(1, MOST_TERMS);
         let fits: Vec<(DVector<f64>, f64)> = (1..=most).map_while(|terms| self.with_terms(terms)).collect();
         let Some(first) = fits.first() else { return false };
         // Noise scale: c₁ volts-to-hertz turns the residual sum into a plain chi-square.
@@ -172,8 +177,8 @@ mod tests {
             let (a, _) = axis.position(&places(phase), 1e-4).unwrap();
             let (b, _) = axis.position(&places(phase + 1e9 / fsr), 1e-4).unwrap();
             let spacing = (b - a).rem_euclid(fsr);
-            // 0.1 MHz: what degree 8 leaves of the power law between its orders, a tenth of a thousandth.
-            assert!((spacing - 1e9).abs() < 1e5, "{spacing} at {phase}");
+            // 1 MHz: what degree 4 leaves of this power law between its orders, a thousandth of the spacing.
+            assert!((spacing - 1e9).abs() < 1e6, "{spacing} at {phase}");
         }
     }
 

@@ -1,4 +1,4 @@
-//! A sweep thinned for a chart: least and greatest signal of each column of a hertz axis, and where the modes stand.
+//! A sweep (all light, both photodiodes together) thinned for a chart: least and greatest signal of each column of a hertz axis, and where the modes stand.
 //! Must not draw.
 //! Main entry: [`thin_trace`].
 
@@ -32,7 +32,8 @@ pub fn thin_trace(capture: &Capture, measurement: &Measurement, columns: usize) 
     let mut bins: Vec<Option<(f64, f64)>> = vec![None; columns];
     for (i, raw) in capture.photodiode.iter().enumerate().take(n).skip(axis.start) {
         let at = (sign * axis.detuning(i as f64) - from) / (to - from) * columns as f64;
-        let value = if axis.inverted { -raw } else { *raw } - axis.baseline;
+        let all = raw + capture.crossed.as_ref().and_then(|crossed| crossed.get(i)).copied().unwrap_or(0.0);
+        let value = if axis.inverted { -all } else { all } - axis.baseline;
         if let Some(bin) = bins.get_mut(at.floor().clamp(0.0, columns as f64 - 1.0) as usize) {
             *bin = Some(bin.map_or((value, value), |(a, b)| (a.min(value), b.max(value))));
         }

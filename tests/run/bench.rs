@@ -30,8 +30,12 @@ pub struct Tube {
     pub half_span: f64,
     pub tau: f64,
     pub n_infinity: f64,
+    /// Amplitude, mode spacings, of a draught with a period of 12 s, from 15 s on.
+    pub draught: f64,
     /// One axis for all modes, or two at right angles.
     pub linear: bool,
+    /// Both families exchange their axes once a cycle, at a fixed place under the line.
+    pub swaps: bool,
     /// Axis of the even modes, rad.
     pub axis: f64,
     pub power: f64,
@@ -49,7 +53,9 @@ impl Tube {
             half_span: 0.75e9,
             tau: 20.0,
             n_infinity: 12.0,
+            draught: 0.0,
             linear: false,
+            swaps: false,
             axis: 0.3,
             power: 0.9e-3,
             dark_from: f64::INFINITY,
@@ -68,7 +74,8 @@ impl Tube {
 
     /// Spacings walked.
     fn walked(&self, t: f64) -> f64 {
-        self.n_infinity * (1.0 - (-t / self.tau).exp())
+        let draught = self.draught * (std::f64::consts::TAU * (t - 15.0).max(0.0) / 12.0).sin();
+        self.n_infinity * (1.0 - (-t / self.tau).exp()) + draught
     }
 
     /// (index, detuning from the middle Hz, height V) of the modes.
@@ -82,8 +89,10 @@ impl Tube {
             .collect()
     }
 
-    fn axis_of(&self, index: i64) -> f64 {
-        if self.linear || index.rem_euclid(2) == 0 { self.axis } else { self.axis + std::f64::consts::FRAC_PI_2 }
+    /// Whether a mode has the first of two axes.
+    fn first_axis(&self, index: i64, t: f64) -> bool {
+        let swaps = if self.swaps { (self.walked(t) + 0.7).floor() as i64 } else { 0 };
+        self.linear || (index + swaps).rem_euclid(2) == 0
     }
 
     pub fn watts(&self, t: f64, polarizer: Option<f64>) -> f64 {
@@ -102,11 +111,12 @@ impl Tube {
         let modes = self.modes(t);
         let first = modes.first().map_or(0.0, |(_, detuning, _)| *detuning);
         for (index, detuning, height) in &modes {
-            let through = polarizer.map_or(1.0, |angle| (angle - self.axis_of(*index)).cos().powi(2));
+            let even = self.first_axis(*index, t);
+            let axis = if even { self.axis } else { self.axis + std::f64::consts::FRAC_PI_2 };
+            let through = polarizer.map_or(1.0, |angle| (angle - axis).cos().powi(2));
             if through < 0.02 {
                 continue;
             }
-            let even = index.rem_euclid(2) == 0;
             let peak_height = height * through * if even { 0.8 } else { 0.2 } * (1.0 + 0.002 * noise.next());
             finding.modes.push(ModeFinding {
                 position: (MIDDLE + detuning + 0.3e6 * noise.next()).rem_euclid(FSR),

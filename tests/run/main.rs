@@ -150,6 +150,15 @@ fn a_twin_is_turned_until_both_families_were_seen() {
 }
 
 #[test]
+fn a_tube_that_swaps_has_neighbours_at_right_angles_too() {
+    let (texts, tube) = twin();
+    let sheet = driven((texts, Tube { swaps: true, ..tube }), 10_000).run.sheet();
+    agrees(&sheet, "mode_orthogonality", std::f64::consts::FRAC_PI_2);
+    let Value::Count { value: swaps, .. } = row(&sheet, "swap_count").value else { panic!("swaps are counted") };
+    assert!(swaps > 0);
+}
+
+#[test]
 fn a_plate_has_one_axis() {
     let sheet = driven(plate(), 10_000).run.sheet();
     agrees(&sheet, "polarization_azimuth", 0.3);
@@ -179,6 +188,14 @@ fn the_dwell_is_no_timer() {
         // The upper prediction is later than the expected one, by a few captures with this noise.
         assert!((dwell - expected(tau)).abs() < 3.0, "τ {tau} s: {dwell} s, expected {}", expected(tau));
     }
+}
+
+#[test]
+fn a_draught_never_settles() {
+    let (texts, tube) = quad();
+    let sheet = driven((texts, Tube { draught: 0.6, ..tube }), 10_000).run.sheet();
+    assert!(absent(&sheet, "warmup_ready").contains("not settled"));
+    assert_eq!(sheet.verdict.outcome, Outcome::Hold);
 }
 
 #[test]

@@ -4,13 +4,13 @@
 
 use super::{Given, Room, Step, Wish};
 use crate::{
-    behaviour::{Warmup, WarmupSettings, WarmupState},
+    behaviour::{Warmup, WarmupSettings, WarmupState, tau_per_slope},
     recipe,
     run::{
         charts,
         filled::Filled,
         grid::Grid,
-        notebook::{DwellEnd, Dwelt, Notebook},
+        notebook::{DwellEnd, Dwelt, Kept, Notebook},
     },
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
@@ -80,31 +80,63 @@ impl Dwell {
             }
             return self.go_on(room);
         }
-        if captured.finding.refused.is_some() || !room.book.keep(captured) {
+        let kept = room.book.keep(captured);
+        if kept == Kept::No {
             let why = captured.finding.refused.as_deref().unwrap_or("out of the order of time");
             self.lose(why);
             return self.go_on(room);
         }
         self.lit_ms = room.now_ms;
         self.any_light = true;
-        if self.settled(room) { self.end(DwellEnd::Settled, room) } else { self.go_on(room) }
+        if kept == Kept::Redrawn {
+            self.follow_again(room);
+        }
+        if self.settled(kept, room) { self.end(DwellEnd::Settled, room) } else { self.go_on(room) }
     }
 
-    /// Feeds the last capture to the warm-up and asks whether the dwell is over.
-    fn settled(&self, room: &mut Room<'_>) -> bool {
+    /// Asks whether the dwell is over, once the warm-up has the last capture.
+    fn settled(&self, kept: Kept, room: &mut Room<'_>) -> bool {
         let Some(glimpse) = room.book.of(room.step).last().map(|seen| seen.glimpse.clone()) else { return false };
         let step = room.step;
         let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) else { return false };
-        dwelt.warmup.take(&glimpse);
+        if kept == Kept::Added {
+            dwelt.warmup.take(&glimpse);
+        }
         dwelt.seconds = glimpse.at;
         let state = dwelt.warmup.state();
         // A time constant known to no better than a half predicts nothing: a walk misread early must not end the dwell.
-        state.settled && state.tau.is_none_or(|tau| tau.expanded() <= 0.5 * tau.value.abs())
+        let tau_known = state.tau.as_ref().is_none_or(|tau| tau.expanded() <= 0.5 * tau.value.abs());
+        // What strayed from the fit over the last horizon (a draught) may stray again over the next.
+        let upper = state.residual_upper.unwrap_or(0.0) + strayed(&state, self.keys.horizon_s);
+        state.settled && tau_known && upper < self.keys.residual_walk
+    }
+
+    /// Follows the warm-up from its beginning again, after its positions were drawn anew.
+    fn follow_again(&self, room: &mut Room<'_>) {
+        let mut warmup = Warmup::new(self.settings(room));
+        for seen in room.book.of(room.step) {
+            warmup.take(&seen.glimpse);
+        }
+        let step = room.step;
+        if let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) {
+            dwelt.warmup = warmup;
+        }
+    }
+
+    fn settings(&self, room: &Room<'_>) -> WarmupSettings {
+        WarmupSettings {
+            nominal_spacing: room.plan.recipe.nominal_spacing,
+            residual_walk: self.keys.residual_walk,
+            horizon: self.keys.horizon_s,
+            cycles: self.keys.cycles,
+        }
     }
 
     fn end(&mut self, end: DwellEnd, room: &mut Room<'_>) {
         self.done = true;
         let step = room.step;
+        room.book.redraw(step);
+        self.follow_again(room);
         let now = room.book.since_first_light(room.now_ms as f64 / 1e3);
         let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) else { return };
         dwelt.end = Some(end);
@@ -137,14 +169,17 @@ impl Dwell {
     fn rows(&self, end: DwellEnd, state: &WarmupState, room: &Room<'_>) -> Vec<Filled> {
         let why = why_empty(end, &self.keys, state);
         let mut rows = Vec::new();
-        let settled = state.settled || end == DwellEnd::Settled;
+        let settled = end == DwellEnd::Settled || (end == DwellEnd::SourceEnded && state.settled);
         let tau_stands = settled || end == DwellEnd::SourceEnded;
-        rows.push(some_number(KEYS[0], state.tau.as_ref().filter(|_| tau_stands), &why));
-        rows.push(some_number(KEYS[1], state.ready.as_ref().filter(|_| settled), &why));
+        let drifted = DriftOn::new(state, room.plan.recipe.nominal_spacing);
+        let tau = state.tau.clone().map(|tau| with_drift(tau, drifted.tau));
+        let ready = state.ready.clone().map(|ready| with_drift(ready, drifted.ready));
+        rows.push(some_number(KEYS[0], tau.as_ref().filter(|_| tau_stands), &why));
+        rows.push(some_number(KEYS[1], ready.as_ref().filter(|_| settled), &why));
         if self.any_light && state.walked.is_finite() && !room.book.of(room.step).is_empty() {
             let line =
                 BudgetLine::direct("walk", "tube phase at both ends", Evaluation::TypeA, state.u_walked, f64::INFINITY);
-            let cycles = Measured::with_line(state.walked, line);
+            let cycles = with_drift(Measured::with_line(state.walked, line), drifted.walked);
             let note = if state.early_unknown {
                 "early cycles unknown: counted from the first that could be followed"
             } else {
@@ -153,17 +188,53 @@ impl Dwell {
             rows.push(Filled::number(KEYS[2], &cycles).noted(note));
             rows.push(Filled::number(KEYS[3], &cycles.scaled(self.wavelength / 2.0)).noted(note));
         }
-        let rate = state.rate.clone().map(with_drift);
+        let rate = state.rate.clone().map(|rate| with_drift(rate, 1.0));
         rows.push(some_number(KEYS[4], rate.as_ref(), "the rate of the walk could not be found"));
         rows
     }
 }
 
-/// Peak positions alone cannot tell the tube's walk from the interferometer's.
-fn with_drift(mut rate: Measured) -> Measured {
+/// Greatest less least departure of the walk from its fit over the last horizon, mode spacings; 0 without a fit.
+fn strayed(state: &WarmupState, horizon: f64) -> f64 {
+    let Some((last, _)) = state.points.last() else { return 0.0 };
+    let (mut least, mut greatest) = (f64::INFINITY, f64::NEG_INFINITY);
+    for (at, walked) in state.points.iter().filter(|(at, _)| *at >= last - horizon) {
+        let after = state.prediction.partition_point(|(time, _)| time < at).max(1);
+        let (Some(left), Some(right)) = (state.prediction.get(after - 1), state.prediction.get(after)) else {
+            continue;
+        };
+        let share = if right.0 > left.0 { (at - left.0) / (right.0 - left.0) } else { 0.0 };
+        let departure = walked - (left.1 + share * (right.1 - left.1));
+        (least, greatest) = (least.min(departure), greatest.max(departure));
+    }
+    if greatest >= least { greatest - least } else { 0.0 }
+}
+
+/// Peak positions alone cannot tell the tube's walk from the interferometer's: `per_drift` is ∂(value)/∂(drift rate).
+fn with_drift(mut measured: Measured, per_drift: f64) -> Measured {
     let line = "drift of the interferometer";
-    rate.budget.push(BudgetLine::direct("interferometer drift", line, Evaluation::TypeB, U_DRIFT, f64::INFINITY));
-    rate
+    let mut drift = BudgetLine::direct("interferometer drift", line, Evaluation::TypeB, U_DRIFT, f64::INFINITY);
+    drift.sensitivity = per_drift;
+    measured.budget.push(drift);
+    measured
+}
+
+/// What a steady drift of the interferometer, Hz/s, does to the findings of a dwell.
+struct DriftOn {
+    tau: f64,
+    ready: f64,
+    walked: f64,
+}
+
+impl DriftOn {
+    fn new(state: &WarmupState, spacing: f64) -> Self {
+        let seconds = state.points.last().map_or(0.0, |point| point.0);
+        let fit = state.tau.as_ref().zip(state.n_infinity.as_ref());
+        let tau = fit.and_then(|(tau, n)| tau_per_slope(tau.value, n.value, seconds)).unwrap_or(0.0) / spacing;
+        // The end moves with the time constant that it is counted in.
+        let ready = fit.zip(state.ready.as_ref()).map_or(0.0, |((t, _), ready)| tau * ready.value / t.value);
+        Self { tau, ready, walked: seconds / spacing }
+    }
 }
 
 fn some_number(key: &str, measured: Option<&Measured>, why: &str) -> Filled {
@@ -183,19 +254,13 @@ fn why_empty(end: DwellEnd, keys: &recipe::Dwell, state: &WarmupState) -> String
 impl Step for Dwell {
     fn begin(&mut self, room: &mut Room<'_>) {
         let first_light = *room.book.first_light_ms.get_or_insert(room.now_ms);
-        let recipe = &room.plan.recipe;
-        self.wavelength = recipe.wavelength;
+        self.wavelength = room.plan.recipe.wavelength;
         self.grid = Grid::new(first_light, self.keys.early_every_s, self.keys.early_for_s, self.keys.every_s);
         // Without a strike, first light is now and so is the first capture.
         self.next_ms = self.grid.at_or_after(room.now_ms);
         self.lit_ms = room.now_ms;
         self.begun = true;
-        let settings = WarmupSettings {
-            nominal_spacing: recipe.nominal_spacing,
-            residual_walk: self.keys.residual_walk,
-            horizon: self.keys.horizon_s,
-            cycles: self.keys.cycles,
-        };
+        let settings = self.settings(room);
         room.book.dwells.push(Dwelt {
             step: room.step.into(),
             warmup: Warmup::new(settings),

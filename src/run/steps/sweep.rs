@@ -6,7 +6,13 @@ use super::{Given, Room, Step, Wish};
 use crate::{
     recipe,
     record::event::Captured,
-    run::{charts, filled::Filled, notebook::Notebook, pool::pool, spacing},
+    run::{
+        charts,
+        filled::Filled,
+        notebook::{Kept, Notebook},
+        pool::pool,
+        spacing,
+    },
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
 
@@ -55,7 +61,7 @@ impl Sweep {
             }
             None if finding.dark => self.reasons.push(format!("capture {}: no light", captured.number)),
             None => {
-                if !room.book.keep(captured) {
+                if room.book.keep(captured) == Kept::No {
                     self.reasons.push(format!("capture {}: out of the order of time", captured.number));
                 }
                 self.finesse.extend(finding.finesse.filter(|finesse| finesse.is_finite()));

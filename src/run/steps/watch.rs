@@ -6,7 +6,11 @@ use super::{Given, Room, Step, Wish};
 use crate::{
     behaviour::{Glimpse, watch},
     recipe,
-    run::{filled::Filled, grid::Grid, notebook::Notebook},
+    run::{
+        filled::Filled,
+        grid::Grid,
+        notebook::{Kept, Notebook},
+    },
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
 
@@ -44,6 +48,9 @@ impl Watch {
         self.done = true;
         let from = self.keys.from.as_deref().unwrap_or(room.step);
         let over_dwell = room.book.dwelt(from).is_some();
+        if !over_dwell {
+            room.book.redraw(from);
+        }
         let glimpses: Vec<Glimpse> = room.book.of(from).iter().map(|seen| seen.glimpse.clone()).collect();
         let (Some(first), Some(last)) = (glimpses.first(), glimpses.last()) else {
             self.filled = KEYS.map(|key| Filled::absent(key, "no capture was watched")).to_vec();
@@ -131,7 +138,7 @@ impl Step for Watch {
 
     fn take(&mut self, given: Given<'_>, room: &mut Room<'_>) {
         match given {
-            Given::Capture(captured) => self.n_lost += u64::from(!room.book.keep(captured)),
+            Given::Capture(captured) => self.n_lost += u64::from(room.book.keep(captured) == Kept::No),
             Given::Lost { for_good: true, .. } => return self.finish(room),
             Given::Lost { .. } => self.n_lost += 1,
             _ => {}
