@@ -28,6 +28,12 @@ const SIDEWAYS: &[(&str, &[&str])] = &[
     ("report", &["quality"]),
 ];
 
+/// The same, for unit tests only.
+const SIDEWAYS_IN_TESTS: &[(&str, &[&str])] = &[
+    // The loop is tried on a simulated bench, and against a folder that is really written.
+    ("driver", &["disk", "instruments"]),
+];
+
 /// Modules that may look at nothing but these: the model must not share code with the engine that measures it, and
 /// what stands low must not grow roots.
 const ONLY: &[(&str, &[&str])] = &[
@@ -44,10 +50,13 @@ pub fn layer(module: &str) -> Option<usize> {
 }
 
 /// Whether one module may look at another.
-fn may(from: &str, to: &str) -> bool {
+fn may(from: &str, to: &str, in_test: bool) -> bool {
     let listed = |table: &[(&str, &[&'static str])]| {
         table.iter().find(|(module, _)| *module == from).map(|(_, others)| others.contains(&to))
     };
+    if in_test && listed(SIDEWAYS_IN_TESTS) == Some(true) {
+        return true;
+    }
     match (listed(ONLY), layer(from), layer(to)) {
         _ if from == to => true,
         (Some(allowed), ..) => allowed,
@@ -70,7 +79,7 @@ pub fn imports(file: &Source) -> Vec<Breach> {
     let mut found = Vec::new();
     for (line, path) in paths(&file.code) {
         let Some(to) = target(file, line, &path) else { continue };
-        if !may(own, to) {
+        if !may(own, to, file.is_test(line)) {
             found.push(breach(line, format!("`{own}` must not import `{to}`")));
         }
     }

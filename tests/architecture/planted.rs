@@ -33,6 +33,8 @@ fn imports_up_or_sideways() {
     assert_eq!(of("report/a.rs", "use crate::run::Run;"), [1]);
     assert_eq!(of("run/a.rs", "use crate::station::Want;"), NONE);
     assert_eq!(of("disk/a.rs", "use crate::driver::Driver;"), [1]);
+    let in_tests = "#[cfg(test)]\nmod tests {\n    use crate::disk::Store;\n}\nuse crate::disk::Home;";
+    assert_eq!(of("driver/a.rs", in_tests), [5]);
     assert_eq!(of("quantity/mod.rs", "use crate::numerics::peaks;"), [1]);
     assert_eq!(of("drawer/mod.rs", ""), [1], "a module without a layer");
 }
