@@ -6,7 +6,7 @@ use super::glimpse::Glimpse;
 use super::jumps;
 use super::line::place_modes;
 use super::track::{Track, pooled_spacing};
-use crate::numerics::summary::straight_line;
+use crate::numerics::{linear::weighted, summary::straight_line};
 use crate::uncertainty::{BudgetLine, Evaluation, Measured};
 
 /// Fewest whole walk cycles for a drift.

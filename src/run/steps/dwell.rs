@@ -4,7 +4,7 @@
 
 use super::{Given, Room, Step, Wish};
 use crate::{
-    behaviour::{Warmup, WarmupSettings, WarmupState, tau_per_slope},
+    behaviour::{Glimpse, Warmup, WarmupSettings, WarmupState, line_drift, tau_per_slope},
     recipe,
     run::{
         charts,
@@ -171,15 +171,16 @@ impl Dwell {
         let mut rows = Vec::new();
         let settled = end == DwellEnd::Settled || (end == DwellEnd::SourceEnded && state.settled);
         let tau_stands = settled || end == DwellEnd::SourceEnded;
-        let drifted = DriftOn::new(state, room.plan.recipe.nominal_spacing);
-        let tau = state.tau.clone().map(|tau| with_drift(tau, drifted.tau));
-        let ready = state.ready.clone().map(|ready| with_drift(ready, drifted.ready));
+        let glimpses: Vec<Glimpse> = room.book.of(room.step).iter().map(|seen| seen.glimpse.clone()).collect();
+        let drift = Drift::new(state, room.plan.recipe.nominal_spacing, &glimpses);
+        let tau = state.tau.clone().map(|tau| drift.on(tau, drift.tau));
+        let ready = state.ready.clone().map(|ready| drift.on(ready, drift.ready));
         rows.push(some_number(KEYS[0], tau.as_ref().filter(|_| tau_stands), &why));
         rows.push(some_number(KEYS[1], ready.as_ref().filter(|_| settled), &why));
         if self.any_light && state.walked.is_finite() && !room.book.of(room.step).is_empty() {
             let line =
                 BudgetLine::direct("walk", "tube phase at both ends", Evaluation::TypeA, state.u_walked, f64::INFINITY);
-            let cycles = with_drift(Measured::with_line(state.walked, line), drifted.walked);
+            let cycles = drift.on(Measured::with_line(state.walked, line), drift.walked);
             let note = if state.early_unknown {
                 "early cycles unknown: counted from the first that could be followed"
             } else {
@@ -188,7 +189,7 @@ impl Dwell {
             rows.push(Filled::number(KEYS[2], &cycles).noted(note));
             rows.push(Filled::number(KEYS[3], &cycles.scaled(self.wavelength / 2.0)).noted(note));
         }
-        let rate = state.rate.clone().map(|rate| with_drift(rate, 1.0));
+        let rate = state.rate.clone().map(|rate| drift.on(rate, 1.0));
         rows.push(some_number(KEYS[4], rate.as_ref(), "the rate of the walk could not be found"));
         rows
     }
@@ -210,30 +211,41 @@ fn strayed(state: &WarmupState, horizon: f64) -> f64 {
     if greatest >= least { greatest - least } else { 0.0 }
 }
 
-/// Peak positions alone cannot tell the tube's walk from the interferometer's: `per_drift` is ∂(value)/∂(drift rate).
-fn with_drift(mut measured: Measured, per_drift: f64) -> Measured {
-    let line = "drift of the interferometer";
-    let mut drift = BudgetLine::direct("interferometer drift", line, Evaluation::TypeB, U_DRIFT, f64::INFINITY);
-    drift.sensitivity = per_drift;
-    measured.budget.push(drift);
-    measured
-}
-
-/// What a steady drift of the interferometer, Hz/s, does to the findings of a dwell.
-struct DriftOn {
+/// What a steady drift of the interferometer does to the findings of a dwell: ∂(value)/∂(drift), and how large it may be.
+struct Drift {
+    /// Standard uncertainty of the drift, Hz/s.
+    u: f64,
+    words: &'static str,
     tau: f64,
     ready: f64,
     walked: f64,
 }
 
-impl DriftOn {
-    fn new(state: &WarmupState, spacing: f64) -> Self {
+impl Drift {
+    fn new(state: &WarmupState, spacing: f64, glimpses: &[Glimpse]) -> Self {
         let seconds = state.points.last().map_or(0.0, |point| point.0);
         let fit = state.tau.as_ref().zip(state.n_infinity.as_ref());
         let tau = fit.and_then(|(tau, n)| tau_per_slope(tau.value, n.value, seconds)).unwrap_or(0.0) / spacing;
         // The end moves with the time constant that it is counted in.
         let ready = fit.zip(state.ready.as_ref()).map_or(0.0, |((t, _), ready)| tau * ready.value / t.value);
-        Self { tau, ready, walked: seconds / spacing }
+        // The tube's gain line stands still: what it moved on the scan axis is the interferometer's. The walk is not
+        // corrected for it, so all of it stays in the budget.
+        let seen = line_drift(glimpses, spacing).map(|drift| drift.value.hypot(drift.u())).filter(|u| *u < U_DRIFT);
+        let words = if seen.is_some() {
+            "drift of the interferometer, from its gain line"
+        } else {
+            "drift of the interferometer"
+        };
+        Self { u: seen.unwrap_or(U_DRIFT), words, tau, ready, walked: seconds / spacing }
+    }
+
+    /// Peak positions alone cannot tell the tube's walk from the interferometer's.
+    fn on(&self, mut measured: Measured, per_drift: f64) -> Measured {
+        let source = "interferometer drift";
+        let mut line = BudgetLine::direct(source, self.words, Evaluation::TypeB, self.u, f64::INFINITY);
+        line.sensitivity = per_drift;
+        measured.budget.push(line);
+        measured
     }
 }
 
