@@ -41,6 +41,12 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
     if settings.u_free_spectral_range == 0.0 {
         result.warnings.push(Warning::NoFsrUncertainty);
     }
+    if let Some(sample) = first_not_finite(capture) {
+        return Err(Refusal::NotFinite { sample });
+    }
+    if capture.photodiode.len() < FEWEST_SAMPLES {
+        return Err(Refusal::TooShort { samples: capture.photodiode.len() });
+    }
     let segment = segment::find(capture);
     result.noise = Some(segment.noise);
     if segment.signal.len() < FEWEST_SAMPLES {
@@ -79,6 +85,12 @@ fn check(settings: &Settings) -> Result<(), Refusal> {
         return Err(Refusal::Setting(format!("a free spectral range of {fsr} Hz is not usable; expected more than 0")));
     }
     Ok(())
+}
+
+/// First sample that is not finite in any channel.
+fn first_not_finite(capture: &Capture) -> Option<usize> {
+    let channels = [Some(&capture.photodiode), capture.ramp.as_ref(), capture.crossed.as_ref()];
+    channels.into_iter().flatten().filter_map(|channel| channel.iter().position(|v| !v.is_finite())).min()
 }
 
 fn warn_of_segment(segment: &Segment, result: &mut Measurement) {

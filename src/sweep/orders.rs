@@ -108,26 +108,32 @@ fn penalty(orders: &Orders) -> f64 {
     0.08 * orders.bend.abs() + 0.2 * orders.period / orders.length
 }
 
-/// The peak nearest one order after `x`, with its distance in orders.
-fn partner<'a>(peaks: &'a [Seen], orders: &Orders, phase: f64) -> Option<(&'a Seen, f64)> {
-    peaks.iter().map(|q| (q, (orders.phase(q.x) - phase).abs())).min_by(|a, b| a.1.total_cmp(&b.1))
+/// Order phases of the peaks, computed once for a candidate.
+fn phases(peaks: &[Seen], orders: &Orders) -> Vec<f64> {
+    peaks.iter().map(|p| orders.phase(p.x)).collect()
+}
+
+/// Index of the peak nearest a phase, with its distance in orders. Phases ascend with position.
+fn partner(phases: &[f64], wanted: f64) -> Option<(usize, f64)> {
+    let after = phases.partition_point(|phase| *phase < wanted);
+    let candidates = [after.checked_sub(1), (after < phases.len()).then_some(after)];
+    candidates.into_iter().flatten().map(|i| (i, (phases[i] - wanted).abs())).min_by(|a, b| a.1.total_cmp(&b.1))
 }
 
 fn score(peaks: &[Seen], orders: &Orders, tolerance: f64) -> f64 {
     let (first, last) = (orders.phase(0.0), orders.phase(orders.length));
     let all: f64 = peaks.iter().map(|p| p.height).sum();
+    let phases = phases(peaks, orders);
     let (mut found, mut sought) = (0.0, 0.0);
-    for p in peaks {
-        for way in [1.0, -1.0] {
-            let wanted = orders.phase(p.x) + way;
+    for (p, phase) in peaks.iter().zip(&phases) {
+        for wanted in [phase + 1.0, phase - 1.0] {
             if wanted < first + tolerance || wanted > last - tolerance {
                 continue;
             }
             sought += p.height;
-            if let Some((q, distance)) = partner(peaks, orders, wanted)
-                && distance < tolerance
-            {
+            if let Some((i, distance)) = partner(&phases, wanted).filter(|(_, distance)| *distance < tolerance) {
                 let nearness = 1.0 - (distance / tolerance).powi(2);
+                let q = &peaks[i];
                 found += p.height * nearness * p.height.min(q.height) / p.height.max(q.height);
             }
         }
@@ -138,9 +144,10 @@ fn score(peaks: &[Seen], orders: &Orders, tolerance: f64) -> f64 {
 /// Fits period and bend to matched pairs: local period against place is a straight line.
 fn refine(peaks: &[Seen], orders: Orders, tolerance: f64) -> Option<Orders> {
     let (mut s0, mut s1, mut s2, mut t0, mut t1) = (0.0, 0.0, 0.0, 0.0, 0.0);
-    for p in peaks {
-        let wanted = orders.phase(p.x) + 1.0;
-        let Some((q, distance)) = partner(peaks, &orders, wanted) else { continue };
+    let phases = phases(peaks, &orders);
+    for (p, phase) in peaks.iter().zip(&phases) {
+        let Some((i, distance)) = partner(&phases, phase + 1.0) else { continue };
+        let q = &peaks[i];
         let ratio = p.height.min(q.height) / p.height.max(q.height);
         if distance > tolerance || ratio < 0.3 || q.x <= p.x {
             continue;
@@ -154,7 +161,7 @@ fn refine(peaks: &[Seen], orders: Orders, tolerance: f64) -> Option<Orders> {
         t0 += weight * period;
         t1 += weight * z * period;
     }
-    if s0.is_nan() || s0 <= 0.0 {
+    if !(s0 > 0.0) {
         return None;
     }
     let determinant = s0 * s2 - s1 * s1;

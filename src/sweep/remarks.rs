@@ -12,6 +12,11 @@ pub enum Refusal {
         /// Samples on the longest ramp.
         samples: usize,
     },
+    /// A sample is no finite number.
+    NotFinite {
+        /// Its place in the capture, from 0.
+        sample: usize,
+    },
     /// Nothing stands above the noise.
     Dark,
     /// More peaks than any comb has.
@@ -59,6 +64,7 @@ impl fmt::Display for Refusal {
             Self::TooShort { samples } => {
                 write!(f, "the longest ramp has {samples} samples; at least 100 are needed: record more samples a ramp")
             }
+            Self::NotFinite { sample } => write!(f, "sample {sample} is not a finite number; record the capture again"),
             Self::Dark => {
                 write!(f, "no peak stands above the noise: is the tube lit and the beam on the interferometer?")
             }
@@ -77,7 +83,8 @@ impl fmt::Display for Refusal {
             ),
             Self::NoRepeat { share } => write!(
                 f,
-                "the peaks do not repeat: only {:.0} % of their height is found again one order on; realign, or reduce the ramp",
+                "the peaks do not repeat: only {:.0} % of their height is found again one order on; raise the ramp until every mode \
+                 shows twice, or realign the interferometer",
                 share * 100.0
             ),
             Self::NoComb { share } => write!(
