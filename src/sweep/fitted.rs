@@ -103,10 +103,10 @@ fn with_pole(samples: &Samples, start: &Start, plain: &LineFit) -> Option<LineFi
             baseline: plain.baseline.0,
             stretch: start.stretch.clone(),
         };
-        if let Some(fit) = lines::fit(samples, &trial) {
-            if best.as_ref().is_none_or(|b| fit.sum_of_squares < b.sum_of_squares) {
-                best = Some(fit);
-            }
+        if let Some(fit) = lines::fit(samples, &trial)
+            && best.as_ref().is_none_or(|b| fit.sum_of_squares < b.sum_of_squares)
+        {
+            best = Some(fit);
         }
     }
     let best = best?;

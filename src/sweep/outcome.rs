@@ -212,10 +212,10 @@ fn warn_of_result(
     segment: &Segment,
     result: &mut Measurement,
 ) {
-    if let (Some(spacing), Some(nominal)) = (&result.mode_spacing, settings.nominal_spacing) {
-        if (spacing.value / (2.0 * nominal) - 1.0).abs() < 0.1 {
-            result.warnings.push(Warning::TwiceNominal);
-        }
+    if let (Some(spacing), Some(nominal)) = (&result.mode_spacing, settings.nominal_spacing)
+        && (spacing.value / (2.0 * nominal) - 1.0).abs() < 0.1
+    {
+        result.warnings.push(Warning::TwiceNominal);
     }
     if let Some(ratio) = result.off_axis.iter().map(|m| m.relative_height).max_by(f64::total_cmp) {
         result.warnings.push(Warning::OffAxis { count: result.off_axis.len(), ratio });

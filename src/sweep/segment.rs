@@ -123,7 +123,7 @@ fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
     let median = sizes[sizes.len() / 2];
     let range = means.iter().cloned().fold(f64::MIN, f64::max) - means.iter().cloned().fold(f64::MAX, f64::min);
     // A trigger's square wave or a constant has no slope in most blocks.
-    if !(range > 0.0) || median < 0.1 * range / means.len() as f64 {
+    if range.is_nan() || range <= 0.0 || median < 0.1 * range / means.len() as f64 {
         return None;
     }
     let way = |s: f64| {
