@@ -1,7 +1,7 @@
 //! Sample records of three demo tubes, made by the built program and compared byte by byte with `reports/samples`.
 //! Must not write there unless asked: `TUBEWRIGHT_MAKE_SAMPLES=1 cargo test --test samples -- --ignored` makes them anew.
 //! The picture in the README is the first page of one of them, made by
-//! `pdftoppm -r 100 -png -singlefile reports/samples/DEMO-0003/record.pdf reports/samples/record`.
+//! `pdftoppm -r 100 -png -singlefile reports/samples/DEMO-0003/record.pdf reports/samples/DEMO-0003/record`.
 #![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
 
 use std::{
