@@ -245,8 +245,7 @@ fn they_end_as_the_notes_beside_them_say() {
             assert_eq!(kinds(kind), expected[kind].as_integer().unwrap(), "{name}: events of kind {kind}");
         }
         for (key, times) in [("hops_at_s", hops(&sheet)), ("swaps_at_s", swaps(&sheet))] {
-            let planted: Vec<f64> =
-                expected[key].as_array().unwrap().iter().map(|at| at.as_float().unwrap()).collect();
+            let planted: Vec<f64> = expected[key].as_array().unwrap().iter().map(|at| at.as_float().unwrap()).collect();
             let tolerance = notes["tolerance"]["time_s"].as_float().unwrap();
             assert_eq!(times.len(), planted.len(), "{name}: {key} {times:?}");
             let near = times.iter().zip(&planted).all(|(found, planted)| (found - planted).abs() <= tolerance);
