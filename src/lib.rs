@@ -1,6 +1,5 @@
 //! QC test station for helium-neon laser tubes: warm up, sweep, measure, judge, record.
-//!
-//! The map of the modules, and what each must not do, is in `DEVELOPERS.md`.
+//! Must not hold code of its own: the map of the modules, and what each must not do, is in `DEVELOPERS.md`.
 
 // L0
 pub mod numerics;

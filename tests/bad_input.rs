@@ -182,8 +182,9 @@ fn one_order_alone_has_no_scale() {
 fn a_dark_tube_is_refused_by_measure_and_fails_in_inspect() {
     let place = with_captures(&[]);
     let capture = first_capture(&place);
-    // Sound captures without their light: what is left is the noise between the peaks.
-    rewrite(&place, &capture, |row, cells| cells[2] = format!("{:.4}", 0.05 + 0.001 * ((row * 7919) % 13) as f64));
+    // Sound captures without their light: what is left in both photodiodes is noise.
+    let dark = |row: usize| format!("{:.4}", 0.05 + 0.001 * ((row * 7919) % 13) as f64);
+    rewrite(&place, &capture, |row, cells| cells[2..].fill(dark(row)));
     measure(&place, &capture).ends(30, &["no peak stands above the noise"]).leaves_nothing();
     Place::new().inspect("BRISK-2", &[]).ends(20, &["dark"]);
 }

@@ -1,6 +1,6 @@
 //! The module against captures made by an independent script, as peaks found by another.
 //! Must not compute positions itself.
-//! Main helper: `glimpses`.
+//! Main function: `glimpses`.
 #![allow(clippy::unwrap_used)]
 
 use super::*;

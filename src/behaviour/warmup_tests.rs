@@ -1,6 +1,6 @@
 //! Tests of the warm-up on made-up tubes.
 //! Must not read files.
-//! Main helpers: `warm_up`, `taken`.
+//! Main functions: `warm_up`, `taken`.
 #![allow(clippy::unwrap_used)]
 
 use super::*;

@@ -1,6 +1,6 @@
 //! Tests of hops and swaps on made-up tubes.
 //! Must not read files.
-//! Main helper: `assert_times`.
+//! Main function: `assert_times`.
 #![allow(clippy::unwrap_used)]
 
 use super::*;

@@ -1,4 +1,5 @@
 //! What a simulated tube must do to pass for a real one: ripple, mode counts, orders, walk, polarization, ramp.
+//! Must not compare the model with the engine: they share no code, and are compared elsewhere.
 #![allow(clippy::unwrap_used)]
 
 use super::*;

@@ -1,5 +1,5 @@
 //! What happened in a run, one line each in `events.jsonl`.
-//! Facts (what came from outside) and findings (derived, with the engine's version) are marked apart.
+//! Must not mix facts (what came from outside) with findings (derived, with the engine's version): they are marked apart.
 //! Main types: [`Event`], [`Happening`].
 
 use serde::{Deserialize, Serialize};

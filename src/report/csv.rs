@@ -107,7 +107,7 @@ fn tube_cells(sheet: &Sheet) -> Cells {
     let verdict = &sheet.verdict;
     let simulated = if sheet.identity.simulated { SIMULATED } else { "" };
     let mut said: Vec<&str> = vec![simulated, &verdict.reason];
-    said.extend(sheet.remarks.iter().map(String::as_str));
+    said.extend(super::remarks(sheet));
     Cells {
         grade: neutralise(verdict.grade.as_deref().unwrap_or_default()),
         measurand: "tube".to_owned(),

@@ -108,6 +108,7 @@ fn run_notes(sheet: &Sheet) -> Json {
         "limits": { "revision": sheet.limits.revision, "sha256": sheet.limits.sha256 },
         "station_file": { "sha256": sheet.station_file.sha256 },
         "verdict": { "sentence": sheet.verdict.sentence, "reason": sheet.verdict.reason },
+        "caution": sheet.caution,
         "remarks": sheet.remarks,
         "measured_by": sheet.measured_by.as_ref().map(|by| json!({
             "initials": by.initials, "at": by.at.to_rfc3339(), "meaning": by.meaning })),

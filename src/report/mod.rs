@@ -8,6 +8,7 @@ mod escape;
 mod metadata;
 mod page;
 mod pdf;
+mod reason;
 pub mod scene;
 mod text;
 mod typeface;
@@ -24,6 +25,11 @@ pub const SIMULATED: &str = "Simulated bench: not a measurement of a tube";
 
 use self::typeface::Typeface;
 use crate::record::sheet::Sheet;
+
+/// The remarks that say more than [`SIMULATED`], which has its own place in every paper.
+fn remarks(sheet: &Sheet) -> impl Iterator<Item = &str> {
+    sheet.remarks.iter().map(String::as_str).filter(|remark| remark.trim_end_matches('.') != SIMULATED)
+}
 
 /// The sheet laid out, page by page and part by part, before it becomes a PDF or anything else.
 ///

@@ -13,7 +13,7 @@ use crate::{
 pub struct ValueText {
     /// `998.7`, `2`, `≥ 5000`, `clean`; empty if there is no value.
     pub value: String,
-    /// `± 3.0`, or `(1 to 2)` for a count in doubt; may be empty.
+    /// `± 3.0`, `U < 0.0001`, or `(1 to 2)` for a count in doubt; may be empty.
     pub spread: String,
     /// `MHz`; empty for counts and words.
     pub unit: String,
@@ -32,7 +32,7 @@ pub fn value_text(row: &Row) -> ValueText {
         }
         Value::Number { value, expanded, .. } => {
             let (number, spread) = rounded(shown(*value), shown(*expanded), known.map_or(6, |m| m.decimals));
-            let spread = if shown(*expanded).is_finite() { format!("± {}", typeset(&spread)) } else { String::new() };
+            let spread = if shown(*expanded).is_finite() { spread_text(&spread) } else { String::new() };
             ValueText { value: typeset(&number), spread, unit, absent: String::new() }
         }
         Value::Count { value, low, high } => {
@@ -45,6 +45,11 @@ pub fn value_text(row: &Row) -> ValueText {
         Value::Word(word) => ValueText { value: word.clone(), ..ValueText::default() },
         Value::Absent(reason) => ValueText { absent: reason.clone(), ..ValueText::default() },
     }
+}
+
+/// `± 3.0`; `U < 0.0001` where no more can be said.
+pub fn spread_text(expanded: &str) -> String {
+    if expanded.starts_with('<') { format!("U {expanded}") } else { format!("± {}", typeset(expanded)) }
 }
 
 /// Rounded together; in powers of ten where a column of figures could not hold the number.

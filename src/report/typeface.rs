@@ -8,6 +8,8 @@ use printpdf::ParsedFont;
 
 use super::scene::Style;
 
+/// Smallest size at which text is set, pt.
+pub const SMALLEST: f64 = 6.5;
 /// Stands for every character that has no glyph.
 const MISSING: char = '□';
 
@@ -59,14 +61,14 @@ impl Typeface {
         text.chars().map(|c| advance(c) * style.size + style.spacing).sum()
     }
 
-    /// Text and style that fit into a width: down to three quarters of the size, then shortened with `…`.
+    /// Text and style that fit into a width: down to three quarters of the size or [`SMALLEST`], then shortened with `…`.
     pub fn fit(&self, text: &str, style: Style, most: f64) -> (String, Style) {
         let text = self.printable(text);
         let width = self.width(&text, style);
         if width <= most {
             return (text, style);
         }
-        let style = style.sized((style.size * most / width).max(style.size * 0.75));
+        let style = style.sized((style.size * most / width).max(style.size * 0.75).max(SMALLEST.min(style.size)));
         (self.shorten(&text, style, most), style)
     }
 

@@ -54,7 +54,10 @@ pub(crate) fn gain_chart(book: &Notebook, step: &str, nominal_spacing: f64) -> O
     let glimpses: Vec<_> = book.of_within(step, window).iter().map(|seen| seen.glimpse.clone()).collect();
     let finite = |point: &&GainPoint| [point.detuning, point.height, point.u_height].iter().all(|x| x.is_finite());
     let all = gain_points(&glimpses, nominal_spacing);
-    let all: Vec<_> = all.iter().filter(finite).map(|point| (point.detuning, point.height, point.u_height)).collect();
+    let mut all: Vec<_> =
+        all.iter().filter(finite).map(|point| (point.detuning, point.height, point.u_height)).collect();
+    // Captures list their modes in turn: thinned as they come, every second point could be one mode's only.
+    all.sort_by(|a, b| a.0.total_cmp(&b.0));
     (!all.is_empty()).then(|| GainChart { cycles, points: thinned(&all) })
 }
 

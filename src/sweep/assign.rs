@@ -17,6 +17,8 @@ use super::{
 
 /// Share of all fitted height that must stand on the comb; off-axis light up to half of every axial mode passes.
 const LEAST_COMB_SHARE: f64 = 0.64;
+/// More lights an order than this are clutter: eight modes of a tube a metre long, and as many off the axis.
+const MOST_LIGHTS: usize = 16;
 /// A fitted line counts if its height exceeds this many of its own standard uncertainties (`measurement.md`: 5 σ).
 const LEAST_HEIGHT_SIGMA: f64 = 5.0;
 /// Rounds: the smooth order map, then free offsets, then twice the comb.
@@ -119,6 +121,11 @@ pub(super) fn assign(
 /// Takes what was found, or refuses it in words.
 fn judge(ramp: &Ramp<'_>, round: Round) -> Result<Assigned, Refusal> {
     let Round { classes, comb, choice, n_stray } = round;
+    // One light seen twice gives any two peaks a repeat: a scale needs two, or one in three orders.
+    let repeats: usize = classes.iter().map(|c| c.members.len().saturating_sub(1)).sum();
+    if repeats < 2 && classes.len() > 1 {
+        return Err(Refusal::NoRepeat { share: repeats as f64 / classes.len() as f64 });
+    }
     let Some(choice) = choice else {
         return Err(match comb {
             Err(refusal @ (Refusal::Ambiguous { .. } | Refusal::NoComb { .. })) => refusal,
@@ -129,7 +136,7 @@ fn judge(ramp: &Ramp<'_>, round: Round) -> Result<Assigned, Refusal> {
         let share = ramp.comb_share(&classes, comb);
         let n_on = comb.teeth.iter().flatten().count();
         // More lights off the comb than on it are clutter, however weak.
-        if share < LEAST_COMB_SHARE || classes.len() > 2 * n_on + 1 {
+        if share < LEAST_COMB_SHARE || classes.len() > (2 * n_on + 1).min(MOST_LIGHTS) {
             return Err(Refusal::NoComb { share });
         }
     }

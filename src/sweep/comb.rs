@@ -247,7 +247,7 @@ fn improve(classes: &[Class], teeth: &[Option<(i32, i32)>], line: Line) -> Line 
         t1 += w * m * at;
     }
     let determinant = s0 * s2 - s1 * s1;
-    if !(determinant > 1e-9 * s0 * s0) {
+    if determinant.is_nan() || determinant <= 1e-9 * s0 * s0 {
         return line;
     }
     let spacing = (s0 * t1 - s1 * t0) / determinant;

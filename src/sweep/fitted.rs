@@ -13,6 +13,9 @@ use crate::numerics::smoothing;
 /// The pole must improve the sum of squares by this chi-square (1 parameter at far below 0.1 %) to be believed.
 const POLE_CHI_SQUARE: f64 = 30.0;
 
+/// Lines nearer than this share of their width have slid onto each other.
+const COLLAPSED: f64 = 0.5;
+
 /// Lines as fitted, with and without the detector's pole.
 pub(super) struct Fitted {
     /// The fit, with the detector's pole where the data ask for it.
@@ -43,6 +46,14 @@ pub(super) fn fit_lines(segment: &Segment, look: &Look, orders: &Orders) -> Opti
         // Where the plain lines leave nothing but noise there is no pole to be found.
         let clean = plain.residual < 1.03 * noise;
         fit = if clean { None } else { with_pole(&samples, &start, &plain) }.unwrap_or_else(|| plain.clone());
+        if let Some(surplus) = collapsed(&fit, &start.heights) {
+            start.centres.remove(surplus);
+            start.heights.remove(surplus);
+            start.stretch.remove(surplus);
+            let Some(better) = lines::fit(&samples, &start) else { break };
+            plain = better;
+            fit = with_pole(&samples, &start, &plain).unwrap_or_else(|| plain.clone());
+        }
         if round == 2 {
             break;
         }
@@ -72,6 +83,13 @@ pub(super) fn fit_lines(segment: &Segment, look: &Look, orders: &Orders) -> Opti
     Some(Fitted { apparent_width: plain.width, fit, stretch: start.stretch })
 }
 
+/// Two lines that slid onto each other are one seen twice: the one that was lower at first is surplus.
+fn collapsed(fit: &LineFit, first: &[f64]) -> Option<usize> {
+    (1..fit.centres.len())
+        .find(|&i| (fit.centres[i] - fit.centres[i - 1]).abs() < COLLAPSED * fit.width)
+        .map(|i| if first[i] < first[i - 1] { i } else { i - 1 })
+}
+
 /// The fit with the detector's pole, if the data ask for it.
 fn with_pole(samples: &Samples, start: &Start, plain: &LineFit) -> Option<LineFit> {
     let mut best: Option<LineFit> = None;
@@ -85,10 +103,10 @@ fn with_pole(samples: &Samples, start: &Start, plain: &LineFit) -> Option<LineFi
             baseline: plain.baseline.0,
             stretch: start.stretch.clone(),
         };
-        if let Some(fit) = lines::fit(samples, &trial) {
-            if best.as_ref().is_none_or(|b| fit.sum_of_squares < b.sum_of_squares) {
-                best = Some(fit);
-            }
+        if let Some(fit) = lines::fit(samples, &trial)
+            && best.as_ref().is_none_or(|b| fit.sum_of_squares < b.sum_of_squares)
+        {
+            best = Some(fit);
         }
     }
     let best = best?;

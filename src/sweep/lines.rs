@@ -70,11 +70,11 @@ impl Samples {
         Self { signal: means, usable, bin }
     }
 
-    fn to_bins(&self, x: f64) -> f64 {
+    fn binned(&self, x: f64) -> f64 {
         (x - (self.bin as f64 - 1.0) / 2.0) / self.bin as f64
     }
 
-    fn from_bins(&self, x: f64) -> f64 {
+    fn unbinned(&self, x: f64) -> f64 {
         x * self.bin as f64 + (self.bin as f64 - 1.0) / 2.0
     }
 }
@@ -100,7 +100,7 @@ pub(super) fn fit(samples: &Samples, start: &Start) -> Option<LineFit> {
         return None;
     }
     let bin = samples.bin as f64;
-    let mut p: Vec<f64> = start.centres.iter().map(|x| samples.to_bins(*x)).collect();
+    let mut p: Vec<f64> = start.centres.iter().map(|x| samples.binned(*x)).collect();
     p.extend(&start.heights);
     p.push(start.width / bin);
     p.extend(start.pole.map(|pole| (pole / bin).max(0.05)));
@@ -194,7 +194,7 @@ pub(super) fn fit(samples: &Samples, start: &Start) -> Option<LineFit> {
         }
     }
     Some(LineFit {
-        centres: p[..n_peaks].iter().map(|x| samples.from_bins(*x)).collect(),
+        centres: p[..n_peaks].iter().map(|x| samples.unbinned(*x)).collect(),
         heights: p[n_peaks..2 * n_peaks].to_vec(),
         u_heights: (n_peaks..2 * n_peaks).map(|i| (inverse[(i, i)] * scale).max(0.0).sqrt()).collect(),
         width: p[2 * n_peaks] * bin,
@@ -238,7 +238,7 @@ fn memory_factor(residuals: &[f64], width: f64) -> f64 {
     let n = residuals.len();
     let lags = (width.ceil() as usize).clamp(1, 64).min(n / 4);
     let power: f64 = residuals.iter().map(|r| r * r).sum();
-    if !(power > 0.0) || lags == 0 {
+    if power.is_nan() || power <= 0.0 || lags == 0 {
         return 1.0;
     }
     let sum: f64 =
@@ -259,7 +259,7 @@ pub(super) fn heights_in(
     let n_peaks = fit.centres.len();
     let problem = Problem { samples: &samples, stretch, with_pole: fit.pole.is_some() };
     let bin = samples.bin as f64;
-    let mut p: Vec<f64> = fit.centres.iter().map(|x| samples.to_bins(*x)).collect();
+    let mut p: Vec<f64> = fit.centres.iter().map(|x| samples.binned(*x)).collect();
     p.extend(vec![1.0; n_peaks]);
     p.push(fit.width / bin);
     p.extend(fit.pole.map(|pole| pole / bin));

@@ -93,6 +93,8 @@ pub struct Measurement {
     pub mode_spacing: Option<Measured>,
     /// Axial modes, ascending with rising ramp voltage from the first after the largest gap.
     pub modes: Vec<Mode>,
+    /// Axial modes whose area exceeds the floor; weaker ones are listed, not counted.
+    pub mode_count: usize,
     /// Peaks off the comb, in the same form.
     pub off_axis: Vec<Mode>,
     /// Orders seen, whole or in part.

@@ -161,7 +161,7 @@ fn refine(peaks: &[Seen], orders: Orders, tolerance: f64) -> Option<Orders> {
         t0 += weight * period;
         t1 += weight * z * period;
     }
-    if !(s0 > 0.0) {
+    if s0.is_nan() || s0 <= 0.0 {
         return None;
     }
     let determinant = s0 * s2 - s1 * s1;

@@ -24,6 +24,9 @@ struct Apart {
     crossed: (Vec<f64>, Vec<f64>),
 }
 
+/// Gaps that differ by less than this many standard uncertainties of a place are equal.
+const EQUAL_SIGMA: f64 = 4.0;
+
 /// One ramp with its axis.
 struct Scale<'a> {
     segment: &'a Segment,
@@ -122,6 +125,7 @@ pub(super) fn fill(
         if tooth.is_some() { &mut modes } else { &mut off_axis }.push((mode.position, mode));
     }
     finish_modes(modes, off_axis, fsr, result);
+    result.mode_count = result.modes.iter().filter(|mode| mode.relative_height >= settings.mode_floor).count();
     warn_of_result(fit, choice, &assigned.classes, settings, segment, result);
     result.ramp_ends = segment.has_ramp.then(|| (segment.ramp_at(0.0), segment.ramp_at(2.0 * half)));
     let shifted = |(i, c): (usize, &f64)| if i == 0 { c - scale.reference } else { *c };
@@ -170,10 +174,12 @@ fn finish_modes(mut modes: Vec<(f64, Mode)>, mut off_axis: Vec<(f64, Mode)>, fsr
         let previous = if i == 0 { modes[n - 1].0 - fsr } else { modes[i - 1].0 };
         modes[i].0 - previous
     };
+    let u_typical = modes.iter().map(|m| m.1.u_position).fold(0.0, f64::max);
     let mut first = 0;
     for i in 1..n {
-        // Gaps equal within a part in a million count as equal: the lowest ramp voltage wins.
-        if gap_before(i) > gap_before(first) * (1.0 + 1e-6) {
+        // Gaps equal within what the places are known to count as equal: the lowest ramp voltage wins.
+        let known = EQUAL_SIGMA * u_typical + 1e-6 * fsr;
+        if gap_before(i) > gap_before(first) + known {
             first = i;
         }
     }
@@ -206,10 +212,10 @@ fn warn_of_result(
     segment: &Segment,
     result: &mut Measurement,
 ) {
-    if let (Some(spacing), Some(nominal)) = (&result.mode_spacing, settings.nominal_spacing) {
-        if (spacing.value / (2.0 * nominal) - 1.0).abs() < 0.1 {
-            result.warnings.push(Warning::TwiceNominal);
-        }
+    if let (Some(spacing), Some(nominal)) = (&result.mode_spacing, settings.nominal_spacing)
+        && (spacing.value / (2.0 * nominal) - 1.0).abs() < 0.1
+    {
+        result.warnings.push(Warning::TwiceNominal);
     }
     if let Some(ratio) = result.off_axis.iter().map(|m| m.relative_height).max_by(f64::total_cmp) {
         result.warnings.push(Warning::OffAxis { count: result.off_axis.len(), ratio });

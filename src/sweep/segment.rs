@@ -51,6 +51,9 @@ const BLOCKS: usize = 128;
 /// A block belongs to a ramp while its slope is at least this share of the median slope.
 const SLOPE_SHARE: f64 = 0.3;
 
+/// Blocks without slope inside a ramp that do not end it: a monitor of forty levels stands still for two.
+const ODD_BLOCKS: usize = 3;
+
 /// Finds the longest one-way ramp of a capture and prepares its signal.
 pub(super) fn find(capture: &Capture) -> Segment {
     let n = capture.photodiode.len();
@@ -120,7 +123,7 @@ fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
     let median = sizes[sizes.len() / 2];
     let range = means.iter().cloned().fold(f64::MIN, f64::max) - means.iter().cloned().fold(f64::MAX, f64::min);
     // A trigger's square wave or a constant has no slope in most blocks.
-    if !(range > 0.0) || median < 0.1 * range / means.len() as f64 {
+    if range.is_nan() || range <= 0.0 || median < 0.1 * range / means.len() as f64 {
         return None;
     }
     let way = |s: f64| {
@@ -142,11 +145,11 @@ fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
             from = i;
         }
     }
-    // One odd block inside a ramp (noise of a coarse monitor) does not end it.
+    // A few odd blocks inside a ramp (a step of a coarse monitor) do not end it.
     let mut joined: Vec<(usize, usize)> = Vec::new();
     for run in runs {
         match joined.last_mut() {
-            Some(last) if run.0 - last.1 <= 1 && way(slopes[run.0]) == way(slopes[last.0]) => last.1 = run.1,
+            Some(last) if run.0 - last.1 <= ODD_BLOCKS && way(slopes[run.0]) == way(slopes[last.0]) => last.1 = run.1,
             _ => joined.push(run),
         }
     }

@@ -26,7 +26,7 @@ pub fn thin_trace(capture: &Capture, measurement: &Measurement, columns: usize) 
     let sign = if axis.rising { 1.0 } else { -1.0 };
     let from = sign * axis.detuning(if axis.rising { axis.start as f64 } else { axis.end as f64 });
     let to = sign * axis.detuning(if axis.rising { axis.end as f64 } else { axis.start as f64 });
-    if !(to > from) {
+    if to.is_nan() || from.is_nan() || to <= from {
         return None;
     }
     let mut bins: Vec<Option<(f64, f64)>> = vec![None; columns];

@@ -132,6 +132,9 @@ impl Tube {
                     Some(_) => height * (1.0 - through) + 0.001 * noise.next(),
                     None => height * if even { 0.2 } else { 0.8 },
                 }),
+                // No ramp voltages: this bench has one scan axis for all captures already.
+                places: Vec::new(),
+                u_ramp: 0.0,
             });
         }
         let line = |source_id: &str, type_a: bool, u: f64| StoredLine {

@@ -116,7 +116,10 @@ fn groups_of(arguments: &Arguments) -> Vec<Vec<PathBuf>> {
     // A file that holds a channel of another capture is no capture itself, unless nothing else is.
     let (beside, own): (Vec<PathBuf>, Vec<PathBuf>) =
         arguments.captures.iter().cloned().partition(|path| is_named(path));
-    let own = if own.is_empty() { &arguments.captures } else { &own };
+    if own.is_empty() {
+        // Every file given holds a named channel: together they are one capture.
+        return vec![beside];
+    }
     let names: Vec<String> = own.iter().map(|path| path.to_string_lossy().into_owned()).collect();
     let groups = pair_names(&names).into_iter().map(|group| {
         let mut files: Vec<PathBuf> = group.into_iter().map(|index| own[index].clone()).collect();

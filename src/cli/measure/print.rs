@@ -68,7 +68,7 @@ pub(super) fn json(outcome: &Outcome) -> Result<String, Failure> {
         mode_spacing_hz: spacing.and_then(|s| known(s.value)),
         mode_spacing_u_hz: spacing.and_then(|s| known(s.u())),
         mirror_spacing_m: spacing.and_then(|s| known(mirror_spacing(s.value))),
-        mode_count: seen.map(|m| m.modes.len()),
+        mode_count: seen.map(|m| m.mode_count),
         order_count: measurement.map(|m| m.order_count).filter(|&n| n > 0),
         finesse: measurement.and_then(|m| m.finesse).and_then(known),
         modes: measurement.map(|m| json_modes(&m.modes)).unwrap_or_default(),

@@ -1,4 +1,5 @@
 //! Tests of `simulate`.
+//! Must not leave anything behind: folders are temporary.
 #![allow(clippy::unwrap_used)]
 use clap::Parser;
 

@@ -1,4 +1,5 @@
 //! Tests of the simulated bench.
+//! Must not wait for a clock: the pace is infinite.
 #![allow(clippy::unwrap_used)]
 
 use super::*;

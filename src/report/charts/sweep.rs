@@ -51,13 +51,12 @@ fn strongest(chart: &SweepChart) -> f64 {
     [fitted, seen].into_iter().find(|height| *height > 0.0).unwrap_or(1.0)
 }
 
-/// Sum of the fitted lines over every order shown, sampled evenly and closer around each line.
+/// Sum of the fitted lines over every order shown and the next beyond either end, whose flanks may reach in; sampled
+/// evenly and closer around each line.
 fn fitted_curve(chart: &SweepChart, (from, to): (f64, f64)) -> Vec<Point> {
-    let lines: Vec<(f64, &ChartMode)> = chart
-        .trace
-        .marks
-        .iter()
-        .filter_map(|&(index, at)| chart.modes.get(index).map(|mode| (at, mode)))
+    let lines: Vec<(f64, &ChartMode)> = marks_and_beyond(chart, (from, to))
+        .into_iter()
+        .filter_map(|(index, at)| chart.modes.get(index).map(|mode| (at, mode)))
         .filter(|(at, mode)| at.is_finite() && mode.fwhm > 0.0 && mode.fwhm.is_finite() && mode.peak_height.is_finite())
         .collect();
     if lines.is_empty() {
@@ -76,28 +75,71 @@ fn fitted_curve(chart: &SweepChart, (from, to): (f64, f64)) -> Vec<Point> {
     places.into_iter().map(|x| (x, height(x))).collect()
 }
 
+/// The marked lines, and those of the orders just outside the trace.
+fn marks_and_beyond(chart: &SweepChart, (from, to): (f64, f64)) -> Vec<(usize, f64)> {
+    let mut marks = chart.trace.marks.clone();
+    for index in 0..chart.modes.len() {
+        let of_mode = chart.trace.marks.iter().filter(|mark| mark.0 == index).map(|mark| mark.1);
+        if let Some((first, last)) = range(of_mode) {
+            let beyond = [first - chart.free_spectral_range, last + chart.free_spectral_range];
+            marks.extend(beyond.into_iter().filter(|at| *at < from || *at > to).map(|at| (index, at)));
+        }
+    }
+    marks
+}
+
 /// A triangle and a letter over each fitted mode, every order; an open triangle off the comb.
 fn names(scene: &mut Scene, face: &Typeface, chart: &SweepChart, plot: &Plot, shifted: &dyn Fn(f64) -> f64) {
     let style = Style::bold(6.8, BLUE);
-    let mut free_from = f64::NEG_INFINITY;
+    let tip = plot.top + 1.0;
     let mut marks = chart.trace.marks.clone();
     marks.sort_by(|a, b| a.1.total_cmp(&b.1));
+    let mut labels: Vec<Label> = Vec::new();
     for (index, at) in marks {
         let (Some(mode), x) = (chart.modes.get(index), shifted(at)) else { continue };
         if !plot.holds(x) {
             continue;
         }
-        let (x, tip) = (plot.at_x(x), plot.top + 1.0);
-        let triangle = vec![(x - 2.6, tip - 4.4), (x + 2.6, tip - 4.4), (x, tip)];
+        let x = plot.at_x(x);
+        let triangle = vec![(x - TRIANGLE, tip - 4.4), (x + TRIANGLE, tip - 4.4), (x, tip)];
         if mode.off_axis {
             scene.outline(triangle, Stroke::solid(BLUE, 0.7));
         } else {
             scene.area(triangle, BLUE);
         }
-        let half = face.width(&face.printable(&mode.name), style) / 2.0;
-        if x - half > free_from {
-            scene.fitted(face, (x, tip - 6.0), Anchor::Middle, &mode.name, style, 20.0);
-            free_from = x + half.min(10.0) + 1.0;
+        let name = face.shorten(&face.printable(&mode.name), style, 20.0);
+        let mut label = Label { half: face.width(&name, style) / 2.0, name, from: x, to: x };
+        while labels.last().is_some_and(|before| before.middle() + before.half + 1.0 > label.middle() - label.half) {
+            if let Some(before) = labels.pop() {
+                label = before.joined(&label, face, style);
+            }
         }
+        labels.push(label);
+    }
+    for label in labels {
+        let middle = label.middle().clamp(plot.left, plot.right);
+        scene.fitted(face, (middle, tip - 6.0), Anchor::Middle, &label.name, style, 40.0);
+    }
+}
+
+/// Half the width of a mark's triangle, pt.
+const TRIANGLE: f64 = 1.9;
+
+/// One letter, or the letters of neighbours too close to be named apart, in their order.
+struct Label {
+    name: String,
+    from: f64,
+    to: f64,
+    half: f64,
+}
+
+impl Label {
+    fn middle(&self) -> f64 {
+        (self.from + self.to) / 2.0
+    }
+
+    fn joined(&self, after: &Self, face: &Typeface, style: Style) -> Self {
+        let name = format!("{}{}", self.name, after.name);
+        Self { half: face.width(&name, style) / 2.0, name, from: self.from, to: after.to }
     }
 }

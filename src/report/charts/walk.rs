@@ -4,9 +4,11 @@
 
 use super::{Frame, Plot, TICK, missing, range, titles};
 use crate::{
-    record::sheet::WalkChart,
+    measurand,
+    record::sheet::{Row, WalkChart},
     report::{
         scene::{Anchor, BLUE, DARK, Point, RUST, Scene, Stroke, Style},
+        text::{spread_text, value_text},
         typeface::Typeface,
     },
     uncertainty::joint,
@@ -15,7 +17,9 @@ use crate::{
 const MINUTE: f64 = 60.0;
 
 /// The chart, or why there is none.
-pub fn walk(chart: Option<&WalkChart>, face: &Typeface, frame: Frame) -> Scene {
+///
+/// * `rows`: of the sheet; what is written in the chart of time constant and ready is theirs.
+pub fn walk(chart: Option<&WalkChart>, rows: &[Row], face: &Typeface, frame: Frame) -> Scene {
     const TITLE: &str = "Walk";
     let Some(chart) = chart else {
         return missing(face, frame, TITLE, "no walk was followed");
@@ -32,8 +36,9 @@ pub fn walk(chart: Option<&WalkChart>, face: &Typeface, frame: Frame) -> Scene {
         let sound = points.iter().filter(|(t, n)| t.is_finite() && n.is_finite());
         sound.map(|&(t, n)| plot.at((t / MINUTE, n))).collect::<Vec<_>>()
     };
-    drawn(&chart.points).into_iter().for_each(|point| scene.disc(point, 0.8, DARK));
+    // Beneath the points: where it can be seen at all, measured and fitted part.
     scene.line(drawn(&chart.prediction), Stroke::dashed(BLUE, 0.9, 3.0, 2.0));
+    drawn(&chart.points).into_iter().for_each(|point| scene.disc(point, 0.8, DARK));
     if let Some(end) = chart.dwell_end.map(|t| t / MINUTE).filter(|&t| plot.holds(t)) {
         let x = plot.at_x(end);
         scene.line(vec![(x, plot.top), (x, plot.bottom)], Stroke::dashed(BLUE, 0.7, 1.5, 1.5));
@@ -50,7 +55,7 @@ pub fn walk(chart: Option<&WalkChart>, face: &Typeface, frame: Frame) -> Scene {
         }
     }
     plot.axes(&mut scene, face, "minutes since first light", 3, 3);
-    sayings(&mut scene, face, chart, &plot);
+    sayings(&mut scene, face, (chart, rows), &plot);
     scene
 }
 
@@ -71,19 +76,26 @@ fn on_curve(chart: &WalkChart, t: f64, plot: &Plot) -> Option<Point> {
     Some(plot.at((t / MINUTE, n)))
 }
 
+/// A time in minutes with its expanded uncertainty: as the row has it, so that a sheet never says two things; as the
+/// chart has it where there is no such row.
+fn timing(rows: &[Row], key: &str, of_chart: Option<(f64, f64)>) -> Option<String> {
+    if let Some(row) = rows.iter().find(|row| row.measurand == key) {
+        let text = value_text(row);
+        return text.absent.is_empty().then(|| [text.value, text.spread, text.unit].join(" "));
+    }
+    let (value, expanded) = of_chart.filter(|(value, expanded)| value.is_finite() && expanded.is_finite())?;
+    let most = measurand::find(key).map_or(2, |m| m.decimals);
+    let (value, expanded) = joint(value / MINUTE, expanded / MINUTE, most);
+    Some(format!("{value} {} min", spread_text(&expanded)))
+}
+
 /// Time constant, ready, and what the marks mean, where the walk leaves room: low at the right.
-fn sayings(scene: &mut Scene, face: &Typeface, chart: &WalkChart, plot: &Plot) {
-    let minutes = |(value, expanded): (f64, f64)| {
-        let (value, expanded) = joint(value / MINUTE, expanded / MINUTE, 2);
-        format!("{value} ± {expanded} min")
-    };
-    let sound = |pair: &(f64, f64)| pair.0.is_finite() && pair.1.is_finite();
+fn sayings(scene: &mut Scene, face: &Typeface, (chart, rows): (&WalkChart, &[Row]), plot: &Plot) {
     let plural = |n: usize, one: &str, many: &str| format!("{n} {}", if n == 1 { one } else { many });
     let mut lines = Vec::new();
-    lines.extend(chart.tau.filter(sound).map(|tau| (format!("τ {}", minutes(tau)), TICK)));
-    lines.extend(
-        chart.ready.filter(sound).map(|ready| (format!("ready {}", minutes(ready)), Style { ink: BLUE, ..TICK })),
-    );
+    lines.extend(timing(rows, "warmup_tau", chart.tau).map(|tau| (format!("τ {tau}"), TICK)));
+    let blue = Style { ink: BLUE, ..TICK };
+    lines.extend(timing(rows, "warmup_ready", chart.ready).map(|ready| (format!("ready {ready}"), blue)));
     lines.extend(
         chart
             .dwell_end

@@ -5,9 +5,8 @@
 use super::{
     super::{
         scene::{Anchor, BEST, DARK, GREY, MIST, Point, Scene, Stroke, Style, corners},
-        typeface::Typeface,
+        typeface::{SMALLEST, Typeface},
     },
-    rows,
     scale::{CROSS, LEFT_END},
 };
 use crate::record::sheet::{Row, RowVerdict, Value};
@@ -17,13 +16,10 @@ const MOST: usize = 5;
 /// From box to box, pt.
 const STEP: f64 = 38.0;
 
-/// The boxes, their middle at `y`; "for information" where nothing is limited.
-pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
-    let Value::Count { value, low, high } = row.value else { return };
-    let Some(judged) = row.judged.last() else {
-        let size = pitch * 0.63;
-        return rows::for_information(scene, face, y + size * 0.3, size);
-    };
+/// The boxes, their middle at `y`. Returns where they end; nothing is drawn where nothing is limited.
+pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) -> Option<f64> {
+    let Value::Count { value, low, high } = row.value else { return None };
+    let judged = row.judged.last()?;
     let allowed = |n: u64| {
         let n = n as f64;
         judged.lower.is_none_or(|lower| n >= lower) && judged.upper.is_none_or(|upper| n <= upper)
@@ -47,12 +43,13 @@ pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
         } else if (low..=high).contains(&n) {
             scene.ring(middle, 1.9, Stroke::solid(DARK, 0.7));
         }
-        let style = Style::plain((pitch * 0.45).clamp(5.0, 6.2), GREY);
+        let style = Style::plain(SMALLEST, GREY);
         // What follows in the row is further than one: said by an ellipsis.
         let gap = numbers.get(i + 1).is_some_and(|&next| next > n + 1);
         let text = if gap { format!("{n} …") } else { n.to_string() };
         scene.fitted(face, (left + 18.0, y + style.size * 0.35), Anchor::Start, &text, style, STEP - 21.0);
     }
+    Some(LEFT_END + 4.0 + STEP * numbers.len() as f64 - 15.0)
 }
 
 /// The numbers that get a box: the count, the bounds, and their neighbours; ascending.

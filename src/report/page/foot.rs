@@ -4,13 +4,17 @@
 
 use super::{
     super::{
+        remarks,
         scene::{Anchor, DARK, GREY, RULE, RUST, Scene, Stroke, Style},
-        typeface::Typeface,
+        typeface::{SMALLEST, Typeface},
     },
     LEFT, RIGHT,
 };
 use crate::record::sheet::Sheet;
 
+const LEADING: f64 = 9.0;
+/// How far down rows may go on a page that another one follows.
+pub const BOTTOM: f64 = LAST_LINE - LEADING - 13.0;
 /// Baseline of the last line of every page.
 pub const LAST_LINE: f64 = 806.0;
 const SMALL: Style = Style::plain(6.8, GREY);
@@ -21,35 +25,36 @@ const EXPLAINED: &str = "U: expanded uncertainty for 95.45 %. \"conforms\": prob
 ///
 /// * `page`: number of the page and of all pages.
 pub fn foot(sheet: &Sheet, face: &Typeface, record_sha256: &str, page: (usize, usize)) -> (Scene, f64) {
-    let mut scene = last_line(sheet, face, record_sha256, page);
+    let mut scene = last_lines(sheet, face, record_sha256, page);
     let mut lines = face.wrap(&sheet.caution, SMALL, RIGHT - LEFT, 4);
     lines.extend(face.wrap(EXPLAINED, SMALL, RIGHT - LEFT, 2));
-    let first = LAST_LINE - 15.0 - 9.6 * (lines.len() as f64 - 1.0);
+    let first = LAST_LINE - LEADING - 12.5 - LEADING * (lines.len() as f64 - 1.0);
     for (i, line) in lines.iter().enumerate() {
-        scene.text(face, (LEFT, first + 9.6 * i as f64), Anchor::Start, line, SMALL);
+        scene.text(face, (LEFT, first + LEADING * i as f64), Anchor::Start, line, SMALL);
     }
-    let mut top = signatures(&mut scene, face, sheet, first - 19.0);
+    let mut top = signatures(&mut scene, face, sheet, first - 18.0);
     let remarks = remark_lines(sheet, face);
     if !remarks.is_empty() {
-        let title = top - 4.0 - 9.6 * remarks.len() as f64;
-        scene.text(face, (LEFT, title), Anchor::Start, "Remarks", Style::bold(7.2, DARK));
+        let first = top - 1.0 - 9.6 * (remarks.len() as f64 - 1.0);
+        scene.text(face, (LEFT, first), Anchor::Start, "Remarks", Style::bold(7.2, DARK));
         for (i, line) in remarks.iter().enumerate() {
-            let y = title + 9.6 * (i as f64 + 1.0);
-            scene.text(face, (LEFT, y), Anchor::Start, line, REMARK);
+            let y = first + LEADING * i as f64;
+            scene.text(face, (LEFT + REMARK_INDENT, y), Anchor::Start, line, REMARK);
         }
-        top = title - 8.0;
+        top = first - 11.0;
     }
     (scene, top)
 }
 
 const REMARK: Style = Style::plain(7.2, DARK);
+const REMARK_INDENT: f64 = 38.0;
 /// More remarks than this would push the rows off the page; record.csv holds them all.
 const MOST_REMARKS: usize = 5;
 
 fn remark_lines(sheet: &Sheet, face: &Typeface) -> Vec<String> {
-    let room = RIGHT - LEFT;
+    let room = RIGHT - LEFT - REMARK_INDENT;
     let mut lines: Vec<String> =
-        sheet.remarks.iter().flat_map(|remark| face.wrap(remark, REMARK, room, MOST_REMARKS)).collect();
+        remarks(sheet).flat_map(|remark| face.wrap(remark, REMARK, room, MOST_REMARKS)).collect();
     if lines.len() > MOST_REMARKS {
         lines.truncate(MOST_REMARKS - 1);
         lines.push("… and more: see the note in the first line of record.csv.".to_owned());
@@ -57,19 +62,19 @@ fn remark_lines(sheet: &Sheet, face: &Typeface) -> Vec<String> {
     lines
 }
 
-/// The last line alone, for a page that another one follows.
-pub fn last_line(sheet: &Sheet, face: &Typeface, record_sha256: &str, (page, pages): (usize, usize)) -> Scene {
+/// The last two lines alone, for a page that another one follows: hash; run, program and page.
+pub fn last_lines(sheet: &Sheet, face: &Typeface, record_sha256: &str, (page, pages): (usize, usize)) -> Scene {
     let mut scene = Scene::default();
-    let style = Style::plain(6.0, GREY);
+    let style = Style::plain(SMALLEST, GREY);
     let end = if page == pages { " · end" } else { "" };
     let version = sheet.identity.program_version.as_str();
     let name = ["tubewright", version].join(" ");
     let program = format!("{} · page {page} of {pages}{end}", name.trim_end());
     let run = format!("run {}", sheet.identity.run_id);
     let hash = format!("record.csv sha256 {}", grouped(record_sha256));
-    let run_width = scene.fitted(face, (LEFT, LAST_LINE), Anchor::Start, &run, style, 140.0);
-    scene.fitted(face, (LEFT + run_width + 10.0, LAST_LINE), Anchor::Start, &hash, style, 265.0);
-    scene.fitted(face, (RIGHT, LAST_LINE), Anchor::End, &program, style, 95.0);
+    scene.fitted(face, (LEFT, LAST_LINE - LEADING), Anchor::Start, &hash, style, RIGHT - LEFT);
+    scene.fitted(face, (LEFT, LAST_LINE), Anchor::Start, &run, style, 300.0);
+    scene.fitted(face, (RIGHT, LAST_LINE), Anchor::End, &program, style, 205.0);
     scene
 }
 

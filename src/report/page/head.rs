@@ -4,13 +4,13 @@
 
 use super::{
     super::{
-        SIMULATED,
-        scene::{Anchor, DARK, GREY, Point, RULE, RUST, Scene, Stroke, Style},
+        SIMULATED, reason,
+        scene::{Anchor, DARK, GREY, RULE, RUST, Scene, Stroke, Style},
         typeface::Typeface,
     },
     LEFT, RIGHT,
 };
-use crate::record::sheet::{Instrument, Outcome, Sheet, TubeVerdict};
+use crate::record::sheet::{Instrument, Outcome, Sheet};
 
 const BOX_LEFT: f64 = 318.0;
 const BOX_TOP: f64 = 54.0;
@@ -28,16 +28,15 @@ pub fn head(sheet: &Sheet, face: &Typeface) -> (Scene, f64) {
     };
     scene.text(face, (RIGHT, 44.0), Anchor::End, origin, Style::plain(7.0, RUST));
     let title_end = serial_and_title(&mut scene, face, sheet);
-    let box_end = verdict_box(&mut scene, face, &sheet.verdict);
+    let box_end = verdict_box(&mut scene, face, sheet);
     let rule = f64::max(title_end, box_end) + 11.0;
     scene.line(vec![(LEFT, rule), (RIGHT, rule)], Stroke::solid(DARK, 0.6));
-    let columns = [("Tube", tube(sheet)), ("Bench", bench(sheet)), ("Run", run(sheet))];
+    let columns = [tube(sheet), bench(sheet), run(sheet)];
     let mut end = rule + 20.0;
-    for (i, (title, lines)) in columns.into_iter().enumerate() {
-        let left = LEFT + 174.0 * i as f64;
-        end = end.max(column(&mut scene, face, (left, rule + 12.0), title, &lines));
+    for (place, lines) in COLUMNS.iter().zip(&columns) {
+        end = end.max(column(&mut scene, face, place, rule + 12.0, lines));
     }
-    (scene, end + 8.0)
+    (scene, end + 7.0)
 }
 
 /// Head of a further page.
@@ -81,7 +80,8 @@ fn serial_and_title(scene: &mut Scene, face: &Typeface, sheet: &Sheet) -> f64 {
 }
 
 /// "This tube: …" filled in as a clerk would, with the reason. Returns where the box ends.
-fn verdict_box(scene: &mut Scene, face: &Typeface, verdict: &TubeVerdict) -> f64 {
+fn verdict_box(scene: &mut Scene, face: &Typeface, sheet: &Sheet) -> f64 {
+    let verdict = &sheet.verdict;
     let (inner, room) = (BOX_LEFT + 10.0, RIGHT - BOX_LEFT - 20.0);
     let lead = scene.text(face, (inner, 70.0), Anchor::Start, "This tube:", Style::plain(8.5, GREY));
     let from = inner + lead + 8.0;
@@ -97,11 +97,12 @@ fn verdict_box(scene: &mut Scene, face: &Typeface, verdict: &TubeVerdict) -> f64
         scene.line(vec![(from, y + 3.0), (until, y + 3.0)], Stroke::solid(RULE, 0.6));
     }
     y += 4.0;
-    for line in face.wrap(&verdict.reason, VALUE, room, 6) {
+    let own = if verdict.reason.is_empty() { reason::of_pass(sheet) } else { None };
+    for line in face.wrap(own.as_deref().unwrap_or(&verdict.reason), VALUE, room, 6) {
         y += 9.6;
         scene.text(face, (inner, y), Anchor::Start, &line, VALUE);
     }
-    let end = (y + 7.5).max(100.0);
+    let end = (y + 7.5).max(84.0);
     edge(scene, verdict.outcome, end);
     end
 }
@@ -130,11 +131,36 @@ fn edge(scene: &mut Scene, outcome: Outcome, end: f64) {
     }
 }
 
-/// Label, text, and whether it must stand out.
-type Said = (String, String, bool);
+/// Where a column of the head stands.
+struct Column {
+    title: &'static str,
+    left: f64,
+    /// Left end of what is said, from the left end of the column.
+    indent: f64,
+    /// Room for what is said.
+    room: f64,
+}
+
+/// The bench is said at most length.
+const COLUMNS: [Column; 3] = [
+    Column { title: "Tube", left: LEFT, indent: 38.0, room: 84.0 },
+    Column { title: "Bench", left: LEFT + 132.0, indent: 52.0, room: 154.0 },
+    Column { title: "Run", left: LEFT + 350.0, indent: 52.0, room: RIGHT - LEFT - 402.0 },
+];
+
+/// One line of a column.
+struct Said {
+    label: String,
+    /// May be shortened.
+    text: String,
+    /// Is never shortened.
+    rest: String,
+    stands_out: bool,
+}
 
 fn said(label: &str, text: &str) -> Said {
-    (label.to_owned(), if text.is_empty() { "–".to_owned() } else { text.to_owned() }, false)
+    let text = if text.is_empty() { "–" } else { text };
+    Said { label: label.to_owned(), text: text.to_owned(), rest: String::new(), stands_out: false }
 }
 
 fn tube(sheet: &Sheet) -> Vec<Said> {
@@ -149,22 +175,26 @@ fn tube(sheet: &Sheet) -> Vec<Said> {
 
 fn bench(sheet: &Sheet) -> Vec<Said> {
     let mut lines = vec![said("station", &sheet.station)];
-    lines.extend(sheet.instruments.iter().map(|instrument| {
-        let (label, text, _) = said(&instrument.role, &instrument_text(instrument));
-        (label, text, instrument.overdue)
-    }));
+    lines.extend(sheet.instruments.iter().map(instrument));
     lines
 }
 
-fn instrument_text(instrument: &Instrument) -> String {
+/// What it is and until when its certificate holds; the certificate's number stands in the metadata of record.csv.
+fn instrument(instrument: &Instrument) -> Said {
     let due = match (instrument.due, instrument.overdue) {
         (Some(day), false) => format!("due\u{a0}{day}"),
         (Some(day), true) => format!("overdue\u{a0}since\u{a0}{day}"),
         (None, true) => "overdue".to_owned(),
-        (None, false) => String::new(),
+        (None, false) if instrument.certificate.is_empty() => "no\u{a0}certificate".to_owned(),
+        (None, false) => instrument.certificate.clone(),
     };
-    let certificate = if instrument.certificate.is_empty() { "no certificate" } else { &instrument.certificate };
-    [instrument.what.as_str(), certificate, &due].into_iter().filter(|s| !s.is_empty()).collect::<Vec<_>>().join(", ")
+    let comma = if instrument.what.is_empty() { "" } else { ", " };
+    Said {
+        label: instrument.role.clone(),
+        text: instrument.what.clone(),
+        rest: format!("{comma}{due}"),
+        stands_out: instrument.overdue,
+    }
 }
 
 fn run(sheet: &Sheet) -> Vec<Said> {
@@ -182,18 +212,25 @@ fn run(sheet: &Sheet) -> Vec<Said> {
     ]
 }
 
-/// One column of the head. Returns its last baseline.
-fn column(scene: &mut Scene, face: &Typeface, (left, top): Point, title: &str, lines: &[Said]) -> f64 {
-    scene.text(face, (left, top), Anchor::Start, title, Style::bold(8.0, DARK));
-    let (value_left, room) = (left + 52.0, 116.0);
+/// One column of the head, a line for each thing said. Returns its last baseline.
+fn column(scene: &mut Scene, face: &Typeface, place: &Column, top: f64, lines: &[Said]) -> f64 {
+    scene.text(face, (place.left, top), Anchor::Start, place.title, Style::bold(8.0, DARK));
     let mut y = top + 1.0;
-    for (label, text, stands_out) in lines {
-        let style = Style { bold: *stands_out, ..VALUE };
-        scene.fitted(face, (left, y + 10.0), Anchor::Start, label, LABEL, 49.0);
-        for line in face.wrap(text, style, room, 2) {
-            y += 10.0;
-            scene.text(face, (value_left, y), Anchor::Start, &line, style);
+    for line in lines {
+        y += 10.2;
+        let style = Style { bold: line.stands_out, ..VALUE };
+        scene.fitted(face, (place.left, y), Anchor::Start, &line.label, LABEL, place.indent - 3.0);
+        let whole = format!("{}{}", line.text, line.rest);
+        let at = (place.left + place.indent, y);
+        let (fitted, smaller) = face.fit(&whole, style, place.room);
+        if fitted == face.printable(&whole) {
+            scene.text(face, at, Anchor::Start, &fitted, smaller);
+            continue;
         }
+        let rest = face.shorten(&face.printable(&line.rest), smaller, place.room * 0.75);
+        let text = face.printable(&line.text);
+        let text = face.shorten(&text, smaller, place.room - face.width(&rest, smaller));
+        scene.fitted(face, at, Anchor::Start, &format!("{text}{rest}"), smaller, place.room);
     }
     y
 }

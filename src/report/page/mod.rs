@@ -2,6 +2,7 @@
 //! Must not drop a row, nor measure or judge anything.
 //! Main types: [`Page`], [`Part`]; main function: [`pages`].
 
+mod also;
 mod counts;
 mod foot;
 mod head;
@@ -70,16 +71,16 @@ struct Density {
     plot: f64,
 }
 
-/// Tried in this order.
+/// Tried in this order; closer than the last would be hard to read.
 const DENSITIES: [Density; 5] = [
-    Density { pitch: 13.6, heading: 19.0, size: 8.6, plot: 140.0 },
-    Density { pitch: 12.4, heading: 17.0, size: 8.3, plot: 125.0 },
-    Density { pitch: 11.2, heading: 15.0, size: 7.9, plot: 110.0 },
-    Density { pitch: 10.2, heading: 13.5, size: 7.4, plot: 95.0 },
-    Density { pitch: 9.2, heading: 12.0, size: 6.9, plot: 82.0 },
+    Density { pitch: 14.4, heading: 19.0, size: 8.6, plot: 130.0 },
+    Density { pitch: 13.6, heading: 17.5, size: 8.5, plot: 125.0 },
+    Density { pitch: 12.8, heading: 16.0, size: 8.3, plot: 120.0 },
+    Density { pitch: 12.0, heading: 15.0, size: 8.1, plot: 113.0 },
+    Density { pitch: 11.5, heading: 14.0, size: 7.9, plot: 106.0 },
 ];
 /// Tallest plot where there is room to spare.
-const TALLEST_PLOT: f64 = 165.0;
+const TALLEST_PLOT: f64 = 150.0;
 /// Above the rows: their heading.
 const TABLE_HEAD: f64 = 18.0;
 /// Space between rows and charts.
@@ -89,18 +90,23 @@ const GAP: f64 = 16.0;
 ///
 /// * `record_sha256`: hash of record.csv, hexadecimal; shown at the foot.
 pub fn pages(sheet: &Sheet, face: &Typeface, record_sha256: &str) -> Vec<Page> {
-    let layouts = DENSITIES.iter().map(|density| laid_out(sheet, face, record_sha256, density));
+    let layout = |density: &Density, notes: bool| laid_out(sheet, face, record_sha256, density, notes);
     // The first of the fewest pages is the widest spacing that does; `min_by_key` keeps the first.
-    layouts.min_by_key(Vec::len).unwrap_or_default()
+    let best = DENSITIES.iter().map(|density| (density, layout(density, false))).min_by_key(|(_, pages)| pages.len());
+    let Some((density, plain)) = best else { return vec![] };
+    let with_notes = layout(density, true);
+    if with_notes.len() == plain.len() { with_notes } else { plain }
 }
 
 /// The pages with one spacing.
-fn laid_out(sheet: &Sheet, face: &Typeface, record_sha256: &str, density: &Density) -> Vec<Page> {
+///
+/// * `notes`: the notes of rows that do not decide may take lines of their own.
+fn laid_out(sheet: &Sheet, face: &Typeface, record_sha256: &str, density: &Density, notes: bool) -> Vec<Page> {
     let (head, head_end) = head::head(sheet, face);
     let (_, foot_top) = foot::foot(sheet, face, record_sha256, (1, 1));
     let mut flow = Flow { pages: vec![], page: Page::default(), y: head_end };
     flow.page.parts.push((Part::Head, head));
-    flow.rows(sheet, face, density);
+    flow.rows(rows::blocks(sheet, face, density, notes), sheet, face);
     if flow.charts_end(density) > foot_top {
         flow.turn(sheet, face);
     }
@@ -112,7 +118,7 @@ fn laid_out(sheet: &Sheet, face: &Typeface, record_sha256: &str, density: &Densi
         let foot = if i + 1 == total {
             foot::foot(sheet, face, record_sha256, (total, total)).0
         } else {
-            foot::last_line(sheet, face, record_sha256, (i + 1, total))
+            foot::last_lines(sheet, face, record_sha256, (i + 1, total))
         };
         page.parts.push((Part::Foot, foot));
     }
@@ -141,9 +147,9 @@ impl Flow {
     }
 
     /// The rows; on a page that is not the last they may go down to the last line.
-    fn rows(&mut self, sheet: &Sheet, face: &Typeface, density: &Density) {
-        let mut blocks = rows::blocks(sheet, face, density).into_iter().peekable();
-        let bottom = foot::LAST_LINE - 16.0;
+    fn rows(&mut self, blocks: Vec<rows::Block>, sheet: &Sheet, face: &Typeface) {
+        let mut blocks = blocks.into_iter().peekable();
+        let bottom = foot::BOTTOM;
         let mut scene = self.table_head(face);
         while let Some(block) = blocks.next() {
             // A heading stays with its first row.
@@ -172,7 +178,7 @@ impl Flow {
         let charts = [
             (Part::Sweep, charts::sweep(sheet.sweep_chart.as_ref(), face, frame(0.0))),
             (Part::Gain, charts::gain(sheet.gain_chart.as_ref(), face, frame(1.0))),
-            (Part::Walk, charts::walk(sheet.walk_chart.as_ref(), face, frame(2.0))),
+            (Part::Walk, charts::walk(sheet.walk_chart.as_ref(), &sheet.rows, face, frame(2.0))),
         ];
         self.page.parts.extend(charts);
     }

@@ -6,9 +6,9 @@ use super::{
     super::{
         scene::{Anchor, DARK, GREY, RULE, Scene, Stroke, Style},
         text::{probability_text, value_text},
-        typeface::Typeface,
+        typeface::{SMALLEST, Typeface},
     },
-    Density, LEFT, RIGHT, counts, scale,
+    Density, LEFT, RIGHT, also, counts, scale,
 };
 use crate::{
     measurand::{self, Group},
@@ -47,58 +47,75 @@ pub fn table_head(face: &Typeface) -> Scene {
     scene
 }
 
-/// Headings and rows, in the order of the sheet.
-pub fn blocks(sheet: &Sheet, face: &Typeface, density: &Density) -> Vec<Block> {
+/// The limited rows under the headings of their groups, then what was measured for information.
+///
+/// * `notes`: notes that find no room in their row stand under it; else record.csv alone has them.
+pub fn blocks(sheet: &Sheet, face: &Typeface, density: &Density, notes: bool) -> Vec<Block> {
     let mut blocks = Vec::new();
     let mut last = None;
-    for row in &sheet.rows {
-        let group = measurand::find(&row.measurand).map_or(Group::Visual, |m| m.group);
+    for row in sheet.rows.iter().filter(|row| !also::is_for_information(row)) {
+        let group = group(row);
         if last != Some(group) {
             last = Some(group);
             blocks.push(heading(group.heading(), face, density));
         }
-        blocks.push(row_block(row, face, density));
+        blocks.push(row_block(row, face, density, notes));
     }
+    blocks.extend(also::blocks(sheet, face, density));
     blocks
 }
 
-fn heading(text: &str, face: &Typeface, density: &Density) -> Block {
+/// Polarization stands with the optics: a heading of its own would serve two rows at most.
+fn group(row: &Row) -> Group {
+    match measurand::find(&row.measurand).map_or(Group::Visual, |m| m.group) {
+        Group::Polarization => Group::Optics,
+        other => other,
+    }
+}
+
+/// A heading with its rule.
+pub fn heading(text: &str, face: &Typeface, density: &Density) -> Block {
     let mut scene = Scene::default();
-    let y = density.heading - 3.0;
-    let width = scene.text(face, (LEFT, y), Anchor::Start, text, Style::bold(density.size.min(7.2), GREY).spaced(0.6));
-    scene.line(vec![(LEFT + width + 8.0, y - 2.4), (RIGHT, y - 2.4)], Stroke::solid(RULE, 0.5));
+    let y = density.heading - 3.5;
+    let width = scene.text(face, (LEFT, y), Anchor::Start, text, Style::bold(7.0, GREY).spaced(0.5));
+    scene.line(vec![(LEFT + width + 8.0, y - 2.3), (RIGHT, y - 2.3)], Stroke::solid(RULE, 0.4));
     Block { height: density.heading, is_heading: true, scene }
 }
 
-fn row_block(row: &Row, face: &Typeface, density: &Density) -> Block {
+fn row_block(row: &Row, face: &Typeface, density: &Density, notes: bool) -> Block {
     let mut scene = Scene::default();
     let size = density.size;
     let baseline = density.pitch * 0.5 + size * 0.33;
     let label = Style { bold: row.deciding, ..Style::plain(size, DARK) };
-    scene.fitted(face, (LEFT, baseline), Anchor::Start, &row.label, label, WORDS - 5.0 - LEFT);
-    let mut end = baseline;
-    match &row.value {
-        Value::Word(word) => {
-            let style = Style::bold(size, DARK);
-            let short = face.width(&face.printable(word), style) <= VALUE_END - WORDS;
-            let (at, anchor) = if short { (VALUE_END, Anchor::End) } else { (WORDS, Anchor::Start) };
-            scene.fitted(face, (at, baseline), anchor, word, style, scale::LABEL_LEFT - 4.0 - WORDS);
-        }
-        _ => end = value(&mut scene, face, row, baseline, size),
-    }
+    let label_width = scene.fitted(face, (LEFT, baseline), Anchor::Start, &row.label, label, WORDS - 5.0 - LEFT);
+    let placed = value(&mut scene, face, row, baseline, size);
     let middle = baseline - size * 0.3;
-    match &row.value {
-        Value::Number { value, .. } if !value.is_finite() => {}
-        Value::Absent(_) => {}
-        Value::Number { .. } | Value::AtLeast(_) => scale::draw(&mut scene, face, row, middle, density.pitch),
+    // Where the drawing of a row ends, if it leaves room behind it.
+    let drawn = match &row.value {
+        Value::Number { value, .. } if !value.is_finite() => None,
+        Value::Absent(_) => None,
+        Value::Number { .. } | Value::AtLeast(_) => {
+            scale::draw(&mut scene, face, row, middle, density.pitch);
+            None
+        }
         Value::Count { .. } => counts::draw(&mut scene, face, row, middle, density.pitch),
         Value::Word(word) => wanted(&mut scene, face, row, word, baseline, size),
-    }
-    conforms(&mut scene, face, row, baseline, size);
-    let note = Style::plain(size * 0.86, if row.deciding { DARK } else { GREY });
-    for line in face.wrap(&row.note, note, RIGHT - LEFT, 2) {
-        end += size * 1.1;
-        scene.text(face, (LEFT, end), Anchor::Start, &line, note);
+    };
+    let conforms = conforms(&mut scene, face, row, baseline, size);
+    let mut end = placed.end;
+    let note = Style::plain((size * 0.82).max(6.6), if row.deciding { DARK } else { GREY });
+    // Behind the drawing, or between name and value.
+    let rooms =
+        [(drawn.map_or(conforms, |end| end + 7.0), conforms - 7.0), (LEFT + label_width + 7.0, placed.left - 12.0)];
+    let width = face.width(&face.printable(&row.note), note.sized(SMALLEST));
+    let room = rooms.into_iter().find(|(from, to)| !row.deciding && width <= to - from);
+    if let Some((from, to)) = room {
+        scene.fitted(face, (from, baseline), Anchor::Start, &row.note, note, to - from);
+    } else if row.deciding || notes {
+        for line in face.wrap(&row.note, note, RIGHT - LEFT, if row.deciding { 2 } else { 1 }) {
+            end += size * 1.1;
+            scene.text(face, (LEFT, end), Anchor::Start, &line, note);
+        }
     }
     let mut height = density.pitch.max(end + density.pitch - baseline);
     if row.deciding {
@@ -115,37 +132,49 @@ fn opened(scene: Scene, height: f64) -> Scene {
     for y in [0.5, height - 0.5] {
         open.line(vec![(LEFT - 7.0, y), (RIGHT, y)], Stroke::solid(GREY, 0.6));
     }
-    open.append(scene.lowered(2.0));
+    open.append(scene.lowered(3.0));
     open
 }
 
-/// Value, spread and unit, or in words why there is none. Returns the last baseline.
-fn value(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) -> f64 {
-    let text = value_text(row);
-    if !text.absent.is_empty() {
-        let style = Style::plain(size * 0.9, GREY);
-        let lines = face.wrap(&format!("no value: {}", text.absent), style, CONFORMS - 8.0 - WORDS, 2);
-        let mut y = baseline;
-        for (i, line) in lines.iter().enumerate() {
-            y = baseline + size * 1.1 * i as f64;
-            scene.text(face, (WORDS, y), Anchor::Start, line, style);
-        }
-        return y;
-    }
-    let style = Style::bold(size * 1.02, DARK);
-    scene.fitted(face, (VALUE_END, baseline), Anchor::End, &text.value, style, VALUE_END - WORDS);
-    let style = Style::plain(size * 0.9, GREY);
-    scene.fitted(face, (SPREAD, baseline), Anchor::Start, &text.spread, style, UNIT - 2.0 - SPREAD);
-    scene.fitted(face, (UNIT, baseline), Anchor::Start, &text.unit, style, scale::LABEL_LEFT - 2.0 - UNIT);
-    baseline
+/// Where a value was written.
+struct Placed {
+    left: f64,
+    /// Last baseline.
+    end: f64,
 }
 
-/// What a look should have said, and whether it did.
-fn wanted(scene: &mut Scene, face: &Typeface, row: &Row, word: &str, baseline: f64, size: f64) {
+/// Value, spread and unit, or in words why there is none.
+fn value(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) -> Placed {
+    let text = value_text(row);
+    let small = Style::plain(size * 0.9, GREY);
+    if !text.absent.is_empty() {
+        let lines = face.wrap(&format!("no value: {}", text.absent), small, CONFORMS - 8.0 - WORDS, 2);
+        let mut end = baseline;
+        for (i, line) in lines.iter().enumerate() {
+            end = baseline + size * 1.1 * i as f64;
+            scene.text(face, (WORDS, end), Anchor::Start, line, small);
+        }
+        return Placed { left: WORDS, end };
+    }
+    let bold = Style::bold(size * 1.02, DARK);
+    // A word too long for the column of values runs on over spread and unit.
+    let is_long =
+        matches!(row.value, Value::Word(_)) && face.width(&face.printable(&text.value), bold) > VALUE_END - WORDS;
+    if is_long {
+        let room = scale::LABEL_LEFT - 4.0 - WORDS;
+        scene.fitted(face, (WORDS, baseline), Anchor::Start, &text.value, bold, room);
+        return Placed { left: WORDS, end: baseline };
+    }
+    let width = scene.fitted(face, (VALUE_END, baseline), Anchor::End, &text.value, bold, VALUE_END - WORDS);
+    scene.fitted(face, (SPREAD, baseline), Anchor::Start, &text.spread, small, UNIT - 2.0 - SPREAD);
+    scene.fitted(face, (UNIT, baseline), Anchor::Start, &text.unit, small, scale::LABEL_LEFT - 2.0 - UNIT);
+    Placed { left: VALUE_END - width, end: baseline }
+}
+
+/// What a look should have said, and whether it did. Returns where the words end.
+fn wanted(scene: &mut Scene, face: &Typeface, row: &Row, word: &str, baseline: f64, size: f64) -> Option<f64> {
     let style = Style::plain(size * 0.84, GREY);
-    let Some(judged) = row.judged.last() else {
-        return for_information(scene, face, baseline, size);
-    };
+    let judged = row.judged.last()?;
     let (x, y) = (scale::LEFT_END + 5.0, baseline - size * 0.3);
     scene.outline(super::super::scene::corners((x - 5.0, y - 3.0), (10.0, 6.0)), Stroke::solid(GREY, 0.6));
     if judged.wanted.iter().any(|wanted| wanted == word) {
@@ -154,12 +183,8 @@ fn wanted(scene: &mut Scene, face: &Typeface, row: &Row, word: &str, baseline: f
         scene.cross((x, y), 2.6, scale::CROSS);
     }
     let text = format!("wanted: {}", judged.wanted.join(" or "));
-    scene.fitted(face, (x + 10.0, baseline), Anchor::Start, &text, style, CONFORMS - 8.0 - x - 10.0);
-}
-
-/// Said where nothing is limited.
-pub fn for_information(scene: &mut Scene, face: &Typeface, baseline: f64, size: f64) {
-    scene.text(face, (scale::LEFT_END, baseline), Anchor::Start, "for information", Style::plain(size * 0.84, GREY));
+    let width = scene.fitted(face, (x + 10.0, baseline), Anchor::Start, &text, style, CONFORMS - 8.0 - x - 10.0);
+    Some(x + 10.0 + width)
 }
 
 /// The judgement that says most: the best grade lost, or the one that decides.
@@ -172,8 +197,9 @@ pub fn telling(row: &Row) -> Option<&Judged> {
     }
 }
 
-fn conforms(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) {
-    let Some(judged) = telling(row) else { return };
+/// The probability, or why there is none. Returns where it begins.
+fn conforms(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) -> f64 {
+    let Some(judged) = telling(row) else { return RIGHT };
     let text = match (&row.value, judged.conformance_probability) {
         (Value::Count { .. }, _) => "exact".to_owned(),
         (Value::Word(_), _) => "by eye".to_owned(),
@@ -181,5 +207,5 @@ fn conforms(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: 
         _ => "–".to_owned(),
     };
     let style = if row.deciding { Style::bold(size * 0.9, DARK) } else { Style::plain(size * 0.9, GREY) };
-    scene.fitted(face, (RIGHT, baseline), Anchor::End, &text, style, RIGHT - CONFORMS);
+    RIGHT - scene.fitted(face, (RIGHT, baseline), Anchor::End, &text, style, RIGHT - CONFORMS)
 }

@@ -6,7 +6,7 @@ use super::{
     super::{
         scene::{Anchor, BEST, DARK, GREY, INSIDE, RULE, RUST, Scene, Stroke, Style},
         text::bound_text,
-        typeface::Typeface,
+        typeface::{SMALLEST, Typeface},
     },
     rows,
 };
@@ -28,7 +28,7 @@ pub const CROSS: Stroke = Stroke::solid(RUST, 1.5);
 /// How far, in spans of the bounds, a value may lie outside and still be drawn to scale.
 const FARTHEST: f64 = 3.0;
 
-/// The drawing, its axis at `y`; "for information" where nothing is limited.
+/// The drawing, its axis at `y`; nothing where nothing is limited.
 pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
     let (value, expanded, open) = match row.value {
         Value::Number { value, expanded, .. } => (value, if expanded.is_finite() { expanded } else { 0.0 }, false),
@@ -37,8 +37,7 @@ pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
     };
     let bounds: Vec<(f64, f64)> = row.judged.iter().filter_map(bounds_of).collect();
     if bounds.is_empty() {
-        let size = pitch * 0.63;
-        return rows::for_information(scene, face, y + size * 0.3, size);
+        return;
     }
     let known = measurand::find(&row.measurand);
     // To scale around the bounds that tell most: those of another grade would squeeze a doubt into a dot.
@@ -59,7 +58,7 @@ pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
         bracket(scene, axis.inside(lower), 2.2, y, half + 1.4);
         bracket(scene, axis.inside(upper), -2.2, y, half + 1.4);
     }
-    numbers(scene, face, row, known, y, pitch);
+    numbers(scene, face, row, known, y);
     mark(scene, &axis, (value, expanded), y, crossed(row), open);
 }
 
@@ -125,7 +124,7 @@ fn bracket(scene: &mut Scene, x: Option<f64>, serif: f64, y: f64, half: f64) {
 }
 
 /// The bounds in figures at the ends of the axis, best grade first.
-fn numbers(scene: &mut Scene, face: &Typeface, row: &Row, known: Option<&'static Measurand>, y: f64, pitch: f64) {
+fn numbers(scene: &mut Scene, face: &Typeface, row: &Row, known: Option<&'static Measurand>, y: f64) {
     let listed = |bound: fn(&Judged) -> Option<f64>| {
         let mut texts: Vec<String> = Vec::new();
         for text in row.judged.iter().filter_map(bound).map(|b| bound_text(known, b)) {
@@ -135,7 +134,7 @@ fn numbers(scene: &mut Scene, face: &Typeface, row: &Row, known: Option<&'static
         }
         texts.join(" · ")
     };
-    let style = Style::plain((pitch * 0.45).clamp(5.0, 6.2), GREY);
+    let style = Style::plain(SMALLEST, GREY);
     let baseline = y + style.size * 0.35;
     let room = |from: f64, to: f64| to - from - 5.0;
     let (lower, upper) = (listed(|judged| judged.lower), listed(|judged| judged.upper));

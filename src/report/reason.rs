@@ -1,0 +1,69 @@
+//! The sentence under a pass that gives no reason of its own: how many limits hold, and which is nearest.
+//! Must not judge: it counts verdicts that stand in the sheet.
+//! Main function: [`of_pass`].
+
+use super::text::{bound_text, value_text};
+use crate::{
+    measurand,
+    record::sheet::{Judged, Outcome, Row, RowVerdict, Sheet, Value},
+};
+
+/// "All 14 limits hold; the nearest is power ripple, 1.04 % of at most 2 %."
+///
+/// Nothing unless the tube passed and every limit of its grade holds. Nearest in units of the expanded uncertainty;
+/// counts and looks have none and are only counted.
+pub fn of_pass(sheet: &Sheet) -> Option<String> {
+    let verdict = &sheet.verdict;
+    if verdict.outcome != Outcome::Pass {
+        return None;
+    }
+    let grade = verdict.grade.as_deref().unwrap_or_default();
+    let limited: Vec<(&Row, &Judged)> = sheet
+        .rows
+        .iter()
+        .flat_map(|row| row.judged.iter().map(move |judged| (row, judged)))
+        .filter(|(_, judged)| judged.grade.is_empty() || judged.grade == grade)
+        .filter(|(_, judged)| judged.lower.is_some() || judged.upper.is_some() || !judged.wanted.is_empty())
+        .collect();
+    if limited.is_empty() || limited.iter().any(|(_, judged)| judged.verdict != RowVerdict::Pass) {
+        return None;
+    }
+    let all = match limited.len() {
+        1 => "The one limit holds".to_owned(),
+        n => format!("All {n} limits hold"),
+    };
+    let margins = limited.iter().filter_map(|(row, judged)| Some((row, margin(row, judged)?)));
+    let nearest = margins.min_by(|a, b| a.1.in_u.total_cmp(&b.1.in_u));
+    Some(nearest.map_or_else(|| format!("{all}."), |(row, margin)| format!("{all}; {}.", said(row, &margin))))
+}
+
+/// How far a value lies inside its nearer bound.
+struct Margin {
+    /// In units of U.
+    in_u: f64,
+    /// That bound, SI.
+    bound: f64,
+    /// It is the upper one.
+    upper: bool,
+}
+
+fn margin(row: &Row, judged: &Judged) -> Option<Margin> {
+    let Value::Number { value, expanded, .. } = row.value else { return None };
+    let lower = judged.lower.map(|bound| Margin { in_u: (value - bound) / expanded, bound, upper: false });
+    let upper = judged.upper.map(|bound| Margin { in_u: (bound - value) / expanded, bound, upper: true });
+    lower.into_iter().chain(upper).filter(|m| m.in_u.is_finite()).min_by(|a, b| a.in_u.total_cmp(&b.in_u))
+}
+
+fn said(row: &Row, margin: &Margin) -> String {
+    let text = value_text(row);
+    let unit = if text.unit.is_empty() { String::new() } else { format!("\u{a0}{}", text.unit) };
+    let bound = bound_text(measurand::find(&row.measurand), margin.bound);
+    let side = if margin.upper { "at\u{a0}most" } else { "at\u{a0}least" };
+    format!("the nearest is {}, {}{unit} of {side}\u{a0}{bound}{unit}", lower_first(&row.label), text.value)
+}
+
+/// "Power ripple" inside a sentence.
+fn lower_first(label: &str) -> String {
+    let mut letters = label.chars();
+    letters.next().map_or_else(String::new, |first| first.to_lowercase().chain(letters).collect())
+}
