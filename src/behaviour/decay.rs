@@ -59,7 +59,7 @@ impl Decay {
             (0..SLOW_STEPS).map(|k| span / 20.0 * 1200f64.powf(k as f64 / (SLOW_STEPS - 1) as f64)).collect();
         let single = polished(&bins, minimize(&grid, 6, |tau| trial(&bins, tau, None))?, true, 8);
         // A slow part far beyond the time seen cannot be told from a straight line.
-        let slow: Vec<f64> = grid.iter().copied().filter(|tau| *tau < 10.0 * span).collect();
+        let slow: Vec<f64> = grid.iter().copied().chain([single.tau]).filter(|tau| *tau < 10.0 * span).collect();
         let double = if bins.len() < LEAST_BINS + 4 { None } else { with_fast_part(&bins, &slow) };
         let best = match double {
             Some(double) if is_significant(&single, &double) => double,
