@@ -2,7 +2,7 @@
 //! were changed. `TUBEWRIGHT_MAKE_FIXTURES=1 cargo test --test prefix` makes the stored events again.
 //! Must not measure: what is stored is all there is.
 
-#![allow(clippy::unwrap_used, clippy::panic, missing_docs)]
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic, missing_docs)]
 
 #[path = "path/bench.rs"]
 mod bench;
