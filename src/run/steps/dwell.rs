@@ -254,7 +254,9 @@ fn some_number(key: &str, measured: Option<&Measured>, why: &str) -> Filled {
 }
 
 fn why_empty(end: DwellEnd, keys: &recipe::Dwell, state: &WarmupState) -> String {
-    let residual = state.residual_upper.filter(|residual| residual.is_finite());
+    // The same as what the end of the dwell hangs on: what strayed from the fit may stray again.
+    let residual = state.residual_upper.map(|residual| residual + strayed(state, keys.horizon_s));
+    let residual = residual.filter(|residual| residual.is_finite());
     let residual = residual.map_or(String::new(), |cycles| format!("; predicted walk up to {cycles:.1} spacings"));
     match end {
         DwellEnd::Longest => format!("not settled within {:.0} min{residual}", keys.longest_s / 60.0),
