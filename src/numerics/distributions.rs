@@ -2,7 +2,7 @@
 //! Must not decide a coverage probability.
 //! Main entries: [`coverage_factor`], [`normal_cdf`], [`student_t_quantile`].
 
-use statrs::distribution::{ContinuousCDF, Normal, StudentsT};
+use statrs::distribution::{ChiSquared, ContinuousCDF, Normal, StudentsT};
 
 /// Beyond this many degrees of freedom the normal distribution is used: the relative difference of quantiles, (z² +
 /// 1)/(4ν), is below 1e-6 for |z| up to 5 or so.
@@ -81,6 +81,24 @@ pub fn coverage_factor(probability: f64, degrees_of_freedom: f64) -> Option<f64>
     inside(probability).then_some(())?;
     // From the lower tail: (1 − p)/2 keeps its digits for p near 1.
     student_t_quantile(0.5 * (1.0 - probability), degrees_of_freedom).map(|t| -t)
+}
+
+/// Ratio by which stated uncertainties are too small, √(χ²/ν) (Birge 1932), where χ² is larger than chance allows; else 1.
+///
+/// * `chi_square`: Σ of squared residuals over their variances. * `degrees_of_freedom`: ν, above 0.
+///
+/// Chance allows χ² up to the 95 % point of its distribution: below it the residuals do not contradict what is stated.
+///
+/// ```
+/// use tubewright::numerics::distributions::excess_ratio;
+/// // The 95 % point for 4 degrees of freedom is 9.488 (published tables).
+/// assert_eq!(excess_ratio(9.4, 4.0), 1.0);
+/// assert!((excess_ratio(9.6, 4.0) - 2.4f64.sqrt()).abs() < 1e-12);
+/// ```
+pub fn excess_ratio(chi_square: f64, degrees_of_freedom: f64) -> f64 {
+    let Ok(distribution) = ChiSquared::new(degrees_of_freedom) else { return 1.0 };
+    let excessive = chi_square > 0.0 && distribution.cdf(chi_square) > 0.95;
+    if excessive { (chi_square / degrees_of_freedom).sqrt().max(1.0) } else { 1.0 }
 }
 
 fn inside(probability: f64) -> bool {

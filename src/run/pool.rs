@@ -3,6 +3,7 @@
 //! Main function: [`pool`].
 
 use crate::{
+    numerics::distributions::excess_ratio,
     record::finding::StoredLine,
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
@@ -29,8 +30,8 @@ pub(crate) struct Pooled {
 ///   correlated where source id and words agree.
 ///
 /// 1. Leave out what stands far from the median. 2. Weight by the inverse square of the Type A part, or evenly where one
-///    has none. 3. u_A = 1/√Σw, times the Birge ratio R = √(χ²/(n − 1)) where that is above 1 (Birge 1932; common
-///    practice in adjusting constants). 4. Type B contributions are averaged with the same weights and never shrink.
+///    has none. 3. u_A = 1/√Σw, times the Birge ratio R = √(χ²/(n − 1)) where χ² is larger than chance allows (Birge
+///    1932; common practice in adjusting constants). 4. Type B contributions are averaged with the same weights and never shrink.
 pub(crate) fn pool(captures: &[(f64, &[StoredLine])]) -> Option<Pooled> {
     let finite: Vec<_> = captures.iter().filter(|(value, _)| value.is_finite()).copied().collect();
     let kept = without_outliers(&finite);
@@ -51,7 +52,7 @@ pub(crate) fn pool(captures: &[(f64, &[StoredLine])]) -> Option<Pooled> {
     let mut budget = Vec::new();
     let inner = total.sqrt().recip();
     let line = match (known, ratio) {
-        (true, Some(ratio)) if ratio > 1.0 => Some((inner * ratio, (n - 1) as f64)),
+        (true, Some(ratio)) if excess_ratio(chi_square, (n - 1) as f64) > 1.0 => Some((inner * ratio, (n - 1) as f64)),
         (true, _) => Some((inner, own_dof(&kept))),
         (false, Some(ratio)) => Some((inner * ratio, (n - 1) as f64)),
         (false, None) => None,

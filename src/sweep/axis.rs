@@ -4,6 +4,8 @@
 
 use nalgebra::{DMatrix, DVector};
 
+use crate::numerics::distributions::excess_ratio;
+
 /// One peak with its place in orders and comb: ν(x) = order · FSR + tooth · Δν.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(super) struct Placed {
@@ -226,6 +228,11 @@ pub(super) struct Choice {
     pub truncation: f64,
 }
 
+/// Factor on stated uncertainties for residuals that contradict them; of a fit without any left over, what others say.
+fn birge_of(fit: &AxisFit, scale: f64) -> f64 {
+    if fit.dof > 0 { excess_ratio(fit.chi_square, fit.dof as f64) } else { scale.sqrt() }
+}
+
 /// Chooses the number of terms by the chi-square each must earn at 0.1 %, never by less.
 pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, offsets: Offsets) -> Option<Choice> {
     let with_comb = offsets == Offsets::Comb;
@@ -251,10 +258,7 @@ pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, off
     let scale = if scale.is_finite() { scale } else { 1.0 };
     let merit = |i: usize| fits[i].chi_square / scale + SIGNIFICANT * i as f64;
     // A poor model is tight about a wrong value: its residuals are counted in before it may rule out a richer one.
-    let spread = |fit: &AxisFit| {
-        let birge = if fit.dof > 0 { (fit.chi_square / fit.dof as f64).max(1.0).sqrt() } else { scale.sqrt() };
-        fit.u_spacing * birge
-    };
+    let spread = |fit: &AxisFit| fit.u_spacing * birge_of(fit, scale);
     let tightest = |i: usize| fits[..=i].iter().filter(|fit| usable(fit)).map(spread).fold(f64::INFINITY, f64::min);
     let admissible = |i: usize| {
         usable(&fits[i]) && fits[i].dof >= 0 && (!with_comb || spread(&fits[i]) <= MOST_INFLATION * tightest(i))
@@ -262,7 +266,7 @@ pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, off
     let best =
         (0..fits.len()).filter(|i| admissible(*i) && spares(*i + 1)).min_by(|a, b| merit(*a).total_cmp(&merit(*b)))?;
     let fit = fits[best].clone();
-    let birge = if fit.dof > 0 { (fit.chi_square / fit.dof as f64).max(1.0).sqrt() } else { scale.sqrt() };
+    let birge = birge_of(&fit, scale);
     let next = fits.get(best + 1).filter(|next| next.dof >= 0 && admissible(best + 1));
     let beyond = match (fit.spacing, next.and_then(|next| next.spacing.map(|s| (s, next)))) {
         (Some(spacing), Some((other, next))) => {

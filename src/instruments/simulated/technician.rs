@@ -66,10 +66,16 @@ fn own_answer(state: &State, question: &Question) -> Answer {
     }
 }
 
-/// What is seen on the tube; a tube of which nothing is said looks as the first word says, which is the good one.
+/// What is seen on the tube; a tube of which nothing is said looks clean, else as the first word says, which is the good
+/// one. A look that the recipe has no word for is not turned into another.
 fn choice(state: &State, question: &Question, words: &[String]) -> Answer {
-    let seen = state.options.looks.get(&question.step).filter(|seen| words.contains(seen));
-    match seen.or(words.iter().find(|word| *word == "clean")).or(words.first()) {
+    if let Some(seen) = state.options.looks.get(&question.step) {
+        return match words.contains(seen) {
+            true => Answer::Choice(seen.clone()),
+            false => Answer::CannotSay(format!("what is seen, `{seen}`, is none of {}", words.join(", "))),
+        };
+    }
+    match words.iter().find(|word| *word == "clean").or(words.first()) {
         Some(word) => Answer::Choice(word.clone()),
         None => Answer::CannotSay("no word to choose from".to_owned()),
     }
