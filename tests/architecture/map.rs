@@ -26,9 +26,9 @@ const STARTS: &[&str] = &[
     "benches/",
     ".ci/",
     "reports/samples/",
-    "README",
-    "DEVELOPERS",
-    "CHANGELOG",
+    "README.md",
+    "DEVELOPERS.md",
+    "CHANGELOG.md",
 ];
 
 /// Paths of the project in back quotes or links that are not there.
