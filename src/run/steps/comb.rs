@@ -2,7 +2,7 @@
 //! Must not count itself: `behaviour` does.
 //! Main type: [`Comb`].
 
-use super::{Given, Room, Step, Wish};
+use super::{Room, Step};
 use crate::{
     behaviour::count_modes,
     recipe,
@@ -129,17 +129,7 @@ impl Step for Comb {
         });
     }
 
-    fn wants(&self) -> Wish {
-        Wish::Nothing
-    }
-
-    fn take(&mut self, _given: Given<'_>, _room: &mut Room<'_>) {}
-
     fn filled(&self) -> &[Filled] {
         &self.filled
-    }
-
-    fn expected_s(&self, _book: &Notebook) -> Option<f64> {
-        Some(0.0)
     }
 }

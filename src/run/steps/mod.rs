@@ -31,14 +31,18 @@ pub(crate) const WHOLE_CAPTURE: usize = 20_000;
 pub(crate) trait Step: Send {
     /// Called when the step before it is done.
     fn begin(&mut self, room: &mut Room<'_>);
-    /// What it wants now; a function of what it was given.
-    fn wants(&self) -> Wish;
+    /// What it wants now; a function of what it was given. A step that only computes wants nothing.
+    fn wants(&self) -> Wish {
+        Wish::Nothing
+    }
     /// Takes what it wanted: only ever what [`Step::wants`] named last.
-    fn take(&mut self, given: Given<'_>, room: &mut Room<'_>);
+    fn take(&mut self, _given: Given<'_>, _room: &mut Room<'_>) {}
     /// Its rows so far.
     fn filled(&self) -> &[Filled];
     /// Seconds until it is done, as far as can be said now; none if it cannot.
-    fn expected_s(&self, room: &Notebook) -> Option<f64>;
+    fn expected_s(&self, _book: &Notebook) -> Option<f64> {
+        Some(0.0)
+    }
 }
 
 /// What a step sees of the run.

@@ -2,13 +2,13 @@
 //! Must not read a meter: readings come with the captures; `behaviour` averages them.
 //! Main type: [`Power`].
 
-use super::{Given, Room, Step, Wish, comb::whole_cycles};
+use super::{Room, Step, comb::whole_cycles};
 use crate::{
     behaviour::{CyclePower, Glimpse, cycle_power, power_drift},
     recipe,
     run::{
         filled::Filled,
-        notebook::{DwellEnd, Dwelt, Notebook},
+        notebook::{DwellEnd, Dwelt},
     },
     station::file::PowerMeter,
     uncertainty::{BudgetLine, Evaluation},
@@ -96,17 +96,7 @@ impl Step for Power {
         };
     }
 
-    fn wants(&self) -> Wish {
-        Wish::Nothing
-    }
-
-    fn take(&mut self, _given: Given<'_>, _room: &mut Room<'_>) {}
-
     fn filled(&self) -> &[Filled] {
         &self.filled
-    }
-
-    fn expected_s(&self, _book: &Notebook) -> Option<f64> {
-        Some(0.0)
     }
 }
