@@ -2,7 +2,7 @@
 //! Must not fit.
 //! Main entry: [`detect`].
 
-use super::segment::Segment;
+use super::segment::{Segment, ranked};
 use crate::numerics::{peaks, smoothing};
 
 /// A peak as first seen.
@@ -36,11 +36,9 @@ pub(super) struct Look {
 /// Finds peaks in two passes: the second on a signal smoothed by a third of the width the first one found.
 pub(super) fn detect(segment: &Segment) -> Look {
     let signal = &segment.signal;
-    let mut sorted = signal.clone();
-    sorted.sort_by(f64::total_cmp);
-    let at = |q: f64| sorted.get(((sorted.len().max(1) - 1) as f64 * q) as usize).copied().unwrap_or(0.0);
-    let baseline = at(0.05);
-    let range = at(1.0) - baseline;
+    let mut values = signal.clone();
+    let baseline = ranked(&mut values, 0.05);
+    let range = signal.iter().copied().fold(f64::MIN, f64::max) - baseline;
     let first = pass(signal, baseline, (LEAST_SIGMA * segment.noise * 1.4).max(0.05 * range));
     let rough = typical_width(&first);
     // Noise can break a top into several peaks, each too narrow: smooth once and look again.

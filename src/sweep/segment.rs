@@ -189,12 +189,17 @@ fn reference_on((start, slope): (f64, f64), n: usize) -> f64 {
     ((middle / unit).round() * unit - start) / slope
 }
 
+/// The value below which a share of the values lies; reorders them. Selection, not sorting: a capture has many samples.
+pub(super) fn ranked(values: &mut [f64], share: f64) -> f64 {
+    let Some(last) = values.len().checked_sub(1) else { return 0.0 };
+    let rank = ((last as f64 * share) as usize).min(last);
+    *values.select_nth_unstable_by(rank, f64::total_cmp).1
+}
+
 /// Whether the peaks point downward: the signal leans further below its median than above.
 fn points_down(signal: &[f64]) -> bool {
-    let mut sorted: Vec<f64> = signal.to_vec();
-    sorted.sort_by(f64::total_cmp);
-    let at = |q: f64| sorted[((sorted.len() - 1) as f64 * q) as usize];
-    let (low, median, high) = (at(0.001), at(0.5), at(0.999));
+    let mut values: Vec<f64> = signal.to_vec();
+    let (low, median, high) = (ranked(&mut values, 0.001), ranked(&mut values, 0.5), ranked(&mut values, 0.999));
     median - low > 2.0 * (high - median)
 }
 
@@ -204,13 +209,15 @@ fn noise_of(signal: &[f64]) -> (f64, f64) {
     if sizes.is_empty() {
         return (0.0, 0.0);
     }
-    sizes.sort_by(f64::total_cmp);
-    let largest = sizes[sizes.len() - 1];
-    let step = sizes.iter().copied().find(|s| *s > 1e-9 * largest).unwrap_or(0.0);
+    let largest = sizes.iter().copied().fold(0.0, f64::max);
+    let step = sizes.iter().copied().filter(|s| *s > 1e-9 * largest).fold(f64::INFINITY, f64::min);
+    let step = if step.is_finite() { step } else { 0.0 };
     // |difference| of two normal deviates has its median at 0.6745·√2 σ.
-    let by_median = sizes[sizes.len() / 2] / (0.674_489_75 * std::f64::consts::SQRT_2);
+    let by_median = ranked(&mut sizes, 0.5) / (0.674_489_75 * std::f64::consts::SQRT_2);
     // With few levels the median is 0 or one step: take the mean of the smaller 80 % too.
-    let kept = &sizes[..(sizes.len() * 4 / 5).max(1)];
+    let count = (sizes.len() * 4 / 5).max(1);
+    sizes.select_nth_unstable_by(count - 1, f64::total_cmp);
+    let kept = &sizes[..count];
     let by_mean = kept.iter().sum::<f64>() / kept.len() as f64;
     (by_median.max(if by_median < 1.5 * step { by_mean } else { 0.0 }).max(step / 12f64.sqrt() * 0.5), step)
 }
