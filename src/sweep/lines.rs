@@ -279,3 +279,80 @@ pub(super) fn heights_in(
     let heights = solved.iter().take(n_peaks).copied().collect();
     Some((heights, (0..n_peaks).map(|i| (inverse[(i, i)] * variance).max(0.0).sqrt()).collect()))
 }
+
+#[cfg(test)]
+mod tests {
+    #![allow(clippy::unwrap_used)]
+    use super::*;
+    use crate::numerics::least_squares::{Model, Options, fit as certified_fit};
+
+    /// The same lines as a dense model for the solver that is checked against certified data (`tests/strd.rs`).
+    struct Dense<'a>(Problem<'a>);
+
+    impl Model for Dense<'_> {
+        fn n_parameters(&self) -> usize {
+            self.0.n_parameters()
+        }
+
+        fn n_points(&self) -> usize {
+            self.0.samples.signal.len()
+        }
+
+        fn evaluate(&self, parameters: &[f64], residuals: &mut [f64], jacobian: Option<&mut [f64]>) {
+            let (model, columns) = self.0.evaluate(parameters, jacobian.is_some());
+            for (residual, signed) in residuals.iter_mut().zip(self.0.residuals(&model)) {
+                *residual = -signed;
+            }
+            let Some(jacobian) = jacobian else { return };
+            jacobian.fill(0.0);
+            for (j, column) in columns.iter().enumerate() {
+                for (k, value) in column.values.iter().enumerate() {
+                    jacobian[(column.from + k) * columns.len() + j] = *value;
+                }
+            }
+        }
+    }
+
+    /// Three overlapping lines behind a slow detector, with a small seeded noise.
+    fn made() -> (Samples, Start) {
+        let truth = [300.0, 345.0, 620.0, 1.0, 0.6, 0.8, 14.0, 6.0, 0.05, 0.01];
+        let blank = Samples { signal: vec![0.0; 900], usable: vec![true; 900], bin: 1 };
+        let stretch = [1.0, 1.02, 1.1];
+        let problem = Problem { samples: &blank, stretch: &stretch, with_pole: true };
+        let mut state = 1u64;
+        let mut noise = || {
+            // Knuth's linear congruential generator, upper bits.
+            state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+            (state >> 33) as f64 / f64::from(1u32 << 31) - 0.5
+        };
+        let signal = problem.evaluate(&truth, false).0.iter().map(|v| v + 0.01 * noise()).collect();
+        let start = Start {
+            centres: vec![302.0, 349.0, 623.0],
+            heights: vec![0.8, 0.5, 0.7],
+            stretch: stretch.to_vec(),
+            width: 18.0,
+            pole: Some(3.0),
+            baseline: 0.0,
+        };
+        (Samples { signal, ..blank }, start)
+    }
+
+    #[test]
+    fn agrees_with_the_certified_solver() {
+        let (samples, start) = made();
+        let ours = fit(&samples, &start).unwrap();
+        let problem = Problem { samples: &samples, stretch: &start.stretch, with_pole: true };
+        let from = [302.0, 349.0, 623.0, 0.8, 0.5, 0.7, 18.0, 3.0, 0.0, 0.0];
+        let theirs = certified_fit(&Dense(problem), &from, &Options::default()).unwrap();
+        for j in 0..3 {
+            // Both end at one minimum: the steps they stop at are 1e-5 of a width, 1e-4 of a sample here.
+            assert!((ours.centres[j] - theirs.parameters[j]).abs() < 1e-3, "centre {j}");
+            assert!((ours.heights[j] - theirs.parameters[3 + j]).abs() < 1e-4, "height {j}");
+            let variance = theirs.covariance_at(j, j).unwrap() * theirs.reduced_chi_square().unwrap();
+            // Ours may be raised by the memory of the residuals; white noise has none beyond chance.
+            assert!((ours.centre_covariance[(j, j)] / variance - 1.0).abs() < 0.05, "variance of centre {j}");
+        }
+        assert!((ours.pole.unwrap() - theirs.parameters[7]).abs() < 1e-3);
+        assert!((ours.sum_of_squares / theirs.sum_of_squares - 1.0).abs() < 1e-7);
+    }
+}
