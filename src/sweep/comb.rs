@@ -170,9 +170,13 @@ pub(super) fn find(classes: &[Class], tolerance: f64, fsr: f64, nominal: Option<
     let mut equal: Vec<&Comb> = vec![&best];
     equal.extend(rivals);
     if let Some(nominal) = nominal {
-        let off = |c: &Comb| (c.spacing * fsr / nominal - 1.0).abs();
-        if let Some(near) = equal.iter().filter(|c| off(c) < NEAR_NOMINAL).min_by(|a, b| off(a).total_cmp(&off(b))) {
-            return Ok((*near).clone());
+        // Half the modes may be hidden by a polarizing element: then twice nominal is what there is to see, and is warned of.
+        for wanted in [nominal, 2.0 * nominal] {
+            let off = |c: &Comb| (c.spacing * fsr / wanted - 1.0).abs();
+            let near = equal.iter().filter(|c| off(c) < NEAR_NOMINAL).min_by(|a, b| off(a).total_cmp(&off(b)));
+            if let Some(near) = near {
+                return Ok((*near).clone());
+            }
         }
     }
     // Folded by the order, any comb has aliases; those wider than a gain line is are not believed while a plain one fits.
@@ -180,7 +184,7 @@ pub(super) fn find(classes: &[Class], tolerance: f64, fsr: f64, nominal: Option<
     if simple.len() == 1 {
         return Ok((**simple[0]).clone());
     }
-    Err(Refusal::Ambiguous { first: best.spacing * fsr, second: equal[1].spacing * fsr })
+    Err(Refusal::Ambiguous { first: best.spacing * fsr, second: equal[1].spacing * fsr, nominal })
 }
 
 /// A span that asks for no belief, Hz: lasing spans are 1000–2200 MHz by type (common practice), the comb is narrower.

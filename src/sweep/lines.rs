@@ -91,6 +91,7 @@ const STEP_TOLERANCE: f64 = 1e-5;
 /// Fits all lines at once by Levenberg–Marquardt on the normal equations, whose columns are short windows.
 ///
 /// Returns none if the fit does not come to rest or its uncertainty cannot be had.
+// Over 60 lines: one loop and its ends; cut in pieces, each would be handed all of its state.
 pub(super) fn fit(samples: &Samples, start: &Start) -> Option<LineFit> {
     let n_peaks = start.centres.len();
     let problem = Problem { samples, stretch: &start.stretch, with_pole: start.pole.is_some() };

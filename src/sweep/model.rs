@@ -39,6 +39,7 @@ impl Problem<'_> {
     }
 
     /// Model and, where wanted, the columns of its Jacobian.
+    // Over 60 lines: values and derivatives of each parameter in turn; apart they would be computed twice.
     pub fn evaluate(&self, p: &[f64], want_columns: bool) -> (Vec<f64>, Vec<Column>) {
         let n = self.samples.signal.len();
         let n_peaks = self.n_peaks();

@@ -47,6 +47,8 @@ pub enum Refusal {
         first: f64,
         /// The other, Hz.
         second: f64,
+        /// The nominal spacing given, which is near neither, Hz.
+        nominal: Option<f64>,
     },
     /// One mode an order.
     OneMode,
@@ -92,13 +94,14 @@ impl fmt::Display for Refusal {
                 "the peaks form no comb: only {:.0} % of their height fits evenly spaced modes; realign and repeat",
                 share * 100.0
             ),
-            Self::Ambiguous { first, second } => write!(
-                f,
-                "spacings of {:.1} MHz and {:.1} MHz fit equally well; give the nominal spacing, or use an interferometer of \
-                 another free spectral range",
-                first / 1e6,
-                second / 1e6
-            ),
+            Self::Ambiguous { first, second, nominal } => {
+                write!(f, "spacings of {:.1} MHz and {:.1} MHz fit equally well", first / 1e6, second / 1e6)?;
+                match nominal {
+                    Some(nominal) => write!(f, ", and neither is near the nominal {:.1} MHz", nominal / 1e6)?,
+                    None => write!(f, "; give the nominal spacing")?,
+                }
+                write!(f, ", or use an interferometer of another free spectral range")
+            }
             Self::OneMode => write!(
                 f,
                 "one mode an order: a spacing needs two; take more captures while the tube walks, or remove the polarizer"
