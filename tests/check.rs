@@ -243,3 +243,16 @@ fn no_text_makes_the_readers_panic() {
         }
     }
 }
+
+#[test]
+fn half_a_tube_type_is_a_fault() {
+    let home = tempfile::tempdir().unwrap();
+    let folder = home.path().join("limits/half-150");
+    fs::create_dir_all(&folder).unwrap();
+    fs::write(folder.join("limits.toml"), text("limits/twin-150/limits.toml")).unwrap();
+    let mut out = Vec::new();
+    let args = CheckArgs { paths: vec![home.path().join("limits")] };
+    assert_eq!(check(&args, Some(home.path()), &mut out).unwrap(), 1);
+    let out = String::from_utf8(out).unwrap();
+    assert!(out.contains("a tube type with `limits.toml` but no `recipe.toml`; expected both"), "{out}");
+}

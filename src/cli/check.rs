@@ -80,6 +80,13 @@ fn gather(path: &Path, depth: usize, texts: &mut Vec<(String, String)>, faults: 
                 for entry in entries.iter().filter(|entry| is_wanted(&entry.path())) {
                     gather(&entry.path(), depth + 1, texts, faults);
                 }
+                let has = |wanted: &str| entries.iter().any(|entry| entry.file_name() == *wanted);
+                for (there, missing) in [("limits.toml", "recipe.toml"), ("recipe.toml", "limits.toml")] {
+                    if has(there) && !has(missing) {
+                        let message = format!("a tube type with `{there}` but no `{missing}`; expected both");
+                        faults.push(Fault::of_file(&name, message));
+                    }
+                }
                 if depth == 0 && texts.len() == before && faults.is_empty() {
                     faults.push(Fault::of_file(&name, "the folder holds no `.toml` file; expected at least one"));
                 }

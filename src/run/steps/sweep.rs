@@ -97,6 +97,11 @@ impl Sweep {
                 self.filled.push(Filled::absent("mirror_spacing", reason));
             }
         }
+        if self.finesse.is_empty() {
+            // A folder may end in the dwell: its last whole cycles show the bench as well.
+            let seen = room.book.of_dwells().filter_map(|seen| seen.finding.finesse);
+            self.finesse.extend(seen.filter(|finesse| finesse.is_finite()));
+        }
         self.filled.push(finesse(&self.finesse));
         if !self.reasons.is_empty() {
             let step = room.step;
