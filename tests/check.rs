@@ -152,7 +152,7 @@ done = false
     station.toml:4:11: `6 am` is no time of day; expected hours and minutes such as "06:00"
     station.toml:6:10: unknown source `simulate`; expected one of simulated, folder, profile:<name>
       nearest known word: simulated
-    station.toml:8:9: `fsr_u` is the text "80 %"; expected a share from 0 % to 50 %
+    station.toml:8:9: `fsr_u` is the text "80 %"; expected a share from 0 % to 20 %, with its sign: `0.3 %`
     station.toml:9:11: unknown channel `foto` in `columns`; expected one of time, ramp, photodiode, crossed
     station.toml:10:63: `due` 2025-01-12 is before `date` 2026-01-12; expected it after
     station.toml:10:80: `in` is `water`; expected one of air, vacuum

@@ -1,5 +1,5 @@
 //! Sample records of three demo tubes, made by the built program and compared byte by byte with `reports/samples`.
-//! Must not write there unless asked: `TUBEWRIGHT_MAKE_SAMPLES=1 cargo test --test samples -- --ignored` makes them anew.
+//! Must not write there unless asked: `TUBEWRIGHT_MAKE_SAMPLES=1 cargo test --test samples` makes them anew.
 //! The picture in the README is the first page of one of them, made by
 //! `pdftoppm -r 100 -png -singlefile reports/samples/DEMO-0003/record.pdf reports/samples/DEMO-0003/record`.
 #![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
@@ -47,7 +47,6 @@ fn difference(name: &str, kept: &[u8], made: &[u8]) -> String {
 }
 
 #[test]
-#[ignore = "the samples are kept once the measured values have settled"]
 fn records_of_the_demo_tubes_are_as_kept() {
     let samples = Path::new(env!("CARGO_MANIFEST_DIR")).join("reports/samples");
     let make = std::env::var("TUBEWRIGHT_MAKE_SAMPLES").is_ok_and(|value| value == "1");

@@ -129,6 +129,9 @@ pub struct Identity {
     pub simulated: bool,
     /// Captures come from a folder of files, not from instruments.
     pub from_captures: bool,
+    /// The captures carry no time: they stand in their order, and what counts in time cannot be measured.
+    #[serde(default, skip_serializing_if = "std::ops::Not::not")]
+    pub times_assumed: bool,
     /// Version of the program that opened it.
     pub program_version: String,
 }

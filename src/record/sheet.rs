@@ -33,6 +33,8 @@ pub struct Sheet {
     pub rule: String,
     /// Instruments with their certificates.
     pub instruments: Vec<Instrument>,
+    /// Tube current at which the optical rows were measured, A, where it is known.
+    pub run_current: Option<f64>,
     /// The verdict.
     pub verdict: TubeVerdict,
     /// The rows, in the order of the catalogue, looks last.

@@ -4,7 +4,7 @@
 
 use super::{SIMULATED, escape::neutralise};
 use crate::{
-    measurand,
+    measurand::{self, Group},
     record::sheet::{Judged, Row, RowVerdict, Sheet, Value},
     uncertainty::Evaluation,
 };
@@ -70,10 +70,10 @@ pub fn record_csv(sheet: &Sheet) -> Vec<u8> {
     lines.push(&record_line(sheet, tube_cells(sheet)));
     for row in &sheet.rows {
         if row.judged.is_empty() {
-            lines.push(&record_line(sheet, row_cells(row, None)));
+            lines.push(&record_line(sheet, row_cells(sheet, row, None)));
         }
         for judged in &row.judged {
-            lines.push(&record_line(sheet, row_cells(row, Some(judged))));
+            lines.push(&record_line(sheet, row_cells(sheet, row, Some(judged))));
         }
     }
     lines.bytes
@@ -119,7 +119,7 @@ fn tube_cells(sheet: &Sheet) -> Cells {
     }
 }
 
-fn row_cells(row: &Row, judged: Option<&Judged>) -> Cells {
+fn row_cells(sheet: &Sheet, row: &Row, judged: Option<&Judged>) -> Cells {
     let known = measurand::find(&row.measurand);
     let shown = |si: f64| number(known.map_or(si, |m| m.shown(si)));
     let unit = known.map_or("", |m| m.ucum).to_owned();
@@ -153,7 +153,7 @@ fn row_cells(row: &Row, judged: Option<&Judged>) -> Cells {
             said = format!("absent: {reason}");
         }
     }
-    cells.note = neutralise(&joined(&[&said, &row.note]));
+    cells.note = neutralise(&joined(&[&said, &row.note, &at_current(sheet, row)]));
     cells.verdict = RowVerdict::NotJudged.word();
     if let Some(judged) = judged {
         cells.grade = neutralise(&judged.grade);
@@ -201,6 +201,16 @@ fn record_line(sheet: &Sheet, cells: Cells) -> [String; 25] {
 }
 
 /// The parts that say something, one after the other.
+/// "at 4.00 mA": every optical row that has a value states the tube current (`measurand::Group`).
+fn at_current(sheet: &Sheet, row: &Row) -> String {
+    let optical = |group| matches!(group, Group::Optics | Group::Polarization | Group::Power);
+    let known = measurand::find(&row.measurand).is_some_and(|known| optical(known.group));
+    match sheet.run_current {
+        Some(current) if known && !matches!(row.value, Value::Absent(_)) => format!("at {:.2} mA", current * 1e3),
+        _ => String::new(),
+    }
+}
+
 fn joined(parts: &[&str]) -> String {
     parts.iter().filter(|part| !part.is_empty()).copied().collect::<Vec<_>>().join("; ")
 }

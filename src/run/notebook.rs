@@ -94,6 +94,8 @@ pub(crate) struct Notebook {
     pub hops: Vec<Hop>,
     /// Swaps seen over a dwell.
     pub swaps: Vec<Swap>,
+    /// Tube current noted with the captures: sum, A, and how many.
+    current: (f64, u64),
     /// Chart of one sweep.
     pub sweep_chart: Option<SweepChart>,
     /// Chart of heights along the gain line.
@@ -129,6 +131,9 @@ impl Notebook {
         if taken.seen.last().is_some_and(|last| last.glimpse.at > at) {
             return Kept::No;
         }
+        if let Some(current) = captured.fact.run_current.filter(|current| current.is_finite()) {
+            self.current = (self.current.0 + current, self.current.1 + 1);
+        }
         taken.repeats(finding);
         let glimpse = glimpse_of(captured, at, taken.axis.as_ref());
         taken.seen.push(Seen { glimpse, finding: CaptureFinding { trace: None, ..finding.clone() } });
@@ -138,6 +143,11 @@ impl Notebook {
         taken.solve_at *= 2;
         taken.redraw();
         Kept::Redrawn
+    }
+
+    /// Mean tube current over the captures that carry it, A.
+    pub fn mean_current(&self) -> Option<f64> {
+        (self.current.1 > 0).then(|| self.current.0 / self.current.1 as f64)
     }
 
     /// Draws the positions of all captures of a step again, on the axis of everything seen.

@@ -51,15 +51,22 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
         station_file: Revision { revision: 0, sha256: plan.station.sha256.clone() },
         rule: plan.limits.rule.to_string(),
         instruments: instruments(&plan.station, day),
+        run_current: run.book.mean_current().or_else(|| typed_current(&rows)),
         verdict,
         rows,
         sweep_chart: run.book.sweep_chart.clone(),
         gain_chart: run.book.gain_chart.clone(),
-        walk_chart: charts::walk_chart(&run.book),
+        walk_chart: charts::walk_chart(&run.book).filter(|_| !run.identity.times_assumed),
         remarks: remarks(run),
         caution: caution(run.book.greatest_power),
         measured_by,
     }
+}
+
+/// The run current that a person read off, where no capture carries one.
+fn typed_current(rows: &[Row]) -> Option<f64> {
+    let row = rows.iter().find(|row| row.measurand == "run_current")?;
+    if let Value::Number { value, .. } = row.value { Some(value) } else { None }
 }
 
 fn stopped(reason: &str) -> TubeVerdict {
@@ -71,6 +78,9 @@ fn stopped(reason: &str) -> TubeVerdict {
         reason: reason.to_owned(),
     }
 }
+
+/// Rows that count in time: captures without a time cannot fill them.
+const NEED_TIME: [&str; 4] = ["warmup_tau", "warmup_ready", "walk_rate", "power_drift"];
 
 /// Every row of the recipe, filled or empty with the reason, in the order of the catalogue.
 fn rows(run: &Run) -> Vec<Row> {
@@ -86,6 +96,17 @@ fn rows(run: &Run) -> Vec<Row> {
         }
     }
     let mut rows: Vec<Row> = rows.into_iter().map(|(_, row)| row).collect();
+    if run.identity.times_assumed {
+        for row in rows.iter_mut().filter(|row| NEED_TIME.contains(&row.measurand.as_str())) {
+            row.value = Value::Absent("the captures carry no time (`# captured_at = …`)".into());
+            row.budget = Vec::new();
+            row.note = String::new();
+        }
+        // Counts stand, rates do not.
+        for row in rows.iter_mut().filter(|row| ["hop_count", "swap_count"].contains(&row.measurand.as_str())) {
+            row.note = String::new();
+        }
+    }
     // Stable: equal ranks stay in the order of the recipe.
     rows.sort_by_key(|row| measurand::rank(&row.measurand));
     rows
@@ -116,9 +137,11 @@ fn why_open(run: &Run, index: usize) -> String {
 fn remarks(run: &Run) -> Vec<String> {
     let simulated = run.identity.simulated.then(|| SIMULATED.to_owned());
     let captures = run.identity.from_captures.then(|| "Measured from a folder of captures, not at a bench.".to_owned());
+    let untimed =
+        run.identity.times_assumed.then(|| "The captures carry no time: they were taken in their order.".to_owned());
     let dark = run.book.dark.as_ref().map(|how| format!("Dark tube: {how}."));
     let stopped = run.ending.as_ref().and_then(|ending| ending.stopped.as_ref()).map(|why| format!("Stopped: {why}"));
-    let all = simulated.into_iter().chain(captures).chain(dark).chain(stopped);
+    let all = simulated.into_iter().chain(captures).chain(untimed).chain(dark).chain(stopped);
     all.chain(run.book.remarks.iter().cloned()).collect()
 }
 

@@ -108,7 +108,7 @@ const POWER_METER: &[&str] = &["source", "factor", "u", "certificate"];
 const SUPPLY: &[&str] = &["source", "ballast", "ballast_distance", "u", "certificate"];
 const POLARIZER: &[&str] = &["source", "extinction", "u_angle"];
 /// A bench whose scale is known worse than this decides nothing.
-const WORST_RELATIVE_U: f64 = 0.5;
+const WORST_RELATIVE_U: f64 = 0.2;
 
 impl StationFile {
     /// Reads a station file.
@@ -217,7 +217,7 @@ fn source(table: &Table<'_>, allowed: &[&str]) -> Option<Source> {
 
 fn relative_u(table: &Table<'_>, key: &str) -> Option<f64> {
     let item = table.need(key)?;
-    item.quantity_within(Dimension::Ratio, (0.0, WORST_RELATIVE_U), "a share from 0 % to 50 %")
+    item.quantity_within(Dimension::Ratio, (0.0, WORST_RELATIVE_U), "a share from 0 % to 20 %, with its sign: `0.3 %`")
 }
 
 fn interferometer(table: &Table<'_>) -> Option<Interferometer> {

@@ -179,6 +179,7 @@ pub fn pass() -> Sheet {
             time_zone: "Europe/Lisbon".into(),
             simulated: true,
             from_captures: false,
+            times_assumed: false,
             program_version: "0.1.0".into(),
         },
         title: "Two-mode tube, random polarization, mirrors 150 mm apart".into(),
@@ -206,6 +207,7 @@ pub fn pass() -> Sheet {
         sweep_chart: Some(sweep_chart()),
         gain_chart: Some(gain_chart()),
         walk_chart: Some(walk_chart()),
+        run_current: None,
         remarks: vec![],
         caution:
             "Laser light, start pulses to 10 kV, stored charge, glass under vacuum. Power in the range of class 2 \

@@ -164,3 +164,13 @@ fn metadata_describes_both_tables() {
     assert_eq!(json["notes"][0]["simulated"], true);
     assert_eq!(json["notes"][0]["caution"], sheets::pass().caution);
 }
+
+#[test]
+fn every_optical_row_states_the_run_current() {
+    let sheet = Sheet { run_current: Some(4.0e-3), ..sheets::fail() };
+    let csv = String::from_utf8(record_csv(&sheet)).unwrap();
+    let line = |key: &str| csv.lines().find(|line| line.contains(key)).unwrap().to_owned();
+    assert!(line(",mode_spacing,").ends_with("at 4.00 mA"));
+    assert!(line(",power,").contains("; at 4.00 mA"), "beside what the row says already");
+    assert!(!line(",start_delay,").contains("mA"), "not an optical row");
+}

@@ -49,7 +49,7 @@ impl Inputs {
         let scenario = arguments.scenario.as_deref().map(read_scenario).transpose()?;
         let (name, text) = match &arguments.station {
             Some(path) => (path.display().to_string(), read_text(path)?),
-            None => demo_station(scenario.as_ref(), &arguments.serial)?,
+            None => demo_station(scenario.as_ref(), arguments.serial.trim())?,
         };
         let station = StationFile::parse(&name, &text).map_err(|faults| faulty("station file", &faults))?;
         let captures = arguments.captures.as_deref().map(CaptureFolder::open).transpose();
@@ -73,7 +73,8 @@ impl Inputs {
             )));
         }
         Ok(Self {
-            serial: arguments.serial,
+            // A scanner's stray blank is no part of a serial number.
+            serial: arguments.serial.trim().to_owned(),
             tube_type: arguments.tube_type,
             store: Store::new(home.reports()),
             home,

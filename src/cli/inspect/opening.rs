@@ -96,6 +96,7 @@ impl Opening {
             time_zone: station.time_zone.name().to_owned(),
             simulated: inputs.simulated(),
             from_captures: inputs.captures.is_some(),
+            times_assumed: inputs.captures.as_ref().is_some_and(|folder| folder.first_at().is_none()),
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
         };
         let opened = Opened {

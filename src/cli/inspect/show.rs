@@ -67,6 +67,9 @@ impl Show {
         let (serial, tube_type) = (&identity.serial, &identity.tube_type);
         output::talk(&format!("{serial}, type {tube_type}: sheet {how} in {}", folder.display()));
         output::talk(&format!("Decision rule: {}", run.sheet().rule));
+        if again && !identity.from_captures {
+            output::talk("Look first whether the supply is on and the tube lit: high voltage may still be there.");
+        }
     }
 
     /// Takes the progress line off the terminal.
@@ -127,6 +130,12 @@ impl Show {
             return Err(failure);
         }
         let verdict = &sheet.verdict;
+        if !sheet.identity.from_captures {
+            // The program sees no supply: whatever the ending, a person makes the bench safe.
+            output::talk(
+                "Supply off. Charge stays in tube and ballast after switch-off: discharge them before touching.",
+            );
+        }
         let (csv, pdf) = (folder.join("record.csv"), folder.join("record.pdf"));
         match self.format {
             Format::Json => output::result(&object(&[

@@ -37,7 +37,7 @@ pub struct Arguments {
     #[arg(long, value_name = "FREQUENCY", value_parser = positive_frequency)]
     fsr: f64,
     /// Its standard uncertainty, such as 0.5%
-    #[arg(long, value_name = "SHARE", value_parser = share)]
+    #[arg(long, value_name = "SHARE", value_parser = uncertain_share)]
     fsr_u: Option<f64>,
     /// Mode spacing of the type, such as 400MHz: settles assignments that fit equally well, never the value
     #[arg(long, value_name = "FREQUENCY", value_parser = positive_frequency)]
@@ -66,6 +66,17 @@ fn share(text: &str) -> Result<f64, String> {
         Ok(value) if (0.0..1.0).contains(&value) => Ok(value),
         Ok(_) => Err("expected a share from 0 % to below 100 %".to_owned()),
         Err(error) => Err(error.to_string()),
+    }
+}
+
+/// A relative uncertainty; one beyond a fifth is a forgotten `%`.
+fn uncertain_share(text: &str) -> Result<f64, String> {
+    match share(text)? {
+        value if value <= 0.2 => Ok(value),
+        value => Err(format!(
+            "{} % is no uncertainty of a free spectral range; expected at most 20 %, with its sign: `0.3 %`",
+            value * 100.0
+        )),
     }
 }
 
@@ -181,6 +192,9 @@ fn outcome_of(files: &[PathBuf], columns: Option<&Columns>, settings: &Settings)
 fn read(files: &[PathBuf], columns: Option<&Columns>) -> Result<crate::capture::Capture, String> {
     let mut contents = Vec::with_capacity(files.len());
     for path in files {
+        if path.is_dir() {
+            return Err(format!("`{0}` is a folder; name the files in it, such as `{0}/*.csv`", path.display()));
+        }
         let bytes = std::fs::read(path).map_err(|error| format!("cannot read `{}`: {error}", path.display()))?;
         contents.push((path.to_string_lossy().into_owned(), bytes));
     }

@@ -107,7 +107,7 @@ fn counted(key: &str, n: usize, seconds: f64, named: String) -> Filled {
         row.noted(format!(
             "none in {:.1} min: fewer than {:.0} an hour (95 %)",
             seconds / 60.0,
-            NONE_SEEN * 3600.0 / seconds
+            (NONE_SEEN * 3600.0 / seconds).ceil()
         ))
     } else {
         row.noted(named)
