@@ -130,7 +130,7 @@ fn captures_that_cannot_be_read_give_hold() {
     let arguments = ["--type", "open-500", "--station", "station.toml", "--captures", "captures"];
     let home = env!("CARGO_MANIFEST_DIR");
     let ran = place.inspect("R-1", &[&arguments[..], &["--home", home]].concat());
-    ran.ends(21, &["hold", "the file is empty"]);
+    ran.ends(21, &["hold", "the file is empty"]).leaves_one_record();
 }
 
 #[test]
@@ -186,7 +186,7 @@ fn a_dark_tube_is_refused_by_measure_and_fails_in_inspect() {
     let dark = |row: usize| format!("{:.4}", 0.05 + 0.001 * ((row * 7919) % 13) as f64);
     rewrite(&place, &capture, |row, cells| cells[2..].fill(dark(row)));
     measure(&place, &capture).ends(30, &["no peak stands above the noise"]).leaves_nothing();
-    Place::new().inspect("BRISK-2", &[]).ends(20, &["dark"]);
+    Place::new().inspect("BRISK-2", &[]).ends(20, &["dark"]).leaves_one_record();
 }
 
 #[test]
@@ -329,8 +329,7 @@ fn an_overdue_certificate_gives_hold() {
     let place = Place::new();
     let text = fixture("bench.toml").replacen("due = 2027-01-12", "due = 2026-03-01", 2);
     let station = place.write("overdue.toml", text);
-    place.inspect("BRISK-1", &["--station", &station]).ends(21, &["hold", "was due 2026-03-01"]);
-    assert!(place.find("record.pdf").is_some());
+    place.inspect("BRISK-1", &["--station", &station]).ends(21, &["hold", "was due 2026-03-01"]).leaves_one_record();
 }
 
 #[test]
@@ -338,7 +337,7 @@ fn the_demo_tube_on_the_bench_whose_meter_lapsed_gives_hold() {
     let place = Place::new();
     // Home is the folder itself: the types, the station and the scenario are those compiled in.
     let ran = place.run(&["inspect", "DEMO-0012", "--pace", "1e9x", "--format", "json"]);
-    ran.ends(21, &["SIM-0012", "was due 2026-03-01"]);
+    ran.ends(21, &["SIM-0012", "was due 2026-03-01"]).leaves_one_record();
     let lines: Vec<serde_json::Value> = ran.out.lines().map(|line| serde_json::from_str(line).unwrap()).collect();
     assert_eq!(lines.last().unwrap()["verdict"], "hold");
     assert!(place.join(lines.last().unwrap()["record_pdf"].as_str().unwrap()).is_file());

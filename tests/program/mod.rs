@@ -47,6 +47,30 @@ impl Ran {
         assert_eq!(self.before, self.after);
         self
     }
+
+    /// What was there is as it was, and one whole record came beside it: nothing half-written, nothing else.
+    #[track_caller]
+    pub fn leaves_one_record(&self) -> &Self {
+        let gone: Vec<_> = self.before.iter().filter(|line| !self.after.contains(line)).collect();
+        assert!(gone.is_empty(), "changed or gone: {gone:?}");
+        let is_new = |line: &&String| !self.before.contains(line) && !line.ends_with(" -");
+        let name = |line: &String| {
+            let path = line.rsplit_once(' ').map_or(line.as_str(), |(path, _)| path);
+            path.rsplit('/').next().unwrap_or(path).to_owned()
+        };
+        let kept = |name: &String| !name.ends_with(".lock") && !Self::is_capture(name);
+        let mut new: Vec<String> = self.after.iter().filter(is_new).map(name).filter(kept).collect();
+        new.sort();
+        assert_eq!(new, ["budget.csv", "events.jsonl", "record.csv", "record.csv-metadata.json", "record.pdf"]);
+        self
+    }
+
+    /// A capture's name in a run folder: number, dash, its own name.
+    fn is_capture(name: &str) -> bool {
+        name.split_once('-').is_some_and(|(number, rest)| {
+            number.len() == 6 && number.bytes().all(|b| b.is_ascii_digit()) && rest.ends_with(".csv")
+        })
+    }
 }
 
 /// A folder of its own for one test.
