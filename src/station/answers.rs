@@ -44,7 +44,7 @@ pub enum Written {
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
 pub enum AnswerTrouble {
     /// The line is missing.
-    #[error("{file} has no answer to `{text}`; expected `{word} = …` below [steps.{step}]{hint}")]
+    #[error("{file} has no answer to `{text}`; expected `{line}` below [steps.{step}]{hint}")]
     Missing {
         /// The answer file.
         file: String,
@@ -52,8 +52,8 @@ pub enum AnswerTrouble {
         text: String,
         /// Step that asks.
         step: String,
-        /// The question's word.
-        word: String,
+        /// The line wanted: `run_voltage = …`, `"turn_45.0" = true`.
+        line: String,
         /// The nearest word written there, or empty.
         hint: String,
     },
@@ -142,14 +142,21 @@ impl Answers {
     fn missing(&self, question: &Question) -> AnswerTrouble {
         let words = self.steps.get(&question.step);
         let near = words.and_then(|words| nearest(&question.word, words.keys().map(String::as_str)));
+        let value = if question.expects == Expects::Done { "true" } else { "…" };
         AnswerTrouble::Missing {
             file: self.name.clone(),
             text: question.text.clone(),
             step: question.step.clone(),
-            word: question.word.clone(),
+            line: format!("{} = {value}", as_key(&question.word)),
             hint: near.map_or(String::new(), |word| format!(" (nearest word there: {word})")),
         }
     }
+}
+
+/// A word as it must be written before the `=`: `turn_45.0` holds a point and needs quotes.
+fn as_key(word: &str) -> String {
+    let bare = word.chars().all(|c| c.is_ascii_alphanumeric() || c == '_' || c == '-');
+    if bare { word.to_owned() } else { format!("\"{word}\"") }
 }
 
 impl std::fmt::Display for Written {
