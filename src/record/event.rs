@@ -134,6 +134,45 @@ pub struct Identity {
     pub times_assumed: bool,
     /// Version of the program that opened it.
     pub program_version: String,
+    /// What the run is for.
+    #[serde(default, skip_serializing_if = "RunKind::is_product")]
+    pub run_kind: RunKind,
+    /// The earlier run that it repeats, and why; none for a first run.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub repeats: Option<Repeat>,
+    /// The tube was burning already, since then, RFC 3339 with offset (a rack warmed it); none if it is struck here.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub lit_since: Option<String>,
+    /// Language of the sheet, two letters; empty is English.
+    #[serde(default, skip_serializing_if = "String::is_empty")]
+    pub language: String,
+}
+
+/// What a run is for.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Serialize, Deserialize)]
+#[serde(rename_all = "snake_case")]
+pub enum RunKind {
+    /// A tube to be judged.
+    #[default]
+    Product,
+    /// A reference tube of the station: the bench is judged by it.
+    Reference,
+}
+
+impl RunKind {
+    /// A tube to be judged, the ordinary case.
+    pub fn is_product(&self) -> bool {
+        *self == Self::Product
+    }
+}
+
+/// Which run is repeated, and why.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Repeat {
+    /// Id of the earlier run of the same serial.
+    pub run_id: String,
+    /// The assigned cause, in words.
+    pub reason: String,
 }
 
 /// One capture: the fact and, apart from it, the finding.

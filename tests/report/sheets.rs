@@ -181,6 +181,7 @@ pub fn pass() -> Sheet {
             from_captures: false,
             times_assumed: false,
             program_version: "0.1.0".into(),
+            ..Default::default()
         },
         title: "Two-mode tube, random polarization, mirrors 150 mm apart".into(),
         station: "bench-1".into(),

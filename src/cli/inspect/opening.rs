@@ -98,6 +98,7 @@ impl Opening {
             from_captures: inputs.captures.is_some(),
             times_assumed: inputs.captures.as_ref().is_some_and(|folder| folder.first_at().is_none()),
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
+            ..Identity::default()
         };
         let opened = Opened {
             identity: identity.clone(),
