@@ -102,7 +102,7 @@ impl Brisk {
             time_zone: "Europe/Lisbon".into(),
             simulated: true,
             program_version: "0.1.0".into(),
-            ..Default::default()..Identity::default()
+            ..Identity::default()
         }
     }
 
