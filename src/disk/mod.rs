@@ -6,16 +6,20 @@ mod atomic;
 mod chain;
 mod folder;
 mod home;
+mod life;
 mod lock;
 mod name;
+mod record;
 mod store;
 
 pub use atomic::write_atomic;
 pub use chain::{ChainFault, read_chain};
 pub use folder::{Frozen, RunFolder};
 pub use home::{Home, TypeTexts, demo_bench};
+pub use life::{add_to_life, life_of};
 pub use lock::SerialLock;
 pub use name::{folder_name, is_folder_name};
+pub use record::frozen_record;
 pub use store::{FoundRun, Store};
 
 use std::path::{Path, PathBuf};
@@ -48,6 +52,14 @@ pub enum DiskError {
         path: PathBuf,
         /// What does not fit.
         fault: ChainFault,
+    },
+    /// A frozen record is not as it was frozen.
+    #[error("`{}`: {what}", .path.display())]
+    Record {
+        /// The run's folder.
+        path: PathBuf,
+        /// What does not fit.
+        what: String,
     },
     /// Something cannot be put into a line of JSON.
     #[error("cannot write an event as JSON: {0}")]

@@ -53,10 +53,7 @@ impl Driver<'_> {
             let done = match &want {
                 Want::Finished => return Ok(()),
                 Want::MakeSafe => self.make_safe(),
-                Want::WaitUntil { elapsed_ms, .. } => self.wait_until(*elapsed_ms),
-                Want::Capture(request) => self.capture(request),
-                Want::Reading(request) => self.read(request),
-                Want::Answer(question) => self.ask(question),
+                want => self.unless_stopped(want),
             };
             match done {
                 Ok(()) => failures = 0,
@@ -69,6 +66,20 @@ impl Driver<'_> {
                 Err(Failed::Interrupted(why)) => return Err(why),
             }
             before = Some(want);
+        }
+    }
+
+    /// What is wanted, unless somebody wants the run to end.
+    fn unless_stopped(&mut self, want: &Want) -> Result<(), Failed> {
+        if let Err(trouble) = self.bench.interlock.stop_key() {
+            return self.trouble(trouble);
+        }
+        match want {
+            Want::WaitUntil { elapsed_ms, .. } => self.wait_until(*elapsed_ms),
+            Want::Capture(request) => self.capture(request),
+            Want::Reading(request) => self.read(request),
+            Want::Answer(question) => self.ask(question),
+            Want::MakeSafe | Want::Finished => Ok(()),
         }
     }
 

@@ -4,5 +4,7 @@
 
 pub mod event;
 pub mod finding;
+pub mod life;
+pub mod link;
 pub mod question;
 pub mod sheet;

@@ -8,6 +8,7 @@ mod escape;
 mod metadata;
 mod page;
 mod pdf;
+mod read;
 mod reason;
 pub mod scene;
 mod text;
@@ -18,6 +19,7 @@ pub use self::escape::{neutralise, restore};
 pub use self::metadata::csv_metadata;
 pub use self::page::{Page, Part};
 pub use self::pdf::PdfError;
+pub use self::read::{ReadRecord, ReadValue, hashes_in, read_record};
 pub use self::text::{ValueText, bound_text, probability_text, row_line, value_text};
 
 /// Said in the head, the CSV and the PDF title of every record of a simulated bench.

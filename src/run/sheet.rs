@@ -139,9 +139,10 @@ fn remarks(run: &Run) -> Vec<String> {
     let captures = run.identity.from_captures.then(|| "Measured from a folder of captures, not at a bench.".to_owned());
     let untimed =
         run.identity.times_assumed.then(|| "The captures carry no time: they were taken in their order.".to_owned());
+    let repeats = run.identity.repeats.as_ref().map(|it| format!("Repeats run {} because: {}.", it.run_id, it.reason));
     let dark = run.book.dark.as_ref().map(|how| format!("Dark tube: {how}."));
     let stopped = run.ending.as_ref().and_then(|ending| ending.stopped.as_ref()).map(|why| format!("Stopped: {why}"));
-    let all = simulated.into_iter().chain(captures).chain(untimed).chain(dark).chain(stopped);
+    let all = simulated.into_iter().chain(captures).chain(untimed).chain(repeats).chain(dark).chain(stopped);
     all.chain(run.book.remarks.iter().cloned()).collect()
 }
 

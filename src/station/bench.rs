@@ -79,6 +79,13 @@ pub trait Person {
 pub trait Interlock {
     /// High voltage off; returns when it is.
     fn make_safe(&mut self) -> Result<(), Trouble>;
+
+    /// Looked at before each thing that is done: whether somebody pressed the key that stops the run.
+    ///
+    /// Errors: [`Trouble::Stopped`] with the reason.
+    fn stop_key(&mut self) -> Result<(), Trouble> {
+        Ok(())
+    }
 }
 
 /// A bench: everything a run needs of the world.

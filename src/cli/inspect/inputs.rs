@@ -35,6 +35,8 @@ pub(super) struct Inputs {
     pub captures: Option<CaptureFolder>,
     pub answers: Option<Answers>,
     pub ask: bool,
+    /// Why a finished run is to be repeated: as given, else as the answer file says.
+    pub retest: Option<String>,
     /// Ceiling on bench time; none on a bench that is not simulated.
     pub pace: Option<f64>,
     pub seed: Option<u64>,
@@ -44,12 +46,18 @@ pub(super) struct Inputs {
 
 impl Inputs {
     /// Reads and parses what the arguments name.
-    pub fn read(arguments: Arguments) -> Result<Self, Failure> {
+    pub fn read(arguments: Arguments, serial: &str) -> Result<Self, Failure> {
+        // A scanner's stray blank is no part of a serial number.
+        let serial = serial.trim();
         let home = home::find(arguments.home, arguments.reports)?;
-        let scenario = arguments.scenario.as_deref().map(read_scenario).transpose()?;
+        let scenario = match &arguments.scenario {
+            Some(Some(path)) => Some(read_scenario(path)?),
+            Some(None) => Some(Scenario::demo()),
+            None => None,
+        };
         let (name, text) = match &arguments.station {
             Some(path) => (path.display().to_string(), read_text(path)?),
-            None => demo_station(scenario.as_ref(), arguments.serial.trim())?,
+            None => demo_station(scenario.as_ref(), serial)?,
         };
         let station = StationFile::parse(&name, &text).map_err(|faults| faulty("station file", &faults))?;
         let captures = arguments.captures.as_deref().map(CaptureFolder::open).transpose();
@@ -72,16 +80,18 @@ impl Inputs {
                 "`{name}` has no [interferometer]; expected one, since captures need its free spectral range `fsr`"
             )));
         }
+        let answers = arguments.answers.as_deref().map(read_answers).transpose()?;
+        let of_answers = || answers.as_ref().and_then(|answers| answers.retest.clone());
         Ok(Self {
-            // A scanner's stray blank is no part of a serial number.
-            serial: arguments.serial.trim().to_owned(),
+            retest: arguments.retest.or_else(of_answers),
+            serial: serial.to_owned(),
             tube_type: arguments.tube_type,
             store: Store::new(home.reports()),
             home,
             station: (text, station),
             scenario,
             captures,
-            answers: arguments.answers.as_deref().map(read_answers).transpose()?,
+            answers,
             ask: arguments.ask,
             pace: simulated.then(|| arguments.pace.unwrap_or(PACE)),
             seed: arguments.seed,
@@ -136,7 +146,7 @@ fn read_text(path: &Path) -> Result<String, Failure> {
         .map_err(|error| Failure::unusable(format!("cannot read `{}`: {error}", path.display())))
 }
 
-fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
+pub(super) fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
     Scenario::parse(&path.display().to_string(), &read_text(path)?)
         .map_err(|error| Failure::unusable(format!("the scenario cannot be used:\n{error}")))
 }
@@ -144,8 +154,12 @@ fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
 fn read_answers(path: &Path) -> Result<Answers, Failure> {
     let answers = Answers::parse(&path.display().to_string(), &read_text(path)?)
         .map_err(|faults| faulty("answer file", &faults))?;
-    if answers.technician.is_none() {
-        let message = format!("an answer is missing: `{}` has no `technician = \"…\"` (initials)", path.display());
+    if answers.technician.as_ref().is_none_or(|initials| initials.trim().is_empty()) {
+        let name = path.display();
+        let what = if answers.technician.is_some() { "a blank" } else { "no" };
+        let message = format!(
+            "an answer is missing: `{name}` has {what} `technician`; expected `technician = \"KT\"`, the initials of who measures"
+        );
         return Err(Failure::new(Ending::Unfinished, message));
     }
     Ok(answers)

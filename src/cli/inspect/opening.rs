@@ -7,15 +7,15 @@ use std::path::PathBuf;
 use chrono::{DateTime, Datelike as _, FixedOffset, Utc};
 
 use super::{
-    bench,
+    bench, earlier,
     inputs::{Inputs, faulty},
     run_id::run_id,
 };
 use crate::cli::Failure;
-use crate::disk::{FoundRun, RunFolder, SerialLock, TypeTexts};
+use crate::disk::{FoundRun, RunFolder, SerialLock, TypeTexts, life_of};
 use crate::limits::{Limits, nearest};
 use crate::recipe::Recipe;
-use crate::record::event::{Event, Happening, Identity, Opened};
+use crate::record::event::{Event, Happening, Identity, Opened, Repeat};
 use crate::run::Plan;
 use crate::station::{Bench, Moment};
 
@@ -43,17 +43,17 @@ impl Opening {
         // Another process may have finished its run meanwhile.
         let runs = inputs.store.runs_of(&inputs.serial).map_err(|error| Failure::store(&error))?;
         match (runs.iter().rfind(is_open), planned) {
-            (Some(open), _) => Self::again(inputs, open, lock),
-            (None, Some(planned)) => Self::anew(inputs, planned, runs.len(), lock),
-            (None, None) => Self::anew(inputs, new_plan(inputs, &runs)?, runs.len(), lock),
+            (Some(open), _) => Self::again(inputs, &runs, open, lock),
+            (None, Some(planned)) => Self::anew(inputs, planned, &runs, lock),
+            (None, None) => Self::anew(inputs, new_plan(inputs, &runs)?, &runs, lock),
         }
     }
 
-    fn again(inputs: &Inputs, open: &FoundRun, lock: SerialLock) -> Result<Self, Failure> {
+    fn again(inputs: &Inputs, runs: &[FoundRun], open: &FoundRun, lock: SerialLock) -> Result<Self, Failure> {
         let Opened { identity, recipe, limits, station } = &open.opened;
         let other = |what: &str| {
             Err(Failure::unusable(format!(
-                "`{}` is unfinished and {what}; give the command it was started with, or end it with `--ask` and `stop: why`",
+                "`{}` is unfinished and {what}; give the command it was started with, or end it with `--stop \"why\"`",
                 open.path.display()
             )))
         };
@@ -66,25 +66,30 @@ impl Opening {
         if identity.simulated != inputs.simulated() {
             return other(if identity.simulated { "is on a simulated bench" } else { "is on a real bench" });
         }
+        let repeated = identity.repeats.as_ref().map(|repeat| repeat.reason.as_str());
+        if inputs.retest.as_ref().is_some_and(|why| Some(why.trim()) != repeated) {
+            return other(if repeated.is_some() { "repeats another for another cause" } else { "repeats none" });
+        }
         let plan = Plan::from_texts(recipe, limits, station).map_err(|faults| faulty("stored plan", &faults))?;
         let started_at = DateTime::parse_from_rfc3339(&identity.started_at).unwrap_or_default();
-        let bench = bench::build(inputs, started_at, &mut identity.technician.clone())?;
+        let before = runs.iter().filter(|run| run.opened.identity.run_id < identity.run_id).count();
+        let bench = bench::build(inputs, before, started_at, &mut identity.technician.clone())?;
         Ok(Self { plan, identity: identity.clone(), bench, path: open.path.clone(), first: None, _lock: lock })
     }
 
-    /// * `earlier`: how many runs of this serial there are already.
-    fn anew(inputs: &Inputs, planned: Planned, earlier: usize, lock: SerialLock) -> Result<Self, Failure> {
-        let Planned { tube_type, texts, plan } = planned;
+    /// * `runs`: of this serial, those that there are already.
+    fn anew(inputs: &Inputs, planned: Planned, runs: &[FoundRun], lock: SerialLock) -> Result<Self, Failure> {
+        let Planned { tube_type, texts, plan, repeats, not_before } = planned;
         let (station_text, station) = &inputs.station;
-        let started_at = started_at(inputs).with_timezone(&station.time_zone).fixed_offset();
+        let started_at = started_at(inputs, not_before).with_timezone(&station.time_zone).fixed_offset();
         let mut technician = String::new();
-        let bench = bench::build(inputs, started_at, &mut technician)?;
+        let bench = bench::build(inputs, runs.len(), started_at, &mut technician)?;
         let tube = inputs.scenario.as_ref().and_then(|scenario| scenario.tube(&inputs.serial));
         let of_tube =
             |field: fn(&crate::phantom::ScenarioTube) -> &String| tube.map(field).cloned().unwrap_or_default();
         let seed = inputs.seed.or(inputs.scenario.as_ref().map(|scenario| scenario.seed));
         let identity = Identity {
-            run_id: run_id(started_at.timestamp_millis(), &inputs.serial, earlier, seed),
+            run_id: run_id(started_at.timestamp_millis(), &inputs.serial, runs.len(), seed),
             serial: inputs.serial.clone(),
             tube_type,
             supplier: of_tube(|tube| &tube.supplier),
@@ -98,6 +103,7 @@ impl Opening {
             from_captures: inputs.captures.is_some(),
             times_assumed: inputs.captures.as_ref().is_some_and(|folder| folder.first_at().is_none()),
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
+            repeats,
             ..Identity::default()
         };
         let opened = Opened {
@@ -124,8 +130,13 @@ impl Opening {
 }
 
 /// When a new run starts: as told, else as the scenario or the first capture says, else now.
-fn started_at(inputs: &Inputs) -> DateTime<FixedOffset> {
-    let of_scenario = || inputs.scenario.as_ref()?.tube(&inputs.serial).map(|tube| tube.started_at);
+///
+/// * `not_before`: on the simulated bench, whose clock is its own, a run does not begin before the one before it ended.
+fn started_at(inputs: &Inputs, not_before: Option<DateTime<FixedOffset>>) -> DateTime<FixedOffset> {
+    let of_scenario = || {
+        let started_at = inputs.scenario.as_ref()?.tube(&inputs.serial)?.started_at;
+        Some(not_before.map_or(started_at, |earliest| started_at.max(earliest)))
+    };
     let of_captures = || inputs.captures.as_ref()?.first_at();
     inputs.start.or_else(of_scenario).or_else(of_captures).unwrap_or_else(|| Utc::now().fixed_offset())
 }
@@ -135,6 +146,9 @@ struct Planned {
     tube_type: String,
     texts: TypeTexts,
     plan: Plan,
+    /// The run that it repeats.
+    repeats: Option<Repeat>,
+    not_before: Option<DateTime<FixedOffset>>,
 }
 
 /// Type, texts and plan of a new run.
@@ -156,7 +170,26 @@ fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<Planned, Failure> {
     let recipe = Recipe::parse(&texts.recipe_name, &texts.recipe).map_err(|faults| faulty("recipe", &faults))?;
     let plan = Plan { recipe, limits, station: inputs.station.1.clone() };
     same_revision_same_text(&tube_type, &texts, &plan, runs)?;
-    Ok(Planned { tube_type, texts, plan })
+    let finished = earlier::Finished::of(runs);
+    let repeats = repeats(inputs, &tube_type, &plan, &finished)?;
+    Ok(Planned { tube_type, texts, plan, repeats, not_before: earlier::not_before(&finished) })
+}
+
+/// Which earlier run the new one repeats, if it may be opened at all.
+fn repeats(
+    inputs: &Inputs,
+    tube_type: &str,
+    plan: &Plan,
+    finished: &[earlier::Finished<'_>],
+) -> Result<Option<Repeat>, Failure> {
+    let life = life_of(inputs.store.reports(), &inputs.serial).map_err(|error| Failure::store(&error))?;
+    let wanted = earlier::Wanted {
+        serial: &inputs.serial,
+        tube_type,
+        why: inputs.retest.as_deref(),
+        retests: plan.recipe.retests,
+    };
+    earlier::allow(&wanted, finished, &life)
 }
 
 /// `--type`, else the answers, else the serial's last run, else the scenario, else a person.

@@ -203,13 +203,17 @@ fn run(sheet: &Sheet) -> Vec<Said> {
     let dwell = sheet.dwell.filter(|s| s.is_finite()).map(|s| format!("dwell {}", minutes(s)));
     let started = sheet.started_at.map(|at| at.format("%Y-%m-%d %H:%M:%S %:z").to_string()).unwrap_or_default();
     let revisions = format!("revision {}, revision {}", sheet.recipe.revision, sheet.limits.revision);
-    vec![
+    // Only where there is one: the head of an ordinary sheet stays as it is.
+    let repeats = sheet.identity.repeats.as_ref().map(|repeat| said("repeats run", &repeat.run_id));
+    let mut lines = vec![
         said("started", &started),
         said("took", &[took, dwell].into_iter().flatten().collect::<Vec<_>>().join(", ")),
         said("recipe, limits", &revisions),
         said("rule", &sheet.rule),
         said("technician", &sheet.identity.technician),
-    ]
+    ];
+    lines.extend(repeats);
+    lines
 }
 
 /// One column of the head, a line for each thing said. Returns its last baseline.

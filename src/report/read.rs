@@ -1,0 +1,173 @@
+//! record.csv, budget.csv and their metadata read back: what stands in a frozen record, as it was written.
+//! Must not open a file, measure or judge again: a frozen record is never worked out anew.
+//! Main type: [`ReadRecord`]; main function: [`read_record`].
+
+use serde_json::Value as Json;
+
+use super::escape::restore;
+use crate::uncertainty::{BudgetLine, Evaluation};
+
+/// What a frozen record says.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct ReadRecord {
+    /// Id of the run.
+    pub run_id: String,
+    /// Station.
+    pub station: String,
+    /// Initials, or empty.
+    pub technician: String,
+    /// Start of the run, RFC 3339.
+    pub started_at: String,
+    /// End of the run, RFC 3339, or empty.
+    pub ended_at: String,
+    /// Revision of the limits.
+    pub limits_revision: String,
+    /// How the tube ended: the word of [`crate::record::sheet::Outcome`].
+    pub outcome: String,
+    /// Best grade left, or empty.
+    pub grade: String,
+    /// Reject code, or empty.
+    pub reject_code: String,
+    /// The verdict as the sheet says it.
+    pub sentence: String,
+    /// The reason beneath it, or empty.
+    pub reason: String,
+    /// The values, in the order of the sheet, each once.
+    pub values: Vec<ReadValue>,
+}
+
+/// One value of a record.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct ReadValue {
+    /// Step that filled it.
+    pub step: String,
+    /// Measurand's key, or `visual.<step>`.
+    pub measurand: String,
+    /// Number or word as written; empty where there is none.
+    pub value: String,
+    /// UCUM code of value and uncertainty; empty for words.
+    pub unit: String,
+    /// Expanded uncertainty for 95.45 %, in that unit, where there is one.
+    pub expanded: Option<f64>,
+    /// Remarks; the reason of an absent value.
+    pub note: String,
+    /// Its budget, in SI.
+    pub budget: Vec<BudgetLine>,
+}
+
+/// Reads a record back.
+///
+/// * `record_csv`, `budget_csv`, `metadata_json`: the bytes of the three files.
+///
+/// Errors: what does not fit, in words that follow the folder's name; a file that is not the one its metadata was made for too.
+pub fn read_record(record_csv: &[u8], budget_csv: &[u8], metadata_json: &[u8]) -> Result<ReadRecord, String> {
+    let metadata: Json = serde_json::from_slice(metadata_json)
+        .map_err(|error| format!("record.csv-metadata.json cannot be read: {error}"))?;
+    let notes = metadata.pointer("/notes/0").ok_or("record.csv-metadata.json has no notes of the run")?;
+    let said = |path: &str| notes.pointer(path).and_then(Json::as_str).unwrap_or_default().to_owned();
+    let mut record = ReadRecord {
+        ended_at: said("/ended_at"),
+        sentence: said("/verdict/sentence"),
+        reason: said("/verdict/reason"),
+        ..ReadRecord::default()
+    };
+    for row in Rows::of("record.csv", record_csv)?.rows {
+        match row.text("measurand").as_str() {
+            "tube" => head(&mut record, &row),
+            key if record.values.iter().any(|value| value.measurand == key && value.step == row.text("step")) => {}
+            _ => record.values.push(value(&row)),
+        }
+    }
+    if record.outcome.is_empty() {
+        return Err("record.csv has no line for the tube itself".to_owned());
+    }
+    for row in Rows::of("budget.csv", budget_csv)?.rows {
+        let (key, line) = (row.text("measurand"), budget_line(&row));
+        // The budget names no step: of two rows of one measurand nobody could tell whose line it is.
+        let mut values = record.values.iter_mut().filter(|value| value.measurand == key);
+        if let (Some(value), None) = (values.next(), values.next()) {
+            value.budget.push(line);
+        }
+    }
+    Ok(record)
+}
+
+/// The hashes of record.csv and budget.csv that the metadata were made for, in this order.
+pub fn hashes_in(metadata_json: &[u8]) -> [Option<String>; 2] {
+    let metadata: Json = serde_json::from_slice(metadata_json).unwrap_or_default();
+    [0, 1].map(|table| metadata.pointer(&format!("/tables/{table}/notes/0/sha256"))?.as_str().map(str::to_owned))
+}
+
+fn head(record: &mut ReadRecord, row: &Row) {
+    record.run_id = row.text("run_id");
+    record.station = row.text("station");
+    record.technician = row.text("technician");
+    record.started_at = row.text("started_at");
+    record.limits_revision = row.text("limits_revision");
+    record.outcome = row.text("verdict");
+    record.grade = row.text("grade");
+    record.reject_code = row.text("reject_code");
+}
+
+fn value(row: &Row) -> ReadValue {
+    ReadValue {
+        step: row.text("step"),
+        measurand: row.text("measurand"),
+        value: row.text("value"),
+        unit: row.text("unit"),
+        expanded: row.number("expanded_uncertainty"),
+        note: row.text("note"),
+        budget: Vec::new(),
+    }
+}
+
+fn budget_line(row: &Row) -> BudgetLine {
+    BudgetLine {
+        source_id: row.text("source_id"),
+        line: row.text("line"),
+        evaluation: if row.text("type") == "A" { Evaluation::TypeA } else { Evaluation::TypeB },
+        standard_uncertainty: row.number("standard_uncertainty").unwrap_or(0.0),
+        // Empty: nothing is known against it.
+        dof: row.number("dof").unwrap_or(f64::INFINITY),
+        sensitivity: row.number("sensitivity").unwrap_or(0.0),
+        note: row.text("note"),
+    }
+}
+
+/// The lines of a CSV file, each with the names of its columns.
+struct Rows {
+    rows: Vec<Row>,
+}
+
+struct Row {
+    names: csv::StringRecord,
+    cells: csv::StringRecord,
+}
+
+impl Rows {
+    fn of(name: &str, bytes: &[u8]) -> Result<Self, String> {
+        let unreadable = |error: csv::Error| format!("{name} cannot be read: {error}");
+        let mut reader = csv::Reader::from_reader(bytes);
+        let names = reader.headers().map_err(unreadable)?.clone();
+        if !names.iter().any(|column| column == "measurand") {
+            return Err(format!("{name} has no column `measurand`"));
+        }
+        let rows = reader.records().map(|cells| Ok(Row { names: names.clone(), cells: cells.map_err(unreadable)? }));
+        Ok(Self { rows: rows.collect::<Result<_, String>>()? })
+    }
+}
+
+impl Row {
+    fn cell(&self, column: &str) -> &str {
+        let index = self.names.iter().position(|name| name == column);
+        index.and_then(|index| self.cells.get(index)).unwrap_or_default()
+    }
+
+    fn text(&self, column: &str) -> String {
+        restore(self.cell(column)).to_owned()
+    }
+
+    fn number(&self, column: &str) -> Option<f64> {
+        self.cell(column).parse().ok().filter(|number: &f64| number.is_finite())
+    }
+}
