@@ -19,4 +19,4 @@ pub use simulated::{
 };
 pub use terminal::TerminalPerson;
 pub use typed::{expected, parse_answer};
-pub use wall::WallClock;
+pub use wall::{TimeSource, WallClock, Zoned};

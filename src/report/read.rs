@@ -32,6 +32,8 @@ pub struct ReadRecord {
     pub sentence: String,
     /// The reason beneath it, or empty.
     pub reason: String,
+    /// Numbers of the certificates that the bench's instruments stood on.
+    pub certificates: Vec<String>,
     /// The values, in the order of the sheet, each once.
     pub values: Vec<ReadValue>,
 }
@@ -69,6 +71,7 @@ pub fn read_record(record_csv: &[u8], budget_csv: &[u8], metadata_json: &[u8]) -
         ended_at: said("/ended_at"),
         sentence: said("/verdict/sentence"),
         reason: said("/verdict/reason"),
+        certificates: certificates(notes),
         ..ReadRecord::default()
     };
     for row in Rows::of("record.csv", record_csv)?.rows {
@@ -96,6 +99,12 @@ pub fn read_record(record_csv: &[u8], budget_csv: &[u8], metadata_json: &[u8]) -
 pub fn hashes_in(metadata_json: &[u8]) -> [Option<String>; 2] {
     let metadata: Json = serde_json::from_slice(metadata_json).unwrap_or_default();
     [0, 1].map(|table| metadata.pointer(&format!("/tables/{table}/notes/0/sha256"))?.as_str().map(str::to_owned))
+}
+
+fn certificates(notes: &Json) -> Vec<String> {
+    let instruments = notes.get("instruments").and_then(Json::as_array).map_or(&[][..], Vec::as_slice);
+    let numbers = instruments.iter().filter_map(|instrument| instrument.get("certificate")?.as_str());
+    numbers.filter(|number| !number.is_empty()).map(str::to_owned).collect()
 }
 
 fn head(record: &mut ReadRecord, row: &Row) {

@@ -40,6 +40,10 @@ impl Run {
             Happening::CaptureLost { step, number, reason, for_good } => self.lost(step, *number, reason, *for_good),
             Happening::Reading { step, what, value, reason } => self.read(step, what, *value, reason.as_deref()),
             Happening::Waited => Ok(()),
+            Happening::ClockSet { by_s } => {
+                self.book.remarks.push(clock_set(*by_s));
+                Ok(())
+            }
             Happening::MadeSafe => {
                 self.made_safe();
                 Ok(())
@@ -201,4 +205,13 @@ impl Run {
             self.ending = Some(Ending { at: at.wall, stopped: None, unsafe_yet: true });
         }
     }
+}
+
+/// What the sheet says of a clock that was set in mid-run.
+fn clock_set(by_s: f64) -> String {
+    let seconds = by_s.abs().round();
+    if by_s < 0.0 {
+        return format!("The clock on the wall was set back by {seconds} s: times on this sheet go on from before.");
+    }
+    format!("The clock on the wall ran ahead by {seconds} s (set forward, or the machine slept): not counted here.")
 }

@@ -44,6 +44,11 @@ pub trait Clock {
     fn wait_until(&mut self, elapsed_ms: u64) -> Result<(), Trouble>;
     /// Takes up a run again whose last event is given: the monotonic clock goes on from there.
     fn resume(&mut self, events: &[Event]) -> Result<(), Trouble>;
+
+    /// By how many seconds the clock on the wall was set since this was asked last, below zero for back; none if it was not.
+    fn was_set(&mut self) -> Option<f64> {
+        None
+    }
 }
 
 /// The bytes of one capture as they came: one file or several, with their names.

@@ -12,7 +12,7 @@ use super::{
 };
 use crate::cli::{Ending, Failure};
 use crate::instruments::{
-    FilePerson, NoInstrument, Nobody, SimulatedBench, SimulatedOptions, TerminalPerson, WallClock, folder_bench,
+    FilePerson, NoInstrument, Nobody, SimulatedBench, SimulatedOptions, TerminalPerson, WallClock, Zoned, folder_bench,
 };
 use crate::station::{Bench, Person};
 
@@ -42,7 +42,8 @@ pub(super) fn build(
     technician: &mut String,
 ) -> Result<Bench, Failure> {
     let bench = of_source(inputs, earlier, started_at, technician)?;
-    Ok(Bench { interlock: Box::new(StopKey { inner: bench.interlock }), ..bench })
+    let clock = Box::new(Zoned::over(bench.clock, inputs.station.1.time_zone));
+    Ok(Bench { clock, interlock: Box::new(StopKey { inner: bench.interlock }), ..bench })
 }
 
 fn of_source(

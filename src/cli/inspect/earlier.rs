@@ -58,7 +58,7 @@ impl<'a> Finished<'a> {
 }
 
 /// "pass, prime", "fail, dim", "hold".
-pub(super) fn ending_words(record: &ReadRecord) -> String {
+pub(in crate::cli) fn ending_words(record: &ReadRecord) -> String {
     let more = if record.grade.is_empty() { &record.reject_code } else { &record.grade };
     if more.is_empty() { record.outcome.clone() } else { format!("{}, {more}", record.outcome) }
 }
@@ -123,7 +123,7 @@ pub(super) fn not_before(finished: &[Finished<'_>]) -> Option<DateTime<FixedOffs
 }
 
 /// The reason as it is stored. Errors: there is none, or it cannot be printed.
-pub(super) fn reason(text: &str) -> Result<String, Failure> {
+pub(in crate::cli) fn reason(text: &str) -> Result<String, Failure> {
     let text = text.trim();
     if text.is_empty() || text.chars().any(char::is_control) {
         return Err(Failure::unusable("the reason is blank or cannot be printed; expected it in words, on one line"));
@@ -161,7 +161,7 @@ fn listed(finished: &[Finished<'_>]) -> String {
 fn no_silent_retest(wanted: &Wanted<'_>, finished: &[Finished<'_>], last: &Finished<'_>, used: u32) -> Failure {
     let serial = wanted.serial;
     let rest = if last.has_verdict() {
-        format!("the recipe allows {} retest(s), {used} used", wanted.retests)
+        format!("the recipe allows `retests = {}`, {used} used", wanted.retests)
     } else {
         "a hold is no verdict: a run after it uses no retest".to_owned()
     };
@@ -181,7 +181,7 @@ fn used_up(wanted: &Wanted<'_>, finished: &[Finished<'_>], used: u32) -> Failure
     Failure::new(
         Ending::NotAllowed,
         format!(
-            "no further run of `{serial}`: {used} retest(s) used, and the recipe of `{tube_type}` allows {retests} (`retests`):{}\n\
+            "no further run of `{serial}`: {used} used of `retests = {retests}` in the recipe of `{tube_type}`:{}\n\
              all of these count; if the tube itself was changed, note that first: \
              tubewright history {} --add rework --date YYYY-MM-DD --note \"what was done\"",
             listed(finished),

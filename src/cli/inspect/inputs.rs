@@ -9,7 +9,7 @@ use chrono::{DateTime, FixedOffset};
 
 use super::{Arguments, Format};
 use crate::cli::{Ending, Failure, home};
-use crate::disk::{Home, Store, demo_bench};
+use crate::disk::{Home, Store, demo_bench, said};
 use crate::instruments::CaptureFolder;
 use crate::phantom::Scenario;
 use crate::station::{
@@ -143,7 +143,7 @@ fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
 
 fn read_text(path: &Path) -> Result<String, Failure> {
     std::fs::read_to_string(path)
-        .map_err(|error| Failure::unusable(format!("cannot read `{}`: {error}", path.display())))
+        .map_err(|error| Failure::unusable(format!("cannot read `{}`: {}", path.display(), said(&error))))
 }
 
 pub(super) fn read_scenario(path: &Path) -> Result<Scenario, Failure> {

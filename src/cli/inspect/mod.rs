@@ -4,13 +4,13 @@
 
 mod bench;
 mod day;
-mod earlier;
+pub(super) mod earlier;
 mod freeze;
 mod inputs;
 mod opening;
 mod outside;
 mod run_id;
-mod serial;
+pub(super) mod serial;
 mod show;
 mod stop;
 mod voice;
