@@ -2,6 +2,8 @@
 //! Must not compute what the tube does: `gain`, `walk` and `comb` do.
 //! Main types: [`TubeTruth`], [`Incident`].
 
+use super::condition::Condition;
+
 /// The truth about one tube. Every number is SI.
 #[derive(Debug, Clone, PartialEq)]
 pub struct TubeTruth {
@@ -61,6 +63,8 @@ pub struct TubeTruth {
     pub tries: u64,
     /// Ripple of the light at twice the mains frequency, rms over mean.
     pub line_ripple: f64,
+    /// In what condition gas, bore, mirror and cathode are.
+    pub condition: Condition,
     /// What happens to it on the bench.
     pub incidents: Vec<Incident>,
 }
@@ -138,6 +142,7 @@ impl Default for TubeTruth {
             start_delay: 0.6,
             tries: 1,
             line_ripple: 0.0,
+            condition: Condition::default(),
             incidents: Vec::new(),
         }
     }
