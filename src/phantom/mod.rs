@@ -5,6 +5,7 @@
 mod bench;
 mod comb;
 mod gain;
+mod light;
 mod noise;
 mod ramp;
 mod scenario;
@@ -16,6 +17,7 @@ mod world;
 pub use bench::BenchTruth;
 pub use comb::{Axis, Comb, Mode};
 pub use gain::GainLine;
+pub use light::LightTrace;
 pub use scenario::{Scenario, ScenarioError, ScenarioFault, ScenarioTube};
 pub use trace::RawTrace;
 pub use tube::{Incident, TubeTruth};
