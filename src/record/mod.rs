@@ -4,5 +4,6 @@
 
 pub mod event;
 pub mod finding;
+pub mod light;
 pub mod question;
 pub mod sheet;

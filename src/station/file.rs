@@ -31,6 +31,8 @@ pub struct StationFile {
     pub supply: Option<Supply>,
     /// Polarizer ahead of the power meter.
     pub polarizer: Option<Polarizer>,
+    /// Fast photodiode on the output beam, for the noise of the light.
+    pub light_detector: Option<LightDetector>,
     /// SHA-256 of the text, hexadecimal.
     pub sha256: String,
 }
@@ -102,11 +104,22 @@ pub struct Polarizer {
     pub u_angle: f64,
 }
 
-const TOP: &[&str] = &["station", "time_zone", "shifts", "interferometer", "power_meter", "supply", "polarizer"];
+/// Fast photodiode on the output beam.
+#[derive(Debug, Clone, PartialEq)]
+pub struct LightDetector {
+    /// Source of traces.
+    pub source: Source,
+    /// Where its response has fallen by 3 dB, with that of the digitizer, Hz.
+    pub bandwidth: f64,
+}
+
+const TOP: &[&str] =
+    &["station", "time_zone", "shifts", "interferometer", "power_meter", "supply", "polarizer", "light_detector"];
 const INTERFEROMETER: &[&str] = &["source", "fsr", "fsr_u", "columns", "certificate"];
 const POWER_METER: &[&str] = &["source", "factor", "u", "certificate"];
 const SUPPLY: &[&str] = &["source", "ballast", "ballast_distance", "u", "certificate"];
 const POLARIZER: &[&str] = &["source", "extinction", "u_angle"];
+const LIGHT_DETECTOR: &[&str] = &["source", "bandwidth"];
 /// A bench whose scale is known worse than this decides nothing.
 const WORST_RELATIVE_U: f64 = 0.2;
 
@@ -125,6 +138,7 @@ impl StationFile {
             let power_meter = part(root, "power_meter", POWER_METER, power_meter);
             let supply = part(root, "supply", SUPPLY, supply);
             let polarizer = part(root, "polarizer", POLARIZER, polarizer);
+            let light_detector = part(root, "light_detector", LIGHT_DETECTOR, light_detector);
             Some(Self {
                 station: station?.to_owned(),
                 time_zone: time_zone?,
@@ -133,6 +147,7 @@ impl StationFile {
                 power_meter: power_meter?,
                 supply: supply?,
                 polarizer: polarizer?,
+                light_detector: light_detector?,
                 sha256: sha256_hex(text),
             })
         })
@@ -283,6 +298,12 @@ fn polarizer(table: &Table<'_>) -> Option<Polarizer> {
         item.quantity_within(Dimension::Angle, (0.0, std::f64::consts::FRAC_PI_4), "an angle from 0° to 45°")
     });
     Some(Polarizer { source: source?, extinction: extinction?, u_angle: u_angle? })
+}
+
+fn light_detector(table: &Table<'_>) -> Option<LightDetector> {
+    let source = source(table, &["simulated", "folder"]);
+    let bandwidth = table.need("bandwidth").and_then(|item| item.positive(Dimension::Frequency));
+    Some(LightDetector { source: source?, bandwidth: bandwidth? })
 }
 
 /// `Some(None)` where there is none. Only an interferometer's says in which medium it was calibrated.
