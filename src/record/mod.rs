@@ -5,4 +5,5 @@
 pub mod event;
 pub mod finding;
 pub mod question;
+pub mod reference;
 pub mod sheet;
