@@ -15,7 +15,7 @@ mod store;
 pub use atomic::write_atomic;
 pub use chain::{ChainFault, read_chain};
 pub use folder::{Frozen, RunFolder};
-pub use home::{Home, TypeTexts, demo_bench};
+pub use home::{Home, TypeTexts, demo_bench, demo_checks};
 pub use life::{add_to_life, life_of};
 pub use lock::SerialLock;
 pub use name::{folder_name, is_folder_name};

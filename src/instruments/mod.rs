@@ -16,6 +16,7 @@ pub use folder::{CaptureFolder, FolderError, folder_bench};
 pub use nobody::{NoInstrument, Nobody};
 pub use simulated::{
     CaptureHead, SIMULATED_INITIALS, SimulatedBench, SimulatedOptions, simulated_capture_name, simulated_csv,
+    simulated_light_csv,
 };
 pub use terminal::TerminalPerson;
 pub use typed::{expected, parse_answer};

@@ -57,6 +57,13 @@ pub struct ReadValue {
     pub budget: Vec<BudgetLine>,
 }
 
+impl ReadValue {
+    /// The value as a number, in its unit; none where it is empty or a word.
+    pub fn number(&self) -> Option<f64> {
+        self.value.parse().ok().filter(|number: &f64| number.is_finite())
+    }
+}
+
 /// Reads a record back.
 ///
 /// * `record_csv`, `budget_csv`, `metadata_json`: the bytes of the three files.
@@ -178,5 +185,38 @@ impl Row {
 
     fn number(&self, column: &str) -> Option<f64> {
         self.cell(column).parse().ok().filter(|number: &f64| number.is_finite())
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    #![allow(clippy::unwrap_used)]
+    use super::*;
+
+    const BUDGET: &[u8] = b"measurand,source_id,line,type,standard_uncertainty,dof,sensitivity,note\r\n\
+        power,scatter,scatter,A,1e-6,9,1.02,\r\npower,C-1,meter,B,0.015,,0.0009,\r\n";
+    const METADATA: &[u8] =
+        b"{\"notes\":[{\"ended_at\":\"2026-03-02T09:00:00+00:00\",\"verdict\":{\"reason\":\"dim\"},\
+        \"instruments\":[{\"certificate\":\"C-1\"},{\"certificate\":\"\"}]}],\
+        \"tables\":[{\"notes\":[{\"sha256\":\"ab\"}]},{}]}";
+
+    #[test]
+    fn numbers_words_and_what_is_no_record() {
+        let text = b"run_id,step,measurand,value,expanded_uncertainty,verdict,grade,note\r\nr,,tube,,,pass,prime,\r\n\
+            r,p,power,0.91,0.02,pass,prime,\r\nr,p,power,0.91,0.02,pass,alignment,\r\nr,g,visual.getter,bright,,pass,,'=1\r\n";
+        let record = read_record(text, BUDGET, METADATA).unwrap();
+        assert_eq!((record.outcome.as_str(), record.grade.as_str(), record.reason.as_str()), ("pass", "prime", "dim"));
+        let values: Vec<_> = record.values.iter().map(|value| (value.measurand.as_str(), value.number())).collect();
+        assert_eq!(values, [("power", Some(0.91)), ("visual.getter", None)], "a row of two grades is one value");
+        assert_eq!((record.values[1].value.as_str(), record.values[1].note.as_str()), ("bright", "=1"));
+        let dofs: Vec<f64> = record.values[0].budget.iter().map(|line| line.dof).collect();
+        assert_eq!((dofs, record.certificates), (vec![9.0, f64::INFINITY], vec!["C-1".to_owned()]));
+        assert_eq!(hashes_in(METADATA), [Some("ab".into()), None]);
+        assert!(read_record(b"a,b\n1,2\n", BUDGET, METADATA).unwrap_err().contains("no column `measurand`"));
+        assert!(
+            read_record(b"measurand,value\npower,1\n", BUDGET, METADATA).unwrap_err().contains("no line for the tube")
+        );
+        assert!(read_record(b"measurand,value\n1\n", BUDGET, METADATA).is_err(), "a torn line");
+        assert!(read_record(text, BUDGET, b"{").is_err());
     }
 }

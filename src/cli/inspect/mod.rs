@@ -108,6 +108,7 @@ impl Arguments {
 
 /// Inspects one tube, or all of a scenario.
 pub fn run(arguments: Arguments) -> Result<Ending, Failure> {
+    stop::listen();
     let Some(serial) = arguments.serial.clone() else { return day::run(&arguments) };
     serial::check(&serial)?;
     if let Some(why) = &arguments.stop {
@@ -154,7 +155,6 @@ fn inspect(inputs: &Inputs, mut show: Option<&mut Show>) -> Result<Done, Failure
     if let (Some(show), Some(event)) = (show.as_deref_mut(), events.last()) {
         show.happened(&run, event, &[]);
     }
-    stop::listen();
     let armed = stop::Armed::new();
     let mut unseen = Unseen;
     let watcher: &mut dyn Watcher = match show.as_deref_mut() {

@@ -20,7 +20,7 @@ const ASKED: u8 = 2;
 static KEY: AtomicU8 = AtomicU8::new(IDLE);
 
 const WHY: &str = "\r\x1b[2K\nStop: why? (Enter alone goes on, Ctrl-C again leaves at once) ";
-const LEFT: &str = "Left at once, nothing stopped: the sheet stays open, and the same command goes on from there. \
+const LEFT: &str = "Left at once, nothing stopped: a sheet that was opened stays open, and the same command goes on from there. \
                     The tube may still be lit: look, and switch the supply off if nobody goes on.";
 
 /// Hears Ctrl-C and a request to end from now on. Without a terminal nobody can be asked why: the process leaves at once.
