@@ -75,6 +75,10 @@ impl Interlock for StopKey {
         if KEY.load(Ordering::SeqCst) != ASKED {
             return Ok(());
         }
+        // What was shown meanwhile may stand over the question.
+        let mut err = io::stderr().lock();
+        let _ = write!(err, "\r\x1b[2KStop: why? ").and_then(|()| err.flush());
+        drop(err);
         let line = read_line(&mut io::stdin().lock());
         was_asked();
         why(line)
