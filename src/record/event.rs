@@ -8,6 +8,7 @@ use super::{
     finding::CaptureFinding,
     question::{Answer, Question},
 };
+use crate::phrase::Language;
 
 /// Version of the form of an event line. A newer one is refused, an older one stays readable.
 pub const EVENT_VERSION: u32 = 1;
@@ -146,6 +147,13 @@ pub struct Identity {
     /// Language of the sheet, two letters; empty is English.
     #[serde(default, skip_serializing_if = "String::is_empty")]
     pub language: String,
+}
+
+impl Identity {
+    /// The language of the sheet.
+    pub fn language(&self) -> Language {
+        Language::of_record(&self.language)
+    }
 }
 
 /// What a run is for.

@@ -10,6 +10,7 @@ use crate::{
         Fault, nearest,
         reading::{Item, Table, read, sha256_hex},
     },
+    phrase::{self, Language, Phrase, Saying, name, reasons, said, verdict},
     quantity::Dimension,
     uncertainty::Certificate,
 };
@@ -19,6 +20,8 @@ use crate::{
 pub struct StationFile {
     /// Name of the bench.
     pub station: String,
+    /// Language of its sheets and questions.
+    pub language: Language,
     /// Its time zone.
     pub time_zone: Tz,
     /// Starts of the shifts.
@@ -102,7 +105,8 @@ pub struct Polarizer {
     pub u_angle: f64,
 }
 
-const TOP: &[&str] = &["station", "time_zone", "shifts", "interferometer", "power_meter", "supply", "polarizer"];
+const TOP: &[&str] =
+    &["station", "language", "time_zone", "shifts", "interferometer", "power_meter", "supply", "polarizer"];
 const INTERFEROMETER: &[&str] = &["source", "fsr", "fsr_u", "columns", "certificate"];
 const POWER_METER: &[&str] = &["source", "factor", "u", "certificate"];
 const SUPPLY: &[&str] = &["source", "ballast", "ballast_distance", "u", "certificate"];
@@ -119,6 +123,7 @@ impl StationFile {
     pub fn parse(name: &str, text: &str) -> Result<Self, Vec<Fault>> {
         read(name, text, TOP, |root| {
             let station = root.need("station").and_then(|item| item.text());
+            let language = root.get("language").map_or(Some(Language::default()), |item| item.word(&Language::CODES));
             let time_zone = root.need("time_zone").and_then(|item| zone(&item));
             let shifts = root.get("shifts").map_or(Some(Vec::new()), |item| shifts(&item));
             let interferometer = part(root, "interferometer", INTERFEROMETER, interferometer);
@@ -127,6 +132,7 @@ impl StationFile {
             let polarizer = part(root, "polarizer", POLARIZER, polarizer);
             Some(Self {
                 station: station?.to_owned(),
+                language: language?,
                 time_zone: time_zone?,
                 shifts: shifts?,
                 interferometer: interferometer?,
@@ -139,23 +145,24 @@ impl StationFile {
     }
 
     /// Every instrument that stands on a certificate, in the order of the file.
-    pub fn certificates(&self) -> Vec<(&'static str, &Certificate)> {
+    pub fn certificates(&self) -> Vec<(&'static Phrase, &Certificate)> {
         let interferometer = self.interferometer.as_ref().and_then(|i| i.certificate.as_ref());
         let power_meter = self.power_meter.as_ref().and_then(|p| p.certificate.as_ref());
         let supply = self.supply.as_ref().and_then(|s| s.certificate.as_ref());
-        [("interferometer", interferometer), ("power meter", power_meter), ("supply", supply)]
+        [(&reasons::INTERFEROMETER, interferometer), (&reasons::POWER_METER, power_meter), (&reasons::SUPPLY, supply)]
             .into_iter()
             .filter_map(|(role, certificate)| Some((role, certificate?)))
             .collect()
     }
 
     /// One sentence for each certificate that no longer holds on a day.
-    pub fn overdue_on(&self, day: NaiveDate) -> Vec<String> {
+    pub fn overdue_on(&self, day: NaiveDate) -> Vec<Saying> {
         self.certificates()
             .into_iter()
             .filter(|(_, certificate)| certificate.overdue_on(day))
             .map(|(role, certificate)| {
-                format!("The certificate {} of the {role} was due {}.", certificate.number, certificate.due)
+                let number = name(certificate.number.clone());
+                verdict::CERTIFICATE_OVERDUE.with([number, said(role), phrase::day(certificate.due)])
             })
             .collect()
     }
