@@ -120,7 +120,8 @@ fn take(run: &mut Run, event: &Event) {
 fn said(sheet: &Sheet) -> Vec<String> {
     let pages = report::sheet_pages(sheet, &"0".repeat(64)).unwrap();
     let who = &sheet.identity;
-    let shops = [&sheet.title, &who.condition, &who.lot, &who.supplier, &sheet.station, &who.tube_type];
+    let title = sheet.title.english();
+    let shops = [&title, &who.condition, &who.lot, &who.supplier, &sheet.station, &who.tube_type];
     let own = |text: &String| !shops.iter().any(|words| words.contains(text.trim_end_matches([')', '('])));
     let texts: Vec<String> =
         pages.iter().flat_map(|page| page.scene().texts().map(str::to_owned).collect::<Vec<_>>()).collect();

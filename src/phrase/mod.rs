@@ -15,7 +15,7 @@ pub mod verdict;
 mod tests;
 
 pub use language::Language;
-pub use saying::{Piece, Saying, clause, day, figure, list, name, opening, said, within};
+pub use saying::{Piece, Saying, clause, day, figure, list, minute, name, opening, said, within};
 
 /// One sentence, or part of one, in every language. `{0}`, `{1}` … are filled by the pieces of a [`Saying`], in any order.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]

@@ -17,6 +17,23 @@ table! {
     METER_NONE = "the meter gave no value", "das Messgerät gab keinen Wert";
     METER_GAVE = "the meter gave {0}, no finite number", "das Messgerät gab {0}, keine endliche Zahl";
 
+    // Traces of the light.
+    LIGHT_TOO_SHORT = "{0} samples in {1} s are too few for noise from {2} Hz; expected {3} s or more",
+        "{0} Abtastwerte in {1} s sind zu wenige für Rauschen ab {2} Hz; nötig sind {3} s oder mehr";
+    LIGHT_TOO_SLOW = "{0} samples a second are too slow for noise to {1} Hz; expected {2} or more",
+        "{0} Abtastwerte je Sekunde sind zu langsam für Rauschen bis {1} Hz; nötig sind {2} oder mehr";
+    LIGHT_NOT_FINITE = "the samples hold no finite noise", "die Abtastwerte ergeben kein endliches Rauschen";
+    LIGHT_STANDS = "the light does not move by one step: the light detector is saturated or not connected",
+        "das Licht ändert sich um keinen Schritt: der Lichtempfänger ist übersteuert oder nicht angeschlossen";
+    LIGHT_CLIPPED = "{0} % of the samples stand at {1} V, the top: the light detector is saturated; weaken the light",
+        "{0} % der Abtastwerte stehen bei {1} V, dem Anschlag: der Lichtempfänger ist übersteuert; Licht abschwächen";
+    LIGHT_NO_MAINS = "the slow traces are too short to show the mains",
+        "die langsamen Aufnahmen sind zu kurz, um das Netz zu zeigen";
+    LIGHT_NOT_BLOCKED = "the light detector reads {0} V with the beam open and {1} V with it blocked: no light in it, or the \
+        beam was not blocked",
+        "der Lichtempfänger zeigt {0} V bei offenem und {1} V bei abgedecktem Strahl: kein Licht, oder der Strahl war nicht \
+        abgedeckt";
+
     // Refusals of the engine.
     TOO_SHORT = "the longest ramp has {0} samples; at least 100 are needed: record more samples a ramp",
         "die längste Rampe hat {0} Abtastwerte; mindestens 100 sind nötig: mehr Abtastwerte je Rampe aufnehmen";

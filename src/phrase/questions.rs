@@ -21,5 +21,7 @@ table! {
         "Den Polarisator auf {0}° drehen, gegen den Uhrzeigersinn mit Blick auf die Röhre";
     POLARIZER_OUT = "Take the polarizer out of the beam", "Den Polarisator aus dem Strahl nehmen";
     BLOCK_BEAM = "Block the beam ahead of the power meter", "Den Strahl vor dem Leistungsmesser abdecken";
+    BLOCK_LIGHT = "Block the beam ahead of the light detector, with a beam stop",
+        "Den Strahl vor dem Lichtempfänger mit einem Strahlfänger abdecken";
     OPEN_BEAM = "Open the beam again", "Den Strahl wieder freigeben";
 }

@@ -17,6 +17,8 @@ table! {
     SIMULATED = "Simulated bench: not a measurement of a tube.", "Simulierter Messplatz: keine Messung an einer Röhre.";
     FROM_CAPTURES = "Measured from a folder of captures, not at a bench.",
         "Aus einem Ordner mit Aufnahmen gemessen, nicht am Messplatz.";
+    REFERENCE_TUBE = "Reference tube of {0}: judges the bench, not the tube.",
+        "Referenzröhre von {0}: beurteilt den Messplatz, nicht die Röhre.";
     UNTIMED = "The captures carry no time: they were taken in their order.",
         "Die Aufnahmen tragen keine Zeit: sie gelten in ihrer Reihenfolge.";
     DARK_TUBE = "Dark tube: {0}.", "Dunkle Röhre: {0}.";
@@ -39,7 +41,7 @@ table! {
     POLARIZER = "polarizer", "Polarisator";
     RANGE = "{0} ± {1}", "{0} ± {1}";
     READING_TIMES = "reading × {0} ± {1}", "Anzeige × {0} ± {1}";
-    BALLAST = "ballast {0}, readings ± {1}", "Vorwiderstand {0}, Anzeigen ± {1}";
+    BALLAST = "ballast {0}, readings ± {1}", "Ballast {0}, Anzeigen ± {1}";
     EXTINCTION_ANGLE = "{0}:1, angle ± {1}", "{0}:1, Winkel ± {1}";
     NO_SUPPLY = "the station file names no supply", "die Stationsdatei nennt kein Netzteil";
     NO_POWER_METER = "the station file names no power meter", "die Stationsdatei nennt keinen Leistungsmesser";
@@ -120,6 +122,33 @@ table! {
         "zu wenige Leistungswerte in der letzten ganzen Periode";
     FEW_CYCLES = "too few whole cycles near the end of the dwell show a slope",
         "zu wenige ganze Perioden am Ende des Einlaufens zeigen eine Steigung";
+
+    // Noise.
+    NO_LIGHT_DETECTOR = "the station file names no light detector", "die Stationsdatei nennt keinen Lichtempfänger";
+    NO_DARK_TRACE = "no trace in the dark, so the level without light is unknown: {0}",
+        "keine Aufnahme im Dunkeln, daher ist der Pegel ohne Licht unbekannt: {0}";
+    NO_LIGHT_TRACES = "light traces are missing", "Lichtaufnahmen fehlen";
+    DETECTOR_REACHES = "the light detector reaches {0}, the band {1}", "der Lichtempfänger reicht bis {0}, das Band bis {1}";
+    NOISE_BAND = "{0}: {1} s, then {2} ms; dark noise {3} % taken off",
+        "{0}: {1} s, dann {2} ms; Dunkelrauschen {3} % abgezogen";
+    BAND = "{0} to {1}", "{0} bis {1}";
+    FOLDED = "the slow trace folds noise down from above its band: average the light over each sample",
+        "die langsame Aufnahme faltet Rauschen von oberhalb ein: das Licht über jeden Abtastschritt mitteln";
+    NO_MAINS = "No mains line stands clear of the noise: {0} Hz was taken.",
+        "Keine Netzlinie hebt sich vom Rauschen ab: {0} Hz angenommen.";
+    HARMONICS = "{0} harmonics of {1} Hz, {2} s; {3} % could hide in the noise",
+        "{0} Harmonische von {1} Hz, {2} s; {3} % könnten im Rauschen verborgen sein";
+    NO_TONE = "no line stands above the noise, {0}; a tone of the discharge may lie higher",
+        "keine Linie ragt aus dem Rauschen, {0}; ein Störton der Entladung kann höher liegen";
+    TONE_OF_MODES = "moved between two traces, as a beat of modes does: no fault",
+        "zwischen zwei Aufnahmen gewandert, wie eine Modenschwebung: kein Fehler";
+    TONE_MOVING = "moved between two traces, too high for a beat of modes: points at the discharge",
+        "zwischen zwei Aufnahmen gewandert, zu hoch für eine Modenschwebung: weist auf die Entladung";
+    TONE_FIXED = "stayed between two traces: supply or discharge; try another current",
+        "zwischen zwei Aufnahmen unverändert: Netzteil oder Entladung; anderen Strom versuchen";
+    TONE_ONCE = "seen in one trace only: whether it moves is not known",
+        "nur in einer Aufnahme gesehen: ob er wandert, ist unbekannt";
+    TONE_UNSEEN = "Whether a tone moves was not seen: {0}.", "Ob ein Störton wandert, war nicht zu sehen: {0}.";
 
     // Supply.
     LESS_DROP = "less the drop in {0}, {1} from the anode", "abzüglich des Abfalls an {0}, {1} vor der Anode";

@@ -4,7 +4,7 @@
 
 use std::fmt::Display;
 
-use chrono::NaiveDate;
+use chrono::{NaiveDate, NaiveDateTime};
 
 use super::{Language, Phrase, recognise};
 
@@ -27,6 +27,8 @@ pub enum Piece {
     Figure(String),
     /// A day.
     Day(NaiveDate),
+    /// A day and a time of day, in the station's zone.
+    Minute(NaiveDateTime),
     /// Something said in turn.
     Said(Saying),
     /// A row's label inside a sentence: English writes it small, unless it is an abbreviation; German nouns stay large.
@@ -52,6 +54,11 @@ pub fn figure(number: impl Display) -> Piece {
 /// A day.
 pub fn day(day: NaiveDate) -> Piece {
     Piece::Day(day)
+}
+
+/// A day and a time of day to the minute, in the station's zone.
+pub fn minute(at: NaiveDateTime) -> Piece {
+    Piece::Minute(at)
 }
 
 /// Something said in turn.
@@ -153,6 +160,7 @@ impl Piece {
             Self::Name(text) => text.clone(),
             Self::Figure(english) => language.figure(english),
             Self::Day(day) => language.day(*day),
+            Self::Minute(at) => format!("{} {}", language.day(at.date()), at.format("%H:%M")),
             Self::Said(saying) => saying.text(language),
             Self::Within(saying) if language == Language::English => small(&saying.text(language)),
             Self::Within(saying) => saying.text(language),

@@ -24,6 +24,21 @@ table! {
 
     NO_VERDICT = "No verdict on the tube is given.", "Über die Röhre wird nicht entschieden.";
     CERTIFICATE_OVERDUE = "The certificate {0} of the {1} was due {2}.", "Kalibrierschein {0} ({1}) galt bis {2}.";
+    REFERENCE_IN = "reference, the bench reads it in bounds.", "Referenz, der Messplatz liegt in den Grenzen.";
+    REFERENCE_OUT = "reference, the bench reads it out of bounds.", "Referenz, der Messplatz liegt außerhalb der Grenzen.";
+    REFERENCE_TITLE = "Reference tube of {0}: judges the bench, not the tube",
+        "Referenzröhre von {0}: beurteilt den Messplatz, nicht die Röhre";
+    NEVER_CHECKED = "Reference tube {0} was never checked here: inspect it first.",
+        "Referenzröhre {0} wurde hier nie gemessen: zuerst messen.";
+    CHECK_DUE = "Reference tube {0} is due since {1}, the start of the shift; its last check was {2}: inspect it first.",
+        "Referenzröhre {0} ist seit Schichtbeginn {1} fällig; zuletzt gemessen {2}: zuerst messen.";
+    CHECK_OUT = "Reference tube {0} was out of bounds at {1}: {2}; set the bench right and inspect it again.",
+        "Referenzröhre {0} lag {1} außerhalb der Grenzen: {2}; Messplatz in Ordnung bringen und erneut messen.";
+    CHECK_LACKS = "{0} was not measured", "{0}: nicht gemessen";
+    CHECK_DRIFTS = "{0} drifts: its cumulative sum stands at {1} standard deviations, and {2} is the alarm",
+        "{0} driftet: die kumulierte Summe steht bei {1} Standardabweichungen, Alarm ist bei {2}";
+    CHECK_ABOVE = "{0} {1} is {2} above {3}, and {4} is allowed", "{0} {1} liegt {2} über {3}, zulässig sind {4}";
+    CHECK_BELOW = "{0} {1} is {2} below {3}, and {4} is allowed", "{0} {1} liegt {2} unter {3}, zulässig sind {4}";
     CAPTURE_UNREADABLE = "Capture {0} could not be read: {1}.", "Aufnahme {0} war nicht lesbar: {1}.";
     CAPTURE_NOT_HAD = "A capture of step {0} could not be had or read: {1}.",
         "Eine Aufnahme des Schritts {0} fehlt oder war nicht lesbar: {1}.";

@@ -15,7 +15,7 @@ pub struct Sheet {
     /// Who and what.
     pub identity: Identity,
     /// Title of the type from the limits file.
-    pub title: String,
+    pub title: Saying,
     /// Station's name.
     pub station: String,
     /// When the run was opened.

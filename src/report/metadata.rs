@@ -96,7 +96,7 @@ fn run_notes(sheet: &Sheet) -> Json {
     json!({
         "run_id": who.run_id,
         "serial": who.serial,
-        "title": sheet.title,
+        "title": sheet.title.english(),
         "supplier": who.supplier,
         "condition": who.condition,
         "received": who.received,

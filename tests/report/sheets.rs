@@ -188,7 +188,7 @@ pub fn pass() -> Sheet {
             program_version: "0.1.0".into(),
             ..Default::default()
         },
-        title: "Two-mode tube, random polarization, mirrors 150 mm apart".into(),
+        title: say("Two-mode tube, random polarization, mirrors 150 mm apart"),
         station: "bench-1".into(),
         started_at: Some(at("2026-03-02T10:12:40+00:00")),
         ended_at: Some(at("2026-03-02T10:46:52+00:00")),
@@ -385,7 +385,7 @@ pub fn long() -> Sheet {
     sheet.identity.supplier = words.clone();
     sheet.identity.condition = words.clone();
     sheet.identity.technician = "Ä".repeat(40);
-    sheet.title = words.clone();
+    sheet.title = say(&words);
     sheet.station = "bench-".repeat(30);
     sheet.verdict.sentence = say(format!("fail, {endless}."));
     sheet.verdict.reason = say(words.clone() + &endless);

@@ -74,8 +74,8 @@ fn serial_and_title(scene: &mut Scene, face: &Typeface, sheet: &Sheet) -> f64 {
         }
     }
     let title = match sheet.identity.tube_type.as_str() {
-        "" => sheet.title.clone(),
-        kind => format!("{} ({kind})", sheet.title),
+        "" => face.say(&sheet.title),
+        kind => format!("{} ({kind})", face.say(&sheet.title)),
     };
     let style = Style::plain(8.5, GREY);
     for line in face.wrap(&title, style, room, 2) {
