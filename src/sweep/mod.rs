@@ -7,14 +7,17 @@ mod axis;
 mod comb;
 mod detect;
 mod fitted;
+mod flatten;
 mod lines;
 mod measure;
 mod model;
 mod orders;
 mod outcome;
 mod remarks;
+mod repeat;
 mod segment;
 mod shared;
+mod steady;
 mod trace;
 
 pub use measure::measure;

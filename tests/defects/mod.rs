@@ -88,7 +88,8 @@ impl Bench {
 
     /// One photodiode behind a polarizer sees the two families exchange axes after `share` of the ramp.
     pub fn swapping(&self, share: f64) -> Case {
-        let polarized = Self { bench: BenchTruth { analyser: Some(30_f64.to_radians()), ..self.bench.clone() }, ..self.clone() };
+        let polarized =
+            Self { bench: BenchTruth { analyser: Some(30_f64.to_radians()), ..self.bench.clone() }, ..self.clone() };
         let trace = polarized.trace(self.at_ms());
         let cut = (share * self.samples as f64) as usize;
         let mut swapped = trace.clone();
