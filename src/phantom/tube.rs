@@ -65,6 +65,14 @@ pub struct TubeTruth {
     pub line_ripple: f64,
     /// In what condition gas, bore, mirror and cathode are.
     pub condition: Condition,
+    /// Noise of the discharge in the light, 10 Hz to 1 MHz, rms over mean.
+    pub discharge_noise: f64,
+    /// A tone of the discharge in the light, rms over mean.
+    pub tone_level: f64,
+    /// Its frequency, Hz.
+    pub tone_frequency: f64,
+    /// Each beat of three neighbouring modes in the light, rms over mean.
+    pub beat_level: f64,
     /// What happens to it on the bench.
     pub incidents: Vec<Incident>,
 }
@@ -143,6 +151,11 @@ impl Default for TubeTruth {
             tries: 1,
             line_ripple: 0.0,
             condition: Condition::default(),
+            // Ordinary tubes: 0.1–0.3 % (from memory).
+            discharge_noise: 2e-3,
+            tone_level: 0.0,
+            tone_frequency: 50e3,
+            beat_level: 0.0,
             incidents: Vec::new(),
         }
     }

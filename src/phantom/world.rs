@@ -7,6 +7,7 @@ use std::f64::consts::{FRAC_PI_2, TAU};
 use super::{
     bench::BenchTruth,
     comb::{Axis, Comb, Mode},
+    light::{LightScene, LightTrace},
     noise::{Noise, Purpose},
     trace::{FULL_HEIGHT, Line, RawTrace, Scene},
     tube::{Incident, TubeTruth},
@@ -117,6 +118,19 @@ impl World {
         };
         let noise = |purpose| Noise::new(self.seed, purpose, at_ms);
         Some(scene.record(samples, noise(Purpose::Photodiode), noise(Purpose::Crossed)))
+    }
+
+    /// One trace of the total light, begun at a time: `samples` means, `rate` of them a second.
+    pub fn light(&self, at_ms: i64, samples: usize, rate: f64, setting: Setting) -> LightTrace {
+        let lit = setting.lit && !setting.blocked && self.tube.power > 0.0;
+        let share = if lit { self.true_power(at_ms as f64, setting.polarizer) / self.tube.power } else { 0.0 };
+        let modes = self.modes(at_ms);
+        // Three neighbours of uneven spacing beat at the second difference of their frequencies.
+        let beat = |three: &[Mode]| (three[0].detuning - 2.0 * three[1].detuning + three[2].detuning).abs();
+        let beats = modes.windows(3).map(beat).collect();
+        let scene = LightScene { tube: &self.tube, bench: &self.bench, share, beats, at: at_ms as f64 / 1e3 };
+        let noise = |purpose| Noise::new(self.seed, purpose, at_ms);
+        scene.record(samples, rate, noise(Purpose::Light), noise(Purpose::LightDetector))
     }
 
     /// The peaks of one mode: its own and that of its transverse companion.

@@ -15,11 +15,11 @@ use crate::{
     phantom::{Scenario, World},
     record::event::Event,
     station::{
-        Bench, CaptureRequest, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, ReadingKind,
-        ReadingRequest, Trouble,
+        Bench, CaptureRequest, CaptureSource, CapturedBytes, Clock, Interlock, LightRequest, Meters, Moment, Person,
+        ReadingKind, ReadingRequest, Trouble,
     },
 };
-pub use capture_text::{CaptureHead, simulated_capture_name, simulated_csv};
+pub use capture_text::{CaptureHead, simulated_capture_name, simulated_csv, simulated_light_csv};
 use state::State;
 use technician::Technician;
 
@@ -125,6 +125,17 @@ impl CaptureSource for SimulatedBench {
             return Err(Trouble::Instrument("the digitizer gave no data for this capture".to_owned()));
         };
         let bytes = simulated_csv(&trace, &head);
+        let files = vec![(simulated_capture_name(request.number), bytes)];
+        Ok(CapturedBytes { files, taken_ms: taken.elapsed_ms })
+    }
+
+    fn light(&mut self, request: &LightRequest) -> Result<CapturedBytes, Trouble> {
+        let mut state = self.state.borrow_mut();
+        let taken = state.now();
+        let (at, setting) = state.on_tube();
+        let trace = state.world.light(at, request.samples, request.sample_rate, setting);
+        state.advance_by((request.samples as f64 / request.sample_rate * 1e3).ceil() as u64);
+        let bytes = simulated_light_csv(&trace, taken.wall, request.number, request.lit);
         let files = vec![(simulated_capture_name(request.number), bytes)];
         Ok(CapturedBytes { files, taken_ms: taken.elapsed_ms })
     }

@@ -36,6 +36,8 @@ pub struct Scenario {
     pub types: BTreeMap<String, TubeTruth>,
     /// Tubes in file order.
     pub tubes: Vec<ScenarioTube>,
+    /// Reference tubes of the benches, in file order.
+    pub references: Vec<ScenarioTube>,
 }
 
 /// One tube of a scenario.
@@ -105,7 +107,7 @@ impl Scenario {
 
     /// The tube with a serial.
     pub fn tube(&self, serial: &str) -> Option<&ScenarioTube> {
-        self.tubes.iter().find(|tube| tube.serial == serial)
+        self.tubes.iter().chain(&self.references).find(|tube| tube.serial == serial)
     }
 
     /// A tube on its bench.
@@ -132,6 +134,7 @@ impl Default for Scenario {
             benches: BTreeMap::new(),
             types: BTreeMap::new(),
             tubes: Vec::new(),
+            references: Vec::new(),
         }
     }
 }

@@ -25,7 +25,7 @@ use crate::quantity::Dimension;
 type Value<'i> = Spanned<DeValue<'i>>;
 
 const HEAD: &[&str] =
-    &["title", "started_at", "time_zone", "seed", "technician", "time_to_answer", "bench", "type", "tube"];
+    &["title", "started_at", "time_zone", "seed", "technician", "time_to_answer", "bench", "type", "tube", "reference"];
 const TUBE_WORDS: &[&str] = &[
     "serial",
     "type",
@@ -68,6 +68,13 @@ pub(super) fn scenario(text: &str) -> Result<Scenario, Vec<ScenarioFault>> {
         for entry in entries(&mut reader, value) {
             if let Some(tube) = tube(&mut reader, &scenario, entry) {
                 scenario.tubes.push(tube);
+            }
+        }
+    }
+    if let Some(value) = table.get("reference") {
+        for entry in entries(&mut reader, value) {
+            if let Some(tube) = tube(&mut reader, &scenario, entry) {
+                scenario.references.push(tube);
             }
         }
     }
@@ -115,7 +122,7 @@ fn head(reader: &mut Reader<'_>, scenario: &mut Scenario, word: &Spanned<Cow<'_,
                 scenario.types.insert(name.get_ref().to_string(), truth);
             }
         }
-        "tube" => {}
+        "tube" | "reference" => {}
         _ => reader.unknown(word, HEAD.iter().copied()),
     }
 }
