@@ -409,7 +409,13 @@ mod set_clock {
         }
         .drive()
         .unwrap();
-        let said: Vec<_> = run.sheet().remarks.into_iter().filter(|remark| remark.contains("clock")).collect();
+        let said: Vec<_> = run
+            .sheet()
+            .remarks
+            .iter()
+            .map(|remark| remark.english())
+            .filter(|remark| remark.contains("clock"))
+            .collect();
         assert_eq!(said, ["The clock on the wall was set back by 3600 s: times on this sheet go on from before."]);
         assert_eq!(run.sheet().verdict.outcome, tubewright::record::sheet::Outcome::Pass);
     }

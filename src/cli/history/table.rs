@@ -1,5 +1,5 @@
 //! The past of a tube as a table for people.
-//! Must not compare: the changes come in.
+//! Must not compare: the changes come in. English, as the records are that it is read from.
 //! Main function: [`text`].
 
 use super::{
@@ -8,6 +8,7 @@ use super::{
 };
 use crate::cli::inspect::earlier::ending_words;
 use crate::measurand::{self, Shape};
+use crate::phrase::{Language, Saying};
 use crate::record::sheet::{Row, Value};
 use crate::report::{ReadValue, value_text};
 
@@ -112,12 +113,12 @@ fn values(columns: &[Column]) -> Vec<String> {
 /// The name on the sheet.
 pub(super) fn label(measurand: &str) -> String {
     let look = || measurand.strip_prefix("visual.").unwrap_or(measurand).replace('_', " ");
-    measurand::find(measurand).map_or_else(look, |known| known.name.to_owned())
+    measurand::find(measurand).map_or_else(look, |known| known.name.of(Language::English).to_owned())
 }
 
 /// Value, expanded uncertainty and unit, rounded as on the sheet; a dash where there is none.
 fn shown(value: &ReadValue) -> String {
-    let text = value_text(&row_of(value));
+    let text = value_text(&row_of(value), Language::English);
     if !text.absent.is_empty() {
         return "–".to_owned();
     }
@@ -131,7 +132,7 @@ fn row_of(value: &ReadValue) -> Row {
     let factor = known.map_or(1.0, |known| known.unit().factor);
     let number = value.value.parse::<f64>().ok();
     let of_record = match (known.map(|known| known.shape), number, value.expanded) {
-        _ if value.value.is_empty() => Value::Absent(value.note.clone()),
+        _ if value.value.is_empty() => Value::Absent(Saying::outside(&value.note)),
         (Some(Shape::Count), Some(n), _) => Value::Count { value: n as u64, low: n as u64, high: n as u64 },
         (Some(_), Some(n), Some(expanded)) => Value::Number {
             value: n * factor,
@@ -146,12 +147,12 @@ fn row_of(value: &ReadValue) -> Row {
     Row {
         step: value.step.clone(),
         measurand: value.measurand.clone(),
-        label: label(&value.measurand),
+        label: Saying::outside(&label(&value.measurand)),
         value: of_record,
         budget: Vec::new(),
         judged: Vec::new(),
         deciding: false,
-        note: String::new(),
+        note: Saying::default(),
     }
 }
 
@@ -165,6 +166,6 @@ fn sentence(change: &Change) -> String {
         value: Value::Number { value: difference, u: expanded / 2.0, expanded, k: 2.0, dof: f64::INFINITY },
         ..row_of(&change.after)
     };
-    let text = value_text(&difference);
+    let text = value_text(&difference, Language::English);
     format!("{pair}: by {} {} {}", text.value, text.spread, known.unit().symbol).trim_end().to_owned()
 }

@@ -141,7 +141,8 @@ fn of_sheet(sheet: &Sheet, folder: PathBuf) -> Line {
         outcome: word.to_owned(),
         grade,
         reject_code,
-        reason: verdict.reason.clone(),
+        // As the record has it, by which a finished one is listed.
+        reason: verdict.reason.english(),
         folder: Some(folder),
         ..empty(&sheet.identity.serial)
     }

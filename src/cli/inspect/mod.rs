@@ -24,6 +24,7 @@ use self::{inputs::Inputs, opening::Opening, show::Show};
 use super::{Ending, Failure, output};
 use crate::disk::{RunFolder, Store};
 use crate::driver::{Driver, Engine, Interrupted, Watcher, resume};
+use crate::phrase::Language;
 use crate::record::event::Event;
 use crate::record::sheet::{Outcome, Sheet};
 use crate::run::{Remark, Run};
@@ -82,6 +83,9 @@ pub struct Arguments {
     /// Scenario of the simulated bench: a file, else the demo day; without SERIAL all of its tubes, one after the other
     #[arg(long, value_name = "FILE", num_args = 0..=1, conflicts_with = "captures")]
     scenario: Option<Option<PathBuf>>,
+    /// Language of the sheet and of the questions: en or de (else the station's)
+    #[arg(long, value_name = "CODE", value_parser = language)]
+    language: Option<Language>,
     /// How to print
     #[arg(long, value_enum, default_value = "text")]
     format: Format,
@@ -92,6 +96,11 @@ fn pace(text: &str) -> Result<f64, String> {
     number
         .filter(|number| number.is_finite() && *number > 0.0)
         .ok_or_else(|| format!("`{text}` is no pace; expected a factor above zero such as 60x"))
+}
+
+fn language(text: &str) -> Result<Language, String> {
+    let known = || Language::CODES.map(|(code, _)| code).join(", ");
+    Language::of_code(text).ok_or_else(|| format!("`{text}` is no language of a sheet; expected one of {}", known()))
 }
 
 fn moment(text: &str) -> Result<DateTime<FixedOffset>, String> {

@@ -73,6 +73,9 @@ impl Opening {
         if inputs.retest.as_ref().is_some_and(|why| Some(why.trim()) != repeated) {
             return other(if repeated.is_some() { "repeats another for another cause" } else { "repeats none" });
         }
+        if inputs.language.is_some_and(|given| given != identity.language()) {
+            return other(&format!("has its sheet in language `{}`", identity.language().code()));
+        }
         let plan = Plan::from_texts(recipe, limits, station).map_err(|faults| faulty("stored plan", &faults))?;
         let started_at = DateTime::parse_from_rfc3339(&identity.started_at).unwrap_or_default();
         let before = runs.iter().filter(|run| run.opened.identity.run_id < identity.run_id).count();
@@ -109,6 +112,7 @@ impl Opening {
             from_captures: inputs.captures.is_some(),
             times_assumed: inputs.captures.as_ref().is_some_and(|folder| folder.first_at().is_none()),
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
+            language: inputs.language.unwrap_or(station.language).stored(),
             repeats,
             run_kind,
             reference_checks,
