@@ -10,6 +10,7 @@ mod glimpse;
 mod jumps;
 mod line;
 mod power;
+mod rest;
 mod swaps;
 #[cfg(test)]
 mod synthetic;
@@ -22,6 +23,7 @@ pub use counts::{Counts, GainPoint, count_modes, gain_points};
 pub use drift::{line_drift, tau_per_slope};
 pub use glimpse::{Glimpse, GlimpseMode};
 pub use power::{CyclePower, cycle_power, power_drift};
+pub use rest::{Rest, rest};
 pub use warmup::{Warmup, WarmupSettings, WarmupState};
 pub use watch::{Hop, Swap, Watched, watch};
 

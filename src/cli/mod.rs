@@ -9,7 +9,9 @@ mod home;
 mod inspect;
 mod measure;
 mod output;
+mod rack;
 pub mod simulate;
+mod station;
 
 pub use ending::{Ending, Failure};
 
@@ -42,6 +44,10 @@ enum Command {
         #[arg(long, value_name = "DIR")]
         home: Option<PathBuf>,
     },
+    /// Show a bench: certificates, reference tubes with their chart, what is due, whether it gives verdicts
+    Station(station::Arguments),
+    /// Keep which tubes burn in the rack since when
+    Rack(rack::Arguments),
     /// Write captures of a simulated tube, sound or faulty, and the truth about it
     Simulate(Box<simulate::SimulateArgs>),
 }
@@ -62,6 +68,8 @@ pub fn run() -> ExitCode {
         Command::Inspect(arguments) => inspect::run(*arguments),
         Command::Measure(arguments) => measure::run(&arguments),
         Command::Check { arguments, home } => check(&arguments, home),
+        Command::Station(arguments) => station::run(&arguments),
+        Command::Rack(arguments) => rack::run(arguments),
         Command::Simulate(arguments) => simulate(&arguments),
     };
     let ending = ended.unwrap_or_else(|failure| {

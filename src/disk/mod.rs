@@ -8,6 +8,7 @@ mod folder;
 mod home;
 mod lock;
 mod name;
+mod rack;
 mod record;
 mod store;
 
@@ -17,6 +18,7 @@ pub use folder::{Frozen, RunFolder};
 pub use home::{Home, TypeTexts, demo_bench, demo_checks};
 pub use lock::SerialLock;
 pub use name::{folder_name, is_folder_name};
+pub use rack::Rack;
 pub use record::{RecordLine, read_record};
 pub use store::{FoundRun, Store};
 

@@ -12,6 +12,7 @@ mod malus;
 mod notebook;
 mod plan;
 mod pool;
+mod rack;
 mod reference;
 mod sheet;
 mod spacing;
@@ -24,7 +25,7 @@ use std::fmt;
 
 use chrono::{DateTime, FixedOffset};
 
-use self::{notebook::Notebook, steps::Step, steps::Wish};
+use self::{notebook::Notebook, rack::Rack, steps::Step, steps::Wish};
 use crate::{
     record::{
         event::{Happening, Identity},
@@ -111,9 +112,7 @@ impl Run {
         let opened_at = DateTime::parse_from_rfc3339(&identity.started_at).ok();
         let mut run = Self {
             plan,
-            identity,
-            opened_at,
-            book: Notebook::default(),
+            book: Notebook::begin(Rack::of(&identity, opened_at)),
             steps,
             current: 0,
             next_capture: 1,
@@ -121,7 +120,10 @@ impl Run {
             events: 0,
             pending: None,
             interrupted: false,
-            high_voltage: false,
+            // Taken over from the rack, it burns from the first moment on.
+            high_voltage: identity.lit_since.is_some(),
+            identity,
+            opened_at,
             answered_by: String::new(),
             ending: None,
         };

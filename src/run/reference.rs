@@ -25,6 +25,7 @@ pub(super) fn limits(reference: &Reference, station: &str) -> Limits {
         severity: Severity::Major,
         reject: Some(OUT.to_owned()),
         outside: Outside::Fail,
+        rack_skips: false,
     };
     Limits {
         revision: 0,

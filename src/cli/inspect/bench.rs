@@ -27,10 +27,12 @@ pub(super) fn terminal() -> TerminalPerson {
 /// Builds the bench.
 ///
 /// * `started_at`: when the run was opened.
+/// * `lit_since`: since when the tube burns already, if a rack warmed it.
 /// * `technician`: initials; filled in if empty.
 pub(super) fn build(
     inputs: &Inputs,
     started_at: DateTime<FixedOffset>,
+    lit_since: Option<DateTime<FixedOffset>>,
     technician: &mut String,
 ) -> Result<Bench, Failure> {
     let person = person(inputs, technician);
@@ -39,7 +41,9 @@ pub(super) fn build(
         return Ok(folder_bench(folder.clone(), started_at, person.unwrap_or_else(|| nobody())));
     }
     if inputs.scenario.is_some() {
-        return simulated(inputs, started_at, person, technician);
+        let bench = simulated(inputs, started_at, technician, person.is_none())?;
+        let age = lit_since.and_then(|since| u64::try_from((started_at - since).num_milliseconds()).ok());
+        return Ok(age.map_or(bench.clone(), |age| bench.lit_for(age)).bench_with(person));
     }
     let none = || Box::new(NoInstrument { reason: NOT_ON_THIS_BENCH.to_owned() });
     let hint = "give `--ask` to answer at this terminal, or `--answers FILE`".to_owned();
@@ -73,14 +77,14 @@ fn person(inputs: &Inputs, technician: &mut String) -> Option<Box<dyn Person>> {
 fn simulated(
     inputs: &Inputs,
     started_at: DateTime<FixedOffset>,
-    person: Option<Box<dyn Person>>,
     technician: &mut String,
-) -> Result<Bench, Failure> {
+    own_technician: bool,
+) -> Result<SimulatedBench, Failure> {
     let unknown = || Failure::unusable(format!("the simulated bench has no tube `{}`", inputs.serial));
     let scenario = inputs.scenario.as_ref().ok_or_else(unknown)?;
     let tube = scenario.tube(&inputs.serial).ok_or_else(unknown)?;
     let world = scenario.world(&inputs.serial, inputs.seed).ok_or_else(unknown)?;
-    if person.is_none() && technician.is_empty() {
+    if own_technician && technician.is_empty() {
         *technician = scenario.technician.clone();
     }
     let of_answers = inputs.answers.as_ref().map(|answers| (answers.time_to_answer_s * 1000.0).round() as u64);
@@ -90,5 +94,5 @@ fn simulated(
         time_to_answer_ms: of_answers.unwrap_or(scenario.time_to_answer_ms),
         looks: tube.looks.clone(),
     };
-    Ok(SimulatedBench::new(world, options).bench_with(person))
+    Ok(SimulatedBench::new(world, options))
 }

@@ -9,7 +9,7 @@ use chrono::{DateTime, FixedOffset};
 
 use super::{Arguments, Format};
 use crate::cli::{Ending, Failure, home};
-use crate::disk::{Home, Store, demo_bench};
+use crate::disk::{Home, Rack, Store, demo_bench};
 use crate::instruments::CaptureFolder;
 use crate::phantom::Scenario;
 use crate::station::{
@@ -39,6 +39,8 @@ pub(super) struct Inputs {
     pub pace: Option<f64>,
     pub seed: Option<u64>,
     pub start: Option<DateTime<FixedOffset>>,
+    /// Since when the tube burns already, as given, and where; none if it is struck here.
+    pub lit_since: Option<(&'static str, String)>,
     pub format: Format,
 }
 
@@ -72,16 +74,25 @@ impl Inputs {
                 "`{name}` has no [interferometer]; expected one, since captures need its free spectral range `fsr`"
             )));
         }
+        // A scanner's stray blank is no part of a serial number.
+        let serial = arguments.serial.trim().to_owned();
+        let store = Store::new(home.reports());
+        let answers = arguments.answers.as_deref().map(read_answers).transpose()?;
+        let rack = Rack::read(store.reports()).map_err(|error| Failure::store(&error))?;
+        let of_option = arguments.lit_since.map(|text| ("--lit-since", text));
+        let of_answers = || Some(("`lit_since` of the answers", answers.as_ref()?.lit_since.clone()?));
+        let of_rack = || Some(("since when it burns, by `tubewright rack list`,", rack.since(&serial)?.to_owned()));
+        let lit_since = of_option.or_else(of_answers).or_else(of_rack).filter(|_| captures.is_none());
         Ok(Self {
-            // A scanner's stray blank is no part of a serial number.
-            serial: arguments.serial.trim().to_owned(),
+            serial,
+            lit_since,
             tube_type: arguments.tube_type,
-            store: Store::new(home.reports()),
+            store,
             home,
             station: (text, station),
             scenario,
             captures,
-            answers: arguments.answers.as_deref().map(read_answers).transpose()?,
+            answers,
             ask: arguments.ask,
             pace: simulated.then(|| arguments.pace.unwrap_or(PACE)),
             seed: arguments.seed,
@@ -97,7 +108,7 @@ impl Inputs {
 }
 
 /// The compiled-in station file of the bench on which the scenario has this tube.
-fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, String), Failure> {
+pub(in crate::cli) fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, String), Failure> {
     let demo;
     let scenario = match scenario {
         Some(scenario) => scenario,
@@ -117,7 +128,7 @@ fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, St
 }
 
 /// Whether captures come from the simulated bench; a source that needs something more is said.
-fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
+pub(in crate::cli) fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
     match station.interferometer.as_ref().map(|interferometer| &interferometer.source) {
         Some(Source::Simulated) => Ok(true),
         Some(Source::Folder) => {
@@ -131,12 +142,12 @@ fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
     }
 }
 
-fn read_text(path: &Path) -> Result<String, Failure> {
+pub(in crate::cli) fn read_text(path: &Path) -> Result<String, Failure> {
     std::fs::read_to_string(path)
         .map_err(|error| Failure::unusable(format!("cannot read `{}`: {error}", path.display())))
 }
 
-fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
+pub(in crate::cli) fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
     Scenario::parse(&path.display().to_string(), &read_text(path)?)
         .map_err(|error| Failure::unusable(format!("the scenario cannot be used:\n{error}")))
 }
@@ -152,7 +163,7 @@ fn read_answers(path: &Path) -> Result<Answers, Failure> {
 }
 
 /// Every fault of a file, a line each.
-pub(super) fn faulty(what: &str, faults: &[impl Display]) -> Failure {
+pub(in crate::cli) fn faulty(what: &str, faults: &[impl Display]) -> Failure {
     let lines: Vec<String> = faults.iter().map(ToString::to_string).collect();
     Failure::unusable(format!("the {what} cannot be used:\n{}", lines.join("\n")))
 }

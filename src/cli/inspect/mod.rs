@@ -5,6 +5,7 @@
 mod bench;
 mod freeze;
 mod inputs;
+mod lit_since;
 mod opening;
 mod run_id;
 mod serial;
@@ -15,8 +16,11 @@ use std::path::PathBuf;
 use chrono::{DateTime, FixedOffset};
 use clap::{Args, ValueEnum};
 
+pub(super) use self::inputs::{demo_station, faulty, is_simulated, read_scenario, read_text};
+pub(super) use self::serial::check as check_serial;
 use self::{inputs::Inputs, opening::Opening, show::Show};
 use super::{Ending, Failure};
+use crate::disk::Rack;
 use crate::driver::{Driver, Engine, Interrupted, Watcher as _, resume};
 use crate::record::sheet::Outcome;
 use crate::run::Run;
@@ -66,6 +70,9 @@ pub struct Arguments {
     /// Fixes when the run starts (RFC 3339)
     #[arg(long, value_name = "TIME", value_parser = moment)]
     start: Option<DateTime<FixedOffset>>,
+    /// The tube burns already, in a rack: since a time of today (07:40), RFC 3339, or for an age ("40 min")
+    #[arg(long, value_name = "TIME", conflicts_with = "captures")]
+    lit_since: Option<String>,
     /// Scenario of the simulated bench
     #[arg(long, value_name = "FILE", conflicts_with = "captures")]
     scenario: Option<PathBuf>,
@@ -96,6 +103,11 @@ pub fn run(arguments: Arguments) -> Result<Ending, Failure> {
     let mut run = Run::open(opening.plan.clone(), opening.identity.clone());
     let mut show = Show::new(inputs.format, inputs.pace);
     let (mut journal, events) = opening.folder()?;
+    // On the bench it is no longer in the rack.
+    let mut rack = Rack::read(inputs.store.reports()).map_err(|error| Failure::store(&error))?;
+    if rack.since(&inputs.serial).is_some() {
+        rack.change(&[], std::slice::from_ref(&inputs.serial)).map_err(|error| Failure::store(&error))?;
+    }
     show.begun(&run, journal.path(), events.len() > 1);
     if let Err(why) = resume(&mut run, &mut opening.bench, &mut journal, &events) {
         return Err(interrupted(&why, journal.path()));

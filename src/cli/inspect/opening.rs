@@ -9,6 +9,7 @@ use chrono::{DateTime, Datelike as _, FixedOffset, Utc};
 use super::{
     bench,
     inputs::{Inputs, faulty},
+    lit_since::lit_since,
     run_id::run_id,
 };
 use crate::cli::checks::{checks_of, last_of_each};
@@ -71,20 +72,20 @@ impl Opening {
         }
         let plan = Plan::from_texts(recipe, limits, station).map_err(|faults| faulty("stored plan", &faults))?;
         let started_at = DateTime::parse_from_rfc3339(&identity.started_at).unwrap_or_default();
-        let bench = bench::build(inputs, started_at, &mut identity.technician.clone())?;
+        let lit_since = identity.lit_since.as_deref().and_then(|since| DateTime::parse_from_rfc3339(since).ok());
+        let bench = bench::build(inputs, started_at, lit_since, &mut identity.technician.clone())?;
         Ok(Self { plan, identity: identity.clone(), bench, path: open.path.clone(), first: None, _lock: lock })
     }
 
     /// * `earlier`: how many runs of this serial there are already.
     fn anew(inputs: &Inputs, planned: Planned, earlier: usize, lock: SerialLock) -> Result<Self, Failure> {
-        let Planned { tube_type, texts, plan } = planned;
+        let Planned { tube_type, texts, plan, started_at, lit_since } = planned;
         let (station_text, station) = &inputs.station;
-        let started_at = started_at(inputs).with_timezone(&station.time_zone).fixed_offset();
         let reference = station.reference(&inputs.serial).is_some();
         let run_kind = if reference { RunKind::Reference } else { RunKind::Product };
         let reference_checks = if reference { None } else { Some(bench_checks(inputs, started_at)?) };
         let mut technician = String::new();
-        let bench = bench::build(inputs, started_at, &mut technician)?;
+        let bench = bench::build(inputs, started_at, lit_since, &mut technician)?;
         let tube = inputs.scenario.as_ref().and_then(|scenario| scenario.tube(&inputs.serial));
         let of_tube =
             |field: fn(&crate::phantom::ScenarioTube) -> &String| tube.map(field).cloned().unwrap_or_default();
@@ -106,6 +107,7 @@ impl Opening {
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
             run_kind,
             reference_checks,
+            lit_since: lit_since.map(|since| since.to_rfc3339_opts(chrono::SecondsFormat::Millis, false)),
             ..Identity::default()
         };
         let opened = Opened {
@@ -153,6 +155,8 @@ struct Planned {
     tube_type: String,
     texts: TypeTexts,
     plan: Plan,
+    started_at: DateTime<FixedOffset>,
+    lit_since: Option<DateTime<FixedOffset>>,
 }
 
 /// Type, texts and plan of a new run.
@@ -174,7 +178,11 @@ fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<Planned, Failure> {
     let recipe = Recipe::parse(&texts.recipe_name, &texts.recipe).map_err(|faults| faulty("recipe", &faults))?;
     let plan = Plan { recipe, limits, station: inputs.station.1.clone() };
     same_revision_same_text(&tube_type, &texts, &plan, runs)?;
-    Ok(Planned { tube_type, texts, plan })
+    let zone = inputs.station.1.time_zone;
+    let started_at = started_at(inputs).with_timezone(&zone).fixed_offset();
+    let lit_since =
+        inputs.lit_since.as_ref().map(|(from, text)| lit_since(from, text, started_at, zone)).transpose()?;
+    Ok(Planned { tube_type, texts, plan, started_at, lit_since })
 }
 
 /// `--type`, else the answers, else the serial's last run, else the scenario, else a person.

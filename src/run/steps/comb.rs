@@ -10,7 +10,7 @@ use crate::{
     run::{
         filled::Filled,
         notebook::{DwellEnd, Notebook, Seen},
-        spacing,
+        rack, spacing,
     },
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
@@ -36,7 +36,10 @@ pub(super) fn whole_cycles(book: &Notebook, from: &str, cycles: f64) -> Result<(
     if dwelt.end == Some(DwellEnd::Longest) {
         return Err(format!("{from} did not settle within {:.0} min", dwelt.longest / 60.0));
     }
-    dwelt.warmup.last_cycles(cycles).ok_or_else(|| format!("{from} shows no {cycles} whole walk cycles"))
+    dwelt.warmup.last_cycles(cycles).ok_or_else(|| match book.rack {
+        Some(_) => rack::NO_CYCLE.to_owned(),
+        None => format!("{from} shows no {cycles} whole walk cycles"),
+    })
 }
 
 fn counts(room: &Room<'_>, from: &str, cycles: f64) -> [Filled; 2] {
