@@ -11,4 +11,5 @@ pub mod shapes;
 pub mod smoothing;
 pub mod spectra;
 pub mod summary;
+pub mod tones;
 mod triangle;

@@ -6,6 +6,7 @@ use serde::{Deserialize, Serialize};
 
 use super::{
     finding::CaptureFinding,
+    light::LightCaptured,
     question::{Answer, Question},
     reference::ReferenceCheck,
 };
@@ -54,7 +55,9 @@ pub enum Happening {
     },
     /// A capture came.
     Captured(Box<Captured>),
-    /// A capture could not be had or not be read.
+    /// A fast trace of the total light came.
+    Light(Box<LightCaptured>),
+    /// A capture or a light trace could not be had or not be read.
     CaptureLost {
         /// Step that wanted it.
         step: String,

@@ -25,14 +25,18 @@ use std::fmt;
 
 use chrono::{DateTime, FixedOffset};
 
-use self::{notebook::Notebook, rack::Rack, steps::Step, steps::Wish};
+use self::{
+    notebook::Notebook,
+    rack::Rack,
+    steps::{LightWish, Step, Wish},
+};
 use crate::{
     record::{
         event::{Happening, Identity},
         question::Question,
         sheet::Sheet,
     },
-    station::{CaptureRequest, ReadingRequest, Want},
+    station::{CaptureRequest, LightRequest, ReadingRequest, Want},
 };
 
 /// When something happened, on both clocks.
@@ -150,6 +154,10 @@ impl Run {
         match self.wish() {
             Wish::Capture { not_before_ms, samples, keep, trace } => {
                 Want::Capture(CaptureRequest { step, number: self.next_capture, not_before_ms, samples, keep, trace })
+            }
+            Wish::Light(LightWish { lit, sample_rate, samples, band, overlap }) => {
+                let number = self.next_capture;
+                Want::Light(LightRequest { step, number, lit, sample_rate, samples, band, overlap })
             }
             Wish::Reading(what) => Want::Reading(ReadingRequest { step, what, not_before_ms: 0 }),
             Wish::Ask { word, text, expects, high_voltage } => {

@@ -13,4 +13,4 @@ mod want;
 
 pub use bench::{Bench, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, Trouble};
 pub use journal::{Durability, Journal, JournalError};
-pub use want::{CaptureRequest, ReadingKind, ReadingRequest, Want};
+pub use want::{CaptureRequest, LightRequest, ReadingKind, ReadingRequest, Want};

@@ -13,6 +13,7 @@ use chrono_tz::Tz;
 
 use super::{bench::BenchTruth, tube::TubeTruth, world::World};
 pub use reader::ScenarioFault;
+pub(super) use reader::nearest_word;
 
 /// A simulated bench, or several, and the tubes that come to it.
 #[derive(Debug, Clone, PartialEq)]
@@ -58,10 +59,8 @@ pub struct ScenarioTube {
     pub bench: String,
     /// When its run is opened.
     pub started_at: DateTime<FixedOffset>,
-    /// What is true of it.
+    /// What is true of it, its faults included.
     pub truth: TubeTruth,
-    /// What the technician sees: name of the look step, word.
-    pub looks: BTreeMap<String, String>,
 }
 
 /// What is wrong in a scenario file, in file order.

@@ -78,6 +78,16 @@ pub struct Polarizer {
     pub u_angle: f64,
 }
 
+/// Fast photodiode on the output beam.
+#[derive(Debug, Clone, PartialEq)]
+pub struct LightDetector {
+    /// Source of traces.
+    pub source: Source,
+    /// Where its response has fallen by 3 dB, with that of the digitizer, Hz.
+    pub bandwidth: f64,
+}
+
+pub(super) const LIGHT_DETECTOR: &[&str] = &["source", "bandwidth"];
 pub(super) const INTERFEROMETER: &[&str] = &["source", "fsr", "fsr_u", "columns", "certificate"];
 pub(super) const POWER_METER: &[&str] = &["source", "factor", "u", "certificate"];
 pub(super) const SUPPLY: &[&str] = &["source", "ballast", "ballast_distance", "u", "certificate"];
@@ -172,6 +182,12 @@ pub(super) fn polarizer(table: &Table<'_>) -> Option<Polarizer> {
         item.quantity_within(Dimension::Angle, (0.0, std::f64::consts::FRAC_PI_4), "an angle from 0° to 45°")
     });
     Some(Polarizer { source: source?, extinction: extinction?, u_angle: u_angle? })
+}
+
+pub(super) fn light_detector(table: &Table<'_>) -> Option<LightDetector> {
+    let source = source(table, &["simulated", "folder"]);
+    let bandwidth = table.need("bandwidth").and_then(|item| item.positive(Dimension::Frequency));
+    Some(LightDetector { source: source?, bandwidth: bandwidth? })
 }
 
 /// `Some(None)` where there is none. Only an interferometer's says in which medium it was calibrated.

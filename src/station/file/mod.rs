@@ -15,8 +15,8 @@ use crate::{
     },
     uncertainty::Certificate,
 };
-use instruments::{INTERFEROMETER, POLARIZER, POWER_METER, SUPPLY};
-pub use instruments::{Interferometer, Polarizer, PowerMeter, Source, Supply};
+use instruments::{INTERFEROMETER, LIGHT_DETECTOR, POLARIZER, POWER_METER, SUPPLY};
+pub use instruments::{Interferometer, LightDetector, Polarizer, PowerMeter, Source, Supply};
 pub use reference::{BeatNote, Reference, ReferenceValue};
 
 /// A station file. An instrument that the station lacks is none.
@@ -36,14 +36,25 @@ pub struct StationFile {
     pub supply: Option<Supply>,
     /// Polarizer ahead of the power meter.
     pub polarizer: Option<Polarizer>,
+    /// Fast photodiode on the output beam, for the noise of the light.
+    pub light_detector: Option<LightDetector>,
     /// Reference tubes, in the order of the file; a bench without one is not held for their checks.
     pub references: Vec<Reference>,
     /// SHA-256 of the text, hexadecimal.
     pub sha256: String,
 }
 
-const TOP: &[&str] =
-    &["station", "time_zone", "shifts", "interferometer", "power_meter", "supply", "polarizer", "reference"];
+const TOP: &[&str] = &[
+    "station",
+    "time_zone",
+    "shifts",
+    "interferometer",
+    "power_meter",
+    "supply",
+    "polarizer",
+    "light_detector",
+    "reference",
+];
 
 impl StationFile {
     /// Reads a station file.
@@ -60,6 +71,7 @@ impl StationFile {
             let power_meter = part(root, "power_meter", POWER_METER, instruments::power_meter);
             let supply = part(root, "supply", SUPPLY, instruments::supply);
             let polarizer = part(root, "polarizer", POLARIZER, instruments::polarizer);
+            let light_detector = part(root, "light_detector", LIGHT_DETECTOR, instruments::light_detector);
             let references = reference::references(root, shifts.as_deref());
             Some(Self {
                 station: station?.to_owned(),
@@ -69,6 +81,7 @@ impl StationFile {
                 power_meter: power_meter?,
                 supply: supply?,
                 polarizer: polarizer?,
+                light_detector: light_detector?,
                 references: references?,
                 sha256: sha256_hex(text),
             })
