@@ -36,6 +36,7 @@ use crate::{
         question::Question,
         sheet::Sheet,
     },
+    station::file::Interferometer,
     station::{CaptureRequest, LightRequest, ReadingRequest, Want},
 };
 
@@ -114,9 +115,10 @@ impl Run {
     pub fn open(plan: Plan, identity: Identity) -> Self {
         let steps = plan.recipe.steps.iter().map(|step| steps::step_of(&step.kind)).collect();
         let opened_at = DateTime::parse_from_rfc3339(&identity.started_at).ok();
+        let air = plan.station.interferometer.as_ref().and_then(Interferometer::air_line);
         let mut run = Self {
             plan,
-            book: Notebook::begin(Rack::of(&identity, opened_at)),
+            book: Notebook::begin(Rack::of(&identity, opened_at), air),
             steps,
             current: 0,
             next_capture: 1,

@@ -11,7 +11,7 @@ use crate::{
         sheet::{GainChart, SweepChart},
     },
     sweep::{Place, SharedAxis},
-    uncertainty::Measured,
+    uncertainty::{BudgetLine, Measured},
 };
 
 /// One capture with light that could be measured.
@@ -81,6 +81,8 @@ pub(crate) struct Dwelt {
 pub(crate) struct Notebook {
     /// The tube burnt already when the run was opened; times then count from the opening.
     pub rack: Option<Rack>,
+    /// What the air of the bench adds to a mode spacing, relative.
+    pub air: Option<BudgetLine>,
     /// Monotonic ms of first light.
     pub first_light_ms: Option<u64>,
     /// The tube gives no light, and how that was seen.
@@ -111,8 +113,8 @@ pub(crate) struct Notebook {
 
 impl Notebook {
     /// Nothing seen yet, of a tube from the rack or one that is struck here.
-    pub fn begin(rack: Option<Rack>) -> Self {
-        Self { rack, ..Self::default() }
+    pub fn begin(rack: Option<Rack>, air: Option<BudgetLine>) -> Self {
+        Self { rack, air, ..Self::default() }
     }
 
     /// Seconds since first light, negative before it; since the opening while there was no light yet.

@@ -56,8 +56,7 @@ impl Rack {
 
 /// What the walk seen so far says on the walk to come; none before the recipe's shortest look is over.
 pub(super) fn resting(state: &WarmupState, keys: &recipe::Dwell) -> Option<Rest> {
-    let (first, last) = (state.points.first()?.0, state.points.last()?.0);
-    if last - first < keys.rest_for_s { None } else { rest(&state.points, keys.horizon_s) }
+    rest(&state.points, keys.rest_for_s, keys.horizon_s)
 }
 
 /// At rest: the walk to come is inside the recipe's bound.
