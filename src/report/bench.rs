@@ -14,6 +14,7 @@ use super::{
     scene::{Anchor, DARK, GREY, RUST, Scene, Stroke, Style},
     typeface::Typeface,
 };
+use crate::phrase::{Language, Phrase, Saying, name, page};
 
 /// One measurand of one reference tube over time, in the unit that people see.
 #[derive(Debug, Clone, PartialEq)]
@@ -21,7 +22,7 @@ pub struct BenchChart {
     /// Serial of the tube.
     pub serial: String,
     /// Name of the measurand.
-    pub measurand: String,
+    pub measurand: &'static Phrase,
     /// Unit, as people write it.
     pub unit: String,
     /// Decimals shown.
@@ -54,12 +55,14 @@ pub struct BenchPoint {
 /// What is written over the charts.
 #[derive(Debug, Clone, PartialEq, Default)]
 pub struct BenchTitle {
-    /// "Reference tubes of bench-1".
-    pub title: String,
-    /// Sentences below it.
-    pub lines: Vec<String>,
-    /// Said at the right of the head, or empty.
-    pub origin: String,
+    /// Name of the bench.
+    pub station: String,
+    /// Sentences below the title.
+    pub lines: Vec<Saying>,
+    /// It is a simulated one.
+    pub simulated: bool,
+    /// Language of the page.
+    pub language: Language,
 }
 
 /// Height that the head takes, pt.
@@ -77,21 +80,22 @@ pub fn bench_pdf(
     program: &str,
     sha256: &str,
 ) -> Result<Vec<u8>, PdfError> {
-    let face = Typeface::embedded().ok_or(PdfError::Typeface)?;
+    let face = &Typeface::embedded(title.language).ok_or(PdfError::Typeface)?;
     let mut pages = Vec::new();
-    let (mut page, mut top) = head(title, face);
+    let (mut sheet, mut top) = head(title, face);
     for chart in charts {
         if top + charts::BENCH_HEIGHT > BOTTOM {
-            pages.push(std::mem::take(&mut page));
-            (page, top) = head(title, face);
+            pages.push(std::mem::take(&mut sheet));
+            (sheet, top) = head(title, face);
         }
         let frame = Frame { left: LEFT, top, width: RIGHT - LEFT, plot: 100.0 };
-        page.append(charts::bench(chart, face, frame));
+        sheet.append(charts::bench(chart, face, frame));
         top += charts::BENCH_HEIGHT;
     }
-    pages.push(page);
+    pages.push(sheet);
     let about = pdf::About {
-        title: title.title.clone(),
+        title: face.say(&page::BENCH_TITLE.with([name(title.station.clone())])),
+        language: title.language.code(),
         program: program.to_owned(),
         date: Some(date),
         id: document_id(sha256, ""),
@@ -103,11 +107,13 @@ pub fn bench_pdf(
 /// The head of a page and where it ends.
 fn head(title: &BenchTitle, face: &Typeface) -> (Scene, f64) {
     let mut scene = Scene::default();
-    scene.text(face, (RIGHT, 44.0), Anchor::End, &title.origin, Style::plain(7.0, RUST));
-    scene.fitted(face, (LEFT, HEAD - 4.0), Anchor::Start, &title.title, Style::bold(15.0, DARK), RIGHT - LEFT);
+    let origin = if title.simulated { face.word(&page::SIMULATED) } else { "" };
+    scene.text(face, (RIGHT, 44.0), Anchor::End, origin, Style::plain(7.0, RUST));
+    let words = face.say(&page::BENCH_TITLE.with([name(title.station.clone())]));
+    scene.fitted(face, (LEFT, HEAD - 4.0), Anchor::Start, &words, Style::bold(15.0, DARK), RIGHT - LEFT);
     let mut y = HEAD + 8.0;
     for line in &title.lines {
-        for line in face.wrap(line, Style::plain(8.0, GREY), RIGHT - LEFT, 3) {
+        for line in face.wrap(&face.say(line), Style::plain(8.0, GREY), RIGHT - LEFT, 3) {
             scene.text(face, (LEFT, y), Anchor::Start, &line, Style::plain(8.0, GREY));
             y += 10.5;
         }
@@ -129,7 +135,7 @@ pub fn bench_csv(charts: &[BenchChart]) -> Vec<u8> {
                 neutralise(&chart.serial),
                 point.at.to_rfc3339(),
                 point.run_id.clone(),
-                chart.measurand.clone(),
+                chart.measurand.en.to_owned(),
                 format!("{:.*}", chart.decimals + 2, point.value),
                 chart.unit.clone(),
                 format!("{:.*}", chart.decimals + 2, chart.value),

@@ -2,11 +2,13 @@
 //! Must not fit or judge.
 //! Main type: [`Rack`].
 
-use chrono::{DateTime, FixedOffset};
+use chrono::{DateTime, FixedOffset, NaiveDateTime};
 
+use super::Run;
 use crate::{
     behaviour::{Rest, WarmupState, rest},
     limits::Limits,
+    phrase::{Saying, minute, reasons},
     recipe,
     record::{
         event::Identity,
@@ -14,15 +16,6 @@ use crate::{
     },
 };
 
-/// How the reason of every row begins that a run from the rack leaves empty.
-const TAKEN: &str = "taken from the rack";
-/// What only a whole walk cycle shows.
-pub(super) const NO_CYCLE: &str =
-    "taken from the rack at rest: no whole walk cycle was seen; take it sooner, or strike it cold here";
-
-/// The same as a reason for hold: spacing, counts, power and swaps over one place of the comb judge nothing.
-pub(super) const NO_CYCLE_HOLD: &str = "The tube came from the rack at rest and no whole walk cycle was seen: take it \
-    sooner, or strike it cold here.";
 /// Share of the wanted cycles that is watched.
 const MARGIN: f64 = 1.02;
 
@@ -30,7 +23,7 @@ const MARGIN: f64 = 1.02;
 #[derive(Debug, Clone, PartialEq)]
 pub(crate) struct Rack {
     /// Date and time of day since when it burns.
-    since: String,
+    since: NaiveDateTime,
     /// How long it burnt when the run was opened, s.
     pub age_s: f64,
 }
@@ -40,17 +33,17 @@ impl Rack {
     pub fn of(identity: &Identity, opened_at: Option<DateTime<FixedOffset>>) -> Option<Self> {
         let since = DateTime::parse_from_rfc3339(identity.lit_since.as_deref()?).ok()?;
         let age_s = opened_at.map_or(0.0, |at| (at - since).num_milliseconds() as f64 / 1e3).max(0.0);
-        Some(Self { since: since.format("%Y-%m-%d %H:%M").to_string(), age_s })
+        Some(Self { since: since.naive_local(), age_s })
     }
 
     /// Why its strike and its warm-up have no rows.
-    pub fn reason(&self) -> String {
-        format!("taken from the rack, burning since {}", self.since)
+    pub fn reason(&self) -> Saying {
+        reasons::FROM_RACK.with([minute(self.since)])
     }
 
     /// The same for a reader of the sheet.
-    pub fn sentence(&self) -> String {
-        format!("Taken from the rack, burning since {}: its strike and its warm-up were not seen here.", self.since)
+    pub fn sentence(&self) -> Saying {
+        reasons::FROM_RACK_REMARK.with([minute(self.since)])
     }
 }
 
@@ -80,22 +73,24 @@ pub(super) fn empty_unseen(rows: &mut [Row]) {
     let under_one = matches!(watched, Some(Value::Number { value, .. }) if value.abs() < 1.0);
     for row in rows.iter_mut().filter(|row| under_one && row.measurand == "swap_count") {
         if matches!(row.value, Value::Count { value: 0, .. }) {
-            row.value = Value::Absent(NO_CYCLE.into());
-            row.note = String::new();
+            row.value = Value::Absent((&reasons::RACK_NO_CYCLE).into());
+            row.note = Saying::none();
         }
     }
 }
 
 /// The limits without those that do not bind a tube from the rack (`rack = "skip"`), where the rack is why there is no
 /// value; their rows say so.
-pub(super) fn limits(limits: &Limits, rows: &mut [Row]) -> Limits {
-    let mut left = limits.clone();
-    for limit in limits.limits.iter().filter(|limit| limit.rack_skips) {
+pub(super) fn limits(run: &Run, rows: &mut [Row]) -> Limits {
+    let mut left = run.plan.limits.clone();
+    let Some(rack) = &run.book.rack else { return left };
+    let hidden = [rack.reason(), (&reasons::RACK_NO_CYCLE).into()];
+    for limit in run.plan.limits.limits.iter().filter(|limit| limit.rack_skips) {
         let unseen = |row: &&mut Row| {
-            row.measurand == limit.measurand && matches!(&row.value, Value::Absent(why) if why.starts_with(TAKEN))
+            row.measurand == limit.measurand && matches!(&row.value, Value::Absent(why) if hidden.contains(why))
         };
         if let Some(row) = rows.iter_mut().find(unseen) {
-            row.note = "not judged: from the rack".into();
+            row.note = (&reasons::RACK_NOT_JUDGED).into();
             left.limits.retain(|other| other.measurand != limit.measurand);
         }
     }

@@ -12,6 +12,7 @@ use crate::cli::{Ending, Failure, home};
 use crate::disk::{Home, Rack, Store, demo_bench};
 use crate::instruments::CaptureFolder;
 use crate::phantom::Scenario;
+use crate::phrase::Language;
 use crate::station::{
     answers::Answers,
     file::{Source, StationFile},
@@ -41,6 +42,8 @@ pub(super) struct Inputs {
     pub start: Option<DateTime<FixedOffset>>,
     /// Since when the tube burns already, as given, and where; none if it is struck here.
     pub lit_since: Option<(&'static str, String)>,
+    /// Language, if it was asked for.
+    pub language: Option<Language>,
     pub format: Format,
 }
 
@@ -97,6 +100,7 @@ impl Inputs {
             pace: simulated.then(|| arguments.pace.unwrap_or(PACE)),
             seed: arguments.seed,
             start: arguments.start,
+            language: arguments.language,
             format: arguments.format,
         })
     }

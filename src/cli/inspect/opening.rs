@@ -70,6 +70,9 @@ impl Opening {
         if identity.simulated != inputs.simulated() {
             return other(if identity.simulated { "is on a simulated bench" } else { "is on a real bench" });
         }
+        if inputs.language.is_some_and(|given| given != identity.language()) {
+            return other(&format!("has its sheet in language `{}`", identity.language().code()));
+        }
         let plan = Plan::from_texts(recipe, limits, station).map_err(|faults| faulty("stored plan", &faults))?;
         let started_at = DateTime::parse_from_rfc3339(&identity.started_at).unwrap_or_default();
         let lit_since = identity.lit_since.as_deref().and_then(|since| DateTime::parse_from_rfc3339(since).ok());
@@ -105,6 +108,7 @@ impl Opening {
             from_captures: inputs.captures.is_some(),
             times_assumed: inputs.captures.as_ref().is_some_and(|folder| folder.first_at().is_none()),
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
+            language: inputs.language.unwrap_or(station.language).stored(),
             run_kind,
             reference_checks,
             lit_since: lit_since.map(|since| since.to_rfc3339_opts(chrono::SecondsFormat::Millis, false)),

@@ -21,8 +21,9 @@ use crate::{
     gauge::reference::{ALARM, Target, chart},
     measurand,
     phantom::Scenario,
+    phrase::{Language, Saying, figure, minute, page, said},
     record::reference::ReferenceCheck,
-    report::{BenchChart, BenchPoint, BenchTitle, SIMULATED, bench_csv, bench_pdf},
+    report::{BenchChart, BenchPoint, BenchTitle, bench_csv, bench_pdf},
     station::{
         file::{Reference, StationFile},
         shift::{Shift, shift_at},
@@ -72,7 +73,7 @@ struct Bench {
     at: DateTime<FixedOffset>,
     shift: Option<Shift>,
     checks: Vec<ReferenceCheck>,
-    holds: Vec<String>,
+    holds: Vec<Saying>,
     unclosed: Vec<String>,
     /// Product runs since the last check that passed, of whichever tube passed longest ago.
     since: Vec<FoundRun>,
@@ -106,7 +107,7 @@ impl Bench {
         };
         Some(BenchChart {
             serial: tube.serial.clone(),
-            measurand: measurand.name.to_owned(),
+            measurand: &measurand.name,
             unit: measurand.unit().symbol.to_owned(),
             decimals: measurand.decimals,
             value: measurand.shown(target.value),
@@ -197,15 +198,17 @@ fn pdf(bench: &Bench) -> Result<Vec<u8>, Failure> {
     let charts: Vec<BenchChart> =
         bench.station.references.iter().flat_map(|tube| bench.charts(tube)).map(|(_, chart)| chart).collect();
     let stored = bench.checks.iter().filter(|check| check.stored).count();
-    let mut lines = vec![format!("As of {}.", print::local(bench, bench.at))];
-    lines.extend(bench.holds.iter().map(|sentence| format!("Gives no verdicts: {sentence}")));
+    let local = bench.at.with_timezone(&bench.station.time_zone).naive_local();
+    let mut lines = vec![page::BENCH_AS_OF.with([minute(local)])];
+    lines.extend(bench.holds.iter().map(|sentence| page::BENCH_HOLDS.with([said(sentence.clone())])));
     if stored > 0 {
-        lines.push(format!("{stored} of {} checks came stored with the scenario.", bench.checks.len()));
+        lines.push(page::BENCH_STORED.with([figure(stored), figure(bench.checks.len())]));
     }
     let title = BenchTitle {
-        title: format!("Reference tubes of {}", bench.station.station),
+        station: bench.station.station.clone(),
         lines,
-        origin: if bench.simulated { SIMULATED.to_owned() } else { String::new() },
+        simulated: bench.simulated,
+        language: Language::English,
     };
     let sha256: String = Sha256::digest(bench_csv(&charts)).iter().map(|byte| format!("{byte:02x}")).collect();
     let program = format!("tubewright {}", env!("CARGO_PKG_VERSION"));

@@ -54,7 +54,7 @@ mod tests {
         };
         let chart = BenchChart {
             serial: "R".into(),
-            measurand: "Power".into(),
+            measurand: &crate::measurand::CATALOGUE[0].name,
             unit: "mW".into(),
             decimals: 2,
             value: 1.0,

@@ -8,6 +8,7 @@ use serde_json::json;
 use super::{Bench, plot::plot};
 use crate::{
     cli::{Failure, output},
+    phrase::Saying,
     station::{
         file::{BeatNote, Reference},
         standing::{Standing, clock},
@@ -34,7 +35,7 @@ pub(super) fn text(bench: &Bench) -> Result<(), Failure> {
         output::result("Gives verdicts.")?;
     }
     for sentence in &bench.holds {
-        output::result(&format!("Gives no verdicts: {sentence}"))?;
+        output::result(&format!("Gives no verdicts: {}", sentence.english()))?;
     }
     for sentence in &bench.unclosed {
         output::result(sentence)?;
@@ -63,7 +64,10 @@ fn certificates(bench: &Bench) -> Result<(), Failure> {
             days => format!("{days} days left"),
         };
         let number = &certificate.number;
-        output::result(&format!("  {role:<15} {number:<12} of {}, due {}, {left}", certificate.date, certificate.due))?;
+        output::result(&format!(
+            "  {:<15} {number:<12} of {}, due {}, {left}",
+            role.en, certificate.date, certificate.due
+        ))?;
     }
     Ok(())
 }
@@ -73,7 +77,7 @@ fn reference(bench: &Bench, tube: &Reference, standing: &Standing) -> Result<(),
         Standing::Never => "never checked here".to_owned(),
         Standing::Good { last } => format!("in bounds at {}", clock(last)),
         Standing::Due { since, last } => format!("DUE since {}; last checked {}", clock(since), clock(last)),
-        Standing::Out { last, why } => format!("OUT OF BOUNDS at {}: {why}", clock(last)),
+        Standing::Out { last, why } => format!("OUT OF BOUNDS at {}: {}", clock(last), why.english()),
     };
     output::result(&format!("\nReference tube {} ({}): {how}", tube.serial, tube.tube_type))?;
     for (_, chart) in bench.charts(tube) {
@@ -83,7 +87,7 @@ fn reference(bench: &Bench, tube: &Reference, standing: &Standing) -> Result<(),
             Some((up, down)) => format!("sums {up:.1} up, {down:.1} down, alarm above {}", chart.alarm),
             None => "no sums yet".to_owned(),
         };
-        let name = chart.measurand.to_lowercase();
+        let name = chart.measurand.en.to_lowercase();
         output::result(&format!(
             "  {name}, {}: {:.decimals$}, off by {:+.decimals$} of ±{:.decimals$} allowed; {} checks; {sums}",
             chart.unit,
@@ -125,7 +129,7 @@ fn due_next(bench: &Bench) -> Result<(), Failure> {
     let certificates = bench.station.certificates();
     match certificates.iter().min_by_key(|(_, certificate)| certificate.due) {
         Some((role, certificate)) => {
-            output::result(&format!("  {}: certificate {} of the {role}", certificate.due, certificate.number))
+            output::result(&format!("  {}: certificate {} of the {}", certificate.due, certificate.number, role.en))
         }
         None => Ok(()),
     }
@@ -149,11 +153,11 @@ pub(super) fn json(bench: &Bench) -> Result<(), Failure> {
     let shift = bench.shift.map(|shift| [shift.start.to_rfc3339(), shift.end.to_rfc3339()]);
     say(json!({
         "kind": "bench", "station": bench.station.station, "at": bench.at.to_rfc3339(), "shift": shift,
-        "gives_verdicts": bench.holds.is_empty(), "holds": bench.holds, "unclosed": bench.unclosed,
+        "gives_verdicts": bench.holds.is_empty(), "holds": bench.holds.iter().map(Saying::english).collect::<Vec<_>>(), "unclosed": bench.unclosed,
     }))?;
     for (role, certificate) in bench.station.certificates() {
         say(json!({
-            "kind": "certificate", "role": role, "number": certificate.number, "date": certificate.date.to_string(),
+            "kind": "certificate", "role": role.en, "number": certificate.number, "date": certificate.date.to_string(),
             "due": certificate.due.to_string(), "medium": certificate.medium,
             "days_left": (certificate.due - bench.at.date_naive()).num_days(),
         }))?;
@@ -167,7 +171,7 @@ pub(super) fn json(bench: &Bench) -> Result<(), Failure> {
         };
         say(json!({
             "kind": "reference", "serial": tube.serial, "type": tube.tube_type, "state": state,
-            "last": last.map(chrono::DateTime::to_rfc3339), "why": why,
+            "last": last.map(chrono::DateTime::to_rfc3339), "why": why.map(Saying::english),
         }))?;
         for (target, chart) in bench.charts(tube) {
             for point in &chart.points {

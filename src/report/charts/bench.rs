@@ -2,7 +2,8 @@
 //! Must not decide what is out of bounds.
 //! Main function: [`bench`].
 
-use super::{Frame, Plot, TICK, missing, titles};
+use super::{Frame, Plot, TICK, titles};
+use crate::phrase::{day, figure, name, page, within};
 use crate::report::{
     bench::BenchChart,
     scene::{Anchor, BLUE, DARK, INSIDE, Point, RUST, Scene, Stroke, Style},
@@ -17,19 +18,19 @@ const DAY: f64 = 86_400.0;
 
 /// The chart, or why there is none.
 pub fn bench(chart: &BenchChart, face: &Typeface, frame: Frame) -> Scene {
-    let title = format!("{}, {}", chart.serial, chart.measurand.to_lowercase());
+    let of = || [name(chart.serial.clone()), within(chart.measurand)];
+    let mut scene = Scene::default();
     let (Some(first), Some(last)) = (chart.points.first(), chart.points.last()) else {
-        return missing(face, frame, &title, "no check yet");
+        titles(&mut scene, face, frame, &face.say(&page::BENCH_NO_CHECK.with(of())), "");
+        return scene;
     };
     let days = |at: chrono::DateTime<chrono::FixedOffset>| (at - first.at).num_seconds() as f64 / DAY;
     let x = (0.0, days(last.at).max(1.0) * 1.01);
-    let mut scene = Scene::default();
-    let (decimals, unit) = (chart.decimals, &chart.unit);
-    let subtitle = format!(
-        "{:.decimals$} ± {:.decimals$} {unit}: band; last check {:.decimals$} {unit}; a cross is out of bounds",
-        chart.value, chart.within, last.value
-    );
-    titles(&mut scene, face, frame, &title, &subtitle);
+    let shown = |value: f64| figure(format!("{value:.*}", chart.decimals));
+    let unit = || name(chart.unit.clone());
+    let band = [shown(chart.value), shown(chart.within), unit(), shown(last.value)];
+    let title = face.say(&page::BENCH_OF_TUBE.with(of()));
+    titles(&mut scene, face, frame, &title, &face.say(&page::BENCH_BAND.with(band)));
     let far = chart.points.iter().map(|point| (point.value - chart.value).abs()).filter(|far| far.is_finite());
     let reach = far.fold(chart.within, f64::max) * 1.15;
     // Departures from the value: that is what a reader wants to see, and its ticks are short.
@@ -44,7 +45,8 @@ pub fn bench(chart: &BenchChart, face: &Typeface, frame: Frame) -> Scene {
             false => scene.cross(place, 2.8, Stroke::solid(RUST, 1.2)),
         }
     }
-    plot.axes(&mut scene, face, &format!("days since {}; off by, {unit}", first.at.format("%Y-%m-%d")), 8, 3);
+    let axis = face.say(&page::BENCH_AXIS.with([day(first.at.date_naive()), unit()]));
+    plot.axes(&mut scene, face, &axis, 8, 3);
     let below = Frame { top: frame.top + frame.plot + 28.0, plot: SUMS, ..frame };
     sums(&mut scene, face, (chart, x), below, &days);
     scene
@@ -63,9 +65,10 @@ fn sums(
     let plot =
         Plot::new(frame, x, (0.0, known.iter().map(|(_, (up, down))| up.max(*down)).fold(chart.alarm, f64::max)));
     let words = match known.is_empty() {
-        true => "cumulative sums: none while the standard deviation of a check is unknown".to_owned(),
-        false => format!("cumulative sums, standard deviations: up solid, down dashed; alarm above {}", chart.alarm),
+        true => (&page::BENCH_NO_SUMS).into(),
+        false => page::BENCH_SUMS.with([figure(chart.alarm)]),
     };
+    let words = face.say(&words);
     scene.fitted(face, (plot.left, plot.top - 5.0), Anchor::Start, &words, TICK, plot.right - plot.left);
     let alarm = plot.at_y(chart.alarm);
     scene.line(vec![(plot.left, alarm), (plot.right, alarm)], Stroke::solid(RUST, 0.6));
@@ -76,7 +79,7 @@ fn sums(
     scene.line(drawn(|sums| sums.1), Stroke::dashed(DARK, 0.9, 2.0, 1.5));
     if known.iter().any(|(_, (up, down))| up.max(*down) > chart.alarm) {
         let style = Style { ink: RUST, ..TICK };
-        scene.text(face, (plot.right, plot.top - 5.0), Anchor::End, "drift: above the alarm", style);
+        scene.text(face, (plot.right, plot.top - 5.0), Anchor::End, face.word(&page::BENCH_DRIFT), style);
     }
     plot.axes(scene, face, "", 8, 2);
 }
