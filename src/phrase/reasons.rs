@@ -56,6 +56,16 @@ table! {
     NO_LIGHT_AFTER = "no light after {0} tries", "kein Licht nach {0} Versuchen";
     NOT_LIT = "the tube did not light", "die Röhre zündete nicht";
 
+    // From the rack.
+    FROM_RACK = "taken from the rack, burning since {0}", "aus dem Einbrenngestell genommen, brennt seit {0}";
+    FROM_RACK_REMARK = "Taken from the rack, burning since {0}: its strike and its warm-up were not seen here.",
+        "Aus dem Einbrenngestell genommen, brennt seit {0}: Zündung und Einlaufen wurden hier nicht gesehen.";
+    RACK_NO_CYCLE = "taken from the rack at rest: no whole walk cycle was seen; take it sooner, or strike it cold here",
+        "in Ruhe aus dem Einbrenngestell genommen: keine ganze Wanderungsperiode gesehen; früher entnehmen oder hier kalt zünden";
+    RACK_NO_CYCLE_HOLD = "The tube came from the rack at rest and no whole walk cycle was seen: take it sooner, or strike it cold here.",
+        "Die Röhre kam in Ruhe aus dem Einbrenngestell, keine ganze Wanderungsperiode wurde gesehen: früher entnehmen oder hier kalt zünden.";
+    RACK_NOT_JUDGED = "not judged: from the rack", "nicht bewertet: aus dem Einbrenngestell";
+
     // Dwell.
     NO_LIGHT_FOR = "no light in the captures for 30 s", "seit 30 s kein Licht in den Aufnahmen";
     NO_LIGHT_IN_DWELL = "no light in any capture of the dwell", "in keiner Aufnahme des Einlaufens Licht";
