@@ -87,13 +87,10 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
         return Ok(());
     }
     let first = attempt(&segment, settings, result);
-    if doubtful(&first, result)
-        && let Some(better) = without_baseline(&segment, settings, &before, result)
-    {
-        *result = better;
-        return Ok(());
+    match doubtful(&first, result).then(|| without_baseline(&segment, settings, &before, result)).flatten() {
+        Some(better) => *result = better,
+        None => first?,
     }
-    first?;
     if !segment.has_ramp && turns(result, settings) {
         result.mode_spacing = None;
         return Err(Refusal::NoTurn);
@@ -184,7 +181,12 @@ fn doubtful(first: &Result<(), Refusal>, result: &Measurement) -> bool {
     match first {
         Err(Refusal::Dark | Refusal::FewLevels { .. } | Refusal::FarTooSlow { .. } | Refusal::Fringes { .. }) => false,
         Err(_) => true,
-        Ok(()) => misfits(result) || result.no_spacing.is_some(),
+        // A tube that did not hold still did not, whatever the baseline.
+        Ok(()) => match result.no_spacing {
+            Some(Refusal::Unsteady { .. }) => false,
+            Some(_) => true,
+            None => misfits(result),
+        },
     }
 }
 
