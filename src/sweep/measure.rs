@@ -8,9 +8,10 @@ use super::{
     fitted, orders,
     orders::Orders,
     outcome,
+    refine::{self, Swept},
     segment::{self, Segment},
 };
-use crate::capture::Capture;
+use crate::capture::{Capture, TimeBase};
 
 /// Fewest samples on a ramp that can be measured.
 const FEWEST_SAMPLES: usize = 100;
@@ -63,20 +64,55 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
     if look.peaks.len() > MOST_LINES {
         return Err(Refusal::Clutter { count: look.peaks.len() });
     }
-    let orders = repeat(&look, &segment, settings)?;
-    let fitted = fitted::fit_lines(&segment, &look, &orders).ok_or(Refusal::NoFit)?;
-    if let Some(pole) = fitted.fit.pole {
-        let time_constant = pole * segment.dt;
-        if pole > 0.3 * fitted.fit.width {
-            result.warnings.push(Warning::SlowDetector { time_constant });
-        }
+    let mut main = sweep(segment, &look, settings)?;
+    let fit = &main.fitted.fit;
+    if let Some(pole) = fit.pole.filter(|pole| *pole > 0.3 * fit.width) {
+        result.warnings.push(Warning::SlowDetector { time_constant: pole * main.segment.dt });
     }
-    let assigned = assign::assign(segment.signal.len(), &orders, &fitted, settings)?;
-    if assigned.n_stray > 0 {
-        result.warnings.push(Warning::Stray { count: assigned.n_stray });
+    if main.assigned.n_stray > 0 {
+        result.warnings.push(Warning::Stray { count: main.assigned.n_stray });
     }
-    outcome::fill(&segment, &fitted, &assigned, settings, result);
+    let other = other_ramp(capture, &main.segment).and_then(|other| {
+        let look = detect::detect(&other);
+        sweep(other, &look, settings).ok()
+    });
+    refine::sharpen(&mut main, other, settings.free_spectral_range);
+    outcome::fill(&main.segment, &main.fitted, &main.assigned, settings, result);
     Ok(())
+}
+
+/// Fits the lines of one ramp and says which is which.
+fn sweep(segment: Segment, look: &Look, settings: &Settings) -> Result<Swept, Refusal> {
+    let orders = repeat(look, &segment, settings)?;
+    let fitted = fitted::fit_lines(&segment, look, &orders).ok_or(Refusal::NoFit)?;
+    let assigned = assign::assign(segment.signal.len(), &orders, &fitted, settings)?;
+    Ok(Swept { segment, fitted, assigned })
+}
+
+/// A ramp that adds less than this to what the longest says, as its share in samples, is left alone: a flyback.
+const LEAST_OTHER: f64 = 0.3;
+
+/// The longest ramp of what the main one leaves of a capture, if it is as good a ramp.
+fn other_ramp(capture: &Capture, main: &Segment) -> Option<Segment> {
+    let n = capture.photodiode.len();
+    let (from, to) = if main.start > n - main.end { (0, main.start) } else { (main.end, n) };
+    if ((to - from) as f64) < LEAST_OTHER * (main.end - main.start) as f64 || to - from < FEWEST_SAMPLES {
+        return None;
+    }
+    let cut =
+        |channel: &Option<Vec<f64>>| channel.as_ref().and_then(|channel| channel.get(from..to)).map(<[f64]>::to_vec);
+    let rest = Capture {
+        time: TimeBase { n: to - from, ..capture.time },
+        ramp: cut(&capture.ramp),
+        photodiode: capture.photodiode[from..to].to_vec(),
+        crossed: cut(&capture.crossed),
+        head: Default::default(),
+        remarks: Vec::new(),
+    };
+    let other = segment::find(&rest);
+    let long =
+        other.signal.len() as f64 >= LEAST_OTHER * main.signal.len() as f64 && other.signal.len() >= FEWEST_SAMPLES;
+    (other.has_ramp && long && other.inverted == main.inverted).then_some(other)
 }
 
 fn check(settings: &Settings) -> Result<(), Refusal> {

@@ -57,7 +57,11 @@ const ODD_BLOCKS: usize = 3;
 /// Finds the longest one-way ramp of a capture and prepares its signal.
 pub(super) fn find(capture: &Capture) -> Segment {
     let n = capture.photodiode.len();
-    let found = capture.ramp.as_deref().filter(|ramp| ramp.len() == n).and_then(longest_ramp);
+    let found = capture
+        .ramp
+        .as_deref()
+        .filter(|ramp| ramp.len() == n)
+        .and_then(|ramp| longest_ramp(ramp).map(|found| up_to_the_turn(ramp, found)));
     let has_ramp = found.is_some();
     let (start, end) = found.unwrap_or((0, n));
     let line = match (&capture.ramp, has_ramp) {
@@ -162,6 +166,18 @@ fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
     let start = if best.0 == 0 { 0 } else { start };
     let end = if best.1 + 1 >= means.len() { n } else { end };
     (end > start + 8).then_some((start, end))
+}
+
+/// The same ramp without samples beyond its turns: block means place a turn no better than half a block.
+fn up_to_the_turn(ramp: &[f64], (start, end): (usize, usize)) -> (usize, usize) {
+    let rising = ramp[end - 1] > ramp[start];
+    let block = ramp.len().div_ceil(BLOCKS).max(1);
+    let beyond = |i: usize| if rising { ramp[i] } else { -ramp[i] };
+    let (first, last) = (start..end.min(start + 2 * block), end.saturating_sub(2 * block).max(start)..end);
+    let lowest = first.min_by(|a, b| beyond(*a).total_cmp(&beyond(*b))).filter(|_| start > 0);
+    let highest = last.max_by(|a, b| beyond(*a).total_cmp(&beyond(*b))).filter(|_| end < ramp.len());
+    let (from, to) = (lowest.unwrap_or(start), highest.map_or(end, |i| i + 1));
+    if to > from + 8 { (from, to) } else { (start, end) }
 }
 
 /// Straight line through a ramp: (V at the first sample, V a sample); none if it is flat.
