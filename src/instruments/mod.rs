@@ -14,7 +14,9 @@ mod wall;
 pub use answers::FilePerson;
 pub use folder::{CaptureFolder, FolderError, folder_bench};
 pub use nobody::{NoInstrument, Nobody};
-pub use simulated::{CaptureHead, SimulatedBench, SimulatedOptions, simulated_capture_name, simulated_csv};
+pub use simulated::{
+    CaptureHead, SimulatedBench, SimulatedOptions, simulated_capture_name, simulated_csv, simulated_light_csv,
+};
 pub use terminal::TerminalPerson;
 pub use typed::{expected, parse_answer};
 pub use wall::WallClock;

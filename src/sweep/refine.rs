@@ -13,9 +13,9 @@ use super::{
 use crate::numerics::distributions::excess_ratio;
 
 /// One ramp, measured.
-pub(super) struct Swept {
+pub(super) struct Swept<'a> {
     /// The ramp.
-    pub segment: Segment,
+    pub segment: &'a Segment,
     /// Its lines.
     pub fitted: Fitted,
     /// What they are.
@@ -34,7 +34,7 @@ const FIRST_TERMS: usize = 3;
 ///
 /// Axis, spacing and their uncertainty, width and pole are replaced; without a comb, or where the model of all samples
 /// does not fit, nothing is.
-pub(super) fn sharpen(main: &mut Swept, mut other: Option<Swept>, fsr: f64) {
+pub(super) fn sharpen<'a>(main: &mut Swept<'a>, mut other: Option<Swept<'a>>, fsr: f64) {
     let mut alone = Sharp::of(&[(main, 1.0, 0.0)], fsr);
     if let (None, Some(second)) = (&alone, &mut other) {
         // The other ramp is taken where the model describes that one only.
@@ -61,7 +61,7 @@ struct Sharp {
 
 impl Sharp {
     /// * `ramps`: each with the way its teeth run and what its own tooth 0 is ahead of the common one, Hz.
-    fn of(ramps: &[(&Swept, f64, f64)], fsr: f64) -> Option<Self> {
+    fn of(ramps: &[(&Swept<'_>, f64, f64)], fsr: f64) -> Option<Self> {
         let main = ramps.first()?.0;
         let shape = shape_of(main, main.assigned.comb.as_ref().ok()?, fsr);
         let mut tracks: Vec<Track<'_>> =
@@ -90,7 +90,7 @@ impl Sharp {
     }
 
     /// Puts the model's numbers in the place of the lines'.
-    fn put_into(self, swept: &mut Swept) {
+    fn put_into(self, swept: &mut Swept<'_>) {
         let half = swept.segment.signal.len() as f64 / 2.0;
         let choice = &mut swept.assigned.choice;
         if let Some(axis) = self.global.axes.first() {
@@ -162,7 +162,7 @@ fn truncation(global: &Global, wider: &Wider, noise: f64) -> f64 {
     (likely * ((drawn * wider.moved).powi(2) + drawn * grown)).sqrt()
 }
 
-fn shape_of(swept: &Swept, comb: &Comb, fsr: f64) -> Shape {
+fn shape_of(swept: &Swept<'_>, comb: &Comb, fsr: f64) -> Shape {
     let Assigned { classes, choice, .. } = &swept.assigned;
     let fit = &swept.fitted.fit;
     let half = swept.segment.signal.len() as f64 / 2.0;
@@ -182,7 +182,7 @@ fn shape_of(swept: &Swept, comb: &Comb, fsr: f64) -> Shape {
 }
 
 /// The ramp as the model takes it; `shift`: what its own tooth 0 is ahead of the common one, Hz.
-fn track_of(swept: &Swept, way: f64, shift: f64) -> Track<'_> {
+fn track_of<'a>(swept: &'a Swept<'_>, way: f64, shift: f64) -> Track<'a> {
     let choice = &swept.assigned.choice;
     let one_way = |index: &usize| choice.tried.get(*index).is_some_and(|fit| fit.dof >= 0 && fit.is_one_way(-1.0, 1.0));
     let richer = (choice.terms..FIRST_TERMS).rev().find(one_way).and_then(|index| choice.tried.get(index));
@@ -194,7 +194,7 @@ fn track_of(swept: &Swept, way: f64, shift: f64) -> Track<'_> {
 }
 
 /// Both ramps in one fit; none where they do not show the same lights.
-fn both(main: &Swept, alone: &Sharp, other: &Swept, fsr: f64) -> Option<Sharp> {
+fn both(main: &Swept<'_>, alone: &Sharp, other: &Swept<'_>, fsr: f64) -> Option<Sharp> {
     let (ours, theirs) = (main.assigned.comb.as_ref().ok()?, other.assigned.comb.as_ref().ok()?);
     let way = if main.segment.rising == other.segment.rising { 1.0 } else { -1.0 };
     let shift = aligned(&heights(main, ours), &heights(other, theirs), way)?;
@@ -202,7 +202,7 @@ fn both(main: &Swept, alone: &Sharp, other: &Swept, fsr: f64) -> Option<Sharp> {
 }
 
 /// (tooth, height) of the comb.
-fn heights(swept: &Swept, comb: &Comb) -> Vec<(i32, f64)> {
+fn heights(swept: &Swept<'_>, comb: &Comb) -> Vec<(i32, f64)> {
     let pairs = swept.assigned.classes.iter().zip(&comb.teeth);
     pairs.filter_map(|(class, tooth)| tooth.map(|tooth| (tooth.1, class.height))).collect()
 }

@@ -13,6 +13,7 @@ use chrono_tz::Tz;
 
 use super::{bench::BenchTruth, tube::TubeTruth, world::World};
 pub use reader::ScenarioFault;
+pub(super) use reader::nearest_word;
 
 /// A simulated bench, or several, and the tubes that come to it.
 #[derive(Debug, Clone, PartialEq)]
@@ -35,6 +36,8 @@ pub struct Scenario {
     pub types: BTreeMap<String, TubeTruth>,
     /// Tubes in file order.
     pub tubes: Vec<ScenarioTube>,
+    /// Reference tubes of the benches, in file order.
+    pub references: Vec<ScenarioTube>,
 }
 
 /// One tube of a scenario.
@@ -56,10 +59,8 @@ pub struct ScenarioTube {
     pub bench: String,
     /// When its run is opened.
     pub started_at: DateTime<FixedOffset>,
-    /// What is true of it.
+    /// What is true of it, its faults included.
     pub truth: TubeTruth,
-    /// What the technician sees: name of the look step, word.
-    pub looks: BTreeMap<String, String>,
 }
 
 /// What is wrong in a scenario file, in file order.
@@ -106,7 +107,7 @@ impl Scenario {
 
     /// The tube with a serial.
     pub fn tube(&self, serial: &str) -> Option<&ScenarioTube> {
-        self.tubes.iter().find(|tube| tube.serial == serial)
+        self.tubes.iter().chain(&self.references).find(|tube| tube.serial == serial)
     }
 
     /// A tube on its bench.
@@ -133,6 +134,7 @@ impl Default for Scenario {
             benches: BTreeMap::new(),
             types: BTreeMap::new(),
             tubes: Vec::new(),
+            references: Vec::new(),
         }
     }
 }
@@ -167,6 +169,35 @@ mod tests {
         let places = ["s.toml:2:13", "s.toml:4:1", "s.toml:6:9", "s.toml:9:8", "s.toml:11:9", "s.toml:12:22"];
         assert_eq!(lines, places, "{error}");
         assert!(error.contains("`finesse`") && error.contains("`MHz` is not a unit of a power"), "{error}");
+    }
+
+    #[test]
+    fn faults_change_what_all_the_other_keys_say() {
+        let text = "started_at = 2026-03-02T08:00:00Z\n[bench.b]\n[type.t]\npower = \"1 mW\"\n[[tube]]\nserial = \"X\"\n\
+                    faults = [\"helium-lost = 20 %\", \"draught = 1 K\"]\ntype = \"t\"\nbench = \"b\"\npower = \"2 mW\"\n";
+        let tube = |text: &str| Scenario::parse("s.toml", text).unwrap().tubes[0].truth.clone();
+        let (sound, faulty) = (tube(&text.replace("faults", "#")), tube(text));
+        assert_eq!((sound.power, sound.draught_cycles), (2e-3, 0.0));
+        assert!(faulty.power < 1.5e-3 && faulty.draught_cycles > 1.0, "{faulty:?}");
+        let later = tube(&(text.replace("faults", "#") + "faults = [\"helium-lost = 20 %\", \"draught = 1 K\"]\n"));
+        assert_eq!(later, faulty, "wherever they stand");
+    }
+
+    #[test]
+    fn what_is_wrong_with_faults_is_reported_where_it_stands() {
+        let with = |faults: &str| {
+            let text = format!(
+                "started_at = 2026-03-02T08:00:00Z\n[bench.b]\n[type.t]\n[[tube]]\nserial = \"X\"\n\
+                                type = \"t\"\nbench = \"b\"\nfaults = {faults}\n"
+            );
+            Scenario::parse("s.toml", &text).unwrap_err().to_string()
+        };
+        let error = with("[\"wear = 10 %\", \"wearr = 1 %\", \"wear = 200 %\", 3]");
+        let lines: Vec<&str> = error.lines().collect();
+        assert!(lines[0].starts_with("s.toml:8:26: `wearr` is no kind of fault"), "{error}");
+        assert!(lines[1].starts_with("s.toml:8:41: `wear` is 200 %; expected 0 to 100 %"), "{error}");
+        assert_eq!((lines[2], lines.len()), ("s.toml:8:57: `faults` must be a text in quotes", 3));
+        assert!(with("\"wear = 1 %\"").contains("`faults` must be a list"));
     }
 
     #[test]
