@@ -292,8 +292,12 @@ impl Counts {
             _ => sheet.rows.iter().find(|row| row.deciding).map(|row| row.measurand.clone()),
         };
         // Apart from the report: what each tube did, for whoever looks into one.
-        let (name, took, said) = (&bench.name, took.as_secs_f64(), &verdict.sentence);
-        eprintln!("{name} {seed}: {said} {} [{}] {took:.2} s", verdict.reason, code.as_deref().unwrap_or("-"));
+        let (name, took, said) = (&bench.name, took.as_secs_f64(), verdict.sentence.english());
+        eprintln!(
+            "{name} {seed}: {said} {} [{}] {took:.2} s",
+            verdict.reason.english(),
+            code.as_deref().unwrap_or("-")
+        );
         if let Some(code) = code {
             *self.codes.entry(code).or_default() += 1;
         }

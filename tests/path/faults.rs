@@ -110,5 +110,5 @@ fn a_sound_plate_is_steady_in_the_press_test() {
 fn in_a_draught_nothing_settles_and_nothing_is_decided() {
     let driven = brisk("DEMO-0010", "quad-375").drive(10);
     assert_eq!(ending(&driven).0, Outcome::Hold, "{:?}", driven.sheet.verdict);
-    assert!(driven.sheet.verdict.reason.contains("did not settle"), "{:?}", driven.sheet.verdict);
+    assert!(driven.sheet.verdict.reason.english().contains("did not settle"), "{:?}", driven.sheet.verdict);
 }
