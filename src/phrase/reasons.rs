@@ -98,6 +98,7 @@ table! {
     FROM_MANY = "from {0} captures {1}", "aus {0} Aufnahmen {1}";
     AT_REST = "at rest", "in Ruhe";
     OF_DWELL_ONE_MODE = "of the dwell: one mode alone at rest", "des Einlaufens: in Ruhe nur eine Mode";
+    OF_DWELL_SURER = "of the dwell: those at rest say less", "des Einlaufens: die in Ruhe sagen weniger";
     OF_DWELL_NONE = "of the dwell: none at rest", "des Einlaufens: keine in Ruhe";
     OF_STEP = "of {0}", "von {0}";
     LEFT_OUT = "{0}, {1} that stood apart left out", "{0}, {1} abseits liegende weggelassen";

@@ -4,6 +4,7 @@
 #![allow(clippy::unwrap_used, clippy::panic, missing_docs)]
 
 mod bench;
+mod faults;
 mod noise;
 mod rack;
 mod warmup;
