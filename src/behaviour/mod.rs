@@ -6,6 +6,7 @@ mod attribution;
 mod counts;
 mod decay;
 mod drift;
+mod envelope;
 mod glimpse;
 mod jumps;
 mod light;
@@ -22,6 +23,7 @@ mod watch;
 
 pub use counts::{Counts, GainPoint, count_modes, gain_points};
 pub use drift::{line_drift, tau_per_slope};
+pub use envelope::{Envelope, envelope};
 pub use glimpse::{Glimpse, GlimpseMode};
 pub use light::{LIGHT_ENGINE, LightMeasurement, LightSettings, LightTone, MainsRipple, measure_light};
 pub use noise::{LightSet, NoiseFound, ToneFound, ToneOrigin, light_noise};

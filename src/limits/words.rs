@@ -6,11 +6,15 @@ use super::{Limit, Severity, judge::Limited};
 use crate::{
     measurand::{Measurand, find},
     record::sheet::{Judged, Row, RowVerdict, Value, Zone},
+    tube::{Sign, likely_cause},
     uncertainty::joint,
 };
 
 /// Closes every reason for a hold.
 const NO_VERDICT: &str = "No verdict on the tube is given.";
+
+/// A value within this of twice the middle of its limits counts as twice it: a spacing's limits are 2 % wide.
+const TWICE_WITHIN: f64 = 0.05;
 
 /// Adds words to a note that may hold some already.
 pub fn append(note: &mut String, words: String) {
@@ -27,23 +31,66 @@ pub fn bench_hold(reasons: &[String]) -> String {
     format!("{} {NO_VERDICT}", reasons.join(" "))
 }
 
-/// Why a tube fails: the first row's reason, and the other codes. Rows come worst first.
-pub fn fail(rows: &[&Limited<'_>]) -> String {
+/// What the rows show, for the likely cause: sides of limits, and words.
+fn signs(rows: &[Row]) -> Vec<Sign<'_>> {
+    let mut signs = Vec::new();
+    for row in rows {
+        let key = row.measurand.as_str();
+        let value = match &row.value {
+            Value::Word(word) => {
+                signs.push(Sign::Seen(key, word));
+                continue;
+            }
+            Value::Number { value, .. } => *value,
+            Value::Count { value, .. } => *value as f64,
+            Value::AtLeast(_) | Value::Absent(_) => continue,
+        };
+        signs.push(Sign::Measured(key));
+        let broken: Vec<&Judged> =
+            row.judged.iter().filter(|judged| !matches!(judged.verdict, RowVerdict::Pass)).collect();
+        if broken.iter().any(|judged| judged.lower.is_some_and(|lower| value < lower)) {
+            signs.push(Sign::Low(key));
+        } else if broken.iter().any(|judged| judged.upper.is_some_and(|upper| value > upper)) {
+            signs.push(Sign::High(key));
+        } else if broken.is_empty() && !row.judged.is_empty() {
+            signs.push(Sign::Normal(key));
+        }
+        let middle = row.judged.first().and_then(|judged| Some(0.5 * (judged.lower? + judged.upper?)));
+        if middle.is_some_and(|middle| (value / (2.0 * middle) - 1.0).abs() < TWICE_WITHIN) {
+            signs.push(Sign::Twice(key));
+        }
+    }
+    signs
+}
+
+/// A reason with its likely cause, where one stands out. Always "likely": a verdict rests on the limits alone.
+fn with_cause(reason: String, row: &Row, all: &[Row]) -> String {
+    match likely_cause(&signs(all), &row.measurand) {
+        Some(cause) => format!("{reason}; likely cause: {}", cause.words()),
+        None => reason,
+    }
+}
+
+/// Why a tube fails: the first row's reason with its likely cause, and the other codes. Rows come worst first.
+///
+/// * `all`: every row of the sheet, judged.
+pub fn fail(rows: &[&Limited<'_>], all: &[Row]) -> String {
     let Some((first, others)) = rows.split_first() else { return "No grade is left.".to_owned() };
     let judged = first.entries(RowVerdict::Fail).last();
-    let reason = judged.map_or(String::new(), |judged| capital(&why(first.row, judged)) + ".");
+    let reason =
+        judged.map_or(String::new(), |judged| with_cause(capital(&why(first.row, judged)), first.row, all) + ".");
     let mut codes: Vec<&str> = others.iter().filter_map(|row| row.limit.reject.as_deref()).collect();
     codes.dedup();
     if codes.is_empty() { reason } else { format!("{reason} Also: {}.", codes.join(", ")) }
 }
 
 /// Why there is no verdict: the first row's reason, and the names of the others.
-pub fn hold(rows: &[&Limited<'_>], unfilled: &[&Limit]) -> String {
+pub fn hold(rows: &[&Limited<'_>], unfilled: &[&Limit], all: &[Row]) -> String {
     let unfilled_name = |limit: &&Limit| find(&limit.measurand).map_or(limit.measurand.clone(), |m| m.name.to_owned());
     let mut names: Vec<String> = rows.iter().map(|row| lower_case(&row.row.label)).collect();
     names.extend(unfilled.iter().map(|limit| lower_case(&unfilled_name(limit))));
     let first = match (rows.first(), unfilled.first()) {
-        (Some(row), _) => hold_reason(row),
+        (Some(row), _) => hold_reason(row, all),
         (None, Some(limit)) => format!("{} is limited, but no step filled it.", capital(&unfilled_name(limit))),
         (None, None) => String::new(),
     };
@@ -52,7 +99,7 @@ pub fn hold(rows: &[&Limited<'_>], unfilled: &[&Limit]) -> String {
     format!("{first}{also} {NO_VERDICT}")
 }
 
-fn hold_reason(limited: &Limited<'_>) -> String {
+fn hold_reason(limited: &Limited<'_>, all: &[Row]) -> String {
     let row = limited.row;
     let label = capital(&row.label);
     let Some(judged) = limited.entries(RowVerdict::Hold).next() else { return String::new() };
@@ -66,17 +113,20 @@ fn hold_reason(limited: &Limited<'_>) -> String {
             format!("{label} {} points at the supply, not at the tube: repeat on another supply.", shown(row))
         }
         Value::Word(_) if judged.wanted.is_empty() => format!("{label} holds a word where a number is due."),
-        _ => format!("{}, a limit that gives hold, not fail.", capital(&why(row, judged))),
+        _ => {
+            let reason = format!("{}, a limit that gives hold, not fail", capital(&why(row, judged)));
+            with_cause(reason, row, all) + "."
+        }
     }
 }
 
 /// Why the better grades were lost, and which rows are marked.
-pub fn pass(rows: &[&Limited<'_>], lost: &[&str]) -> String {
+pub fn pass(rows: &[&Limited<'_>], lost: &[&str], all: &[Row]) -> String {
     let mut in_order: Vec<&&Limited<'_>> = rows.iter().collect();
     in_order.sort_by_key(|row| row.index);
     let mut sentences = Vec::new();
     for grade in lost {
-        let reasons: Vec<String> = in_order.iter().filter_map(|limited| why_lost(limited, grade)).collect();
+        let reasons: Vec<String> = in_order.iter().filter_map(|limited| why_lost(limited, grade, all)).collect();
         sentences.push(format!("Not {grade}: {}.", reasons.join("; ")));
     }
     for row in in_order.iter().filter(|row| row.limit.severity == Severity::Minor) {
@@ -88,9 +138,10 @@ pub fn pass(rows: &[&Limited<'_>], lost: &[&str]) -> String {
 }
 
 /// Why a row costs a grade, if it does.
-fn why_lost(limited: &Limited<'_>, grade: &str) -> Option<String> {
+fn why_lost(limited: &Limited<'_>, grade: &str, all: &[Row]) -> Option<String> {
     let judged = limited.entries(RowVerdict::Fail).find(|judged| judged.grade == grade)?;
-    (limited.limit.severity != Severity::Minor).then(|| why(limited.row, judged))
+    let reason = || with_cause(why(limited.row, judged), limited.row, all);
+    (limited.limit.severity != Severity::Minor).then(reason)
 }
 
 /// One line for the row itself; empty where all is well.

@@ -4,6 +4,7 @@
 
 mod comb;
 mod dwell;
+mod envelope;
 mod look;
 mod noise;
 mod parse;
@@ -16,6 +17,7 @@ mod watch;
 
 pub use comb::Comb;
 pub use dwell::Dwell;
+pub use envelope::Envelope;
 pub use look::Look;
 pub use noise::Noise;
 pub use polarizer::{Polarization, Polarizer};
@@ -66,6 +68,8 @@ pub enum StepKind {
     Sweep(Sweep),
     /// Mode comb over a walk cycle.
     Comb(Comb),
+    /// Heights along the gain line.
+    Envelope(Envelope),
     /// Polarization axes and extinction.
     Polarizer(Polarizer),
     /// Hops and swaps.
@@ -117,6 +121,7 @@ impl StepKind {
             Self::Dwell(_) => "dwell",
             Self::Sweep(_) => "sweep",
             Self::Comb(_) => "comb",
+            Self::Envelope(_) => "envelope",
             Self::Polarizer(_) => "polarizer",
             Self::Watch(_) => "watch",
             Self::Power(_) => "power",
@@ -135,6 +140,7 @@ impl StepKind {
             Self::Dwell(_) => Dwell::FILLS,
             Self::Sweep(_) => Sweep::FILLS,
             Self::Comb(_) => Comb::FILLS,
+            Self::Envelope(_) => Envelope::FILLS,
             Self::Polarizer(polarizer) => polarizer.fills(),
             Self::Watch(_) => Watch::FILLS,
             Self::Power(_) => Power::FILLS,

@@ -2,7 +2,9 @@
 //! Must not know the keys of one kind.
 //! Main function: [`recipe`].
 
-use super::{Comb, Dwell, Look, Noise, Polarizer, Power, Recipe, Step, StepKind, Strike, Supply, Sweep, Watch};
+use super::{
+    Comb, Dwell, Envelope, Look, Noise, Polarizer, Power, Recipe, Step, StepKind, Strike, Supply, Sweep, Watch,
+};
 use crate::{
     limits::{
         Fault, nearest,
@@ -13,7 +15,7 @@ use crate::{
 
 const TOP: &[&str] = &["revision", "nominal_spacing", "wavelength", "mode_floor", "retests", "step"];
 /// Kinds of a later version: known words, not yet steps.
-const LATER: &[&str] = &["envelope", "beam"];
+const LATER: &[&str] = &["beam"];
 
 /// Stands for the kind of a step whose kind could not be read.
 const UNREAD: &str = "";
@@ -26,6 +28,7 @@ const KINDS: &[(&str, &[&str], Build)] = &[
     ("dwell", Dwell::KEYS, |c| Dwell::read(c).map(StepKind::Dwell)),
     ("sweep", Sweep::KEYS, |c| Sweep::read(c).map(StepKind::Sweep)),
     ("comb", Comb::KEYS, |c| Comb::read(c).map(StepKind::Comb)),
+    ("envelope", Envelope::KEYS, |c| Envelope::read(c).map(StepKind::Envelope)),
     ("polarizer", Polarizer::KEYS, |c| Polarizer::read(c).map(StepKind::Polarizer)),
     ("watch", Watch::KEYS, |c| Watch::read(c).map(StepKind::Watch)),
     ("power", Power::KEYS, |c| Power::read(c).map(StepKind::Power)),

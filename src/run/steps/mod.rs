@@ -4,6 +4,7 @@
 
 mod comb;
 mod dwell;
+mod envelope;
 mod look;
 mod noise;
 mod polarizer;
@@ -123,6 +124,7 @@ pub(crate) fn step_of(kind: &StepKind) -> Box<dyn Step> {
         StepKind::Dwell(keys) => Box::new(dwell::Dwell::new(keys)),
         StepKind::Sweep(keys) => Box::new(sweep::Sweep::new(keys)),
         StepKind::Comb(keys) => Box::new(comb::Comb::new(keys)),
+        StepKind::Envelope(keys) => Box::new(envelope::Envelope::new(keys)),
         StepKind::Polarizer(keys) => polarizer::step_of(keys),
         StepKind::Watch(keys) => Box::new(watch::Watch::new(keys)),
         StepKind::Power(keys) => Box::new(power::Power::new(keys)),
