@@ -2,6 +2,7 @@
 //! Must not know lasers, units or files; no input may panic.
 //! Main entries: [`least_squares::fit`], [`linear::weighted`], [`peaks::find`].
 
+pub mod cusum;
 pub mod distributions;
 pub mod least_squares;
 pub mod linear;

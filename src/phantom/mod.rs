@@ -2,8 +2,11 @@
 //! Must not share code with the engine that measures it, do I/O or read a clock; takes quantities and constants only.
 //! Main types: [`World`], [`Scenario`].
 
+mod appearance;
 mod bench;
 mod comb;
+mod condition;
+mod fault;
 mod gain;
 mod light;
 mod noise;
@@ -14,8 +17,11 @@ mod tube;
 mod walk;
 mod world;
 
+pub use appearance::{cathode, discharge, getter, press_test};
 pub use bench::BenchTruth;
 pub use comb::{Axis, Comb, Mode};
+pub use condition::Condition;
+pub use fault::{FAULT_KINDS, Fault, FaultError, FaultKind};
 pub use gain::GainLine;
 pub use light::LightTrace;
 pub use scenario::{Scenario, ScenarioError, ScenarioFault, ScenarioTube};

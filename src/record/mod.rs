@@ -6,4 +6,5 @@ pub mod event;
 pub mod finding;
 pub mod light;
 pub mod question;
+pub mod reference;
 pub mod sheet;

@@ -12,6 +12,7 @@ mod malus;
 mod notebook;
 mod plan;
 mod pool;
+mod reference;
 mod sheet;
 mod spacing;
 mod steps;

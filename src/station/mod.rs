@@ -6,6 +6,9 @@ pub mod answers;
 mod bench;
 pub mod file;
 mod journal;
+pub mod shift;
+pub mod standing;
+pub mod stored;
 mod want;
 
 pub use bench::{Bench, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, Trouble};

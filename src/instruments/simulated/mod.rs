@@ -7,7 +7,7 @@ mod hands;
 mod state;
 mod technician;
 
-use std::{cell::RefCell, collections::BTreeMap, rc::Rc};
+use std::{cell::RefCell, rc::Rc};
 
 use chrono::{DateTime, FixedOffset};
 
@@ -37,8 +37,6 @@ pub struct SimulatedOptions {
     pub pace: f64,
     /// What an answer costs in bench time, ms, whoever answers.
     pub time_to_answer_ms: u64,
-    /// What the technician sees: name of the look step, word.
-    pub looks: BTreeMap<String, String>,
 }
 
 /// A simulated bench whose parts share one state.
@@ -70,7 +68,6 @@ impl SimulatedBench {
             started_at: started_at.unwrap_or(tube.started_at),
             pace,
             time_to_answer_ms: scenario.time_to_answer_ms,
-            looks: tube.looks.clone(),
         };
         Some(Self::new(scenario.world(serial, seed)?, options))
     }
