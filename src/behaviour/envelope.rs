@@ -16,7 +16,7 @@ const LEAST_FILLED: f64 = 0.9;
 /// counts as a mode; above, the curve turns over (design choice).
 const FLANK: (f64, f64) = (0.05, 0.4);
 /// Points that a flank must hold.
-const LEAST_ON_FLANK: usize = 8;
+const LEAST_ON_FLANK: usize = 6;
 /// Bins on either side of a half-height crossing through which a parabola is laid.
 const ABOUT_HALF: usize = 3;
 /// A dip of this many standard uncertainties or fewer is none.
@@ -119,8 +119,13 @@ fn zero(sorted: &[GainPoint], bins: &[Bin], top: f64, side: f64) -> Result<(f64,
     let why =
         || format!("the {} flank of the envelope could not be extrapolated", if side < 0.0 { "low" } else { "high" });
     let outward: Vec<&Bin> = if side < 0.0 { bins.iter().collect() } else { bins.iter().rev().collect() };
-    let inside = |level: f64| outward.iter().find(|bin| bin.height >= level * top).map(|bin| side * bin.detuning);
-    let (outer, inner) = inside(FLANK.0).zip(inside(FLANK.1)).ok_or_else(why)?;
+    let first = |level: f64| outward.iter().position(|bin| bin.height >= level * top);
+    let (outermost, innermost) = first(FLANK.0).zip(first(FLANK.1)).ok_or_else(why)?;
+    // Where the outermost bin is high enough itself, all of its points are.
+    let edge = if side < 0.0 { sorted.first() } else { sorted.last() };
+    let edge = edge.filter(|_| outermost == 0).map(|point| side * point.detuning);
+    let outer = edge.unwrap_or(side * outward[outermost].detuning);
+    let inner = side * outward[innermost].detuning;
     // Chosen by place, not by height: else only those that chance made high would count near the floor.
     let on_flank = |p: &&GainPoint| (inner..=outer).contains(&(side * p.detuning));
     let flank: Vec<&GainPoint> = sorted.iter().filter(on_flank).collect();

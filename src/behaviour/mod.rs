@@ -3,6 +3,7 @@
 //! Main types: [`Glimpse`], [`Warmup`], [`Watched`], [`Counts`], [`CyclePower`].
 
 mod attribution;
+mod beam;
 mod counts;
 mod decay;
 mod drift;
@@ -21,6 +22,7 @@ mod trial;
 mod warmup;
 mod watch;
 
+pub use beam::{KnifeEdge, beam_diameter, beam_divergence};
 pub use counts::{Counts, GainPoint, count_modes, gain_points};
 pub use drift::{line_drift, tau_per_slope};
 pub use envelope::{Envelope, envelope};

@@ -2,6 +2,7 @@
 //! Must not measure, ask or wait: `run/steps` does a step's work. Each kind's keys are a file of their own here.
 //! Main types: [`Recipe`], [`Step`], [`StepKind`].
 
+mod beam;
 mod comb;
 mod dwell;
 mod envelope;
@@ -15,6 +16,7 @@ mod supply;
 mod sweep;
 mod watch;
 
+pub use beam::Beam;
 pub use comb::Comb;
 pub use dwell::Dwell;
 pub use envelope::Envelope;
@@ -80,6 +82,8 @@ pub enum StepKind {
     Noise(Noise),
     /// Discharge and supply.
     Supply(Supply),
+    /// Knife-edge readings of the beam.
+    Beam(Beam),
     /// A look by eye.
     Look(Look),
 }
@@ -127,6 +131,7 @@ impl StepKind {
             Self::Power(_) => "power",
             Self::Noise(_) => "noise",
             Self::Supply(_) => "supply",
+            Self::Beam(_) => "beam",
             Self::Look(_) => "look",
         }
     }
@@ -146,6 +151,7 @@ impl StepKind {
             Self::Power(_) => Power::FILLS,
             Self::Noise(_) => Noise::FILLS,
             Self::Supply(supply) => supply.fills(),
+            Self::Beam(_) => Beam::FILLS,
             Self::Look(_) => return vec![format!("visual.{step}")],
         };
         keys.iter().map(|key| (*key).to_owned()).collect()

@@ -3,7 +3,7 @@
 //! Main function: [`recipe`].
 
 use super::{
-    Comb, Dwell, Envelope, Look, Noise, Polarizer, Power, Recipe, Step, StepKind, Strike, Supply, Sweep, Watch,
+    Beam, Comb, Dwell, Envelope, Look, Noise, Polarizer, Power, Recipe, Step, StepKind, Strike, Supply, Sweep, Watch,
 };
 use crate::{
     limits::{
@@ -14,8 +14,6 @@ use crate::{
 };
 
 const TOP: &[&str] = &["revision", "nominal_spacing", "wavelength", "mode_floor", "retests", "step"];
-/// Kinds of a later version: known words, not yet steps.
-const LATER: &[&str] = &["beam"];
 
 /// Stands for the kind of a step whose kind could not be read.
 const UNREAD: &str = "";
@@ -34,6 +32,7 @@ const KINDS: &[(&str, &[&str], Build)] = &[
     ("power", Power::KEYS, |c| Power::read(c).map(StepKind::Power)),
     ("noise", Noise::KEYS, |c| Noise::read(c).map(StepKind::Noise)),
     ("supply", Supply::KEYS, |c| Supply::read(c).map(StepKind::Supply)),
+    ("beam", Beam::KEYS, |c| Beam::read(c).map(StepKind::Beam)),
     ("look", Look::KEYS, |c| Look::read(c).map(StepKind::Look)),
 ];
 
@@ -141,11 +140,7 @@ fn kind(item: &Item<'_>) -> Option<&'static (&'static str, &'static [&'static st
     if found.is_none() {
         let known = || KINDS.iter().map(|(word, _, _)| *word);
         let list = known().collect::<Vec<_>>().join(", ");
-        if LATER.contains(&word) {
-            item.fault(format!("`{word}` is a step of a later version; expected one of {list}"), None);
-        } else {
-            item.fault(format!("unknown step `{word}`; expected one of {list}"), nearest(word, known()));
-        }
+        item.fault(format!("unknown step `{word}`; expected one of {list}"), nearest(word, known()));
     }
     found
 }

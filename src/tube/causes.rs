@@ -114,7 +114,8 @@ const SIGNATURES: &[Signature] = &[
         cause: Cause::Wear,
         needs: &[&[Sign::High("run_voltage")], &[Sign::High("dropout_fraction"), Sign::High("dropout_current")]],
         supports: &[Sign::Low("power"), Sign::High("power_peak_current"), Sign::Seen("visual.cathode", "film")],
-        never: &[PALE[0], PALE[1], PALE[2]],
+        // A worn cathode colours the discharge too.
+        never: &[],
     },
     Signature {
         cause: Cause::MirrorWalkedOff,

@@ -60,7 +60,7 @@ fn the_demo_tubes_name_their_cause() {
     let told = |tube_type, found: &[(&str, Value)]| judged(tube_type, found).reason;
     assert_eq!(
         told("twin-150", &[("power", number(0.22e-3)), ("visual.discharge", word("deep red-orange"))]),
-        "Power 0.22000 mW is below 0.30 mW; likely cause: helium lost."
+        "Power 0.220000 mW is below 0.30 mW; likely cause: helium lost."
     );
     let off_axis = told("quad-375", &[("off_axis_ratio", number(0.09))]);
     assert!(
@@ -82,7 +82,7 @@ fn the_demo_tubes_name_their_cause() {
 #[test]
 fn no_cause_is_named_without_its_signature() {
     let dim = judged("twin-150", &[("power", number(0.22e-3))]).reason;
-    assert_eq!(dim, "Power 0.22000 mW is below 0.30 mW.");
+    assert_eq!(dim, "Power 0.220000 mW is below 0.30 mW.");
     // A press test that does nothing, and power in doubt.
     let still = judged("plate-250", &[("power", number(0.8e-3)), ("visual.press_test", word("stays"))]).reason;
     assert!(!still.contains("likely"), "{still}");

@@ -2,6 +2,7 @@
 //! Must not do I/O or call a trait of the bench.
 //! Main types: [`Step`], [`Wish`], [`Given`], [`Room`].
 
+mod beam;
 mod comb;
 mod dwell;
 mod envelope;
@@ -130,6 +131,7 @@ pub(crate) fn step_of(kind: &StepKind) -> Box<dyn Step> {
         StepKind::Power(keys) => Box::new(power::Power::new(keys)),
         StepKind::Noise(keys) => Box::new(noise::Noise::new(keys)),
         StepKind::Supply(keys) => Box::new(supply::Supply::new(keys)),
+        StepKind::Beam(keys) => Box::new(beam::Beam::new(keys)),
         StepKind::Look(keys) => Box::new(look::Look::new(keys)),
     }
 }
