@@ -35,6 +35,7 @@ fn the_benches_of_the_demo_have_no_fault_and_one_is_overdue() {
     let bench = |name: &str| StationFile::parse(name, &text(&format!("fixtures/demo/{name}.toml"))).unwrap();
     assert!(bench("bench-1").overdue_on(day).is_empty());
     let overdue = bench("bench-2").overdue_on(day);
+    let overdue: Vec<String> = overdue.iter().map(|sentence| sentence.english()).collect();
     assert_eq!(overdue, ["The certificate SIM-0012 of the power meter was due 2026-03-01."]);
     assert!(bench("bench-2").overdue_on(day.pred_opt().unwrap()).is_empty(), "it holds on its last day");
 }
@@ -162,7 +163,7 @@ done = false
     station.toml:14:15: the certificate has no `due`; expected one
     station.toml:14:26: `number` is the number 5; expected text in quotes
     station.toml:14:36: `date` is the text "2026-01-12"; expected a day such as 2026-01-12, without quotes
-    station.toml:15:2: unknown key `spply` in the file; expected one of station, time_zone, shifts, interferometer, power_meter, supply, polarizer, reference
+    station.toml:15:2: unknown key `spply` in the file; expected one of station, language, time_zone, shifts, interferometer, power_meter, supply, polarizer, light_detector, reference
       nearest known word: supply
     answers.toml:2:1: unknown key `technitian` in the file; expected one of technician, tube_type, time_to_answer, steps
       nearest known word: technician

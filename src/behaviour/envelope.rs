@@ -276,6 +276,18 @@ mod tests {
     }
 
     #[test]
+    fn a_walking_comb_shows_the_line_it_walks_under() {
+        use crate::behaviour::{gain_points, synthetic::Synthetic};
+        for tube in [Synthetic::quad(2), Synthetic::twin(2)] {
+            let points = gain_points(&tube.glimpses(300.0, 700.0, 0.5), tube.spacing);
+            let found = envelope(&points).unwrap();
+            // The made line is 1 − x² over its half range; a mode's place is known to 0.7 MHz.
+            let off = found.span.value - 2.0 * tube.half_range;
+            assert!(off.abs() < 3.0 * found.span.u() + 3e6, "{found:?} {off}");
+        }
+    }
+
+    #[test]
     fn thin_coverage_is_refused() {
         let thin: Vec<GainPoint> = points(800, 0.005, |x| 1.0 - x * x)
             .into_iter()

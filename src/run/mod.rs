@@ -158,6 +158,7 @@ impl Run {
             }
             Wish::Reading(what) => Want::Reading(ReadingRequest { step, what, not_before_ms: 0 }),
             Wish::Ask { word, text, expects, high_voltage } => {
+                let text = text.text(self.identity.language());
                 Want::Answer(Question { step, word, text, expects, high_voltage })
             }
             // Only a recipe whose every step wants nothing, before its first event.

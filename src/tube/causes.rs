@@ -46,25 +46,6 @@ pub enum Cause {
     SwapsForLife,
 }
 
-impl Cause {
-    /// In words, with what to do; reads after "likely cause: ".
-    pub fn words(self) -> &'static str {
-        match self {
-            Self::Contamination => "contamination, an air leak",
-            Self::HeliumLost => "helium lost",
-            Self::Wear => "wear of the cathode, near the end of its life",
-            Self::MirrorWalkedOff => "mirror walked off: realign warm",
-            Self::MirrorSputtered => "mirror sputtered",
-            Self::BrokenBore => "broken bore",
-            Self::WindowFilm => "film or dirt on the window: clean and repeat before rejecting",
-            Self::Bore => "bore too wide or bent, or a mirror tilted: realign and repeat",
-            Self::WrongType => "wrong type or label",
-            Self::PolarizerInTheWay => "a polarizer in the way hides every second mode",
-            Self::SwapsForLife => "axes swap at a fixed place under the gain line, for life",
-        }
-    }
-}
-
 /// One signature.
 struct Signature {
     cause: Cause,

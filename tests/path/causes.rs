@@ -3,6 +3,7 @@
 
 use tubewright::{
     limits::{Judging, Limits, judge},
+    phrase::Saying,
     record::sheet::{Row, TubeVerdict, Value},
 };
 
@@ -10,12 +11,12 @@ fn row(measurand: &str, value: Value) -> Row {
     Row {
         step: "step".into(),
         measurand: measurand.into(),
-        label: tubewright::measurand::find(measurand).map_or(measurand.into(), |m| m.name.into()),
+        label: tubewright::measurand::find(measurand).map_or(Saying::outside(measurand), |m| (&m.name).into()),
         value,
         budget: Vec::new(),
         judged: Vec::new(),
         deciding: false,
-        note: String::new(),
+        note: Saying::none(),
     }
 }
 
@@ -57,7 +58,7 @@ fn word(word: &str) -> Value {
 
 #[test]
 fn the_demo_tubes_name_their_cause() {
-    let told = |tube_type, found: &[(&str, Value)]| judged(tube_type, found).reason;
+    let told = |tube_type, found: &[(&str, Value)]| judged(tube_type, found).reason.english();
     assert_eq!(
         told("twin-150", &[("power", number(0.22e-3)), ("visual.discharge", word("deep red-orange"))]),
         "Power 0.220000 mW is below 0.30 mW; likely cause: helium lost."
@@ -74,23 +75,24 @@ fn the_demo_tubes_name_their_cause() {
     let swaps = judged("twin-150", &[("swap_count", Value::Count { value: 57, low: 57, high: 57 })]);
     assert_eq!(swaps.grade.as_deref(), Some("alignment"));
     assert!(
-        swaps.reason.ends_with("likely cause: axes swap at a fixed place under the gain line, for life."),
+        swaps.reason.english().ends_with("likely cause: axes swap at a fixed place under the gain line, for life."),
         "{swaps:?}"
     );
 }
 
 #[test]
 fn no_cause_is_named_without_its_signature() {
-    let dim = judged("twin-150", &[("power", number(0.22e-3))]).reason;
+    let dim = judged("twin-150", &[("power", number(0.22e-3))]).reason.english();
     assert_eq!(dim, "Power 0.220000 mW is below 0.30 mW.");
     // A press test that does nothing, and power in doubt.
-    let still = judged("plate-250", &[("power", number(0.8e-3)), ("visual.press_test", word("stays"))]).reason;
+    let still =
+        judged("plate-250", &[("power", number(0.8e-3)), ("visual.press_test", word("stays"))]).reason.english();
     assert!(!still.contains("likely"), "{still}");
     let doubt = Value::Number { value: 0.505e-3, u: 8e-6, expanded: 16e-6, k: 2.0, dof: f64::INFINITY };
-    let doubt = judged("twin-150", &[("power", doubt), ("visual.discharge", word("deep red-orange"))]).reason;
+    let doubt = judged("twin-150", &[("power", doubt), ("visual.discharge", word("deep red-orange"))]).reason.english();
     assert!(!doubt.contains("likely"), "inside, though not by U: {doubt}");
     // The voltage's sign alone never says contamination, nor does it keep colour from saying it.
-    let volts = judged("twin-150", &[("power", number(0.22e-3)), ("run_voltage", number(1.2e3))]).reason;
+    let volts = judged("twin-150", &[("power", number(0.22e-3)), ("run_voltage", number(1.2e3))]).reason.english();
     assert!(!volts.contains("contamination"), "{volts}");
     for kilovolts in [0.8, 1.0, 1.2] {
         let found = [
@@ -98,13 +100,13 @@ fn no_cause_is_named_without_its_signature() {
             ("run_voltage", number(kilovolts * 1e3)),
             ("visual.discharge", word("pinkish")),
         ];
-        let air = judged("twin-150", &found).reason;
+        let air = judged("twin-150", &found).reason.english();
         assert!(air.contains("likely cause: contamination"), "{air}");
     }
 }
 
 #[test]
 fn ripple_of_the_supply_is_not_the_tubes() {
-    let held = judged("twin-150", &[("line_ripple", number(0.014))]).reason;
+    let held = judged("twin-150", &[("line_ripple", number(0.014))]).reason.english();
     assert!(held.contains("repeat on another supply") && !held.contains("likely cause"), "{held}");
 }

@@ -64,7 +64,10 @@ fn without_whole_cycles_the_rows_are_empty_with_the_reason() {
     brisk.truth.draught_cycles = 6.0;
     brisk.truth.draught_period = 40.0;
     match &brisk.drive(1).row("lasing_span").value {
-        Value::Absent(why) => assert!(why.contains("settle") || why.contains("cycles"), "{why}"),
+        Value::Absent(why) => {
+            let why = why.english();
+            assert!(why.contains("settle") || why.contains("cycles"), "{why}");
+        }
         other => panic!("{other:?}"),
     }
 }

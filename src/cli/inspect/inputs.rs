@@ -12,6 +12,7 @@ use crate::cli::{Ending, Failure, home};
 use crate::disk::{Home, Store, demo_bench};
 use crate::instruments::CaptureFolder;
 use crate::phantom::Scenario;
+use crate::phrase::Language;
 use crate::station::{
     answers::Answers,
     file::{Source, StationFile},
@@ -39,6 +40,8 @@ pub(super) struct Inputs {
     pub pace: Option<f64>,
     pub seed: Option<u64>,
     pub start: Option<DateTime<FixedOffset>>,
+    /// Language, if it was asked for.
+    pub language: Option<Language>,
     pub format: Format,
 }
 
@@ -86,6 +89,7 @@ impl Inputs {
             pace: simulated.then(|| arguments.pace.unwrap_or(PACE)),
             seed: arguments.seed,
             start: arguments.start,
+            language: arguments.language,
             format: arguments.format,
         })
     }

@@ -5,6 +5,7 @@
 use super::{Given, Room, Step, Wish, strike::absent};
 use crate::{
     behaviour::{KnifeEdge, beam_diameter, beam_divergence},
+    phrase::{Phrase, Saying, figure, questions, reasons},
     recipe,
     record::question::Answer,
     run::{filled::Filled, notebook::Notebook},
@@ -12,16 +13,10 @@ use crate::{
 
 const KEYS: [&str; 2] = ["beam_diameter", "beam_divergence"];
 /// Questions at each distance: word, what is asked, UCUM unit, greatest answer, m.
-const ASKED: [(&str, &str, &str, f64); 3] = [
-    (
-        "distance",
-        "Set the knife edge across the beam and note its distance from the output mirror. \
-         Laser radiation: look at the meter, never along the beam",
-        "m",
-        50.0,
-    ),
-    ("at_10", "Position of the knife edge at which 10 % of the power passes", "mm", 0.3),
-    ("at_90", "Position of the knife edge at which 90 % of the power passes", "mm", 0.3),
+static ASKED: [(&str, &Phrase, &str, f64); 3] = [
+    ("distance", &questions::KNIFE_DISTANCE, "m", 50.0),
+    ("at_10", &questions::KNIFE_AT_10, "mm", 0.3),
+    ("at_90", &questions::KNIFE_AT_90, "mm", 0.3),
 ];
 
 /// The step.
@@ -50,17 +45,17 @@ impl Beam {
         let diameter = nearest.map(|reading| (beam_diameter(reading), reading.distance));
         self.filled.push(match diameter {
             Some((Ok(found), distance)) => {
-                Filled::number(KEYS[0], &found).noted(format!("{distance:.2} m from the output mirror"))
+                Filled::number(KEYS[0], &found).noted(reasons::FROM_MIRROR.with([figure(format!("{distance:.2} m"))]))
             }
-            Some((Err(why), _)) => Filled::absent(KEYS[0], why),
-            None => Filled::absent(KEYS[0], "no knife-edge readings"),
+            Some((Err(why), _)) => Filled::absent(KEYS[0], Saying::outside(&why)),
+            None => Filled::absent(KEYS[0], &reasons::NO_KNIFE_READINGS),
         });
         self.filled.push(match &readings[..] {
             [one, other] => match beam_divergence(one, other, self.wavelength) {
-                Ok(found) => Filled::number(KEYS[1], &found).noted("full angle"),
-                Err(why) => Filled::absent(KEYS[1], why),
+                Ok(found) => Filled::number(KEYS[1], &found).noted(&reasons::FULL_ANGLE),
+                Err(why) => Filled::absent(KEYS[1], Saying::outside(&why)),
             },
-            _ => Filled::absent(KEYS[1], "it takes readings at two distances"),
+            _ => Filled::absent(KEYS[1], &reasons::TWO_DISTANCES),
         });
     }
 }

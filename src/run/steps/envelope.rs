@@ -5,6 +5,7 @@
 use super::{Room, Step, comb::whole_cycles, dwell::U_DRIFT};
 use crate::{
     behaviour::{Glimpse, envelope, gain_points, line_drift},
+    phrase::{Saying, figure, reasons},
     recipe,
     run::filled::Filled,
     tube::measured_gain_ratio,
@@ -24,23 +25,24 @@ impl Envelope {
         Self { from: keys.from.clone(), filled: Vec::new() }
     }
 
-    fn rows(&self, room: &Room<'_>) -> Result<Vec<Filled>, String> {
+    fn rows(&self, room: &Room<'_>) -> Result<Vec<Filled>, Saying> {
         let (book, from) = (&room.book, self.from.as_str());
         let cycles = book.dwelt(from).map_or(1.0, |dwelt| dwelt.cycles.max(1.0));
         let window = whole_cycles(book, from, cycles).or_else(|_| whole_cycles(book, from, 1.0))?;
         let glimpses: Vec<Glimpse> = book.of_within(from, window).iter().map(|seen| seen.glimpse.clone()).collect();
         let spacing = room.plan.recipe.nominal_spacing;
         let points = gain_points(&glimpses, spacing);
-        let found = envelope(&points)?;
+        let found = envelope(&points).map_err(|why| Saying::outside(&why))?;
         let scale = |measured: Measured| self.on_scale(measured, room, &glimpses, (window.1 - window.0) / cycles);
         let span = scale(found.span);
-        let note = format!("{} modes, {} of {} places", points.len(), found.filled.0, found.filled.1);
+        let (seen, places) = found.filled;
+        let note = reasons::MODES_IN_PLACES.with([figure(points.len()), figure(seen), figure(places)]);
         let gain = match measured_gain_ratio(&span) {
-            Some(gain) => Filled::number(KEYS[3], &gain).noted("gas at 400 K"),
-            None => Filled::absent(KEYS[3], "the lasing span is not above zero"),
+            Some(gain) => Filled::number(KEYS[3], &gain).noted(&reasons::GAS_AT),
+            None => Filled::absent(KEYS[3], &reasons::SPAN_NOT_POSITIVE),
         };
         let dip = Filled::number(KEYS[2], &found.dip);
-        let dip = if found.dip.value == 0.0 { dip.noted("no significant dip") } else { dip };
+        let dip = if found.dip.value == 0.0 { dip.noted(&reasons::NO_DIP) } else { dip };
         Ok(vec![Filled::number(KEYS[0], &span).noted(note), Filled::number(KEYS[1], &scale(found.fwhm)), dip, gain])
     }
 
@@ -69,7 +71,7 @@ impl Step for Envelope {
     fn begin(&mut self, room: &mut Room<'_>) {
         self.filled = match self.rows(room) {
             Ok(rows) => rows,
-            Err(why) => KEYS.iter().map(|key| Filled::absent(key, why.as_str())).collect(),
+            Err(why) => KEYS.iter().map(|key| Filled::absent(key, why.clone())).collect(),
         };
     }
 
