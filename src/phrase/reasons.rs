@@ -116,6 +116,18 @@ table! {
     NO_PEAK_OFF = "no peak off the comb", "keine Linie außerhalb des Kamms";
     NOT_MEASURABLE = "no capture could be measured", "keine Aufnahme war auswertbar";
 
+    // Envelope.
+    MODES_IN_PLACES = "{0} modes, {1} of {2} places", "{0} Moden, {1} von {2} Stellen";
+    GAS_AT = "gas at 400 K", "Gas bei 400 K";
+    SPAN_NOT_POSITIVE = "the lasing span is not above zero", "der Laserbereich ist nicht größer als null";
+    NO_DIP = "no significant dip", "keine signifikante Einsenkung";
+
+    // Beam.
+    FROM_MIRROR = "{0} from the output mirror", "{0} vom Auskoppelspiegel";
+    NO_KNIFE_READINGS = "no knife-edge readings", "keine Ablesungen mit der Messerschneide";
+    FULL_ANGLE = "full angle", "voller Winkel";
+    TWO_DISTANCES = "it takes readings at two distances", "dazu braucht es Ablesungen in zwei Entfernungen";
+
     // Watch.
     NOT_WATCHED = "no capture was watched", "keine Aufnahme wurde beobachtet";
     UNATTRIBUTED = "unattributed jump of {0} MHz at {1} s: tube or interferometer, repeat the watch",
