@@ -10,7 +10,9 @@ mod home;
 mod inspect;
 mod measure;
 mod output;
+mod rack;
 pub mod simulate;
+mod station;
 
 pub use ending::{Ending, Failure};
 
@@ -46,6 +48,10 @@ enum Command {
     },
     /// Every run of a tube side by side, what changed between them, and what was done to it meanwhile
     History(history::Arguments),
+    /// Show a bench: certificates, reference tubes with their chart, what is due, whether it gives verdicts
+    Station(station::Arguments),
+    /// Keep which tubes burn in the rack since when
+    Rack(rack::Arguments),
     /// Write captures of a simulated tube, sound or faulty, and the truth about it
     Simulate(Box<simulate::SimulateArgs>),
 }
@@ -68,6 +74,8 @@ pub fn run() -> ExitCode {
         Command::Measure(arguments) => measure::run(&arguments),
         Command::Check { arguments, home } => check(&arguments, home),
         Command::History(arguments) => history::run(arguments),
+        Command::Station(arguments) => station::run(&arguments),
+        Command::Rack(arguments) => rack::run(arguments),
         Command::Simulate(arguments) => simulate(&arguments),
     };
     let ending = ended.unwrap_or_else(|failure| {

@@ -9,6 +9,7 @@ mod home;
 mod life;
 mod lock;
 mod name;
+mod rack;
 mod record;
 mod store;
 
@@ -19,6 +20,7 @@ pub use home::{Home, TypeTexts, demo_bench, demo_checks};
 pub use life::{add_to_life, life_of};
 pub use lock::SerialLock;
 pub use name::{folder_name, is_folder_name};
+pub use rack::Rack;
 pub use record::frozen_record;
 pub use store::{FoundRun, Store};
 

@@ -2,6 +2,7 @@
 //! Must not open a file, read a clock or decide anything: every verdict comes in with the sheet.
 //! Main functions: [`record_csv`], [`budget_csv`], [`csv_metadata`], [`record_pdf`], [`value_text`].
 
+mod bench;
 mod charts;
 mod csv;
 mod escape;
@@ -14,6 +15,7 @@ pub mod scene;
 mod text;
 mod typeface;
 
+pub use self::bench::{BenchChart, BenchPoint, BenchTitle, bench_csv, bench_pdf};
 pub use self::csv::{BUDGET_COLUMNS, RECORD_COLUMNS, budget_csv, record_csv};
 pub use self::escape::{neutralise, restore};
 pub use self::metadata::csv_metadata;

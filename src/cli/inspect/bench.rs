@@ -34,14 +34,16 @@ pub(super) fn terminal() -> TerminalPerson {
 ///
 /// * `earlier`: how many runs of this serial came before.
 /// * `started_at`: when the run was opened.
+/// * `lit_since`: since when the tube burns already, if a rack warmed it.
 /// * `technician`: initials; filled in if empty.
 pub(super) fn build(
     inputs: &Inputs,
     earlier: usize,
     started_at: DateTime<FixedOffset>,
+    lit_since: Option<DateTime<FixedOffset>>,
     technician: &mut String,
 ) -> Result<Bench, Failure> {
-    let bench = of_source(inputs, earlier, started_at, technician)?;
+    let bench = of_source(inputs, earlier, started_at, lit_since, technician)?;
     let clock = Box::new(Zoned::over(bench.clock, inputs.station.1.time_zone));
     Ok(Bench { clock, interlock: Box::new(StopKey { inner: bench.interlock }), ..bench })
 }
@@ -50,6 +52,7 @@ fn of_source(
     inputs: &Inputs,
     earlier: usize,
     started_at: DateTime<FixedOffset>,
+    lit_since: Option<DateTime<FixedOffset>>,
     technician: &mut String,
 ) -> Result<Bench, Failure> {
     let person = person(inputs, technician)?;
@@ -58,7 +61,9 @@ fn of_source(
         return Ok(folder_bench(folder.clone(), started_at, person.unwrap_or_else(|| nobody())));
     }
     if inputs.scenario.is_some() {
-        return simulated(inputs, earlier, started_at, person, technician);
+        let bench = simulated(inputs, earlier, started_at, technician, person.is_none())?;
+        let age = lit_since.and_then(|since| u64::try_from((started_at - since).num_milliseconds()).ok());
+        return Ok(age.map_or(bench.clone(), |age| bench.lit_for(age)).bench_with(person));
     }
     let none = || Box::new(NoInstrument { reason: NOT_ON_THIS_BENCH.to_owned() });
     let hint = "give `--ask` to answer at this terminal, or `--answers FILE`".to_owned();
@@ -102,13 +107,13 @@ fn simulated(
     inputs: &Inputs,
     earlier: usize,
     started_at: DateTime<FixedOffset>,
-    person: Option<Box<dyn Person>>,
     technician: &mut String,
-) -> Result<Bench, Failure> {
+    own_technician: bool,
+) -> Result<SimulatedBench, Failure> {
     let unknown = || Failure::unusable(format!("the simulated bench has no tube `{}`", inputs.serial));
     let scenario = inputs.scenario.as_ref().ok_or_else(unknown)?;
     let world = scenario.world(&inputs.serial, inputs.seed).ok_or_else(unknown)?.again(earlier as u64);
-    if person.is_none() && technician.is_empty() {
+    if own_technician && technician.is_empty() {
         *technician = scenario.technician.clone();
     }
     let of_answers = inputs.answers.as_ref().map(|answers| (answers.time_to_answer_s * 1000.0).round() as u64);
@@ -117,5 +122,5 @@ fn simulated(
         pace: inputs.pace.unwrap_or(f64::INFINITY),
         time_to_answer_ms: of_answers.unwrap_or(scenario.time_to_answer_ms),
     };
-    Ok(SimulatedBench::new(world, options).bench_with(person))
+    Ok(SimulatedBench::new(world, options))
 }

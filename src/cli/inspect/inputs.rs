@@ -9,7 +9,7 @@ use chrono::{DateTime, FixedOffset};
 
 use super::{Arguments, Format};
 use crate::cli::{Ending, Failure, home};
-use crate::disk::{Home, Store, demo_bench, said};
+use crate::disk::{Home, Rack, Store, demo_bench, said};
 use crate::instruments::CaptureFolder;
 use crate::phantom::Scenario;
 use crate::phrase::Language;
@@ -42,6 +42,8 @@ pub(super) struct Inputs {
     pub pace: Option<f64>,
     pub seed: Option<u64>,
     pub start: Option<DateTime<FixedOffset>>,
+    /// Since when the tube burns already, as given, and where; none if it is struck here.
+    pub lit_since: Option<(&'static str, String)>,
     /// Language, if it was asked for.
     pub language: Option<Language>,
     pub format: Format,
@@ -85,11 +87,19 @@ impl Inputs {
         }
         let answers = arguments.answers.as_deref().map(read_answers).transpose()?;
         let of_answers = || answers.as_ref().and_then(|answers| answers.retest.clone());
+        let retest = arguments.retest.or_else(of_answers);
+        let store = Store::new(home.reports());
+        let rack = Rack::read(store.reports()).map_err(|error| Failure::store(&error))?;
+        let of_option = arguments.lit_since.map(|text| ("--lit-since", text));
+        let of_answers = || Some(("`lit_since` of the answers", answers.as_ref()?.lit_since.clone()?));
+        let of_rack = || Some(("since when it burns, by `tubewright rack list`,", rack.since(serial)?.to_owned()));
+        let lit_since = of_option.or_else(of_answers).or_else(of_rack).filter(|_| captures.is_none());
         Ok(Self {
-            retest: arguments.retest.or_else(of_answers),
+            retest,
             serial: serial.to_owned(),
+            lit_since,
             tube_type: arguments.tube_type,
-            store: Store::new(home.reports()),
+            store,
             home,
             station: (text, station),
             scenario,
@@ -111,7 +121,7 @@ impl Inputs {
 }
 
 /// The compiled-in station file of the bench on which the scenario has this tube.
-fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, String), Failure> {
+pub(in crate::cli) fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, String), Failure> {
     let demo;
     let scenario = match scenario {
         Some(scenario) => scenario,
@@ -131,7 +141,7 @@ fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, St
 }
 
 /// Whether captures come from the simulated bench; a source that needs something more is said.
-fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
+pub(in crate::cli) fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
     match station.interferometer.as_ref().map(|interferometer| &interferometer.source) {
         Some(Source::Simulated) => Ok(true),
         Some(Source::Folder) => {
@@ -145,12 +155,12 @@ fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
     }
 }
 
-fn read_text(path: &Path) -> Result<String, Failure> {
+pub(in crate::cli) fn read_text(path: &Path) -> Result<String, Failure> {
     std::fs::read_to_string(path)
         .map_err(|error| Failure::unusable(format!("cannot read `{}`: {}", path.display(), said(&error))))
 }
 
-pub(super) fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
+pub(in crate::cli) fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
     Scenario::parse(&path.display().to_string(), &read_text(path)?)
         .map_err(|error| Failure::unusable(format!("the scenario cannot be used:\n{error}")))
 }
@@ -170,7 +180,7 @@ fn read_answers(path: &Path) -> Result<Answers, Failure> {
 }
 
 /// Every fault of a file, a line each.
-pub(super) fn faulty(what: &str, faults: &[impl Display]) -> Failure {
+pub(in crate::cli) fn faulty(what: &str, faults: &[impl Display]) -> Failure {
     let lines: Vec<String> = faults.iter().map(ToString::to_string).collect();
     Failure::unusable(format!("the {what} cannot be used:\n{}", lines.join("\n")))
 }

@@ -7,6 +7,7 @@ mod day;
 pub(super) mod earlier;
 mod freeze;
 mod inputs;
+mod lit_since;
 mod opening;
 mod outside;
 mod run_id;
@@ -20,9 +21,11 @@ use std::path::PathBuf;
 use chrono::{DateTime, FixedOffset};
 use clap::{Args, ValueEnum};
 
+pub(super) use self::inputs::{demo_station, faulty, is_simulated, read_scenario, read_text};
+pub(super) use self::serial::check as check_serial;
 use self::{inputs::Inputs, opening::Opening, show::Show};
 use super::{Ending, Failure, output};
-use crate::disk::{RunFolder, Store};
+use crate::disk::{Rack, RunFolder, Store};
 use crate::driver::{Driver, Engine, Interrupted, Watcher, resume};
 use crate::phrase::Language;
 use crate::record::event::Event;
@@ -80,6 +83,9 @@ pub struct Arguments {
     /// Fixes when the run starts (RFC 3339)
     #[arg(long, value_name = "TIME", value_parser = moment)]
     start: Option<DateTime<FixedOffset>>,
+    /// The tube burns already, in a rack: since a time of today (07:40), RFC 3339, or for an age ("40 min")
+    #[arg(long, value_name = "TIME", conflicts_with = "captures")]
+    lit_since: Option<String>,
     /// Scenario of the simulated bench: a file, else the demo day; without SERIAL all of its tubes, one after the other
     #[arg(long, value_name = "FILE", num_args = 0..=1, conflicts_with = "captures")]
     scenario: Option<Option<PathBuf>>,
@@ -152,6 +158,11 @@ fn inspect(inputs: &Inputs, mut show: Option<&mut Show>) -> Result<Done, Failure
     let mut run = Run::open(opening.plan.clone(), opening.identity.clone());
     let (mut journal, events) = opening.folder()?;
     voice::same(inputs, &opening.identity, &events, journal.path())?;
+    // On the bench it is no longer in the rack.
+    let mut rack = Rack::read(inputs.store.reports()).map_err(|error| Failure::store(&error))?;
+    if rack.since(&inputs.serial).is_some() {
+        rack.change(&[], std::slice::from_ref(&inputs.serial)).map_err(|error| Failure::store(&error))?;
+    }
     if let Some(show) = show.as_deref_mut() {
         show.begun(&run, journal.path(), events.len() > 1);
         if let Some(repeat) = &opening.identity.repeats {

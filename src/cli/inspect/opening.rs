@@ -9,6 +9,7 @@ use chrono::{DateTime, Datelike as _, FixedOffset, Utc};
 use super::{
     bench, earlier,
     inputs::{Inputs, faulty},
+    lit_since::lit_since,
     run_id::run_id,
 };
 use crate::cli::checks::{checks_of, last_of_each};
@@ -79,20 +80,20 @@ impl Opening {
         let plan = Plan::from_texts(recipe, limits, station).map_err(|faults| faulty("stored plan", &faults))?;
         let started_at = DateTime::parse_from_rfc3339(&identity.started_at).unwrap_or_default();
         let before = runs.iter().filter(|run| run.opened.identity.run_id < identity.run_id).count();
-        let bench = bench::build(inputs, before, started_at, &mut identity.technician.clone())?;
+        let lit_since = identity.lit_since.as_deref().and_then(|since| DateTime::parse_from_rfc3339(since).ok());
+        let bench = bench::build(inputs, before, started_at, lit_since, &mut identity.technician.clone())?;
         Ok(Self { plan, identity: identity.clone(), bench, path: open.path.clone(), first: None, _lock: lock })
     }
 
     /// * `runs`: of this serial, those that there are already.
     fn anew(inputs: &Inputs, planned: Planned, runs: &[FoundRun], lock: SerialLock) -> Result<Self, Failure> {
-        let Planned { tube_type, texts, plan, repeats, not_before } = planned;
+        let Planned { tube_type, texts, plan, repeats, started_at, lit_since } = planned;
         let (station_text, station) = &inputs.station;
-        let started_at = started_at(inputs, not_before).with_timezone(&station.time_zone).fixed_offset();
         let reference = station.reference(&inputs.serial).is_some();
         let run_kind = if reference { RunKind::Reference } else { RunKind::Product };
         let reference_checks = if reference { None } else { Some(bench_checks(inputs, started_at)?) };
         let mut technician = String::new();
-        let bench = bench::build(inputs, runs.len(), started_at, &mut technician)?;
+        let bench = bench::build(inputs, runs.len(), started_at, lit_since, &mut technician)?;
         let tube = inputs.scenario.as_ref().and_then(|scenario| scenario.tube(&inputs.serial));
         let of_tube =
             |field: fn(&crate::phantom::ScenarioTube) -> &String| tube.map(field).cloned().unwrap_or_default();
@@ -116,6 +117,7 @@ impl Opening {
             repeats,
             run_kind,
             reference_checks,
+            lit_since: lit_since.map(|since| since.to_rfc3339_opts(chrono::SecondsFormat::Millis, false)),
             ..Identity::default()
         };
         let opened = Opened {
@@ -170,7 +172,8 @@ struct Planned {
     plan: Plan,
     /// The run that it repeats.
     repeats: Option<Repeat>,
-    not_before: Option<DateTime<FixedOffset>>,
+    started_at: DateTime<FixedOffset>,
+    lit_since: Option<DateTime<FixedOffset>>,
 }
 
 /// Type, texts and plan of a new run.
@@ -196,7 +199,11 @@ fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<Planned, Failure> {
     // A reference tube is measured at every shift: it judges the bench, and nothing is retested.
     let reference = inputs.station.1.reference(&inputs.serial).is_some();
     let repeats = if reference { None } else { repeats(inputs, &tube_type, &plan, &finished)? };
-    Ok(Planned { tube_type, texts, plan, repeats, not_before: earlier::not_before(&finished) })
+    let zone = inputs.station.1.time_zone;
+    let started_at = started_at(inputs, earlier::not_before(&finished)).with_timezone(&zone).fixed_offset();
+    let lit_since =
+        inputs.lit_since.as_ref().map(|(from, text)| lit_since(from, text, started_at, zone)).transpose()?;
+    Ok(Planned { tube_type, texts, plan, repeats, started_at, lit_since })
 }
 
 /// Which earlier run the new one repeats, if it may be opened at all.

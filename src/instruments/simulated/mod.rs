@@ -52,6 +52,12 @@ impl SimulatedBench {
         Self { state: Rc::new(RefCell::new(State::new(world, options))) }
     }
 
+    /// The same with a tube that burnt for so long already when the run was opened, ms: a rack warmed it.
+    pub fn lit_for(self, ms: u64) -> Self {
+        self.state.borrow_mut().burns_for(ms);
+        self
+    }
+
     /// The bench of a scenario's tube.
     ///
     /// * `seed`, `started_at`: in place of the scenario's own.
