@@ -3,9 +3,11 @@
 //! Main types: [`Glimpse`], [`Warmup`], [`Watched`], [`Counts`], [`CyclePower`].
 
 mod attribution;
+mod beam;
 mod counts;
 mod decay;
 mod drift;
+mod envelope;
 mod glimpse;
 mod jumps;
 mod light;
@@ -21,8 +23,10 @@ mod trial;
 mod warmup;
 mod watch;
 
+pub use beam::{KnifeEdge, beam_diameter, beam_divergence};
 pub use counts::{Counts, GainPoint, count_modes, gain_points};
 pub use drift::{line_drift, tau_per_slope};
+pub use envelope::{Envelope, envelope};
 pub use glimpse::{Glimpse, GlimpseMode};
 pub use light::{LIGHT_ENGINE, LightMeasurement, LightSettings, LightTone, MainsRipple, measure_light};
 pub use noise::{LightSet, NoiseFound, ToneFound, ToneOrigin, light_noise};

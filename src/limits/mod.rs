@@ -8,6 +8,7 @@ mod fault;
 mod judge;
 mod parse;
 pub mod reading;
+mod signs;
 mod words;
 
 use std::fmt;

@@ -43,6 +43,7 @@ table! {
     REVISIONS = "revision {0}, revision {1}", "Revision {0}, Revision {1}";
     RULE = "rule", "Regel";
     TECHNICIAN = "technician", "Prüfer";
+    REPEATS_RUN = "repeats run", "wiederholt";
     DUE = "due\u{a0}{0}", "gültig\u{a0}bis\u{a0}{0}";
     OVERDUE_SINCE = "overdue\u{a0}since\u{a0}{0}", "abgelaufen\u{a0}am\u{a0}{0}";
     OVERDUE = "overdue", "abgelaufen";

@@ -9,6 +9,7 @@ mod escape;
 mod metadata;
 mod page;
 mod pdf;
+mod read;
 mod reason;
 pub mod scene;
 mod text;
@@ -20,6 +21,7 @@ pub use self::escape::{neutralise, restore};
 pub use self::metadata::csv_metadata;
 pub use self::page::{Page, Part};
 pub use self::pdf::PdfError;
+pub use self::read::{ReadRecord, ReadValue, hashes_in, read_record};
 pub use self::text::{ValueText, bound_text, probability_text, row_line, value_text};
 
 use self::typeface::Typeface;

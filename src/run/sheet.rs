@@ -163,14 +163,16 @@ fn remarks(run: &Run) -> Vec<Saying> {
     let simulated = run.identity.simulated.then(|| Saying::from(&reasons::SIMULATED));
     let captures = run.identity.from_captures.then(|| (&reasons::FROM_CAPTURES).into());
     let untimed = run.identity.times_assumed.then(|| (&reasons::UNTIMED).into());
+    let repeats = run.identity.repeats.as_ref();
+    let repeats = repeats.map(|it| reasons::REPEATS.with([name(it.run_id.clone()), said(Saying::outside(&it.reason))]));
     let dark = run.book.dark.as_ref().map(|how| reasons::DARK_TUBE.with([said(how.clone())]));
     let stopped = run.ending.as_ref().and_then(|ending| ending.stopped.as_ref());
     let stopped = stopped.map(|why| reasons::STOPPED.with([said(Saying::outside(why))]));
     let reference = (!run.identity.run_kind.is_product())
         .then(|| reasons::REFERENCE_TUBE.with([name(run.plan.station.station.clone())]));
     let rack = run.book.rack.as_ref().map(Rack::sentence);
-    let all =
-        simulated.into_iter().chain(reference).chain(rack).chain(captures).chain(untimed).chain(dark).chain(stopped);
+    let origin = simulated.into_iter().chain(reference).chain(rack).chain(captures).chain(untimed);
+    let all = origin.chain(repeats).chain(dark).chain(stopped);
     all.chain(run.book.remarks.iter().cloned()).collect()
 }
 

@@ -21,6 +21,7 @@ use crate::{
 };
 pub use capture_text::{CaptureHead, simulated_capture_name, simulated_csv, simulated_light_csv};
 use state::State;
+pub use technician::INITIALS as SIMULATED_INITIALS;
 use technician::Technician;
 
 /// Average of the power reading that goes into a capture's head, ms.

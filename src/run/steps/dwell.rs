@@ -21,7 +21,7 @@ use crate::{
 const DARK_AFTER_MS: u64 = 30_000;
 /// Standard uncertainty of the rate at which an interferometer's body moves, Hz/s: aluminium moves 1,090 MHz for 0.1 K
 /// (`measurement.md` 8), taken as within 0.1 K an hour, rectangular (the hour from memory).
-const U_DRIFT: f64 = 1.09e9 / 3600.0 / 1.732_050_8;
+pub(super) const U_DRIFT: f64 = 1.09e9 / 3600.0 / 1.732_050_8;
 const KEYS: [&str; 5] = ["warmup_tau", "warmup_ready", "walk_cycles", "walk_growth", "walk_rate"];
 
 /// The step.
