@@ -10,6 +10,7 @@ use super::{
     question::{Answer, Question},
     reference::ReferenceCheck,
 };
+use crate::phrase::Language;
 
 /// Version of the form of an event line. A newer one is refused, an older one stays readable.
 pub const EVENT_VERSION: u32 = 1;
@@ -84,6 +85,11 @@ pub enum Happening {
     Waited,
     /// High voltage is off.
     MadeSafe,
+    /// The clock on the wall was set, or the machine slept; wall times of the run go on from before.
+    ClockSet {
+        /// By how much, s; below zero: back.
+        by_s: f64,
+    },
     /// Opened again after an interruption.
     Resumed,
     /// Stopped by a person, with the reason.
@@ -154,6 +160,13 @@ pub struct Identity {
     /// Language of the sheet, two letters; empty is English.
     #[serde(default, skip_serializing_if = "String::is_empty")]
     pub language: String,
+}
+
+impl Identity {
+    /// The language of the sheet.
+    pub fn language(&self) -> Language {
+        Language::of_record(&self.language)
+    }
 }
 
 /// What a run is for.

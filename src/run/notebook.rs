@@ -2,15 +2,17 @@
 //! Must not decide what comes next.
 //! Main types: [`Notebook`], [`Seen`], [`Dwelt`].
 
+use super::rack::Rack;
 use crate::{
     behaviour::{Glimpse, GlimpseMode, Hop, Swap, Warmup},
+    phrase::Saying,
     record::{
         event::Captured,
         finding::{CaptureFinding, ModeFinding},
         sheet::{GainChart, SweepChart},
     },
     sweep::{Place, SharedAxis},
-    uncertainty::Measured,
+    uncertainty::{BudgetLine, Measured},
 };
 
 /// One capture with light that could be measured.
@@ -78,10 +80,14 @@ pub(crate) struct Dwelt {
 /// What was seen so far.
 #[derive(Default)]
 pub(crate) struct Notebook {
+    /// The tube burnt already when the run was opened; times then count from the opening.
+    pub rack: Option<Rack>,
+    /// What the air of the bench adds to a mode spacing, relative.
+    pub air: Option<BudgetLine>,
     /// Monotonic ms of first light.
     pub first_light_ms: Option<u64>,
     /// The tube gives no light, and how that was seen.
-    pub dark: Option<String>,
+    pub dark: Option<Saying>,
     /// Captures of each step, in the order of the steps.
     captures: Vec<Taken>,
     /// Dwells.
@@ -101,12 +107,17 @@ pub(crate) struct Notebook {
     /// Chart of heights along the gain line.
     pub gain_chart: Option<GainChart>,
     /// Why there can be no verdict on the tube, as sentences.
-    pub holds: Vec<String>,
+    pub holds: Vec<Saying>,
     /// For a reader of the sheet.
-    pub remarks: Vec<String>,
+    pub remarks: Vec<Saying>,
 }
 
 impl Notebook {
+    /// Nothing seen yet, of a tube from the rack or one that is struck here.
+    pub fn begin(rack: Option<Rack>, air: Option<BudgetLine>) -> Self {
+        Self { rack, air, ..Self::default() }
+    }
+
     /// Seconds since first light, negative before it; since the opening while there was no light yet.
     pub fn since_first_light(&self, seconds_since_opened: f64) -> f64 {
         seconds_since_opened - self.first_light_ms.unwrap_or(0) as f64 / 1e3
@@ -191,7 +202,7 @@ impl Notebook {
     }
 
     /// Puts a sentence on the sheet, once.
-    pub fn remark(&mut self, sentence: impl Into<String>) {
+    pub fn remark(&mut self, sentence: impl Into<Saying>) {
         let sentence = sentence.into();
         if !self.remarks.contains(&sentence) {
             self.remarks.push(sentence);

@@ -17,6 +17,7 @@ use super::{
     steady,
 };
 use crate::capture::Capture;
+use crate::uncertainty::{BudgetLine, Evaluation};
 
 /// Fewest samples on a ramp that can be measured.
 const FEWEST_SAMPLES: usize = 100;
@@ -29,10 +30,12 @@ const FEWEST_LEVELS: f64 = 12.0;
 /// A detector whose time constant is more line widths than this has run the lines together (found).
 const FAR_TOO_SLOW: f64 = 6.0;
 /// A spacing this near to a whole part of the nominal one is that.
-const NEAR_PART: f64 = 0.04;
+const NEAR_PART: f64 = 0.02;
 /// Change of one mode's height against the others' that no sound sweep has, and that which is worth a warning.
-const UNSTEADY: f64 = 0.35;
-const UNEVEN_HEIGHTS: f64 = 0.08;
+const UNSTEADY: f64 = 0.25;
+const UNEVEN_HEIGHTS: f64 = 0.06;
+/// What a hop that changes heights by a share does to the spacing, of the spacing and that share (found: up to 0.06).
+const BY_A_HOP: f64 = 0.05;
 /// Reduced chi-square from which the baseline is looked at.
 const BAD_FIT: f64 = 8.0;
 /// A baseline that moves by this share of the highest peak is worth taking out.
@@ -87,13 +90,10 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
         return Ok(());
     }
     let first = attempt(&segment, Some(capture).filter(|_| segment.has_ramp), settings, result);
-    if doubtful(&first, result)
-        && let Some(better) = without_baseline(&segment, settings, &before, result)
-    {
-        *result = better;
-        return Ok(());
+    match doubtful(&first, result).then(|| without_baseline(&segment, settings, &before, result)).flatten() {
+        Some(better) => *result = better,
+        None => first?,
     }
-    first?;
     if !segment.has_ramp && turns(result, settings) {
         result.mode_spacing = None;
         return Err(Refusal::NoTurn);
@@ -161,10 +161,13 @@ fn doubt(assigned: &Assigned, fitted: &Fitted, segment: &Segment, settings: &Set
         result.mode_spacing = None;
         result.no_spacing = Some(refusal);
     };
+    let near = |parts: &[f64]| {
+        let near_one = |nominal: f64| parts.iter().any(|part| (spacing / nominal / part - 1.0).abs() < NEAR_PART);
+        settings.nominal_spacing.is_some_and(near_one)
+    };
+    // Twice nominal is a polarizing element in the way, warned of by name, unless the lines do not even fit.
     if let Some(nominal) = settings.nominal_spacing
-        && let ratio = spacing / nominal
-        // Twice nominal is a polarizing element in the way, and warned of by name.
-        && [1.0 / 4.0, 1.0 / 3.0, 1.0 / 2.0, 3.0, 4.0].iter().any(|part| (ratio / part - 1.0).abs() < NEAR_PART)
+        && (near(&[1.0 / 4.0, 1.0 / 3.0, 1.0 / 2.0, 3.0, 4.0]) || (near(&[2.0]) && misfits(result)))
     {
         return withdraw(Refusal::FalseComb { spacing, nominal }, result);
     }
@@ -181,6 +184,12 @@ fn doubt(assigned: &Assigned, fitted: &Fitted, segment: &Segment, settings: &Set
         withdraw(Refusal::Unsteady { change }, result);
     } else if change > UNEVEN_HEIGHTS {
         result.warnings.push(Warning::HeightsChange { change });
+        let by_a_hop = BY_A_HOP * change * spacing;
+        let line = "heights that change in mid-sweep: what a hop of that size does to the spacing";
+        if let Some(spacing) = &mut result.mode_spacing {
+            let line = BudgetLine::direct("unsteady-sweep", line, Evaluation::TypeB, by_a_hop, f64::INFINITY);
+            spacing.budget.push(line);
+        }
     }
 }
 
@@ -189,7 +198,12 @@ fn doubtful(first: &Result<(), Refusal>, result: &Measurement) -> bool {
     match first {
         Err(Refusal::Dark | Refusal::FewLevels { .. } | Refusal::FarTooSlow { .. } | Refusal::Fringes { .. }) => false,
         Err(_) => true,
-        Ok(()) => misfits(result) || result.no_spacing.is_some(),
+        // A tube that did not hold still did not, whatever the baseline.
+        Ok(()) => match result.no_spacing {
+            Some(Refusal::Unsteady { .. }) => false,
+            Some(_) => true,
+            None => misfits(result),
+        },
     }
 }
 
@@ -214,7 +228,7 @@ fn without_baseline(
     let (flat, _) = flatten::flattened(segment, look.width).unwrap_or((flat, moved));
     let mut result = before.clone();
     attempt(&flat, None, settings, &mut result).ok()?;
-    let surer = u_spacing(&result) < u_spacing(first) || (first.modes.is_empty() && !result.modes.is_empty());
+    let surer = u_spacing(&result) < u_spacing(first);
     result.warnings.push(Warning::Baseline { share });
     surer.then_some(result)
 }
@@ -230,7 +244,9 @@ fn by_own_repeat(
     let of = |range: (usize, usize)| {
         let mut result = before.clone();
         attempt(&segment::cut(capture, range, false), None, settings, &mut result).ok()?;
-        (!turns(&result, settings) && !misfits(&result) && result.mode_spacing.is_some()).then_some(result)
+        let spacing = result.mode_spacing.as_ref()?.value;
+        let against = settings.nominal_spacing.is_some_and(|_| !confirmed(spacing, settings));
+        (!against && !turns(&result, settings) && !misfits(&result)).then_some(result)
     };
     let mut best: Option<Measurement> = None;
     for stretch in stretches {
@@ -258,9 +274,18 @@ fn misfits(result: &Measurement) -> bool {
 /// leaves them, or lines that do not fit and a spacing that nothing confirms.
 fn turns(result: &Measurement, settings: &Settings) -> bool {
     let Some(spacing) = result.mode_spacing.as_ref().map(|spacing| spacing.value) else { return false };
-    let uneven = |w: &Warning| matches!(w, Warning::UnevenComb { rms } if *rms > UNEVEN * spacing);
-    let confirmed = settings.nominal_spacing.is_some_and(|nominal| (spacing / nominal - 1.0).abs() < CONFIRMED);
-    result.warnings.iter().any(uneven) || (misfits(result) && !confirmed)
+    let odd = |w: &Warning| match w {
+        Warning::UnevenComb { rms } => *rms > UNEVEN * spacing,
+        Warning::Misfit { .. } => true,
+        _ => false,
+    };
+    result.warnings.iter().any(odd) && !confirmed(spacing, settings)
+}
+
+/// Whether a nominal spacing was given and is near, as far as the free spectral range is known.
+fn confirmed(spacing: f64, settings: &Settings) -> bool {
+    let near = |nominal: f64| (spacing / nominal - 1.0).abs() < CONFIRMED.hypot(2.0 * settings.u_free_spectral_range);
+    settings.nominal_spacing.is_some_and(near)
 }
 
 fn check(settings: &Settings) -> Result<(), Refusal> {

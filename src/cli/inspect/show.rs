@@ -13,11 +13,13 @@ use super::Format;
 use crate::cli::{Failure, output};
 use crate::driver::Watcher;
 use crate::measurand;
+use crate::phrase::page;
 use crate::record::event::Event;
 use crate::record::question::Question;
 use crate::record::sheet::{Row, Sheet, Value};
 use crate::report::row_line;
 use crate::run::{Remark, Run};
+use crate::station::standing::holds;
 
 /// A rewritten line changes this often at most.
 const REWRITE_EVERY: Duration = Duration::from_millis(200);
@@ -61,12 +63,17 @@ impl Show {
     pub fn begun(&mut self, run: &Run, folder: &Path, again: bool) {
         let identity = run.identity();
         if identity.simulated {
-            output::talk(crate::report::SIMULATED);
+            output::talk(page::SIMULATED.of(run.identity().language()));
         }
         let how = if again { "taken up again" } else { "opened" };
         let (serial, tube_type) = (&identity.serial, &identity.tube_type);
         output::talk(&format!("{serial}, type {tube_type}: sheet {how} in {}", folder.display()));
         output::talk(&format!("Decision rule: {}", run.sheet().rule));
+        if let Some(at) = run.sheet().started_at.filter(|_| identity.run_kind.is_product()) {
+            for sentence in holds(&run.plan().station, at, identity.reference_checks.as_deref()) {
+                output::talk(&format!("No verdict will be given: {}", sentence.english()));
+            }
+        }
         if again && !identity.from_captures {
             output::talk("Look first whether the supply is on and the tube lit: high voltage may still be there.");
         }
@@ -86,7 +93,7 @@ impl Show {
             if self.shown.insert((row.step.clone(), row.measurand.clone())) {
                 self.clear();
                 let line = match self.format {
-                    Format::Text => row_line(row),
+                    Format::Text => row_line(row, sheet.language()),
                     Format::Json => row_json(row),
                 };
                 if let Err(failure) = output::result(&line) {
@@ -144,16 +151,17 @@ impl Show {
                 ("verdict", json!(verdict.outcome.word())),
                 ("grade", json!(verdict.grade)),
                 ("reject_code", json!(verdict.reject_code)),
-                ("sentence", json!(verdict.sentence)),
-                ("reason", json!(verdict.reason)),
+                ("sentence", json!(verdict.sentence.english())),
+                ("reason", json!(verdict.reason.english())),
                 ("record_csv", json!(csv.to_string_lossy())),
                 ("record_pdf", json!(pdf.to_string_lossy())),
             ])),
             Format::Text => {
                 output::result("")?;
-                output::result(&format!("{}: {}", sheet.identity.serial, verdict.sentence))?;
+                let language = sheet.language();
+                output::result(&format!("{}: {}", sheet.identity.serial, verdict.sentence.text(language)))?;
                 if !verdict.reason.is_empty() {
-                    output::result(&verdict.reason)?;
+                    output::result(&verdict.reason.text(language))?;
                 }
                 output::result(&csv.display().to_string())?;
                 output::result(&pdf.display().to_string())
@@ -202,7 +210,7 @@ fn row_json(row: &Row) -> String {
         Value::Count { value, .. } => (json!(value), Json::Null, Json::Null),
         Value::AtLeast(least) => (json!(least), Json::Null, Json::Null),
         Value::Word(word) => (json!(word), Json::Null, Json::Null),
-        Value::Absent(reason) => (Json::Null, Json::Null, json!(reason)),
+        Value::Absent(reason) => (Json::Null, Json::Null, json!(reason.english())),
     };
     let mut fields = vec![("step", json!(row.step)), ("measurand", json!(row.measurand)), (key.as_str(), value)];
     let u_key = known.map(|m| format!("{}_u{}", m.key, m.unit().dimension.suffix()));
@@ -213,7 +221,7 @@ fn row_json(row: &Row) -> String {
     fields.push(("is_lower_bound", json!(matches!(row.value, Value::AtLeast(_)))));
     fields.push(("absent", absent));
     fields.push(("judged", verdicts.collect()));
-    fields.push(("note", json!(row.note)));
+    fields.push(("note", json!(row.note.english())));
     object(&fields)
 }
 

@@ -127,7 +127,7 @@ fn bracket(scene: &mut Scene, x: Option<f64>, serif: f64, y: f64, half: f64) {
 fn numbers(scene: &mut Scene, face: &Typeface, row: &Row, known: Option<&'static Measurand>, y: f64) {
     let listed = |bound: fn(&Judged) -> Option<f64>| {
         let mut texts: Vec<String> = Vec::new();
-        for text in row.judged.iter().filter_map(bound).map(|b| bound_text(known, b)) {
+        for text in row.judged.iter().filter_map(bound).map(|b| bound_text(known, b, face.language)) {
             if !texts.contains(&text) {
                 texts.push(text);
             }

@@ -5,12 +5,14 @@
 use super::{Given, Room, Step, Wish};
 use crate::{
     behaviour::{Glimpse, Warmup, WarmupSettings, WarmupState, line_drift, tau_per_slope},
+    phrase::{Saying, figure, name, reasons, said},
     recipe,
     run::{
         charts,
         filled::Filled,
         grid::Grid,
         notebook::{DwellEnd, Dwelt, Kept, Notebook},
+        rack,
     },
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
@@ -19,7 +21,7 @@ use crate::{
 const DARK_AFTER_MS: u64 = 30_000;
 /// Standard uncertainty of the rate at which an interferometer's body moves, Hz/s: aluminium moves 1,090 MHz for 0.1 K
 /// (`measurement.md` 8), taken as within 0.1 K an hour, rectangular (the hour from memory).
-const U_DRIFT: f64 = 1.09e9 / 3600.0 / 1.732_050_8;
+pub(super) const U_DRIFT: f64 = 1.09e9 / 3600.0 / 1.732_050_8;
 const KEYS: [&str; 5] = ["warmup_tau", "warmup_ready", "walk_cycles", "walk_growth", "walk_rate"];
 
 /// The step.
@@ -34,7 +36,7 @@ pub(super) struct Dwell {
     any_dark: bool,
     n_lost: u64,
     /// Why the first of them was lost.
-    first_lost: Option<String>,
+    first_lost: Option<Saying>,
     begun: bool,
     done: bool,
     filled: Vec<Filled>,
@@ -67,9 +69,9 @@ impl Dwell {
         }
     }
 
-    fn lose(&mut self, why: &str) {
+    fn lose(&mut self, why: impl Into<Saying>) {
         self.n_lost += 1;
-        self.first_lost.get_or_insert_with(|| why.to_owned());
+        self.first_lost.get_or_insert_with(|| why.into());
     }
 
     fn captured(&mut self, captured: &crate::record::event::Captured, room: &mut Room<'_>) {
@@ -82,8 +84,10 @@ impl Dwell {
         }
         let kept = room.book.keep(captured);
         if kept == Kept::No {
-            let why = captured.finding.refused.as_deref().unwrap_or("out of the order of time");
-            self.lose(why);
+            match &captured.finding.refused {
+                Some(reason) => self.lose(Saying::outside(reason)),
+                None => self.lose(&reasons::OUT_OF_ORDER),
+            }
             return self.go_on(room);
         }
         self.lit_ms = room.now_ms;
@@ -104,6 +108,9 @@ impl Dwell {
         }
         dwelt.seconds = glimpse.at;
         let state = dwelt.warmup.state();
+        if room.book.rack.is_some() {
+            return rack::is_over(&state, &self.keys);
+        }
         // A time constant known to no better than a half predicts nothing: a walk misread early must not end the dwell.
         let tau_known = state.tau.as_ref().is_none_or(|tau| tau.expanded() <= 0.5 * tau.value.abs());
         // What strayed from the fit over the last horizon (a draught) may stray again over the next.
@@ -138,7 +145,11 @@ impl Dwell {
         room.book.redraw(step);
         self.follow_again(room);
         let now = room.book.since_first_light(room.now_ms as f64 / 1e3);
+        let from_rack = room.book.rack.is_some();
         let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) else { return };
+        // At rest without the cycles wanted is at rest all the same.
+        let at_rest = from_rack && end == DwellEnd::Longest && rack::is_at_rest(&dwelt.warmup.state(), &self.keys);
+        let end = if at_rest { DwellEnd::Settled } else { end };
         dwelt.end = Some(end);
         if end != DwellEnd::SourceEnded || dwelt.seconds <= 0.0 {
             dwelt.seconds = now.max(dwelt.seconds);
@@ -146,24 +157,45 @@ impl Dwell {
         dwelt.warmup.finish();
         let state = dwelt.warmup.state();
         let longest = self.keys.longest_s / 60.0;
+        if from_rack && end == DwellEnd::Settled && state.cycles_seen < self.keys.rack_cycles {
+            room.book.holds.push((&reasons::RACK_NO_CYCLE_HOLD).into());
+        }
         match end {
-            DwellEnd::Dark => room.book.dark = Some("no light in the captures for 30 s".into()),
-            DwellEnd::Longest => room.book.remark(format!(
-                "The walk had not settled when the dwell ended at its longest, {longest:.0} min: what needs whole cycles is empty."
-            )),
+            DwellEnd::Dark => room.book.dark = Some((&reasons::NO_LIGHT_FOR).into()),
+            DwellEnd::Longest => {
+                room.book.remark(reasons::NOT_SETTLED_REMARK.with([figure(format!("{longest:.0}"))]));
+            }
             DwellEnd::SourceEnded if self.any_dark && !self.any_light => {
-                room.book.dark = Some("no light in any capture of the dwell".into());
+                room.book.dark = Some((&reasons::NO_LIGHT_IN_DWELL).into());
             }
             _ => {}
         }
         if self.n_lost > 0 {
-            let why = self.first_lost.as_deref().unwrap_or_default();
-            room.book.remark(format!("{} captures of step {step} could not be read; the first: {why}.", self.n_lost));
+            let why = said(self.first_lost.clone().unwrap_or_default());
+            room.book.remark(reasons::UNREADABLE_FIRST.with([figure(self.n_lost), name(step), why]));
         }
         if room.book.dark.is_none() {
-            self.filled = self.rows(end, &state, room);
+            self.filled = match &room.book.rack {
+                Some(rack) => self.rack_rows(&rack.reason(), &state, room),
+                None => self.rows(end, &state, room),
+            };
             room.book.gain_chart = charts::gain_chart(room.book, step, room.plan.recipe.nominal_spacing);
         }
+    }
+
+    /// Of a tube from the rack only the rate at rest was seen here.
+    fn rack_rows(&self, reason: &Saying, state: &WarmupState, room: &Room<'_>) -> Vec<Filled> {
+        let glimpses: Vec<Glimpse> = room.book.of(room.step).iter().map(|seen| seen.glimpse.clone()).collect();
+        let drift = Drift::new(state, room.plan.recipe.nominal_spacing, &glimpses);
+        let rate = rack::resting(state, &self.keys).map(|rest| {
+            let u = rest.u_rate * state.spacing;
+            let line =
+                BudgetLine::direct("scatter", "scatter of the walk at rest", Evaluation::TypeA, u, f64::INFINITY);
+            drift.on(Measured::with_line(rest.rate * state.spacing, line), 1.0)
+        });
+        let mut rows: Vec<Filled> = KEYS[..4].iter().map(|key| Filled::absent(key, reason.clone())).collect();
+        rows.push(some_number(KEYS[4], rate.as_ref(), &(&reasons::NO_RATE).into()));
+        rows
     }
 
     fn rows(&self, end: DwellEnd, state: &WarmupState, room: &Room<'_>) -> Vec<Filled> {
@@ -181,16 +213,12 @@ impl Dwell {
             let line =
                 BudgetLine::direct("walk", "tube phase at both ends", Evaluation::TypeA, state.u_walked, f64::INFINITY);
             let cycles = drift.on(Measured::with_line(state.walked, line), drift.walked);
-            let note = if state.early_unknown {
-                "early cycles unknown: counted from the first that could be followed"
-            } else {
-                ""
-            };
-            rows.push(Filled::number(KEYS[2], &cycles).noted(note));
+            let note = if state.early_unknown { (&reasons::EARLY_UNKNOWN).into() } else { Saying::none() };
+            rows.push(Filled::number(KEYS[2], &cycles).noted(note.clone()));
             rows.push(Filled::number(KEYS[3], &cycles.scaled(self.wavelength / 2.0)).noted(note));
         }
         let rate = state.rate.clone().map(|rate| drift.on(rate, 1.0));
-        rows.push(some_number(KEYS[4], rate.as_ref(), "the rate of the walk could not be found"));
+        rows.push(some_number(KEYS[4], rate.as_ref(), &Saying::from(&reasons::NO_RATE)));
         rows
     }
 }
@@ -249,19 +277,22 @@ impl Drift {
     }
 }
 
-fn some_number(key: &str, measured: Option<&Measured>, why: &str) -> Filled {
-    measured.map_or_else(|| Filled::absent(key, why), |measured| Filled::number(key, measured))
+fn some_number(key: &str, measured: Option<&Measured>, why: &Saying) -> Filled {
+    measured.map_or_else(|| Filled::absent(key, why.clone()), |measured| Filled::number(key, measured))
 }
 
-fn why_empty(end: DwellEnd, keys: &recipe::Dwell, state: &WarmupState) -> String {
+fn why_empty(end: DwellEnd, keys: &recipe::Dwell, state: &WarmupState) -> Saying {
     // The same as what the end of the dwell hangs on: what strayed from the fit may stray again.
     let residual = state.residual_upper.map(|residual| residual + strayed(state, keys.horizon_s));
     let residual = residual.filter(|residual| residual.is_finite());
-    let residual = residual.map_or(String::new(), |cycles| format!("; predicted walk up to {cycles:.1} spacings"));
-    match end {
-        DwellEnd::Longest => format!("not settled within {:.0} min{residual}", keys.longest_s / 60.0),
-        DwellEnd::SourceEnded => format!("the captures ended before the walk settled{residual}"),
-        _ => "the warm-up could not be fitted".into(),
+    let residual = residual.map(|cycles| figure(format!("{cycles:.1}")));
+    let longest = figure(format!("{:.0}", keys.longest_s / 60.0));
+    match (end, residual) {
+        (DwellEnd::Longest, Some(residual)) => reasons::NOT_SETTLED_PREDICTED.with([longest, residual]),
+        (DwellEnd::Longest, None) => reasons::NOT_SETTLED.with([longest]),
+        (DwellEnd::SourceEnded, Some(residual)) => reasons::ENDED_EARLY_PREDICTED.with([residual]),
+        (DwellEnd::SourceEnded, None) => (&reasons::ENDED_EARLY).into(),
+        _ => (&reasons::NO_FIT).into(),
     }
 }
 
@@ -269,7 +300,9 @@ impl Step for Dwell {
     fn begin(&mut self, room: &mut Room<'_>) {
         let first_light = *room.book.first_light_ms.get_or_insert(room.now_ms);
         self.wavelength = room.plan.recipe.wavelength;
-        self.grid = Grid::new(first_light, self.keys.early_every_s, self.keys.early_for_s, self.keys.every_s);
+        // A tube from the rack walks slowly from the first capture on.
+        let early_for = if room.book.rack.is_some() { 0.0 } else { self.keys.early_for_s };
+        self.grid = Grid::new(first_light, self.keys.early_every_s, early_for, self.keys.every_s);
         // Without a strike, first light is now and so is the first capture.
         self.next_ms = self.grid.at_or_after(room.now_ms);
         self.lit_ms = room.now_ms;
@@ -297,15 +330,15 @@ impl Step for Dwell {
             Given::Capture(captured) => self.captured(captured, room),
             Given::Lost { for_good: true, reason } => {
                 if !self.any_light && !self.any_dark {
-                    let reason = self.first_lost.as_deref().unwrap_or(reason);
-                    self.filled = KEYS.iter().map(|key| Filled::absent(key, reason)).collect();
+                    let reason = self.first_lost.clone().unwrap_or_else(|| Saying::outside(reason));
+                    self.filled = KEYS.iter().map(|key| Filled::absent(key, reason.clone())).collect();
                     self.done = true;
                 } else {
                     self.end(DwellEnd::SourceEnded, room);
                 }
             }
             Given::Lost { for_good: false, reason } => {
-                self.lose(reason);
+                self.lose(Saying::outside(reason));
                 self.go_on(room);
             }
             _ => {}

@@ -2,8 +2,10 @@
 //! Must not do I/O or call a trait of the bench.
 //! Main types: [`Step`], [`Wish`], [`Given`], [`Room`].
 
+mod beam;
 mod comb;
 mod dwell;
+mod envelope;
 mod look;
 mod noise;
 mod polarizer;
@@ -17,6 +19,7 @@ use chrono::{DateTime, FixedOffset};
 
 use super::{filled::Filled, notebook::Notebook, plan::Plan};
 use crate::{
+    phrase::Saying,
     recipe::StepKind,
     record::{
         event::Captured,
@@ -73,7 +76,7 @@ pub(crate) enum Wish {
     /// A reading.
     Reading(ReadingKind),
     /// An answer.
-    Ask { word: String, text: String, expects: Expects, high_voltage: bool },
+    Ask { word: String, text: Saying, expects: Expects, high_voltage: bool },
     /// It is done.
     Nothing,
 }
@@ -90,13 +93,13 @@ pub(crate) struct LightWish {
 
 impl Wish {
     /// A number in a unit, SI bounds.
-    pub fn number(word: &str, text: impl Into<String>, ucum: &str, lowest: f64, highest: f64) -> Self {
+    pub fn number(word: &str, text: impl Into<Saying>, ucum: &str, lowest: f64, highest: f64) -> Self {
         let expects = Expects::Number { ucum: ucum.into(), lowest, highest };
         Self::Ask { word: word.into(), text: text.into(), expects, high_voltage: false }
     }
 
     /// Enter, once it is done.
-    pub fn done(word: impl Into<String>, text: impl Into<String>) -> Self {
+    pub fn done(word: impl Into<String>, text: impl Into<Saying>) -> Self {
         Self::Ask { word: word.into(), text: text.into(), expects: Expects::Done, high_voltage: false }
     }
 }
@@ -123,11 +126,13 @@ pub(crate) fn step_of(kind: &StepKind) -> Box<dyn Step> {
         StepKind::Dwell(keys) => Box::new(dwell::Dwell::new(keys)),
         StepKind::Sweep(keys) => Box::new(sweep::Sweep::new(keys)),
         StepKind::Comb(keys) => Box::new(comb::Comb::new(keys)),
+        StepKind::Envelope(keys) => Box::new(envelope::Envelope::new(keys)),
         StepKind::Polarizer(keys) => polarizer::step_of(keys),
         StepKind::Watch(keys) => Box::new(watch::Watch::new(keys)),
         StepKind::Power(keys) => Box::new(power::Power::new(keys)),
         StepKind::Noise(keys) => Box::new(noise::Noise::new(keys)),
         StepKind::Supply(keys) => Box::new(supply::Supply::new(keys)),
+        StepKind::Beam(keys) => Box::new(beam::Beam::new(keys)),
         StepKind::Look(keys) => Box::new(look::Look::new(keys)),
     }
 }
