@@ -46,8 +46,8 @@ pub struct Peak {
 /// 1. A peak is a sample, or a run of equal samples, with a lower sample on both sides.
 /// 2. Drop those below `min_height`; then, from the highest down, those closer than `min_distance` to one kept; then
 ///    those below `min_prominence`.
-/// 3. Bases of all samples come from one pass over a stack in each direction, so the time grows as n, plus n·log n
-///    for sorting by height.
+/// 3. Bases: walk from each peak to the nearest higher sample; where the walks grow long, bases of all samples come from
+///    one pass over a stack in each direction, so the time grows as n, plus n·log n for sorting by height.
 /// 4. Widths: walk from the peak to the crossing. A peak inside the walk of another has less than half of its
 ///    prominence, so a sample is walked over a few times only.
 ///
@@ -66,17 +66,45 @@ pub fn find(signal: &[f64], options: &Options) -> Vec<Peak> {
     if indices.is_empty() {
         return Vec::new();
     }
-    let left = left_minima(signal);
-    let mirrored: Vec<f64> = signal.iter().rev().copied().collect();
-    let right = left_minima(&mirrored);
-    let last = signal.len() - 1;
-    let describe = |index: usize| {
-        let (left_base, right_base) = (left[index], last - right[last - index]);
+    let bases = walked_bases(signal, &indices).unwrap_or_else(|| {
+        let left = left_minima(signal);
+        let mirrored: Vec<f64> = signal.iter().rev().copied().collect();
+        let right = left_minima(&mirrored);
+        let last = signal.len() - 1;
+        indices.iter().map(|&index| (left[index], last - right[last - index])).collect()
+    });
+    let describe = |(index, (left_base, right_base)): (usize, (usize, usize))| {
         let prominence = signal[index] - signal[left_base].max(signal[right_base]);
         with_width(signal, index, prominence, left_base, right_base)
     };
     let prominent = |p: &Peak| options.min_prominence.is_none_or(|least| p.prominence >= least);
-    indices.into_iter().map(describe).filter(prominent).collect()
+    indices.into_iter().zip(bases).map(describe).filter(prominent).collect()
+}
+
+/// Steps, in lengths of the signal, that walking from every peak to its bases may take: beyond, one pass for all samples is
+/// quicker.
+const MOST_WALKED: usize = 6;
+
+/// Left and right base of every peak, by walking from it to the nearest higher sample; none where that takes too long.
+fn walked_bases(signal: &[f64], indices: &[usize]) -> Option<Vec<(usize, usize)>> {
+    let mut left = MOST_WALKED * signal.len();
+    let mut base = |index: usize, step: isize| {
+        let (height, mut lowest, mut at) = (signal[index], index, index);
+        while let Some(next) = at.checked_add_signed(step).filter(|&next| next < signal.len()) {
+            // NaN compares false: it ends the walk as a higher sample does.
+            if !matches!(signal[next].partial_cmp(&height), Some(std::cmp::Ordering::Less | std::cmp::Ordering::Equal))
+            {
+                break;
+            }
+            if signal[next] < signal[lowest] {
+                lowest = next;
+            }
+            at = next;
+            left = left.checked_sub(1)?;
+        }
+        Some(lowest)
+    };
+    indices.iter().map(|&index| Some((base(index, -1)?, base(index, 1)?))).collect()
 }
 
 fn local_maxima(signal: &[f64]) -> Vec<usize> {
@@ -263,7 +291,11 @@ mod tests {
         for _ in 0..200 {
             let signal: Vec<f64> = (0..80).map(|_| next()).collect();
             for peak in find(&signal, &Options::default()) {
-                assert_eq!((peak.left_base, peak.right_base), slow_bases(&signal, peak.index), "{signal:?}");
+                let slow = slow_bases(&signal, peak.index);
+                assert_eq!((peak.left_base, peak.right_base), slow, "{signal:?}");
+                // Both ways to the bases, whichever was taken.
+                assert_eq!(walked_bases(&signal, &[peak.index]), Some(vec![slow]), "{signal:?}");
+                assert_eq!(left_minima(&signal)[peak.index], slow.0, "{signal:?}");
             }
         }
     }
