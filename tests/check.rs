@@ -89,6 +89,7 @@ from = "warn"
 [[step]]
 name = "noise"
 do = "noise"
+lowest = "60 Hz"
 [[step]]
 name = "comb"
 do = "sweep"
@@ -107,17 +108,17 @@ choices = ["pink", "pink"]
     recipe.toml:3:19: `nominal_spacing`: `mm` is not a unit of a frequency; expected one of Hz, kHz, MHz, GHz, THz
     recipe.toml:5:1: unknown key `retest` in the file; expected one of revision, nominal_spacing, wavelength, mode_floor, retests, step
       nearest known word: retests
-    recipe.toml:8:6: unknown step `dwel`; expected one of strike, dwell, sweep, comb, polarizer, watch, power, noise, supply, look
+    recipe.toml:8:6: unknown step `dwel`; expected one of strike, dwell, sweep, comb, envelope, polarizer, watch, power, noise, supply, beam, look
       nearest known word: dwell
     recipe.toml:12:8: `from` names `warn`, no earlier step; expected an earlier dwell or sweep step
       nearest known word: warm
-    recipe.toml:15:6: `noise` is a step of a later version; expected one of strike, dwell, sweep, comb, polarizer, watch, power, noise, supply, look
-    recipe.toml:17:8: two steps are named `comb`; expected each name once
-    recipe.toml:19:12: `captures` is the text "five"; expected a whole number from 1 to 100000
-    recipe.toml:23:8: `from` names `comb`, a comb step; expected an earlier dwell step
+    recipe.toml:16:10: `lowest` is the text "60 Hz"; expected a frequency from 1 Hz to 40 Hz, below the mains
+    recipe.toml:18:8: two steps are named `comb`; expected each name once
+    recipe.toml:20:12: `captures` is the text "five"; expected a whole number from 1 to 100000
+    recipe.toml:24:8: `from` names `comb`, a comb step; expected an earlier dwell step
       nearest known word: warm
-    recipe.toml:28:11: `choices` has one word; expected at least two to choose from
-    recipe.toml:28:20: `pink` stands twice in `choices`; expected it once
+    recipe.toml:29:11: `choices` has one word; expected at least two to choose from
+    recipe.toml:29:20: `pink` stands twice in `choices`; expected it once
     "#);
 }
 
@@ -164,7 +165,7 @@ done = false
     station.toml:14:36: `date` is the text "2026-01-12"; expected a day such as 2026-01-12, without quotes
     station.toml:15:2: unknown key `spply` in the file; expected one of station, language, time_zone, shifts, interferometer, power_meter, supply, polarizer, light_detector, reference
       nearest known word: supply
-    answers.toml:2:1: unknown key `technitian` in the file; expected one of technician, tube_type, time_to_answer, steps
+    answers.toml:2:1: unknown key `technitian` in the file; expected one of technician, tube_type, time_to_answer, lit_since, steps
       nearest known word: technician
     answers.toml:3:18: `time_to_answer`: `m` is not a unit of a time; expected one of s, ms, µs, min, h
     answers.toml:5:9: `tries` is the number -1; expected a whole number from 0 to 4294967295

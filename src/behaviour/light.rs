@@ -59,6 +59,8 @@ pub struct MainsRipple {
     pub power: f64,
     /// Its standard uncertainty from the floor, V².
     pub u_power: f64,
+    /// What the noise alone makes uncertain, V².
+    pub floor: f64,
     /// Harmonics summed.
     pub n_harmonics: u32,
 }
@@ -210,7 +212,7 @@ fn mains(samples: &[f64], level: f64, interval: f64, spectrum: &Periodogram, hig
         (excess, best)
     });
     let (_, (strongest, frequency)) = if sought[1].0 > sought[0].0 { sought[1] } else { sought[0] };
-    let (mut power, mut variance, mut n_harmonics) = (0.0, 0.0, 0);
+    let (mut power, mut variance, mut floor_variance, mut n_harmonics) = (0.0, 0.0, 0.0, 0);
     let mut h = 1.0;
     while h * frequency < highest {
         let raw = hann_power(samples, level, h * frequency * interval);
@@ -219,10 +221,18 @@ fn mains(samples: &[f64], level: f64, interval: f64, spectrum: &Periodogram, hig
         power += raw - under;
         // Var(P) of a sine in noise: 2P·F + F², F what the floor adds.
         variance += 2.0 * (raw - under).max(0.0) * under + under * under;
+        floor_variance += under * under;
         n_harmonics += 1;
         h += 1.0;
     }
-    MainsRipple { frequency, clear: strongest > 0.0, power, u_power: variance.sqrt(), n_harmonics }
+    MainsRipple {
+        frequency,
+        clear: strongest > 0.0,
+        power,
+        u_power: variance.sqrt(),
+        floor: floor_variance.sqrt(),
+        n_harmonics,
+    }
 }
 
 /// Whether a bin holds light of a mains harmonic.

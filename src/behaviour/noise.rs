@@ -94,7 +94,7 @@ pub fn light_noise(set: &LightSet<'_>, bandwidth: f64, highest: f64) -> Result<N
         noise_rms: (!folded(set)).then(|| noise_rms(set, (slow_level, fast_level), bandwidth, highest)),
         dark_rms: (set.slow_dark.noise.0 / slow_level.powi(2) + set.fast_dark.noise.0 / fast_level.powi(2)).sqrt(),
         line_ripple: with_response(line_ripple),
-        ripple_floor: u_ripple.sqrt(),
+        ripple_floor: (lit.floor.hypot(dark.floor)).sqrt() / slow_level,
         mains: (lit.frequency, lit.clear, lit.n_harmonics),
         tone: tone(set, slow_level, fast_level),
     })

@@ -52,6 +52,7 @@ pub(super) fn light_finding_of(measured: Result<LightMeasurement, String>) -> Li
             clear: mains.clear,
             power: mains.power,
             u_power: mains.u_power,
+            floor: mains.floor,
             n_harmonics: mains.n_harmonics,
         }),
         tone: measured.tone.map(|tone| StoredTone {

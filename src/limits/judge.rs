@@ -86,6 +86,7 @@ fn failed_by(code: &str) -> Saying {
 
 /// Outcomes 3 to 5, and the indices of the rows that decide.
 fn conclude(limits: &Limits, rows: &[Row], dark: bool) -> (TubeVerdict, Vec<usize>) {
+    let all = rows;
     let place = |row: &Row| limits.limits.iter().position(|limit| limit.measurand == row.measurand);
     let limited: Vec<(usize, Limited<'_>)> = rows
         .iter()
@@ -107,7 +108,7 @@ fn conclude(limits: &Limits, rows: &[Row], dark: bool) -> (TubeVerdict, Vec<usiz
         let rows: Vec<&Limited<'_>> = failed.iter().map(|(_, row)| row).collect();
         let code = rows.first().and_then(|row| row.limit.reject.clone());
         let sentence = code.as_ref().map_or((&phrases::FAIL).into(), |code| failed_by(code));
-        let ending = verdict(Outcome::Fail, sentence, words::fail(&rows));
+        let ending = verdict(Outcome::Fail, sentence, words::fail(&rows, all));
         return (TubeVerdict { reject_code: code, ..ending }, failed.iter().map(|(at, _)| *at).collect());
     }
 
@@ -119,14 +120,15 @@ fn conclude(limits: &Limits, rows: &[Row], dark: bool) -> (TubeVerdict, Vec<usiz
     let unfilled: Vec<&Limit> = limits.limits.iter().filter(has_row).collect();
     if !held.is_empty() || !unfilled.is_empty() {
         let rows: Vec<&Limited<'_>> = held.iter().map(|(_, row)| row).collect();
-        let ending = verdict(Outcome::Hold, &phrases::HOLD, words::hold(&rows, &unfilled));
+        let ending = verdict(Outcome::Hold, &phrases::HOLD, words::hold(&rows, &unfilled, all));
         return (ending, held.iter().map(|(at, _)| *at).collect());
     }
 
     let best = left[0].to_owned();
     let lost: Vec<&str> = limits.grades.iter().map(String::as_str).take_while(|grade| *grade != best).collect();
-    let all: Vec<&Limited<'_>> = limited.iter().map(|(_, row)| row).collect();
-    let ending = verdict(Outcome::Pass, phrases::PASS.with([name(best.as_str())]), words::pass(&all, &lost));
+    let limited_rows: Vec<&Limited<'_>> = limited.iter().map(|(_, row)| row).collect();
+    let ending =
+        verdict(Outcome::Pass, phrases::PASS.with([name(best.as_str())]), words::pass(&limited_rows, &lost, all));
     let deciding = limited.iter().filter(|(_, row)| row.costs_a_grade()).map(|(at, _)| *at).collect();
     (TubeVerdict { grade: Some(best), ..ending }, deciding)
 }

@@ -2,7 +2,7 @@
 //! Must not decide: every verdict is read from the judged rows.
 //! Main functions: [`fail`], [`hold`], [`pass`], [`note`].
 
-use super::{Limit, Severity, judge::Limited};
+use super::{Limit, Severity, judge::Limited, signs::with_cause};
 use crate::{
     measurand::{Measurand, find},
     phrase::{Phrase, Piece, Saying, clause, figure, list, name, opening, said, verdict::*, within},
@@ -24,11 +24,14 @@ pub fn bench_hold(reasons: &[Saying]) -> Saying {
     Saying::list(reasons.iter().cloned().chain([(&NO_VERDICT).into()]), &SPACE)
 }
 
-/// Why a tube fails: the first row's reason, and the other codes. Rows come worst first.
-pub fn fail(rows: &[&Limited<'_>]) -> Saying {
+/// Why a tube fails: the first row's reason with its likely cause, and the other codes. Rows come worst first.
+///
+/// * `all`: every row of the sheet, judged.
+pub fn fail(rows: &[&Limited<'_>], all: &[Row]) -> Saying {
     let Some((first, others)) = rows.split_first() else { return (&NO_GRADE_LEFT).into() };
     let judged = first.entries(RowVerdict::Fail).last();
-    let reason = judged.map_or_else(Saying::none, |judged| SENTENCE.with([opening(why(first.row, judged))]));
+    let told = |judged| SENTENCE.with([opening(with_cause(why(first.row, judged), first.row, all))]);
+    let reason = judged.map_or_else(Saying::none, told);
     let mut codes: Vec<&str> = others.iter().filter_map(|row| row.limit.reject.as_deref()).collect();
     codes.dedup();
     let also = if codes.is_empty() { Saying::none() } else { ALSO.with([names(&codes, &COMMA)]) };
@@ -41,7 +44,7 @@ fn names(names: &[impl AsRef<str>], joint: &'static Phrase) -> Piece {
 }
 
 /// Why there is no verdict: the first row's reason, and the names of the others.
-pub fn hold(rows: &[&Limited<'_>], unfilled: &[&Limit]) -> Saying {
+pub fn hold(rows: &[&Limited<'_>], unfilled: &[&Limit], all: &[Row]) -> Saying {
     let unfilled_name = |limit: &&Limit| match find(&limit.measurand) {
         Some(known) => (&known.name).into(),
         None => Saying::of(name(limit.measurand.as_str())),
@@ -49,7 +52,7 @@ pub fn hold(rows: &[&Limited<'_>], unfilled: &[&Limit]) -> Saying {
     let labels = rows.iter().map(|row| row.row.label.clone()).chain(unfilled.iter().map(unfilled_name));
     let others: Vec<Saying> = labels.skip(1).map(|label| Saying::of(within(label))).collect();
     let first = match (rows.first(), unfilled.first()) {
-        (Some(row), _) => hold_reason(row),
+        (Some(row), _) => hold_reason(row, all),
         (None, Some(limit)) => UNFILLED.with([opening(unfilled_name(limit))]),
         (None, None) => Saying::none(),
     };
@@ -57,7 +60,7 @@ pub fn hold(rows: &[&Limited<'_>], unfilled: &[&Limit]) -> Saying {
     Saying::list([first, also, (&NO_VERDICT).into()], &SPACE)
 }
 
-fn hold_reason(limited: &Limited<'_>) -> Saying {
+fn hold_reason(limited: &Limited<'_>, all: &[Row]) -> Saying {
     let row = limited.row;
     let label = opening(row.label.clone());
     let Some(judged) = limited.entries(RowVerdict::Hold).next() else { return Saying::none() };
@@ -69,17 +72,17 @@ fn hold_reason(limited: &Limited<'_>) -> Saying {
         // The supply's ripple reaches the light through the current: the tube is not to blame (practice).
         Value::Number { .. } if row.measurand == "line_ripple" => POINTS_AT_SUPPLY.with([label, shown(row)]),
         Value::Word(_) if judged.wanted.is_empty() => WORD_FOR_NUMBER.with([label]),
-        _ => LIMIT_HOLDS.with([opening(why(row, judged))]),
+        _ => LIMIT_HOLDS.with([opening(with_cause(why(row, judged), row, all))]),
     }
 }
 
 /// Why the better grades were lost, and which rows are marked.
-pub fn pass(rows: &[&Limited<'_>], lost: &[&str]) -> Saying {
+pub fn pass(rows: &[&Limited<'_>], lost: &[&str], all: &[Row]) -> Saying {
     let mut in_order: Vec<&&Limited<'_>> = rows.iter().collect();
     in_order.sort_by_key(|row| row.index);
     let mut sentences = Vec::new();
     for grade in lost {
-        let reasons: Vec<Saying> = in_order.iter().filter_map(|limited| why_lost(limited, grade)).collect();
+        let reasons: Vec<Saying> = in_order.iter().filter_map(|limited| why_lost(limited, grade, all)).collect();
         sentences.push(NOT_GRADE.with([name(*grade), list(reasons, &SEMICOLON)]));
     }
     for row in in_order.iter().filter(|row| row.limit.severity == Severity::Minor) {
@@ -91,9 +94,10 @@ pub fn pass(rows: &[&Limited<'_>], lost: &[&str]) -> Saying {
 }
 
 /// Why a row costs a grade, if it does.
-fn why_lost(limited: &Limited<'_>, grade: &str) -> Option<Saying> {
+fn why_lost(limited: &Limited<'_>, grade: &str, all: &[Row]) -> Option<Saying> {
     let judged = limited.entries(RowVerdict::Fail).find(|judged| judged.grade == grade)?;
-    (limited.limit.severity != Severity::Minor).then(|| why(limited.row, judged))
+    let reason = || with_cause(why(limited.row, judged), limited.row, all);
+    (limited.limit.severity != Severity::Minor).then(reason)
 }
 
 /// One line for the row itself; empty where all is well.

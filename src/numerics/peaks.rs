@@ -46,8 +46,8 @@ pub struct Peak {
 /// 1. A peak is a sample, or a run of equal samples, with a lower sample on both sides.
 /// 2. Drop those below `min_height`; then, from the highest down, those closer than `min_distance` to one kept; then
 ///    those below `min_prominence`.
-/// 3. Bases: walk from each peak to the nearest higher sample; where the walks grow long, bases of all samples come from
-///    one pass over a stack in each direction, so the time grows as n, plus n·log n for sorting by height.
+/// 3. Bases of all samples come from one pass over a stack in each direction, so the time grows as n, plus n·log n
+///    for sorting by height.
 /// 4. Widths: walk from the peak to the crossing. A peak inside the walk of another has less than half of its
 ///    prominence, so a sample is walked over a few times only.
 ///
@@ -62,49 +62,61 @@ pub struct Peak {
 pub fn find(signal: &[f64], options: &Options) -> Vec<Peak> {
     let high_enough = |&i: &usize| options.min_height.is_none_or(|least| signal[i] >= least);
     let indices: Vec<usize> = local_maxima(signal).into_iter().filter(high_enough).collect();
-    let indices = keep_distance(signal, indices, options.min_distance);
-    if indices.is_empty() {
-        return Vec::new();
-    }
-    let bases = walked_bases(signal, &indices).unwrap_or_else(|| {
-        let left = left_minima(signal);
-        let mirrored: Vec<f64> = signal.iter().rev().copied().collect();
-        let right = left_minima(&mirrored);
-        let last = signal.len() - 1;
-        indices.iter().map(|&index| (left[index], last - right[last - index])).collect()
-    });
+    // No base lies below the lowest sample: what does not rise far enough above it needs no bases.
+    let lowest = signal.iter().copied().fold(f64::INFINITY, f64::min);
+    let may_be_prominent = |&i: &usize| options.min_prominence.is_none_or(|least| signal[i] - lowest >= least);
+    let walls: Vec<usize> = indices.into_iter().filter(may_be_prominent).collect();
+    let bases = if signal.iter().any(|x| x.is_nan()) { all_bases(signal, &walls) } else { bases(signal, &walls) };
+    let kept = keep_distance(signal, walls.clone(), options.min_distance);
+    let mut all = walls.into_iter().zip(bases);
+    let with_bases = kept.into_iter().filter_map(|index| all.find(|(wall, _)| *wall == index));
     let describe = |(index, (left_base, right_base)): (usize, (usize, usize))| {
         let prominence = signal[index] - signal[left_base].max(signal[right_base]);
         with_width(signal, index, prominence, left_base, right_base)
     };
     let prominent = |p: &Peak| options.min_prominence.is_none_or(|least| p.prominence >= least);
-    indices.into_iter().zip(bases).map(describe).filter(prominent).collect()
+    with_bases.map(describe).filter(prominent).collect()
 }
 
-/// Steps, in lengths of the signal, that walking from every peak to its bases may take: beyond, one pass for all samples is
-/// quicker.
-const MOST_WALKED: usize = 6;
-
-/// Left and right base of every peak, by walking from it to the nearest higher sample; none where that takes too long.
-fn walked_bases(signal: &[f64], indices: &[usize]) -> Option<Vec<(usize, usize)>> {
-    let mut left = MOST_WALKED * signal.len();
-    let mut base = |index: usize, step: isize| {
-        let (height, mut lowest, mut at) = (signal[index], index, index);
-        while let Some(next) = at.checked_add_signed(step).filter(|&next| next < signal.len()) {
-            // NaN compares false: it ends the walk as a higher sample does.
-            if !matches!(signal[next].partial_cmp(&height), Some(std::cmp::Ordering::Less | std::cmp::Ordering::Equal))
-            {
-                break;
-            }
-            if signal[next] < signal[lowest] {
-                lowest = next;
-            }
-            at = next;
-            left = left.checked_sub(1)?;
-        }
-        Some(lowest)
+/// Bases of peaks among which every higher maximum is listed: only these end a stretch, so one pass finds the lowest
+/// sample between neighbours, and the stack of [`left_minima`] runs over the peaks alone. No sample may be NaN.
+fn bases(signal: &[f64], walls: &[usize]) -> Vec<(usize, usize)> {
+    // Of equal samples the nearest to the peak counts: the last on its left, the first on its right.
+    let lowest = |from: usize, to: usize, last: bool| {
+        let lower = |best: usize, i: usize| {
+            if signal[i] < signal[best] || (last && signal[i] == signal[best]) { i } else { best }
+        };
+        (from + 1..=to).fold(from, lower)
     };
-    indices.iter().map(|&index| Some((base(index, -1)?, base(index, 1)?))).collect()
+    let one_way = |order: &mut dyn Iterator<Item = (usize, usize)>| {
+        let mut stack: Vec<(f64, usize)> = Vec::new();
+        let found = order.map(|(wall, valley)| {
+            let mut lowest = valley;
+            while let Some(&(_, minimum)) = stack.last().filter(|(top, _)| *top <= signal[wall]) {
+                if signal[minimum] < signal[lowest] {
+                    lowest = minimum;
+                }
+                stack.pop();
+            }
+            stack.push((signal[wall], lowest));
+            lowest
+        });
+        found.collect::<Vec<usize>>()
+    };
+    let before = |k: usize| if k == 0 { 0 } else { walls[k - 1] };
+    let after = |k: usize| walls.get(k + 1).copied().unwrap_or(signal.len() - 1);
+    let left = one_way(&mut (0..walls.len()).map(|k| (walls[k], lowest(before(k), walls[k], true))));
+    let right = one_way(&mut (0..walls.len()).rev().map(|k| (walls[k], lowest(walls[k], after(k), false))));
+    left.into_iter().zip(right.into_iter().rev()).collect()
+}
+
+/// Bases of any number of peaks, in one pass over the signal each way.
+fn all_bases(signal: &[f64], indices: &[usize]) -> Vec<(usize, usize)> {
+    let left = left_minima(signal);
+    let mirrored: Vec<f64> = signal.iter().rev().copied().collect();
+    let right = left_minima(&mirrored);
+    let last = signal.len() - 1;
+    indices.iter().map(|&index| (left[index], last - right[last - index])).collect()
 }
 
 fn local_maxima(signal: &[f64]) -> Vec<usize> {
@@ -291,11 +303,7 @@ mod tests {
         for _ in 0..200 {
             let signal: Vec<f64> = (0..80).map(|_| next()).collect();
             for peak in find(&signal, &Options::default()) {
-                let slow = slow_bases(&signal, peak.index);
-                assert_eq!((peak.left_base, peak.right_base), slow, "{signal:?}");
-                // Both ways to the bases, whichever was taken.
-                assert_eq!(walked_bases(&signal, &[peak.index]), Some(vec![slow]), "{signal:?}");
-                assert_eq!(left_minima(&signal)[peak.index], slow.0, "{signal:?}");
+                assert_eq!((peak.left_base, peak.right_base), slow_bases(&signal, peak.index), "{signal:?}");
             }
         }
     }

@@ -7,6 +7,9 @@ use super::table;
 table! {
     // Instruments and people.
     NO_PROBE = "no high-voltage probe on this bench", "kein Hochspannungstastkopf an diesem Messplatz";
+    PRESS_IN_THE_DARK = "there is no light to watch while the mount is pressed",
+        "beim Drücken der Fassung ist kein Licht zu beobachten";
+    SEEN_IS_NONE_OF = "what is seen, `{0}`, is none of {1}", "was zu sehen ist, `{0}`, ist keines von {1}";
     NOT_HERE = "not on this bench", "nicht an diesem Messplatz";
     CAPTURES_ONLY = "captures only: nobody at a bench", "nur Aufnahmen: niemand am Messplatz";
     NO_REASON = "no reason given", "kein Grund angegeben";
@@ -33,6 +36,22 @@ table! {
         beam was not blocked",
         "der Lichtempfänger zeigt {0} V bei offenem und {1} V bei abgedecktem Strahl: kein Licht, oder der Strahl war nicht \
         abgedeckt";
+
+    // Envelope and beam.
+    ENVELOPE_FEW = "{0} points along the gain line are too few", "{0} Punkte entlang der Verstärkungslinie sind zu wenige";
+    ENVELOPE_THIN = "phase coverage is thin: {0} of {1} places under the gain line hold {2} modes or more",
+        "zu wenige Phasen: nur {0} von {1} Stellen unter der Verstärkungslinie tragen {2} Moden oder mehr";
+    ENVELOPE_LOW = "the low flank of the envelope could not be extrapolated",
+        "die untere Flanke der Einhüllenden war nicht zu extrapolieren";
+    ENVELOPE_HIGH = "the high flank of the envelope could not be extrapolated",
+        "die obere Flanke der Einhüllenden war nicht zu extrapolieren";
+    ENVELOPE_NO_HALF = "the envelope does not cross half its height", "die Einhüllende schneidet ihre halbe Höhe nicht";
+    ENVELOPE_HALF = "the envelope's half height could not be found", "die halbe Höhe der Einhüllenden war nicht zu finden";
+    KNIFE_SAME = "both positions of the knife edge are the same", "beide Stellungen der Messerschneide sind gleich";
+    BEAM_NARROWS = "the beam does not widen from the nearer distance to the farther",
+        "der Strahl weitet sich von der näheren zur ferneren Entfernung nicht auf";
+    BEAM_NEAR = "the nearer distance, {0} m, is not beyond three Rayleigh lengths, {1} m: measure farther away",
+        "die nähere Entfernung, {0} m, liegt nicht jenseits von drei Rayleighlängen, {1} m: weiter entfernt messen";
 
     // Refusals of the engine.
     TOO_SHORT = "the longest ramp has {0} samples; at least 100 are needed: record more samples a ramp",

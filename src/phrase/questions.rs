@@ -23,5 +23,13 @@ table! {
     BLOCK_BEAM = "Block the beam ahead of the power meter", "Den Strahl vor dem Leistungsmesser abdecken";
     BLOCK_LIGHT = "Block the beam ahead of the light detector, with a beam stop",
         "Den Strahl vor dem Lichtempfänger mit einem Strahlfänger abdecken";
+    KNIFE_DISTANCE = "Set the knife edge across the beam and note its distance from the output mirror. Laser \
+        radiation: look at the meter, never along the beam",
+        "Die Messerschneide in den Strahl stellen und ihre Entfernung vom Auskoppelspiegel notieren. Laserstrahlung: \
+        auf das Messgerät blicken, nie in den Strahl";
+    KNIFE_AT_10 = "Position of the knife edge at which 10 % of the power passes",
+        "Stellung der Messerschneide, bei der 10 % der Leistung durchgehen";
+    KNIFE_AT_90 = "Position of the knife edge at which 90 % of the power passes",
+        "Stellung der Messerschneide, bei der 90 % der Leistung durchgehen";
     OPEN_BEAM = "Open the beam again", "Den Strahl wieder freigeben";
 }

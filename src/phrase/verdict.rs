@@ -60,6 +60,23 @@ table! {
     NOT_GRADE = "Not {0}: {1}.", "Nicht {0}: {1}.";
     MARKED = "Marked: {0} (minor).", "Vermerkt: {0} (Nebenfehler).";
 
+    LIKELY_CAUSE = "{0}; likely cause: {1}", "{0}; wahrscheinliche Ursache: {1}";
+    CAUSE_CONTAMINATION = "contamination, an air leak", "Verunreinigung, Luft eingedrungen";
+    CAUSE_HELIUM_LOST = "helium lost", "Heliumverlust";
+    CAUSE_WEAR = "wear of the cathode, near the end of its life", "Kathodenverschleiß, nahe dem Lebensende";
+    CAUSE_WALKED_OFF = "mirror walked off: realign warm", "Spiegel verstellt: warm nachjustieren";
+    CAUSE_SPUTTERED = "mirror sputtered", "Spiegel durch Kathodenzerstäubung belegt";
+    CAUSE_BROKEN_BORE = "broken bore", "gebrochene Kapillare";
+    CAUSE_WINDOW_FILM = "film or dirt on the window: clean and repeat before rejecting",
+        "Belag oder Schmutz auf dem Fenster: vor dem Verwerfen reinigen und wiederholen";
+    CAUSE_BORE = "bore too wide or bent, or a mirror tilted: realign and repeat",
+        "Kapillare zu weit oder krumm oder Spiegel verkippt: nachjustieren und wiederholen";
+    CAUSE_WRONG_TYPE = "wrong type or label", "falscher Typ oder falsches Etikett";
+    CAUSE_POLARIZER = "a polarizer in the way hides every second mode",
+        "ein Polarisator im Strahl verdeckt jede zweite Mode";
+    CAUSE_SWAPS = "axes swap at a fixed place under the gain line, for life",
+        "Achsentausch an fester Stelle der Verstärkungslinie, lebenslang";
+
     IS = "{0} {1} is {2}", "{0} {1} liegt {2}";
     IS_COUNTED = "{0}: {1}, {2}", "{0}: {1}, {2}";
     IS_WORD = "{0} {1}, wanted {2}", "{0}: {1}, verlangt {2}";

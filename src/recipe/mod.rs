@@ -2,8 +2,10 @@
 //! Must not measure, ask or wait: `run/steps` does a step's work. Each kind's keys are a file of their own here.
 //! Main types: [`Recipe`], [`Step`], [`StepKind`].
 
+mod beam;
 mod comb;
 mod dwell;
+mod envelope;
 mod look;
 mod noise;
 mod parse;
@@ -14,8 +16,10 @@ mod supply;
 mod sweep;
 mod watch;
 
+pub use beam::Beam;
 pub use comb::Comb;
 pub use dwell::Dwell;
+pub use envelope::Envelope;
 pub use look::Look;
 pub use noise::Noise;
 pub use polarizer::{Polarization, Polarizer};
@@ -66,6 +70,8 @@ pub enum StepKind {
     Sweep(Sweep),
     /// Mode comb over a walk cycle.
     Comb(Comb),
+    /// Heights along the gain line.
+    Envelope(Envelope),
     /// Polarization axes and extinction.
     Polarizer(Polarizer),
     /// Hops and swaps.
@@ -76,6 +82,8 @@ pub enum StepKind {
     Noise(Noise),
     /// Discharge and supply.
     Supply(Supply),
+    /// Knife-edge readings of the beam.
+    Beam(Beam),
     /// A look by eye.
     Look(Look),
 }
@@ -117,11 +125,13 @@ impl StepKind {
             Self::Dwell(_) => "dwell",
             Self::Sweep(_) => "sweep",
             Self::Comb(_) => "comb",
+            Self::Envelope(_) => "envelope",
             Self::Polarizer(_) => "polarizer",
             Self::Watch(_) => "watch",
             Self::Power(_) => "power",
             Self::Noise(_) => "noise",
             Self::Supply(_) => "supply",
+            Self::Beam(_) => "beam",
             Self::Look(_) => "look",
         }
     }
@@ -135,11 +145,13 @@ impl StepKind {
             Self::Dwell(_) => Dwell::FILLS,
             Self::Sweep(_) => Sweep::FILLS,
             Self::Comb(_) => Comb::FILLS,
+            Self::Envelope(_) => Envelope::FILLS,
             Self::Polarizer(polarizer) => polarizer.fills(),
             Self::Watch(_) => Watch::FILLS,
             Self::Power(_) => Power::FILLS,
             Self::Noise(_) => Noise::FILLS,
             Self::Supply(supply) => supply.fills(),
+            Self::Beam(_) => Beam::FILLS,
             Self::Look(_) => return vec![format!("visual.{step}")],
         };
         keys.iter().map(|key| (*key).to_owned()).collect()

@@ -2,7 +2,9 @@
 //! Must not know the keys of one kind.
 //! Main function: [`recipe`].
 
-use super::{Comb, Dwell, Look, Noise, Polarizer, Power, Recipe, Step, StepKind, Strike, Supply, Sweep, Watch};
+use super::{
+    Beam, Comb, Dwell, Envelope, Look, Noise, Polarizer, Power, Recipe, Step, StepKind, Strike, Supply, Sweep, Watch,
+};
 use crate::{
     limits::{
         Fault, nearest,
@@ -12,8 +14,6 @@ use crate::{
 };
 
 const TOP: &[&str] = &["revision", "nominal_spacing", "wavelength", "mode_floor", "retests", "step"];
-/// Kinds of a later version: known words, not yet steps.
-const LATER: &[&str] = &["envelope", "beam"];
 
 /// Stands for the kind of a step whose kind could not be read.
 const UNREAD: &str = "";
@@ -26,11 +26,13 @@ const KINDS: &[(&str, &[&str], Build)] = &[
     ("dwell", Dwell::KEYS, |c| Dwell::read(c).map(StepKind::Dwell)),
     ("sweep", Sweep::KEYS, |c| Sweep::read(c).map(StepKind::Sweep)),
     ("comb", Comb::KEYS, |c| Comb::read(c).map(StepKind::Comb)),
+    ("envelope", Envelope::KEYS, |c| Envelope::read(c).map(StepKind::Envelope)),
     ("polarizer", Polarizer::KEYS, |c| Polarizer::read(c).map(StepKind::Polarizer)),
     ("watch", Watch::KEYS, |c| Watch::read(c).map(StepKind::Watch)),
     ("power", Power::KEYS, |c| Power::read(c).map(StepKind::Power)),
     ("noise", Noise::KEYS, |c| Noise::read(c).map(StepKind::Noise)),
     ("supply", Supply::KEYS, |c| Supply::read(c).map(StepKind::Supply)),
+    ("beam", Beam::KEYS, |c| Beam::read(c).map(StepKind::Beam)),
     ("look", Look::KEYS, |c| Look::read(c).map(StepKind::Look)),
 ];
 
@@ -138,11 +140,7 @@ fn kind(item: &Item<'_>) -> Option<&'static (&'static str, &'static [&'static st
     if found.is_none() {
         let known = || KINDS.iter().map(|(word, _, _)| *word);
         let list = known().collect::<Vec<_>>().join(", ");
-        if LATER.contains(&word) {
-            item.fault(format!("`{word}` is a step of a later version; expected one of {list}"), None);
-        } else {
-            item.fault(format!("unknown step `{word}`; expected one of {list}"), nearest(word, known()));
-        }
+        item.fault(format!("unknown step `{word}`; expected one of {list}"), nearest(word, known()));
     }
     found
 }

@@ -62,6 +62,8 @@ pub struct StoredMains {
     pub power: f64,
     /// Its standard uncertainty, V².
     pub u_power: f64,
+    /// What the noise alone makes uncertain, V².
+    pub floor: f64,
     /// Harmonics summed.
     pub n_harmonics: u32,
 }

@@ -10,7 +10,9 @@ use super::{
     fitted::{self, Fitted},
     flatten, orders,
     orders::Orders,
-    outcome, repeat as own_repeat,
+    outcome,
+    refine::{self, Swept},
+    repeat as own_repeat,
     segment::{self, Segment},
     steady,
 };
@@ -54,6 +56,7 @@ const AGREE: f64 = 4.0;
 /// 3. All lines are fitted at once (Lorentzian, one width, detector pole where the data ask for it).
 /// 4. Peaks are gathered into classes (one light, seen in every order), the comb is laid over the classes.
 /// 5. Σ cᵢ Pᵢ(x) − m·Δν = k·FSR is solved for axis and spacing, weighted by the centres' covariance.
+/// 6. From there one model of all samples (Airy lines, both ramps) is fitted; where it does not fit, step 5 stands.
 pub fn measure(capture: &Capture, settings: &Settings) -> Measurement {
     let mut result = Measurement { free_spectral_range: settings.free_spectral_range, ..Measurement::default() };
     if let Err(refusal) = run(capture, settings, &mut result) {
@@ -86,7 +89,7 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
         *result = found;
         return Ok(());
     }
-    let first = attempt(&segment, settings, result);
+    let first = attempt(&segment, Some(capture).filter(|_| segment.has_ramp), settings, result);
     match doubtful(&first, result).then(|| without_baseline(&segment, settings, &before, result)).flatten() {
         Some(better) => *result = better,
         None => first?,
@@ -98,8 +101,13 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
     Ok(())
 }
 
-/// Measures one ramp.
-fn attempt(segment: &Segment, settings: &Settings, result: &mut Measurement) -> Result<(), Refusal> {
+/// Measures one ramp; `back`: the capture, where its other ramp may help.
+fn attempt(
+    segment: &Segment,
+    back: Option<&Capture>,
+    settings: &Settings,
+    result: &mut Measurement,
+) -> Result<(), Refusal> {
     result.noise = Some(segment.noise);
     warn_of_segment(segment, result);
     let look = detect::detect(segment);
@@ -116,11 +124,10 @@ fn attempt(segment: &Segment, settings: &Settings, result: &mut Measurement) -> 
     if look.peaks.len() > MOST_LINES {
         return Err(Refusal::Clutter { count: look.peaks.len() });
     }
-    let orders = repeat(&look, segment, settings)?;
-    let fitted = fitted::fit_lines(segment, &look, &orders).ok_or(Refusal::NoFit)?;
-    if let Some(pole) = fitted.fit.pole {
+    let mut main = sweep(segment, &look, settings)?;
+    if let Some(pole) = main.fitted.fit.pole {
         let time_constant = pole * segment.dt;
-        let ratio = pole / fitted.fit.width;
+        let ratio = pole / main.fitted.fit.width;
         if ratio > FAR_TOO_SLOW {
             return Err(Refusal::FarTooSlow { ratio });
         }
@@ -128,13 +135,23 @@ fn attempt(segment: &Segment, settings: &Settings, result: &mut Measurement) -> 
             result.warnings.push(Warning::SlowDetector { time_constant });
         }
     }
-    let assigned = assign::assign(segment.signal.len(), &orders, &fitted, settings)?;
-    if assigned.n_stray > 0 {
-        result.warnings.push(Warning::Stray { count: assigned.n_stray });
+    if main.assigned.n_stray > 0 {
+        result.warnings.push(Warning::Stray { count: main.assigned.n_stray });
     }
-    outcome::fill(segment, &fitted, &assigned, settings, result);
-    doubt(&assigned, &fitted, segment, settings, result);
+    let second = back.and_then(|capture| segment::other(capture, segment));
+    let other = second.as_ref().and_then(|second| sweep(second, &detect::detect(second), settings).ok());
+    refine::sharpen(&mut main, other, settings.free_spectral_range);
+    outcome::fill(main.segment, &main.fitted, &main.assigned, settings, result);
+    doubt(&main.assigned, &main.fitted, main.segment, settings, result);
     Ok(())
+}
+
+/// Fits the lines of one ramp and says which is which.
+fn sweep<'a>(segment: &'a Segment, look: &Look, settings: &Settings) -> Result<Swept<'a>, Refusal> {
+    let orders = repeat(look, segment, settings)?;
+    let fitted = fitted::fit_lines(segment, look, &orders).ok_or(Refusal::NoFit)?;
+    let assigned = assign::assign(segment.signal.len(), &orders, &fitted, settings)?;
+    Ok(Swept { segment, fitted, assigned })
 }
 
 /// Withdraws a spacing that looks sound and is not.
@@ -210,7 +227,7 @@ fn without_baseline(
     let look = detect::detect(&flat);
     let (flat, _) = flatten::flattened(segment, look.width).unwrap_or((flat, moved));
     let mut result = before.clone();
-    attempt(&flat, settings, &mut result).ok()?;
+    attempt(&flat, None, settings, &mut result).ok()?;
     let surer = u_spacing(&result) < u_spacing(first);
     result.warnings.push(Warning::Baseline { share });
     surer.then_some(result)
@@ -226,7 +243,7 @@ fn by_own_repeat(
     let (period, stretches) = own_repeat::stretches(segment)?;
     let of = |range: (usize, usize)| {
         let mut result = before.clone();
-        attempt(&segment::cut(capture, range, false), settings, &mut result).ok()?;
+        attempt(&segment::cut(capture, range, false), None, settings, &mut result).ok()?;
         let spacing = result.mode_spacing.as_ref()?.value;
         let against = settings.nominal_spacing.is_some_and(|_| !confirmed(spacing, settings));
         (!against && !turns(&result, settings) && !misfits(&result)).then_some(result)

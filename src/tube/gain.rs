@@ -4,6 +4,7 @@
 
 use crate::constants::{ATOMIC_MASS, BOLTZMANN, NEON_20, RED_LINE, SPEED_OF_LIGHT};
 use crate::quantity::{FrequencyDifference, Temperature};
+use crate::uncertainty::{BudgetLine, Evaluation, Measured};
 
 /// Full width at half maximum of the ²⁰Ne gain line: Δν_D = ν₀ √(8 ln 2 · kT / (m c²)).
 ///
@@ -36,6 +37,33 @@ pub fn gain_ratio(lasing_span: FrequencyDifference, doppler_parameter: Frequency
     (lasing_span.hertz() / (2.0 * doppler_parameter.hertz())).powi(2).exp()
 }
 
+/// Gas temperature in the bore of a running tube, K (common practice), and the relative standard uncertainty of the
+/// Doppler parameter that goes with it (common practice: about 5 % of the width).
+const GAS: f64 = 400.0;
+const U_DOPPLER: f64 = 0.05;
+
+/// Ratio of peak gain to loss from a measured lasing span, Hz, with its budget: the span's own, and the Doppler
+/// parameter's.
+///
+/// Sensitivities of η = exp((S/2Ku)²): ∂η/∂S = 2η ln η/S, and −2η ln η for Ku relative to itself. `None` for a span that
+/// is not above zero.
+pub fn measured_gain_ratio(lasing_span: &Measured) -> Option<Measured> {
+    let span = lasing_span.value;
+    if !(span.is_finite() && span > 0.0) {
+        return None;
+    }
+    let ku = doppler_parameter(Temperature::from_si(GAS));
+    let ratio = gain_ratio(FrequencyDifference::from_hertz(span), ku);
+    let slope = 2.0 * ratio * ratio.ln();
+    let mut measured = lasing_span.scaled(slope / span);
+    measured.value = ratio;
+    let words = "Doppler width, from the gas temperature";
+    let mut line = BudgetLine::direct("gas temperature", words, Evaluation::TypeB, U_DOPPLER, f64::INFINITY);
+    line.sensitivity = -slope;
+    measured.budget.push(line);
+    Some(measured)
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -49,6 +77,18 @@ mod tests {
         }
         let ku = doppler_parameter(Temperature::from_si(400.0)).hertz() / 1e9;
         assert!((ku - 0.911).abs() < 0.0006, "{ku}");
+    }
+
+    #[test]
+    fn gain_ratio_carries_the_span_and_the_gas() {
+        let ku = doppler_parameter(Temperature::from_si(400.0)).hertz();
+        let line = BudgetLine::direct("scatter", "scatter", Evaluation::TypeA, 10e6, 20.0);
+        let span = 2.0 * ku * 2f64.ln().sqrt();
+        let found = measured_gain_ratio(&Measured::with_line(span, line)).unwrap_or_default();
+        // η = 2: u/η = 2 ln 2 · (10 MHz/span ⊕ 5 %).
+        let expected = 2.0 * 2.0 * 2f64.ln() * (10e6 / span).hypot(0.05);
+        assert!((found.value - 2.0).abs() < 1e-12 && (found.u() / expected - 1.0).abs() < 1e-9, "{found:?}");
+        assert_eq!(measured_gain_ratio(&Measured::default()), None);
     }
 
     #[test]

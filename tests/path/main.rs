@@ -4,6 +4,10 @@
 #![allow(clippy::unwrap_used, clippy::panic, missing_docs)]
 
 mod bench;
+mod causes;
+mod envelope;
+mod faults;
 mod noise;
+mod rack;
 mod warmup;
 mod watch;

@@ -341,6 +341,7 @@ impl Driver {
                 clear: true,
                 power: 1e-7 * level,
                 u_power: 1e-9,
+                floor: 1e-9,
                 n_harmonics: 39,
             }),
             ..LightFinding::default()

@@ -2,8 +2,10 @@
 //! Must not do I/O or call a trait of the bench.
 //! Main types: [`Step`], [`Wish`], [`Given`], [`Room`].
 
+mod beam;
 mod comb;
 mod dwell;
+mod envelope;
 mod look;
 mod noise;
 mod polarizer;
@@ -124,11 +126,13 @@ pub(crate) fn step_of(kind: &StepKind) -> Box<dyn Step> {
         StepKind::Dwell(keys) => Box::new(dwell::Dwell::new(keys)),
         StepKind::Sweep(keys) => Box::new(sweep::Sweep::new(keys)),
         StepKind::Comb(keys) => Box::new(comb::Comb::new(keys)),
+        StepKind::Envelope(keys) => Box::new(envelope::Envelope::new(keys)),
         StepKind::Polarizer(keys) => polarizer::step_of(keys),
         StepKind::Watch(keys) => Box::new(watch::Watch::new(keys)),
         StepKind::Power(keys) => Box::new(power::Power::new(keys)),
         StepKind::Noise(keys) => Box::new(noise::Noise::new(keys)),
         StepKind::Supply(keys) => Box::new(supply::Supply::new(keys)),
+        StepKind::Beam(keys) => Box::new(beam::Beam::new(keys)),
         StepKind::Look(keys) => Box::new(look::Look::new(keys)),
     }
 }

@@ -202,6 +202,7 @@ fn live(finding: &LightFinding) -> LightMeasurement {
             clear: mains.clear,
             power: mains.power,
             u_power: mains.u_power,
+            floor: mains.floor,
             n_harmonics: mains.n_harmonics,
         }),
         tone: finding.tone.map(|tone| LightTone {
