@@ -28,7 +28,7 @@ use crate::{
     record::{
         event::{Happening, Identity},
         question::Question,
-        sheet::Sheet,
+        sheet::{Sheet, WalkChart},
     },
     station::{CaptureRequest, ReadingRequest, Want},
 };
@@ -66,6 +66,8 @@ pub struct Progress {
     pub done_steps: usize,
     /// Steps of the recipe.
     pub n_steps: usize,
+    /// Expected seconds to the end of the step at hand; none where that cannot be said yet.
+    pub step_s: Option<f64>,
     /// Expected seconds to the end of the run; none where that cannot be said yet.
     pub expected_s: Option<f64>,
 }
@@ -150,7 +152,8 @@ impl Run {
             }
             Wish::Reading(what) => Want::Reading(ReadingRequest { step, what, not_before_ms: 0 }),
             Wish::Ask { word, text, expects, high_voltage } => {
-                Want::Answer(Question { step, word, text, expects, high_voltage })
+                let caution = self.steps.get(self.current).map_or("", |step| step.caution()).to_owned();
+                Want::Answer(Question { step, word, text, caution, expects, high_voltage })
             }
             // Only a recipe whose every step wants nothing, before its first event.
             Wish::Nothing => Want::WaitUntil { step, elapsed_ms: self.elapsed_ms },
@@ -173,8 +176,14 @@ impl Run {
             step: self.step_name().to_owned(),
             done_steps: self.current.min(self.steps.len()),
             n_steps: self.steps.len(),
+            step_s: left.first().and_then(|step| step.expected_s(&self.book)),
             expected_s,
         }
+    }
+
+    /// The walk as the sheet shows it, without the rest of the sheet.
+    pub fn walk(&self) -> Option<WalkChart> {
+        charts::walk_chart(&self.book).filter(|_| !self.identity.times_assumed)
     }
 
     /// The plan it was opened with.

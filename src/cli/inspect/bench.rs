@@ -9,9 +9,11 @@ use chrono::{DateTime, FixedOffset};
 use super::inputs::Inputs;
 use crate::cli::Failure;
 use crate::instruments::{
-    FilePerson, NoInstrument, Nobody, SimulatedBench, SimulatedOptions, TerminalPerson, WallClock, folder_bench,
+    FilePerson, HandInterlock, NoInstrument, Nobody, Screen, SimulatedBench, SimulatedOptions, TerminalPerson,
+    WallClock, folder_bench,
 };
-use crate::station::{Bench, Person};
+use crate::run::Run;
+use crate::station::{Bench, Person, Trouble, Want};
 
 /// Why a question is passed over where only captures are looked at.
 const CAPTURES_ONLY: &str = "captures only: nobody at a bench";
@@ -19,9 +21,10 @@ const CAPTURES_ONLY: &str = "captures only: nobody at a bench";
 const NOT_ON_THIS_BENCH: &str = "not on this bench";
 
 /// A person at this terminal; initials not known yet.
-pub(super) fn terminal() -> TerminalPerson {
-    // The lock reads through the one buffer of the process: a second terminal loses nothing of a pipe.
-    TerminalPerson::new(String::new(), Box::new(io::stdin().lock()), Box::new(io::stderr()))
+pub(super) fn terminal(screen: &Screen) -> TerminalPerson {
+    // Byte by byte through the one buffer of the process: a second terminal loses nothing of a pipe, and none holds its lock.
+    let input = Box::new(io::BufReader::with_capacity(1, io::stdin()));
+    TerminalPerson::new(String::new(), input, Box::new(io::stderr()), screen.clone())
 }
 
 /// Builds the bench.
@@ -48,14 +51,25 @@ pub(super) fn build(
         captures: none(),
         meters: none(),
         person: person.unwrap_or_else(|| Box::new(Nobody::LeavesOpen(hint))),
-        interlock: none(),
+        interlock: if inputs.ask { Box::new(HandInterlock::new(terminal(&inputs.screen))) } else { none() },
     })
+}
+
+/// Waits until a person at a real bench has looked at supply and tube, before a run goes on that was interrupted.
+///
+/// Where high voltage has to come off anyway, the interlock asks. Errors: the input ended.
+pub(super) fn looked(inputs: &Inputs, run: &Run) -> Result<(), Trouble> {
+    let at_a_bench = inputs.ask && inputs.captures.is_none() && !inputs.simulated();
+    if !at_a_bench || matches!(run.wants(), Want::MakeSafe | Want::Finished) {
+        return Ok(());
+    }
+    terminal(&inputs.screen).wait_for("Supply and tube looked at, hands clear")
 }
 
 /// Who was named to answer: a person here, or a file.
 fn person(inputs: &Inputs, technician: &mut String) -> Option<Box<dyn Person>> {
     if inputs.ask {
-        let mut person = terminal();
+        let mut person = terminal(&inputs.screen);
         if technician.is_empty() {
             *technician = person.ask_line("Your initials").unwrap_or_default();
         }

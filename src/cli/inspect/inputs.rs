@@ -10,7 +10,7 @@ use chrono::{DateTime, FixedOffset};
 use super::{Arguments, Format};
 use crate::cli::{Ending, Failure, home};
 use crate::disk::{Home, Store, demo_bench};
-use crate::instruments::CaptureFolder;
+use crate::instruments::{CaptureFolder, Screen};
 use crate::phantom::Scenario;
 use crate::station::{
     answers::Answers,
@@ -38,6 +38,8 @@ pub(super) struct Inputs {
     /// Ceiling on bench time; none on a bench that is not simulated.
     pub pace: Option<f64>,
     pub seed: Option<u64>,
+    /// Where the run is shown and people are asked.
+    pub screen: Screen,
     pub start: Option<DateTime<FixedOffset>>,
     pub format: Format,
 }
@@ -85,6 +87,7 @@ impl Inputs {
             ask: arguments.ask,
             pace: simulated.then(|| arguments.pace.unwrap_or(PACE)),
             seed: arguments.seed,
+            screen: arguments.screen.screen(),
             start: arguments.start,
             format: arguments.format,
         })

@@ -5,8 +5,10 @@
 mod bench;
 mod freeze;
 mod inputs;
+mod live;
 mod opening;
 mod run_id;
+mod screen;
 mod serial;
 mod show;
 
@@ -72,6 +74,8 @@ pub struct Arguments {
     /// How to print
     #[arg(long, value_enum, default_value = "text")]
     format: Format,
+    #[command(flatten)]
+    screen: screen::ScreenArguments,
 }
 
 fn pace(text: &str) -> Result<f64, String> {
@@ -94,14 +98,18 @@ pub fn run(arguments: Arguments) -> Result<Ending, Failure> {
     let engine = Engine::of(&opening.plan)
         .map_err(|error| Failure::unusable(format!("failed to read the station's columns: {error}")))?;
     let mut run = Run::open(opening.plan.clone(), opening.identity.clone());
-    let mut show = Show::new(inputs.format, inputs.pace);
+    let mut show = Show::new(inputs.format, inputs.pace, inputs.screen.clone(), inputs.ask);
     let (mut journal, events) = opening.folder()?;
-    show.begun(&run, journal.path(), events.len() > 1);
+    show.begun(&run, journal.path());
     if let Err(why) = resume(&mut run, &mut opening.bench, &mut journal, &events) {
         return Err(interrupted(&why, journal.path()));
     }
-    if let Some(event) = events.last() {
-        show.happened(&run, event, &[]);
+    if let Some(last) = events.last() {
+        if events.len() > 1 {
+            show.taken_up(&run, last);
+            bench::looked(&inputs, &run).map_err(|trouble| interrupted(&trouble.into(), journal.path()))?;
+        }
+        show.happened(&run, last, &[]);
     }
     let driven = Driver {
         run: &mut run,
