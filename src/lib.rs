@@ -19,6 +19,7 @@ pub mod limits;
 pub mod phantom;
 pub mod recipe;
 // L4
+pub mod gauge;
 pub mod report;
 pub mod run;
 pub mod station;

@@ -161,7 +161,7 @@ done = false
     station.toml:14:15: the certificate has no `due`; expected one
     station.toml:14:26: `number` is the number 5; expected text in quotes
     station.toml:14:36: `date` is the text "2026-01-12"; expected a day such as 2026-01-12, without quotes
-    station.toml:15:2: unknown key `spply` in the file; expected one of station, time_zone, shifts, interferometer, power_meter, supply, polarizer
+    station.toml:15:2: unknown key `spply` in the file; expected one of station, time_zone, shifts, interferometer, power_meter, supply, polarizer, reference
       nearest known word: supply
     answers.toml:2:1: unknown key `technitian` in the file; expected one of technician, tube_type, time_to_answer, steps
       nearest known word: technician

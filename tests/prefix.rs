@@ -180,6 +180,9 @@ fn meets(want: &Want, happening: &Happening) -> bool {
         (Want::Capture(request), Happening::CaptureLost { step, number, .. }) => {
             (&request.step, request.number) == (step, *number)
         }
+        (Want::Light(request), Happening::Light(light)) => {
+            (&request.step, request.number, request.lit) == (&light.step, light.number, light.lit)
+        }
         (Want::Reading(request), Happening::Reading { step, what, .. }) => {
             &request.step == step && request.what.word() == what
         }

@@ -1,4 +1,4 @@
-//! What a tube does over time: walk and warm-up, hops and swaps, mode counts, gain line, power over walk cycles.
+//! What a tube does over time: walk and warm-up, hops and swaps, mode counts, gain line, power over walk cycles, noise of its light.
 //! Must not read a clock or do I/O: everything is a function of the glimpses taken.
 //! Main types: [`Glimpse`], [`Warmup`], [`Watched`], [`Counts`], [`CyclePower`].
 
@@ -8,7 +8,9 @@ mod decay;
 mod drift;
 mod glimpse;
 mod jumps;
+mod light;
 mod line;
+mod noise;
 mod power;
 mod swaps;
 #[cfg(test)]
@@ -21,6 +23,8 @@ mod watch;
 pub use counts::{Counts, GainPoint, count_modes, gain_points};
 pub use drift::{line_drift, tau_per_slope};
 pub use glimpse::{Glimpse, GlimpseMode};
+pub use light::{LIGHT_ENGINE, LightMeasurement, LightSettings, LightTone, MainsRipple, measure_light};
+pub use noise::{LightSet, NoiseFound, ToneFound, ToneOrigin, light_noise};
 pub use power::{CyclePower, cycle_power, power_drift};
 pub use warmup::{Warmup, WarmupSettings, WarmupState};
 pub use watch::{Hop, Swap, Watched, watch};

@@ -61,9 +61,10 @@ pub(super) fn assemble(files: &[(&str, &[u8])], columns: Option<&Columns>) -> Re
         Some(columns) => named_parts(&sources, columns)?,
         None => guessed_parts(&sources, &mut remarks)?,
     };
-    let (first, end) = whole_samples(&sources, &parts).map_err(|(file, error)| within(sources[file].name, error))?;
-    let time = time_base(&mut sources, &parts, first, end, &mut remarks)?;
     let rows = sources[0].columns.first().map_or(0, Vec::len);
+    let (first, end) = whole_samples(&sources, &parts).map_err(|(file, error)| within(sources[file].name, error))?;
+    drop_unused(&mut sources, &parts);
+    let time = time_base(&mut sources, &parts, first, end, &mut remarks)?;
     if first > 0 || end < rows {
         remarks.push(CaptureRemark::EndsDropped { first, last: rows - end });
     }
@@ -72,11 +73,34 @@ pub(super) fn assemble(files: &[(&str, &[u8])], columns: Option<&Columns>) -> Re
     }
     let mut head_lines = sources.iter_mut().flat_map(|source| std::mem::take(&mut source.around.head));
     let head = Head::from_lines(&head_lines.by_ref().collect::<Vec<_>>(), &mut remarks);
-    let mut channel = |spot: Spot, name| volts(&mut sources, spot, first, end, name, &mut remarks);
+    let mut channel = |spot: Spot, name| volts(&mut sources, &parts, spot, first, end, name, &mut remarks);
     let ramp = parts.ramp.map(|spot| channel(spot, "ramp"));
     let crossed = parts.crossed.map(|spot| channel(spot, "crossed photodiode"));
     let photodiode = channel(parts.photodiode, "photodiode");
     Ok(Capture { time, ramp, photodiode, crossed, head, remarks })
+}
+
+/// Lets go of columns that nothing uses: a long capture is held once.
+fn drop_unused(sources: &mut [Source<'_>], parts: &Parts) {
+    for (file, source) in sources.iter_mut().enumerate() {
+        for (c, column) in source.columns.iter_mut().enumerate() {
+            if source.time != Some(c) && !parts.spots().any(|spot| spot == (file, c)) {
+                *column = Vec::new();
+            }
+        }
+    }
+}
+
+/// The samples `first` to `end` of a column, moved out of its file; copied where the column is named for two parts.
+fn taken(sources: &mut [Source<'_>], parts: &Parts, spot: Spot, first: usize, end: usize) -> Vec<f64> {
+    let column = &mut sources[spot.0].columns[spot.1];
+    if parts.spots().filter(|&other| other == spot).count() > 1 {
+        return column[first..end].to_vec();
+    }
+    let mut samples = std::mem::take(column);
+    samples.truncate(end);
+    samples.drain(..first);
+    samples
 }
 
 fn source<'a>(name: &'a str, bytes: &'a [u8]) -> Result<Source<'a>, CaptureError> {
@@ -201,7 +225,9 @@ fn channels(sources: &[Source<'_>], file: usize) -> Vec<Spot> {
     let copies_time = |column: &[f64]| {
         source.time.is_some_and(|time| {
             let other = column.iter().zip(&source.columns[time]).filter(|(a, b)| a != b && !a.is_nan() && !b.is_nan());
-            100 * other.count() <= column.len()
+            // One in a hundred may differ; no need to count further.
+            let few = column.len() / 100;
+            other.take(few + 1).count() <= few
         })
     };
     let is_time = |c: usize| matches!(source.around.labels[c].unit, Some(ColumnUnit::Time(_)));
@@ -233,7 +259,7 @@ fn whole_samples(sources: &[Source<'_>], parts: &Parts) -> Result<(usize, usize)
         end = end.min(column.iter().rposition(|v| v.is_finite()).map_or(0, |last| last + 1));
     }
     for spot in parts.spots() {
-        let gap = column(spot).get(first..end).and_then(|part| part.iter().position(|v| !v.is_finite()));
+        let gap = column(spot).get(first..end).and_then(first_not_finite);
         if let Some(gap) = gap {
             let (source, column) = (&sources[spot.0], column_of(sources, spot));
             let (line, text) = table::locate(source.bytes, &source.layout, first + gap, column);
@@ -242,6 +268,13 @@ fn whole_samples(sources: &[Source<'_>], parts: &Parts) -> Result<(usize, usize)
     }
     let found = end.saturating_sub(first);
     if found < FEWEST_SAMPLES { Err((parts.photodiode.0, CaptureError::TooFew { found })) } else { Ok((first, end)) }
+}
+
+/// Position of the first value that is no finite number, looked for in pieces: most captures have none.
+fn first_not_finite(values: &[f64]) -> Option<usize> {
+    const PIECE: usize = 64;
+    let piece = values.chunks(PIECE).position(|piece| !piece.iter().fold(true, |all, v| all & v.is_finite()))?;
+    values[piece * PIECE..].iter().position(|v| !v.is_finite()).map(|at| piece * PIECE + at)
 }
 
 /// The time base of the capture, checked against the times of every other file that is used.
@@ -254,13 +287,16 @@ fn time_base(
 ) -> Result<TimeBase, CaptureError> {
     let many = sources.len() > 1;
     let Some(spot) = parts.time else { return Ok(stated_time(sources, parts, first, end, remarks)) };
-    let judged = judge(&sources[spot.0], spot.1, first, end);
+    let stamps = taken(sources, parts, spot, first, end);
+    let judged = judge(&sources[spot.0], spot.1, stamps, first);
     let (time, found) = judged.map_err(|e| if many { e.within(sources[spot.0].name) } else { e })?;
     remarks.extend(found);
-    for other in parts.spots().map(|(file, _)| file).filter(|&file| file != spot.0) {
+    for other in 0..sources.len() {
+        let used = parts.spots().any(|(file, _)| file == other);
+        let Some(c) = sources[other].time.filter(|_| used && other != spot.0) else { continue };
+        let stamps = sources[other].columns[c][first..end].to_vec();
         let source = &sources[other];
-        let Some(c) = source.time else { continue };
-        let (second, _) = judge(source, c, first, end).map_err(|error| error.within(source.name))?;
+        let (second, _) = judge(source, c, stamps, first).map_err(|error| error.within(source.name))?;
         // Two exports of one record round alike; half a step is more than rounding can do to a fitted base.
         let apart = (second.start - time.start).abs() + (second.step - time.step).abs() * time.n as f64;
         if apart > time.step {
@@ -289,12 +325,14 @@ fn time_factor(source: &Source<'_>, index: usize) -> f64 {
 fn judge(
     source: &Source<'_>,
     index: usize,
+    mut stamps: Vec<f64>,
     first: usize,
-    end: usize,
 ) -> Result<(TimeBase, Vec<CaptureRemark>), CaptureError> {
     let factor = time_factor(source, index);
     let column = source.layout.columns.get(index).copied().unwrap_or(0);
-    let stamps: Vec<f64> = source.columns[index][first..end].iter().map(|stamp| stamp * factor).collect();
+    if factor != 1.0 {
+        stamps.iter_mut().for_each(|stamp| *stamp *= factor);
+    }
     let line_of = |row: usize| table::locate(source.bytes, &source.layout, first + row, column).0;
     let fitted: Option<Stamps> = timebase::fit(&stamps);
     match fitted {
@@ -329,6 +367,7 @@ fn stated_time(
 /// The samples of one channel in volts, taken out of its file.
 fn volts(
     sources: &mut [Source<'_>],
+    parts: &Parts,
     spot: Spot,
     first: usize,
     end: usize,
@@ -336,10 +375,8 @@ fn volts(
     remarks: &mut Vec<CaptureRemark>,
 ) -> Vec<f64> {
     let column = column_of(sources, spot);
-    let source = &mut sources[spot.0];
-    // A column may be named for two parts: it is copied, not moved.
-    let mut samples = source.columns[spot.1][first..end].to_vec();
-    let around = &source.around;
+    let mut samples = taken(sources, parts, spot, first, end);
+    let around = &sources[spot.0].around;
     let integers = samples.iter().all(|v| v.fract() == 0.0);
     let codes = around.number(&["yincrement", "yinc"], column).filter(|_| integers);
     let stated = || unit(around.text(&["verticalunits", "yunits"], column)?);
@@ -355,13 +392,13 @@ fn volts(
             _ => {}
         }
     }
-    let (low, high) = samples.iter().fold((f64::MAX, f64::MIN), |(low, high), &v| (low.min(v), high.max(v)));
+    let (low, high) = roles::extent(&samples);
     // A screen is eight or ten divisions high (common practice); integers far beyond it are codes, not volts.
     let beyond = |scale: f64| high - low > 20.0 * scale.abs();
     if codes.is_none() && integers && around.number(&["verticalscale"], column).is_some_and(beyond) {
         remarks.push(CaptureRemark::RawCodes { channel });
     }
-    if let Some(levels) = roles::coarse_levels(&samples, COARSE) {
+    if let Some(levels) = roles::coarse_levels(&samples, (low, high), COARSE) {
         remarks.push(CaptureRemark::StepsCoarse { channel, levels });
     }
     samples

@@ -4,6 +4,7 @@
 
 mod assemble;
 mod columns;
+mod decimal;
 mod error;
 mod head;
 mod keys;

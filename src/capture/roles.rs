@@ -102,12 +102,37 @@ fn ramp_score(volts: &[f64]) -> Option<f64> {
 }
 
 /// Range of a channel in its smallest steps, where it has fewer than `fewest`; `None` where it has more or is constant.
-pub(super) fn coarse_levels(volts: &[f64], fewest: usize) -> Option<usize> {
-    let (low, high) = volts.iter().fold((f64::MAX, f64::MIN), |(low, high), &v| (low.min(v), high.max(v)));
+///
+/// * `extent`: its least and greatest value, as from [`extent`].
+pub(super) fn coarse_levels(volts: &[f64], (low, high): (f64, f64), fewest: usize) -> Option<usize> {
     let range = high - low;
     // Coarse steps make samples repeat; exports round, so that a difference below 1e-4 of the range is no step.
     let repeats = volts.windows(2).filter(|pair| pair[0] == pair[1]).count();
-    let steps = volts.windows(2).map(|pair| (pair[1] - pair[0]).abs()).filter(|step| *step > 1e-4 * range);
-    let levels = range / steps.fold(f64::INFINITY, f64::min);
-    (8 * repeats > volts.len() && levels >= 0.5 && levels < fewest as f64).then_some(levels.round() as usize)
+    if 8 * repeats <= volts.len() {
+        return None;
+    }
+    let mut least = f64::INFINITY;
+    for pair in volts.windows(2) {
+        let step = (pair[1] - pair[0]).abs();
+        least = if step > 1e-4 * range && step < least { step } else { least };
+    }
+    let levels = range / least;
+    (levels >= 0.5 && levels < fewest as f64).then_some(levels.round() as usize)
+}
+
+/// Least and greatest value, NaN left out; (∞, −∞) of none. Four at a time: a capture is long.
+pub(super) fn extent(values: &[f64]) -> (f64, f64) {
+    let (mut low, mut high) = ([f64::INFINITY; 4], [f64::NEG_INFINITY; 4]);
+    let (fours, rest) = values.as_chunks::<4>();
+    let mut take = |k: usize, v: f64| {
+        low[k] = if v < low[k] { v } else { low[k] };
+        high[k] = if v > high[k] { v } else { high[k] };
+    };
+    for four in fours {
+        for (k, v) in four.iter().enumerate() {
+            take(k, *v);
+        }
+    }
+    rest.iter().for_each(|v| take(0, *v));
+    (low.iter().copied().fold(f64::INFINITY, f64::min), high.iter().copied().fold(f64::NEG_INFINITY, f64::max))
 }

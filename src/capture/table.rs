@@ -3,6 +3,7 @@
 //! Main function: [`read_columns`].
 
 use super::{
+    decimal,
     layout::{Layout, is_content},
     text::{Cell, Dialect, Lines, Separator, TOO_LARGE},
 };
@@ -10,16 +11,23 @@ use super::{
 /// Reads every column of numbers. A cell without a finite number gives NaN, so that every column has one value a line.
 pub(super) fn read_columns(bytes: &[u8], layout: &Layout) -> Vec<Vec<f64>> {
     let body = bytes.get(layout.start..).unwrap_or_default();
-    let guess = body.len() / (8 * layout.width.max(1)) + 16;
-    let mut columns: Vec<Vec<f64>> = layout.columns.iter().map(|_| Vec::with_capacity(guess)).collect();
+    let mut columns: Vec<Vec<f64>> = layout.columns.iter().map(|_| Vec::with_capacity(rows_in(body))).collect();
     let mut at = 0;
     while at < body.len() {
         at = read_line(body, at, layout, &mut columns);
     }
-    for column in &mut columns {
-        column.shrink_to_fit();
-    }
     columns
+}
+
+/// Bytes looked at to learn how long a line is.
+const SAMPLED: usize = 1 << 16;
+
+/// How many lines to make room for, from those at the end, a little generously: growing would copy what was read.
+fn rows_in(body: &[u8]) -> usize {
+    let end = body.get(body.len().saturating_sub(SAMPLED)..).unwrap_or_default();
+    let lines = end.iter().filter(|&&b| b == b'\n').count().max(end.iter().filter(|&&b| b == b'\r').count()) + 1;
+    let rows = lines as f64 * body.len() as f64 / end.len().max(1) as f64;
+    (1.02 * rows) as usize + 16
 }
 
 fn is_end(byte: u8) -> bool {
@@ -96,6 +104,13 @@ fn cell_end(body: &[u8], at: usize, separator: Separator) -> usize {
 
 /// Reads the cell at `at`: its number or NaN, and the offset of the separator or line end after it.
 fn read_cell(body: &[u8], at: usize, dialect: Dialect) -> (f64, usize) {
+    let mark = if dialect.decimal_comma { b',' } else { b'.' };
+    if let Some((value, end)) = decimal::plain(body, at, mark)
+        && body.get(end).is_some_and(|&b| is_separator(b, dialect.separator) || is_end(b))
+        && value.abs() < TOO_LARGE
+    {
+        return (value, end);
+    }
     if !dialect.decimal_comma {
         let tabs = dialect.separator == Separator::Byte(b',');
         let start = skip_blanks(body, at, tabs);

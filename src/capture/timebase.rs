@@ -75,8 +75,7 @@ pub(super) fn fit(stamps: &[f64]) -> Option<Stamps> {
     let mut offsets: Vec<f64> = stamps.iter().enumerate().step_by(every).filter_map(offset).collect();
     let start = median(&mut offsets)?;
     let allowed = (0.5 * slope.abs()).max(1.25 * usual_jump(stamps));
-    let good = |&(i, t): &(usize, &f64)| (t - start - slope * i as f64).abs() <= allowed;
-    let (start, step) = least_squares(stamps.iter().enumerate().filter(good)).unwrap_or((start, slope));
+    let (start, step) = least_squares(stamps, (start, slope), allowed).unwrap_or((start, slope));
     let (mut wrong, mut first_wrong, mut largest, mut repeated) = (0, 0, 0.0_f64, 0);
     let mut previous = f64::NAN;
     for (i, &t) in stamps.iter().enumerate() {
@@ -107,19 +106,26 @@ fn usual_jump(stamps: &[f64]) -> f64 {
     *jumps.select_nth_unstable_by(rank, f64::total_cmp).1
 }
 
-fn least_squares<'a>(points: impl Iterator<Item = (usize, &'a f64)>) -> Option<(f64, f64)> {
-    let (mut n, mut mean_i, mut mean_t, mut sii, mut sit) = (0.0_f64, 0.0, 0.0, 0.0, 0.0);
-    for (i, &t) in points {
-        n += 1.0;
-        let di = i as f64 - mean_i;
-        mean_i += di / n;
-        let dt = t - mean_t;
-        mean_t += dt / n;
-        sii += di * (i as f64 - mean_i);
-        sit += di * (t - mean_t);
+/// Start and step by least squares over the stamps that lie within `allowed` of a first line; `None` where they give none.
+///
+/// Only the small distances from that line are summed, about its middle, so that nothing is lost to rounding.
+fn least_squares(stamps: &[f64], (start, step): (f64, f64), allowed: f64) -> Option<(f64, f64)> {
+    let middle = stamps.len() as f64 / 2.0;
+    let (mut n, mut sx, mut sxx, mut sy, mut sxy) = (0.0_f64, 0.0, 0.0, 0.0, 0.0);
+    for (i, t) in stamps.iter().enumerate() {
+        let off = t - start - step * i as f64;
+        let good = off.abs() <= allowed;
+        let (weight, y) = if good { (1.0, off) } else { (0.0, 0.0) };
+        let x = weight * (i as f64 - middle);
+        n += weight;
+        sx += x;
+        sxx += x * x;
+        sy += y;
+        sxy += x * y;
     }
-    let step = sit / sii;
-    (step.is_finite()).then_some((mean_t - step * mean_i, step))
+    let more = (n * sxy - sx * sy) / (n * sxx - sx * sx);
+    let better = step + more;
+    better.is_finite().then_some((start + (sy - more * sx) / n - more * middle, better))
 }
 
 fn median(values: &mut [f64]) -> Option<f64> {

@@ -3,6 +3,7 @@
 //! Main function: [`run`].
 
 pub mod check;
+mod checks;
 mod ending;
 mod home;
 mod inspect;

@@ -33,6 +33,11 @@ pub fn demo_bench(name: &str) -> Option<&'static str> {
     BENCHES.iter().find(|(known, _)| *known == name).map(|(_, text)| *text)
 }
 
+/// Text of the checks of reference tubes that come with the demo scenario.
+pub fn demo_checks() -> &'static str {
+    include_str!("../../fixtures/demo/checks.toml")
+}
+
 /// The two files of a tube type, with the names that faults and records give them.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct TypeTexts {

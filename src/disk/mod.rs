@@ -8,14 +8,16 @@ mod folder;
 mod home;
 mod lock;
 mod name;
+mod record;
 mod store;
 
 pub use atomic::write_atomic;
 pub use chain::{ChainFault, read_chain};
 pub use folder::{Frozen, RunFolder};
-pub use home::{Home, TypeTexts, demo_bench};
+pub use home::{Home, TypeTexts, demo_bench, demo_checks};
 pub use lock::SerialLock;
 pub use name::{folder_name, is_folder_name};
+pub use record::{RecordLine, read_record};
 pub use store::{FoundRun, Store};
 
 use std::path::{Path, PathBuf};

@@ -6,13 +6,14 @@ use chrono::DateTime;
 
 use super::{
     Interrupted,
-    engine::{Engine, Measured},
+    engine::{Engine, Measured, measure_trace},
 };
 use crate::record::event::{Captured, Event, Happening};
 use crate::record::finding::{CaptureFinding, Trace};
+use crate::record::light::LightCaptured;
 use crate::record::question::{Answer, Question};
 use crate::run::{At, Remark, Run};
-use crate::station::{Bench, CaptureRequest, Durability, Journal, ReadingRequest, Trouble, Want};
+use crate::station::{Bench, CaptureRequest, Durability, Journal, LightRequest, ReadingRequest, Trouble, Want};
 
 /// Failures of an instrument in a row after which the run is left open instead of going on.
 const FAILURES: u32 = 25;
@@ -65,6 +66,7 @@ impl Driver<'_> {
                 Want::MakeSafe => self.make_safe(),
                 Want::WaitUntil { elapsed_ms, .. } => self.wait_until(*elapsed_ms),
                 Want::Capture(request) => self.capture(request),
+                Want::Light(request) => self.light(request),
                 Want::Reading(request) => self.read(request),
                 Want::Answer(question) => self.ask(question),
             };
@@ -126,6 +128,30 @@ impl Driver<'_> {
         }
         let captured = Captured { step: request.step.clone(), number: request.number, fact, finding };
         self.store(Happening::Captured(Box::new(captured)), durability)
+    }
+
+    /// Takes, measures, keeps and stores one trace of the light. One that cannot be read is given up: a step leans on few.
+    fn light(&mut self, request: &LightRequest) -> Result<(), Failed> {
+        let lost = |reason: String, for_good: bool| Happening::CaptureLost {
+            step: request.step.clone(),
+            number: request.number,
+            reason,
+            for_good,
+        };
+        let captured = match self.bench.captures.light(request) {
+            Ok(captured) => captured,
+            Err(Trouble::NotHere(reason)) => return self.store(lost(reason, true), Durability::Now),
+            // Nothing is stored: the trace is wanted again, now or by the same command later.
+            Err(Trouble::Instrument(reason)) => return Err(Failed::Instrument(reason)),
+            Err(trouble) => return self.trouble(trouble),
+        };
+        let (mut fact, finding) = match measure_trace(&captured, request) {
+            Ok(measured) => measured,
+            Err(reason) => return self.store(lost(reason, true), Durability::Now),
+        };
+        fact.files = self.journal.keep(request.number, &captured)?;
+        let (step, number, lit) = (request.step.clone(), request.number, request.lit);
+        self.store(Happening::Light(Box::new(LightCaptured { step, number, lit, fact, finding })), Durability::Now)
     }
 
     fn read(&mut self, request: &ReadingRequest) -> Result<(), Failed> {

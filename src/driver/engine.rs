@@ -4,12 +4,14 @@
 
 use sha2::{Digest as _, Sha256};
 
-use super::finding::{finding_of, trace_of};
+use super::finding::{finding_of, light_finding_of, trace_of};
+use crate::behaviour::{LightSettings, measure_light};
 use crate::capture::{CaptureError, Columns, read_many};
 use crate::record::event::CaptureFact;
 use crate::record::finding::{CaptureFinding, Trace};
+use crate::record::light::LightFinding;
 use crate::run::Plan;
-use crate::station::{CaptureRequest, CapturedBytes};
+use crate::station::{CaptureRequest, CapturedBytes, LightRequest};
 use crate::sweep::{Settings, measure, thin_trace};
 
 /// Columns of a stored trace: more than a page can show.
@@ -79,6 +81,27 @@ pub struct Measured {
     pub finding: CaptureFinding,
     /// The thinned trace for whoever looks on; not stored.
     pub trace: Option<Trace>,
+}
+
+/// Measures one trace of the total light; needs no interferometer.
+///
+/// Errors: the bytes cannot be read, in words. A trace that can be read but not measured is a finding.
+pub(super) fn measure_trace(
+    captured: &CapturedBytes,
+    request: &LightRequest,
+) -> Result<(CaptureFact, LightFinding), String> {
+    let files: Vec<(&str, &[u8])> = captured.files.iter().map(|(name, b)| (name.as_str(), b.as_slice())).collect();
+    let trace = read_many(&files, None).map_err(|error| error.to_string())?;
+    let settings = LightSettings { lit: request.lit, band: request.band, overlap: request.overlap };
+    let mut finding = light_finding_of(measure_light(&trace.photodiode, trace.time.step, &settings));
+    finding.warnings.extend(trace.remarks.iter().map(ToString::to_string));
+    let fact = CaptureFact {
+        taken_s: captured.taken_ms as f64 / 1000.0,
+        sha256: sha256(captured),
+        run_current: trace.head.run_current,
+        ..CaptureFact::default()
+    };
+    Ok((fact, finding))
 }
 
 /// SHA-256 over the bytes of every file in order.

@@ -1,8 +1,10 @@
 //! From what `sweep` measured to the form that is stored.
 //! Must not measure.
-//! Main function: [`finding_of`].
+//! Main functions: [`finding_of`], `light_finding_of`.
 
+use crate::behaviour::{LIGHT_ENGINE, LightMeasurement};
 use crate::record::finding::{CaptureFinding, ModeFinding, StoredLine, Trace};
+use crate::record::light::{LightFinding, StoredMains, StoredTone};
 use crate::sweep::{ENGINE, Measurement, Mode, ThinTrace};
 use crate::uncertainty::{BudgetLine, Evaluation};
 
@@ -27,6 +29,39 @@ pub fn finding_of(measurement: &Measurement) -> CaptureFinding {
         off_axis: measurement.off_axis.iter().map(mode_finding).collect(),
         warnings,
         trace: None,
+    }
+}
+
+/// The stored form of what one light trace says, or of why it says nothing.
+pub(super) fn light_finding_of(measured: Result<LightMeasurement, String>) -> LightFinding {
+    let engine = LIGHT_ENGINE.to_owned();
+    let measured = match measured {
+        Ok(measured) => measured,
+        Err(reason) => return LightFinding { engine, refused: Some(reason), ..LightFinding::default() },
+    };
+    LightFinding {
+        engine,
+        refused: None,
+        sample_rate: measured.sample_rate,
+        duration: measured.duration,
+        mean: measured.mean,
+        noise: measured.noise,
+        overlap: measured.overlap,
+        mains: measured.mains.map(|mains| StoredMains {
+            frequency: mains.frequency,
+            clear: mains.clear,
+            power: mains.power,
+            u_power: mains.u_power,
+            n_harmonics: mains.n_harmonics,
+        }),
+        tone: measured.tone.map(|tone| StoredTone {
+            frequency: tone.frequency,
+            u_frequency: tone.u_frequency,
+            power: tone.power,
+            u_power: tone.u_power,
+            probability: tone.probability,
+        }),
+        warnings: Vec::new(),
     }
 }
 

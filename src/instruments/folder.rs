@@ -2,7 +2,7 @@
 //! Must not parse samples: bytes are passed on as they are.
 //! Main types: [`CaptureFolder`], [`FolderError`].
 
-use std::cell::Cell;
+use std::cell::{Cell, RefCell};
 use std::fs::{self, File};
 use std::io::Read as _;
 use std::path::{Path, PathBuf};
@@ -12,8 +12,11 @@ use chrono::{DateTime, FixedOffset};
 
 use super::nobody::NoInstrument;
 use crate::capture::{natural_order, pair_names};
+use crate::quantity::{Dimension, parse_as};
 use crate::record::event::{Event, Happening};
-use crate::station::{Bench, CaptureRequest, CaptureSource, CapturedBytes, Clock, Moment, Person, Trouble};
+use crate::station::{
+    Bench, CaptureRequest, CaptureSource, CapturedBytes, Clock, LightRequest, Moment, Person, Trouble,
+};
 
 /// Time between captures that do not say when they were taken.
 const NOMINAL_CADENCE_MS: u64 = 1000;
@@ -47,10 +50,25 @@ struct Group {
     at: Option<DateTime<FixedOffset>>,
 }
 
+/// A file that says of itself that it is a trace of the total light.
+#[derive(Debug, Clone, PartialEq)]
+struct LightFile {
+    path: PathBuf,
+    lit: bool,
+    /// Samples a second.
+    rate: f64,
+    at: Option<DateTime<FixedOffset>>,
+}
+
+/// A sample rate is the wanted one within this factor.
+const NEAR_RATE: f64 = 2.0;
+
 /// The captures of a folder, in order.
 #[derive(Debug, Clone, PartialEq)]
 pub struct CaptureFolder {
     groups: Vec<Group>,
+    /// Light traces, in the order of their names.
+    lights: Vec<LightFile>,
     timed: bool,
 }
 
@@ -58,7 +76,8 @@ impl CaptureFolder {
     /// Lists a folder, not what is below it.
     ///
     /// If every capture has a line `# captured_at = …`, that is their order and their time; else the natural order of
-    /// their names is, one capture a second. Files named like `…CH1`, `…CH2` are one capture.
+    /// their names is, one capture a second. Files named like `…CH1`, `…CH2` are one capture. A file with the lines
+    /// `# light = lit` (or `dark`) and `# sample_rate = …` is a trace of the total light and no sweep.
     pub fn open(folder: &Path) -> Result<Self, FolderError> {
         let io = |path: &Path| {
             let path = path.to_owned();
@@ -74,6 +93,16 @@ impl CaptureFolder {
             }
         }
         names.sort_by(|a, b| natural_order(a, b));
+        let mut lights = Vec::new();
+        let mut sweeps = Vec::new();
+        for name in names {
+            let path = folder.join(&name);
+            match light_file(&path).map_err(io(&path))? {
+                Some(light) => lights.push(light),
+                None => sweeps.push(name),
+            }
+        }
+        let names = sweeps;
         let mut groups = Vec::new();
         for group in pair_names(&names) {
             let files: Vec<PathBuf> = group.iter().map(|&index| folder.join(&names[index])).collect();
@@ -90,7 +119,7 @@ impl CaptureFolder {
         if timed {
             groups.sort_by_key(|group| group.at);
         }
-        Ok(Self { groups, timed })
+        Ok(Self { groups, lights, timed })
     }
 
     /// How many captures there are.
@@ -109,15 +138,38 @@ impl CaptureFolder {
     }
 }
 
-/// The time our own line in a file's head gives.
-fn captured_at(path: &Path) -> std::io::Result<Option<DateTime<FixedOffset>>> {
+/// The value that one of our own lines in a file's head gives.
+fn head_value(text: &str, wanted: &str) -> Option<String> {
+    let mut lines = text.lines().filter_map(|line| line.strip_prefix('#')?.split_once('='));
+    lines.find(|(key, _)| key.trim() == wanted).map(|(_, value)| value.trim().to_owned())
+}
+
+fn head(path: &Path) -> std::io::Result<String> {
     let mut head = Vec::new();
     File::open(path)?.take(HEAD_BYTES).read_to_end(&mut head)?;
-    let text = String::from_utf8_lossy(&head);
-    let value = text.lines().filter_map(|line| line.strip_prefix('#')?.split_once('=')).find_map(|(key, value)| {
-        (key.trim() == "captured_at").then(|| DateTime::parse_from_rfc3339(value.trim()).ok())
-    });
-    Ok(value.flatten())
+    Ok(String::from_utf8_lossy(&head).into_owned())
+}
+
+fn time_in(head: &str) -> Option<DateTime<FixedOffset>> {
+    head_value(head, "captured_at").and_then(|text| DateTime::parse_from_rfc3339(&text).ok())
+}
+
+/// The time our own line in a file's head gives.
+fn captured_at(path: &Path) -> std::io::Result<Option<DateTime<FixedOffset>>> {
+    Ok(time_in(&head(path)?))
+}
+
+/// The file as a light trace, if its head says that it is one.
+fn light_file(path: &Path) -> std::io::Result<Option<LightFile>> {
+    let head = head(path)?;
+    let lit = match head_value(&head, "light").as_deref() {
+        Some("lit") => true,
+        Some("dark") => false,
+        _ => return Ok(None),
+    };
+    let rate = head_value(&head, "sample_rate").and_then(|text| parse_as(&text, Dimension::Frequency).ok());
+    // Without a rate it is near no wanted one, and still no sweep.
+    Ok(Some(LightFile { path: path.to_owned(), lit, rate: rate.unwrap_or(f64::NAN), at: time_in(&head) }))
 }
 
 /// Where the folder's own time and place are, shared by its clock and its captures.
@@ -125,6 +177,8 @@ fn captured_at(path: &Path) -> std::io::Result<Option<DateTime<FixedOffset>>> {
 struct Place {
     elapsed_ms: Cell<u64>,
     next: Cell<usize>,
+    /// Light traces given: lit, samples a second.
+    lights: RefCell<Vec<(bool, f64)>>,
 }
 
 struct FolderClock {
@@ -154,6 +208,11 @@ impl Clock for FolderClock {
             _ => false,
         });
         self.place.next.set(given.count());
+        let lights = events.iter().filter_map(|event| match &event.what {
+            Happening::Light(light) => Some((light.lit, light.finding.sample_rate)),
+            _ => None,
+        });
+        self.place.lights.replace(lights.collect());
         Ok(())
     }
 }
@@ -192,6 +251,27 @@ impl CaptureSource for FolderSource {
             files.push((name, bytes));
         }
         Ok(CapturedBytes { files, taken_ms })
+    }
+
+    fn light(&mut self, request: &LightRequest) -> Result<CapturedBytes, Trouble> {
+        let near = |rate: f64| rate > request.sample_rate / NEAR_RATE && rate < request.sample_rate * NEAR_RATE;
+        let given = self.place.lights.borrow().iter().filter(|(lit, rate)| *lit == request.lit && near(*rate)).count();
+        let mut fit = self.folder.lights.iter().filter(|light| light.lit == request.lit && near(light.rate));
+        let Some(light) = fit.nth(given) else {
+            let lit = if request.lit { "lit" } else { "dark" };
+            return Err(Trouble::NotHere(format!(
+                "captures only: no file says `# light = {lit}` and `# sample_rate =` near {:.0} Hz",
+                request.sample_rate
+            )));
+        };
+        let name = light.path.file_name().map_or_else(String::new, |name| name.to_string_lossy().into_owned());
+        let bytes = fs::read(&light.path)
+            .map_err(|error| Trouble::Instrument(format!("cannot read `{}`: {error}", light.path.display())))?;
+        self.place.lights.borrow_mut().push((light.lit, light.rate));
+        let at = light.at.and_then(|at| u64::try_from((at - self.started_at).num_milliseconds()).ok());
+        let taken_ms = at.unwrap_or(0).max(self.place.elapsed_ms.get());
+        self.place.elapsed_ms.set(taken_ms);
+        Ok(CapturedBytes { files: vec![(name, bytes)], taken_ms })
     }
 }
 

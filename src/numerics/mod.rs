@@ -2,6 +2,7 @@
 //! Must not know lasers, units or files; no input may panic.
 //! Main entries: [`least_squares::fit`], [`linear::weighted`], [`peaks::find`].
 
+pub mod cusum;
 pub mod distributions;
 pub mod least_squares;
 pub mod linear;
@@ -10,4 +11,5 @@ pub mod shapes;
 pub mod smoothing;
 pub mod spectra;
 pub mod summary;
+pub mod tones;
 mod triangle;

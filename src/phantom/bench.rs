@@ -50,6 +50,12 @@ pub struct BenchTruth {
     pub ballast: f64,
     /// Mains frequency, Hz.
     pub mains: f64,
+    /// Ripple of an ordinary supply in the light, rms of all mains harmonics over mean.
+    pub supply_ripple: f64,
+    /// White noise of the light detector in 1 MHz, over the level of the warm tube.
+    pub light_noise: f64,
+    /// Where the light detector's response has fallen by 3 dB, Hz.
+    pub light_bandwidth: f64,
 }
 
 impl Default for BenchTruth {
@@ -78,6 +84,9 @@ impl Default for BenchTruth {
             meter_dark: 4e-7,
             ballast: 75e3,
             mains: 50.0,
+            supply_ripple: 5e-4,
+            light_noise: 3e-4,
+            light_bandwidth: 3e6,
         }
     }
 }

@@ -1,6 +1,6 @@
 //! The gain line: Doppler width, lasing range, output of one mode against detuning with its central dip.
 //! Must not know where the modes are.
-//! Main type: [`GainLine`].
+//! Main type: [`GainLine`]; [`output_ratio`].
 
 use crate::constants::{ATOMIC_MASS, BOLTZMANN, NEON_20, RED_LINE};
 
@@ -38,6 +38,14 @@ impl GainLine {
         let width = self.homogeneous * self.homogeneous;
         excess.max(0.0) / (1.0 + width / (width + detuning * detuning))
     }
+}
+
+/// Output after gain over loss has changed, over output before; 0 below threshold.
+///
+/// Modes share nearly all gain (see the comb), so the line saturates as one: P ∝ η − 1 (Rigrod, J. Appl. Phys. 36, 2487,
+/// 1965, for small gain and loss).
+pub fn output_ratio(before: f64, after: f64) -> f64 {
+    if before > 1.0 && after > 1.0 { (after - 1.0) / (before - 1.0) } else { 0.0 }
 }
 
 #[cfg(test)]

@@ -16,6 +16,8 @@ pub(super) enum Purpose {
     Current = 6,
     Voltage = 7,
     Dropout = 8,
+    Light = 20,
+    LightDetector = 21,
 }
 
 /// A stream of random numbers.

@@ -135,7 +135,7 @@ impl Pole {
 }
 
 /// Steps of a digitizer.
-struct Steps {
+pub(super) struct Steps {
     low: f64,
     step: f64,
     highest: f64,
@@ -143,13 +143,13 @@ struct Steps {
 
 impl Steps {
     /// Steps over a range, V.
-    fn new((low, high): (f64, f64), bits: u32) -> Self {
+    pub fn new((low, high): (f64, f64), bits: u32) -> Self {
         let n = 2_f64.powi(bits.clamp(1, 32) as i32);
         Self { low, step: (high - low) / n, highest: n - 1.0 }
     }
 
     /// The nearest step, within the range.
-    fn round(&self, volts: f64) -> f64 {
+    pub fn round(&self, volts: f64) -> f64 {
         self.low + self.step * ((volts - self.low) / self.step).round().clamp(0.0, self.highest)
     }
 }

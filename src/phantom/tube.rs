@@ -2,6 +2,8 @@
 //! Must not compute what the tube does: `gain`, `walk` and `comb` do.
 //! Main types: [`TubeTruth`], [`Incident`].
 
+use super::condition::Condition;
+
 /// The truth about one tube. Every number is SI.
 #[derive(Debug, Clone, PartialEq)]
 pub struct TubeTruth {
@@ -61,6 +63,16 @@ pub struct TubeTruth {
     pub tries: u64,
     /// Ripple of the light at twice the mains frequency, rms over mean.
     pub line_ripple: f64,
+    /// In what condition gas, bore, mirror and cathode are.
+    pub condition: Condition,
+    /// Noise of the discharge in the light, 10 Hz to 1 MHz, rms over mean.
+    pub discharge_noise: f64,
+    /// A tone of the discharge in the light, rms over mean.
+    pub tone_level: f64,
+    /// Its frequency, Hz.
+    pub tone_frequency: f64,
+    /// Each beat of three neighbouring modes in the light, rms over mean.
+    pub beat_level: f64,
     /// What happens to it on the bench.
     pub incidents: Vec<Incident>,
 }
@@ -138,6 +150,12 @@ impl Default for TubeTruth {
             start_delay: 0.6,
             tries: 1,
             line_ripple: 0.0,
+            condition: Condition::default(),
+            // Ordinary tubes: 0.1–0.3 % (from memory).
+            discharge_noise: 2e-3,
+            tone_level: 0.0,
+            tone_frequency: 50e3,
+            beat_level: 0.0,
             incidents: Vec::new(),
         }
     }

@@ -4,7 +4,11 @@
 
 use std::f64::consts::TAU;
 
-use super::tube::TubeTruth;
+use super::{gain::output_ratio, tube::TubeTruth};
+
+/// Steps, s, and their number, in which the greatest output is looked for: half an hour.
+const GRID: f64 = 5.0;
+const N_GRID: u32 = 360;
 
 /// Walk since first light in mode spacings, growing as the tube does: frequencies fall by one spacing for each.
 ///
@@ -20,9 +24,18 @@ pub fn cycles(tube: &TubeTruth, seconds: f64) -> f64 {
     slow + fast + draught
 }
 
-/// Output at a time over the output when warm: from `power_at_start` to 1.
+/// Output at a time over the output when warm: from `power_at_start` to 1, times what air that is still to come leaves.
 pub fn output_share(tube: &TubeTruth, seconds: f64) -> f64 {
-    1.0 - (1.0 - tube.power_at_start) * (-seconds.max(0.0) / tube.power_tau).exp()
+    let risen = 1.0 - (1.0 - tube.power_at_start) * (-seconds.max(0.0) / tube.power_tau).exp();
+    let condition = &tube.condition;
+    let gain_now = tube.gain_ratio * (condition.gain_in_air(seconds) / condition.gain_in_all_air());
+    // Below threshold there is no output to take a share of.
+    if tube.gain_ratio > 1.0 { risen * output_ratio(tube.gain_ratio, gain_now) } else { risen }
+}
+
+/// Greatest output while the tube warms over the output when warm, at least 1.
+pub fn highest_output_share(tube: &TubeTruth) -> f64 {
+    (0..N_GRID).map(|k| output_share(tube, GRID * f64::from(k))).fold(1.0, f64::max)
 }
 
 #[cfg(test)]

@@ -7,6 +7,7 @@ use std::f64::consts::{FRAC_PI_2, TAU};
 use super::{
     bench::BenchTruth,
     comb::{Axis, Comb, Mode},
+    light::{LightScene, LightTrace},
     noise::{Noise, Purpose},
     trace::{FULL_HEIGHT, Line, RawTrace, Scene},
     tube::{Incident, TubeTruth},
@@ -36,20 +37,29 @@ pub struct World {
     bench: BenchTruth,
     seed: u64,
     comb: Comb,
+    /// Greatest output while it warms over output when warm.
+    highest_output: f64,
     /// Line centre against the interferometer's zero, Hz.
     scan_offset: f64,
 }
 
 impl World {
     /// Puts a tube on a bench. What the truth leaves open (place of the cold comb, place of the line in the sweep) is
-    /// drawn from the seed.
+    /// drawn from the seed; so is the sign of what air does to the voltage.
     pub fn new(tube: &TubeTruth, bench: &BenchTruth, seed: u64) -> Self {
         let mut noise = Noise::new(seed, Purpose::Placement, 0);
         let (phase, offset) = (noise.uniform(), noise.uniform());
+        let mut tube = tube.clone();
+        if tube.condition.air > 0.0 && tube.condition.air_voltage.is_none() {
+            let change = tube.condition.voltage_change(noise.uniform());
+            tube.condition.air_voltage = Some(change);
+            tube.run_voltage *= 1.0 + change;
+        }
         Self {
-            comb: Comb::new(tube, tube.comb_phase.unwrap_or(phase)),
+            comb: Comb::new(&tube, tube.comb_phase.unwrap_or(phase)),
+            highest_output: walk::highest_output_share(&tube),
             scan_offset: offset * bench.free_spectral_range,
-            tube: tube.clone(),
+            tube,
             bench: bench.clone(),
             seed,
         }
@@ -110,11 +120,25 @@ impl World {
         Some(scene.record(samples, noise(Purpose::Photodiode), noise(Purpose::Crossed)))
     }
 
+    /// One trace of the total light, begun at a time: `samples` means, `rate` of them a second.
+    pub fn light(&self, at_ms: i64, samples: usize, rate: f64, setting: Setting) -> LightTrace {
+        let lit = setting.lit && !setting.blocked && self.tube.power > 0.0;
+        let share = if lit { self.true_power(at_ms as f64, setting.polarizer) / self.tube.power } else { 0.0 };
+        let modes = self.modes(at_ms);
+        // Three neighbours of uneven spacing beat at the second difference of their frequencies.
+        let beat = |three: &[Mode]| (three[0].detuning - 2.0 * three[1].detuning + three[2].detuning).abs();
+        let beats = modes.windows(3).map(beat).collect();
+        let scene = LightScene { tube: &self.tube, bench: &self.bench, share, beats, at: at_ms as f64 / 1e3 };
+        let noise = |purpose| Noise::new(self.seed, purpose, at_ms);
+        scene.record(samples, rate, noise(Purpose::Light), noise(Purpose::LightDetector))
+    }
+
     /// The peaks of one mode: its own and that of its transverse companion.
     fn lines(&self, mode: &Mode, polarizer: Option<f64>, height: f64, jumped: f64) -> Vec<Line> {
         let (main, crossed) = self.split(mode.axis, polarizer);
         let rest = self.bench.analyser.map_or(1.0, |angle| angle.cos().powi(2).max(angle.sin().powi(2)));
-        let highest = self.tube.power * self.comb.highest_share();
+        // The detectors' gain is set for the brightest moment.
+        let highest = self.tube.power * self.comb.highest_share() * self.highest_output;
         let volts = FULL_HEIGHT * height * mode.power / (highest * rest);
         let frequency = self.scan_offset + mode.detuning - jumped;
         let line = |offset: f64, share: f64| Line {

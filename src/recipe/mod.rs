@@ -5,6 +5,7 @@
 mod comb;
 mod dwell;
 mod look;
+mod noise;
 mod parse;
 mod polarizer;
 mod power;
@@ -16,6 +17,7 @@ mod watch;
 pub use comb::Comb;
 pub use dwell::Dwell;
 pub use look::Look;
+pub use noise::Noise;
 pub use polarizer::{Polarization, Polarizer};
 pub use power::Power;
 pub use strike::Strike;
@@ -70,6 +72,8 @@ pub enum StepKind {
     Watch(Watch),
     /// Output power.
     Power(Power),
+    /// Noise of the light.
+    Noise(Noise),
     /// Discharge and supply.
     Supply(Supply),
     /// A look by eye.
@@ -116,6 +120,7 @@ impl StepKind {
             Self::Polarizer(_) => "polarizer",
             Self::Watch(_) => "watch",
             Self::Power(_) => "power",
+            Self::Noise(_) => "noise",
             Self::Supply(_) => "supply",
             Self::Look(_) => "look",
         }
@@ -133,6 +138,7 @@ impl StepKind {
             Self::Polarizer(polarizer) => polarizer.fills(),
             Self::Watch(_) => Watch::FILLS,
             Self::Power(_) => Power::FILLS,
+            Self::Noise(_) => Noise::FILLS,
             Self::Supply(supply) => supply.fills(),
             Self::Look(_) => return vec![format!("visual.{step}")],
         };

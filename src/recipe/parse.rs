@@ -2,7 +2,7 @@
 //! Must not know the keys of one kind.
 //! Main function: [`recipe`].
 
-use super::{Comb, Dwell, Look, Polarizer, Power, Recipe, Step, StepKind, Strike, Supply, Sweep, Watch};
+use super::{Comb, Dwell, Look, Noise, Polarizer, Power, Recipe, Step, StepKind, Strike, Supply, Sweep, Watch};
 use crate::{
     limits::{
         Fault, nearest,
@@ -13,7 +13,7 @@ use crate::{
 
 const TOP: &[&str] = &["revision", "nominal_spacing", "wavelength", "mode_floor", "retests", "step"];
 /// Kinds of a later version: known words, not yet steps.
-const LATER: &[&str] = &["envelope", "noise", "beam"];
+const LATER: &[&str] = &["envelope", "beam"];
 
 /// Stands for the kind of a step whose kind could not be read.
 const UNREAD: &str = "";
@@ -29,6 +29,7 @@ const KINDS: &[(&str, &[&str], Build)] = &[
     ("polarizer", Polarizer::KEYS, |c| Polarizer::read(c).map(StepKind::Polarizer)),
     ("watch", Watch::KEYS, |c| Watch::read(c).map(StepKind::Watch)),
     ("power", Power::KEYS, |c| Power::read(c).map(StepKind::Power)),
+    ("noise", Noise::KEYS, |c| Noise::read(c).map(StepKind::Noise)),
     ("supply", Supply::KEYS, |c| Supply::read(c).map(StepKind::Supply)),
     ("look", Look::KEYS, |c| Look::read(c).map(StepKind::Look)),
 ];

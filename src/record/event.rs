@@ -6,7 +6,9 @@ use serde::{Deserialize, Serialize};
 
 use super::{
     finding::CaptureFinding,
+    light::LightCaptured,
     question::{Answer, Question},
+    reference::ReferenceCheck,
 };
 
 /// Version of the form of an event line. A newer one is refused, an older one stays readable.
@@ -53,7 +55,9 @@ pub enum Happening {
     },
     /// A capture came.
     Captured(Box<Captured>),
-    /// A capture could not be had or not be read.
+    /// A fast trace of the total light came.
+    Light(Box<LightCaptured>),
+    /// A capture or a light trace could not be had or not be read.
     CaptureLost {
         /// Step that wanted it.
         step: String,
@@ -143,6 +147,10 @@ pub struct Identity {
     /// The tube was burning already, since then, RFC 3339 with offset (a rack warmed it); none if it is struck here.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub lit_since: Option<String>,
+    /// The last check of each reference tube of the station when the run was opened: on them hangs whether the bench
+    /// gives a verdict. None where nobody looked: an earlier version of the program, or a study.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub reference_checks: Option<Vec<ReferenceCheck>>,
     /// Language of the sheet, two letters; empty is English.
     #[serde(default, skip_serializing_if = "String::is_empty")]
     pub language: String,

@@ -4,5 +4,7 @@
 
 pub mod event;
 pub mod finding;
+pub mod light;
 pub mod question;
+pub mod reference;
 pub mod sheet;

@@ -37,6 +37,16 @@ impl Run {
                 Ok(())
             }
             Happening::Captured(captured) => self.captured(captured),
+            Happening::Light(light) => {
+                self.wanted_capture(&light.step, light.number)?;
+                match self.wish() {
+                    Wish::Light(wanted) if wanted.lit == light.lit => {}
+                    _ => return Err(format!("light trace {} for {}, which was not wanted", light.number, light.step)),
+                }
+                self.next_capture += 1;
+                self.give(Given::Light(light));
+                Ok(())
+            }
             Happening::CaptureLost { step, number, reason, for_good } => self.lost(step, *number, reason, *for_good),
             Happening::Reading { step, what, value, reason } => self.read(step, what, *value, reason.as_deref()),
             Happening::Waited => Ok(()),
@@ -94,6 +104,9 @@ impl Run {
 
     fn captured(&mut self, captured: &Captured) -> Result<(), String> {
         self.wanted_capture(&captured.step, captured.number)?;
+        if !matches!(self.wish(), Wish::Capture { .. }) {
+            return Err(format!("capture {} for {}, which wants a light trace now", captured.number, captured.step));
+        }
         self.next_capture += 1;
         // Light means that somebody switched high voltage on.
         self.high_voltage |= !captured.finding.dark;
@@ -110,7 +123,7 @@ impl Run {
 
     fn wanted_capture(&self, step: &str, number: u64) -> Result<(), String> {
         self.running()?;
-        if !matches!(self.wish(), Wish::Capture { .. }) || step != self.step_name() {
+        if !matches!(self.wish(), Wish::Capture { .. } | Wish::Light(_)) || step != self.step_name() {
             return Err(format!("capture {number} for {step}, which wants none now"));
         }
         if number != self.next_capture {

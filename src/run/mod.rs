@@ -12,6 +12,7 @@ mod malus;
 mod notebook;
 mod plan;
 mod pool;
+mod reference;
 mod sheet;
 mod spacing;
 mod steps;
@@ -23,14 +24,17 @@ use std::fmt;
 
 use chrono::{DateTime, FixedOffset};
 
-use self::{notebook::Notebook, steps::Step, steps::Wish};
+use self::{
+    notebook::Notebook,
+    steps::{LightWish, Step, Wish},
+};
 use crate::{
     record::{
         event::{Happening, Identity},
         question::Question,
         sheet::{Sheet, WalkChart},
     },
-    station::{CaptureRequest, ReadingRequest, Want},
+    station::{CaptureRequest, LightRequest, ReadingRequest, Want},
 };
 
 /// When something happened, on both clocks.
@@ -149,6 +153,10 @@ impl Run {
         match self.wish() {
             Wish::Capture { not_before_ms, samples, keep, trace } => {
                 Want::Capture(CaptureRequest { step, number: self.next_capture, not_before_ms, samples, keep, trace })
+            }
+            Wish::Light(LightWish { lit, sample_rate, samples, band, overlap }) => {
+                let number = self.next_capture;
+                Want::Light(LightRequest { step, number, lit, sample_rate, samples, band, overlap })
             }
             Wish::Reading(what) => Want::Reading(ReadingRequest { step, what, not_before_ms: 0 }),
             Wish::Ask { word, text, expects, high_voltage } => {

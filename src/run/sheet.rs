@@ -2,15 +2,17 @@
 //! Must not measure; `limits::judge` decides.
 //! Main function: [`sheet_of`].
 
+use std::borrow::Cow;
+
 use chrono::NaiveDate;
 
-use super::{Run, caution::caution, filled::Filled};
+use super::{Run, caution::caution, filled::Filled, reference};
 use crate::{
-    limits::{Judging, judge},
+    limits::{Judging, Limits, judge},
     measurand,
     quantity::{FrequencyDifference, Resistance},
     record::sheet::{Instrument, MeasuredBy, Outcome, Revision, Row, Sheet, TubeVerdict, Value},
-    station::file::StationFile,
+    station::{file::StationFile, standing},
     uncertainty::Certificate,
 };
 
@@ -23,12 +25,17 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
     let finished = run.ending.as_ref().filter(|ending| !ending.unsafe_yet);
     let mut rows = rows(run);
     let day = run.opened_at.map(|at| at.date_naive());
-    let mut holds = day.map_or_else(Vec::new, |day| plan.station.overdue_on(day));
+    // A reference tube judges the bench: what holds a product must not hold its check.
+    let product = run.identity.run_kind.is_product();
+    let at = run.opened_at.filter(|_| product);
+    let mut holds =
+        at.map_or_else(Vec::new, |at| standing::holds(&plan.station, at, run.identity.reference_checks.as_deref()));
     holds.extend(run.book.holds.iter().cloned());
     let complete = finished.is_some_and(|ending| ending.stopped.is_none());
     let dark = run.book.dark.is_some();
-    let judged =
-        judge(Judging { limits: &plan.limits, rows: &mut rows, bench_holds: &holds, finished: complete, dark });
+    let limits = limits(run);
+    let judged = judge(Judging { limits: &limits, rows: &mut rows, bench_holds: &holds, finished: complete, dark });
+    let judged = if product { judged } else { reference::verdict(judged) };
     let verdict = match run.ending.as_ref().and_then(|ending| ending.stopped.as_ref()) {
         Some(reason) => stopped(reason),
         None => judged,
@@ -41,7 +48,7 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
     });
     Sheet {
         identity: run.identity.clone(),
-        title: plan.limits.title.clone(),
+        title: limits.title.clone(),
         station: plan.station.station.clone(),
         started_at: run.opened_at,
         ended_at: finished.map(|ending| ending.at),
@@ -49,7 +56,7 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
         recipe: Revision { revision: plan.recipe.revision, sha256: plan.recipe.sha256.clone() },
         limits: Revision { revision: plan.limits.revision, sha256: plan.limits.sha256.clone() },
         station_file: Revision { revision: 0, sha256: plan.station.sha256.clone() },
-        rule: plan.limits.rule.to_string(),
+        rule: limits.rule.to_string(),
         instruments: instruments(&plan.station, day),
         run_current: run.book.mean_current().or_else(|| typed_current(&rows)),
         verdict,
@@ -60,6 +67,15 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
         remarks: remarks(run),
         caution: caution(run.book.greatest_power),
         measured_by,
+    }
+}
+
+/// What the rows are judged by: the type's limits, or the values of the reference tube.
+fn limits(run: &Run) -> Cow<'_, Limits> {
+    let reference = run.plan.station.reference(&run.identity.serial).filter(|_| !run.identity.run_kind.is_product());
+    match reference {
+        Some(reference) => Cow::Owned(reference::limits(reference, &run.plan.station.station)),
+        None => Cow::Borrowed(&run.plan.limits),
     }
 }
 
@@ -141,7 +157,9 @@ fn remarks(run: &Run) -> Vec<String> {
         run.identity.times_assumed.then(|| "The captures carry no time: they were taken in their order.".to_owned());
     let dark = run.book.dark.as_ref().map(|how| format!("Dark tube: {how}."));
     let stopped = run.ending.as_ref().and_then(|ending| ending.stopped.as_ref()).map(|why| format!("Stopped: {why}"));
-    let all = simulated.into_iter().chain(captures).chain(untimed).chain(dark).chain(stopped);
+    let reference = (!run.identity.run_kind.is_product())
+        .then(|| format!("Reference tube of {}: judges the bench, not the tube.", run.plan.station.station));
+    let all = simulated.into_iter().chain(reference).chain(captures).chain(untimed).chain(dark).chain(stopped);
     all.chain(run.book.remarks.iter().cloned()).collect()
 }
 

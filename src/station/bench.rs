@@ -4,7 +4,7 @@
 
 use chrono::{DateTime, FixedOffset};
 
-use super::want::{CaptureRequest, ReadingRequest};
+use super::want::{CaptureRequest, LightRequest, ReadingRequest};
 use crate::record::{
     event::Event,
     question::{Answer, Question},
@@ -59,6 +59,11 @@ pub struct CapturedBytes {
 pub trait CaptureSource {
     /// Takes one capture, not before the wanted time.
     fn capture(&mut self, request: &CaptureRequest) -> Result<CapturedBytes, Trouble>;
+
+    /// Takes one trace of the total light. A source without a light detector says so.
+    fn light(&mut self, _request: &LightRequest) -> Result<CapturedBytes, Trouble> {
+        Err(Trouble::NotHere("there is no light detector".to_owned()))
+    }
 }
 
 /// Reads meters.

@@ -6,8 +6,11 @@ pub mod answers;
 mod bench;
 pub mod file;
 mod journal;
+pub mod shift;
+pub mod standing;
+pub mod stored;
 mod want;
 
 pub use bench::{Bench, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, Trouble};
 pub use journal::{Durability, Journal, JournalError};
-pub use want::{CaptureRequest, ReadingKind, ReadingRequest, Want};
+pub use want::{CaptureRequest, LightRequest, ReadingKind, ReadingRequest, Want};

@@ -9,6 +9,8 @@ use crate::record::question::Question;
 pub enum Want {
     /// A capture.
     Capture(CaptureRequest),
+    /// A fast trace of the total light.
+    Light(LightRequest),
     /// A meter's reading.
     Reading(ReadingRequest),
     /// An answer. The driver stores `Asked` first; for a question with high voltage it must be on disk before the question is shown.
@@ -41,6 +43,25 @@ pub struct CaptureRequest {
     pub keep: bool,
     /// Keep a thinned trace for the chart.
     pub trace: bool,
+}
+
+/// A fast trace of the total light, from a photodiode on the output beam, as a run wants it.
+#[derive(Debug, Clone, PartialEq)]
+pub struct LightRequest {
+    /// Step that wants it.
+    pub step: String,
+    /// Its number in the run, from 1; traces and sweeps are counted together.
+    pub number: u64,
+    /// Light let through; else the beam is blocked.
+    pub lit: bool,
+    /// Samples a second, each the mean of the light over its interval, so that nothing folds down from above.
+    pub sample_rate: f64,
+    /// Samples wanted.
+    pub samples: usize,
+    /// Band in which noise is wanted, Hz.
+    pub band: (f64, f64),
+    /// Band in which a slow and a fast trace are compared, Hz.
+    pub overlap: (f64, f64),
 }
 
 /// What a meter can be asked.

@@ -4,8 +4,9 @@
 
 use super::{
     detect::{Look, Seen},
-    lines::{self, LineFit, Samples, Start},
+    lines::{self, LineFit, Start},
     orders::Orders,
+    samples::Samples,
     segment::Segment,
 };
 use crate::numerics::smoothing;
@@ -24,11 +25,13 @@ pub(super) struct Fitted {
     pub apparent_width: f64,
     /// Width of each line over the common width.
     pub stretch: Vec<f64>,
+    /// What was fitted.
+    pub samples: Samples,
 }
 
 /// Fits the lines of one ramp; lines that the first look missed are added from the residuals, twice at most.
 pub(super) fn fit_lines(segment: &Segment, look: &Look, orders: &Orders) -> Option<Fitted> {
-    let samples = Samples::new(&segment.signal, &segment.usable, look.width);
+    let binned = |centres: &[f64], width: f64| Samples::new(&segment.signal, &segment.usable, centres, width);
     let stretch_of = |x: f64| (orders.local_period(x) / orders.period).clamp(0.2, 5.0);
     let mut seen: Vec<Seen> = look.peaks.clone();
     let mut start = Start {
@@ -39,12 +42,12 @@ pub(super) fn fit_lines(segment: &Segment, look: &Look, orders: &Orders) -> Opti
         pole: None,
         baseline: look.baseline,
     };
+    let mut samples = binned(&start.centres, look.width);
     let mut plain = lines::fit(&samples, &start)?;
     let mut fit = plain.clone();
     for round in 0..3 {
-        let noise = segment.noise / (samples.bin as f64).sqrt();
         // Where the plain lines leave nothing but noise there is no pole to be found.
-        let clean = plain.residual < 1.03 * noise;
+        let clean = plain.residual < 1.03 * segment.noise;
         fit = if clean { None } else { with_pole(&samples, &start, &plain) }.unwrap_or_else(|| plain.clone());
         if let Some(surplus) = collapsed(&fit, &start.heights) {
             start.centres.remove(surplus);
@@ -76,11 +79,13 @@ pub(super) fn fit_lines(segment: &Segment, look: &Look, orders: &Orders) -> Opti
             pole: None,
             baseline: fit.baseline.0,
         };
-        let Some(better) = lines::fit(&samples, &next) else { break };
+        let finer = binned(&next.centres, next.width);
+        let Some(better) = lines::fit(&finer, &next) else { break };
         start = next;
         plain = better;
+        samples = finer;
     }
-    Some(Fitted { apparent_width: plain.width, fit, stretch: start.stretch })
+    Some(Fitted { apparent_width: plain.width, fit, stretch: start.stretch, samples })
 }
 
 /// Two lines that slid onto each other are one seen twice: the one that was lower at first is surplus.
@@ -116,11 +121,14 @@ fn with_pole(samples: &Samples, start: &Start, plain: &LineFit) -> Option<LineFi
 
 /// Lines that the first look missed: what stands out of the residuals.
 fn hidden(samples: &Samples, fit: &LineFit, look: &Look) -> Vec<Seen> {
-    let bin = samples.bin as f64;
+    let bin = samples.finest as f64;
     let half = (fit.width / bin / 6.0).round().max(0.0) as usize;
-    let smoothed = smoothing::moving_mean(&fit.residuals, half);
+    let plain: Vec<f64> =
+        fit.residuals.iter().zip(&samples.root).map(|(r, root)| if *root > 0.0 { r / root } else { 0.0 }).collect();
+    let smoothed = smoothing::moving_mean(&samples.spread(&plain), half);
     let top = look.peaks.iter().map(|p| p.height).fold(0.0, f64::max);
-    let threshold = (6.0 * fit.residual / (2.0 * half as f64 + 1.0).sqrt()).max(0.01 * top);
+    let noise = fit.residual / bin.sqrt();
+    let threshold = (6.0 * noise / (2.0 * half as f64 + 1.0).sqrt()).max(0.01 * top);
     let options = crate::numerics::peaks::Options {
         min_height: Some(threshold),
         min_prominence: Some(threshold),

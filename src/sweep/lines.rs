@@ -4,7 +4,10 @@
 
 use nalgebra::{DMatrix, DVector};
 
-use super::model::{Column, Problem, dot};
+use super::{
+    model::{Column, Problem, dot, product},
+    samples::Samples,
+};
 
 /// Where a fit begins.
 #[derive(Debug, Clone)]
@@ -40,43 +43,14 @@ pub(super) struct LineFit {
     pub baseline: (f64, f64),
     /// Covariance of the centres, samples², row by row; scaled by the residuals.
     pub centre_covariance: DMatrix<f64>,
-    /// Residual standard deviation, V.
+    /// Residual standard deviation of one sample, V.
     pub residual: f64,
     /// Sum of squares.
     pub sum_of_squares: f64,
     /// Degrees of freedom.
     pub dof: f64,
-    /// Residuals, V, in fitted samples.
+    /// Residuals of the bins, V, times the root of their samples.
     pub residuals: Vec<f64>,
-}
-
-/// Samples to fit: thinned by whole bins where the lines are wide.
-#[derive(Debug, Clone)]
-pub(super) struct Samples {
-    /// Mean of each bin, V.
-    pub signal: Vec<f64>,
-    /// Bins without a clipped sample.
-    pub usable: Vec<bool>,
-    /// Samples a bin.
-    pub bin: usize,
-}
-
-impl Samples {
-    /// Thins a signal so that a line of `width` samples keeps at least twelve bins: white noise loses nothing by it.
-    pub fn new(signal: &[f64], usable: &[bool], width: f64) -> Self {
-        let bin = ((width / 12.0).floor() as usize).clamp(1, 4096);
-        let means = signal.chunks(bin).map(|c| c.iter().sum::<f64>() / c.len() as f64).collect();
-        let usable = usable.chunks(bin).map(|c| c.len() == bin && c.iter().all(|u| *u)).collect();
-        Self { signal: means, usable, bin }
-    }
-
-    fn binned(&self, x: f64) -> f64 {
-        (x - (self.bin as f64 - 1.0) / 2.0) / self.bin as f64
-    }
-
-    fn unbinned(&self, x: f64) -> f64 {
-        x * self.bin as f64 + (self.bin as f64 - 1.0) / 2.0
-    }
 }
 
 /// Most iterations.
@@ -96,19 +70,18 @@ pub(super) fn fit(samples: &Samples, start: &Start) -> Option<LineFit> {
     let n_peaks = start.centres.len();
     let problem = Problem { samples, stretch: &start.stretch, with_pole: start.pole.is_some() };
     let n_parameters = problem.n_parameters();
-    let n_used = samples.usable.iter().filter(|u| **u).count();
+    let n_used = samples.n_used();
     if n_peaks == 0 || n_used <= n_parameters {
         return None;
     }
-    let bin = samples.bin as f64;
-    let mut p: Vec<f64> = start.centres.iter().map(|x| samples.binned(*x)).collect();
+    let mut p: Vec<f64> = start.centres.clone();
     p.extend(&start.heights);
-    p.push(start.width / bin);
-    p.extend(start.pole.map(|pole| (pole / bin).max(0.05)));
+    p.push(start.width);
+    p.extend(start.pole.map(|pole| pole.max(0.05)));
     p.push(start.baseline);
     p.push(0.0);
     let top = start.heights.iter().cloned().fold(0.0, f64::max);
-    let cost_of = |r: &[f64]| r.iter().map(|x| x * x).sum::<f64>();
+    let cost_of = |r: &[f64]| product(r, r);
     let (model, mut columns) = problem.evaluate(&p, true);
     let mut residuals = problem.residuals(&model);
     let mut cost = cost_of(&residuals);
@@ -150,13 +123,17 @@ pub(super) fn fit(samples: &Samples, start: &Start) -> Option<LineFit> {
             if problem.with_pole {
                 trial[2 * n_peaks + 1] = trial[2 * n_peaks + 1].max(0.02);
             }
-            let trial_residuals = problem.residuals(&problem.evaluate(&trial, false).0);
+            // Nearly every trial is taken: its columns are made at once.
+            let (trial_model, trial_columns) = problem.evaluate(&trial, true);
+            let trial_residuals = problem.residuals(&trial_model);
             let trial_cost = cost_of(&trial_residuals);
             if trial_cost.is_finite() && trial_cost <= cost {
                 last_gain = (cost - trial_cost) / cost.max(1e-300);
                 settled = size < STEP_TOLERANCE || last_gain < GAIN_TOLERANCE;
                 p = trial;
                 cost = trial_cost;
+                columns = trial_columns;
+                residuals = trial_residuals;
                 damping = (damping * 0.1).max(1e-12);
                 improved = true;
                 break;
@@ -172,34 +149,29 @@ pub(super) fn fit(samples: &Samples, start: &Start) -> Option<LineFit> {
             settled = true;
             break;
         }
-        let (model, new_columns) = problem.evaluate(&p, true);
-        columns = new_columns;
-        residuals = problem.residuals(&model);
     }
     // A weak line in the noise may wander on without changing the sum: that is rest enough, its height will not pass.
     if !settled && last_gain > 1e-3 {
         return None;
     }
-    let (model, columns) = problem.evaluate(&p, true);
-    let residuals = problem.residuals(&model);
     let (normal, _) = normal_equations(&columns, &residuals);
     let inverse = scaled_inverse(&normal)?;
     let dof = (n_used - n_parameters) as f64;
     let variance = cost / dof;
-    let memory = memory_factor(&residuals, p[2 * n_peaks]);
+    let memory = memory_factor(&on_lines(samples, &residuals), p[2 * n_peaks] / samples.finest as f64);
     let scale = variance * memory;
     let mut centre_covariance = DMatrix::zeros(n_peaks, n_peaks);
     for i in 0..n_peaks {
         for j in 0..n_peaks {
-            centre_covariance[(i, j)] = inverse[(i, j)] * scale * bin * bin;
+            centre_covariance[(i, j)] = inverse[(i, j)] * scale;
         }
     }
     Some(LineFit {
-        centres: p[..n_peaks].iter().map(|x| samples.unbinned(*x)).collect(),
+        centres: p[..n_peaks].to_vec(),
         heights: p[n_peaks..2 * n_peaks].to_vec(),
         u_heights: (n_peaks..2 * n_peaks).map(|i| (inverse[(i, i)] * scale).max(0.0).sqrt()).collect(),
-        width: p[2 * n_peaks] * bin,
-        pole: problem.with_pole.then(|| p[2 * n_peaks + 1] * bin),
+        width: p[2 * n_peaks],
+        pole: problem.with_pole.then(|| p[2 * n_peaks + 1]),
         baseline: (p[n_parameters - 2], p[n_parameters - 1]),
         centre_covariance,
         residual: variance.sqrt(),
@@ -220,7 +192,7 @@ fn normal_equations(columns: &[Column], residuals: &[f64]) -> (DMatrix<f64>, DVe
             normal[(j, i)] = value;
         }
         let c = &columns[i];
-        gradient[i] = c.values.iter().zip(&residuals[c.from..]).map(|(a, r)| a * r).sum();
+        gradient[i] = product(&c.values, &residuals[c.from..c.from + c.values.len()]);
     }
     (normal, gradient)
 }
@@ -232,6 +204,12 @@ fn scaled_inverse(normal: &DMatrix<f64>) -> Option<DMatrix<f64>> {
     let scaled = DMatrix::from_fn(n, n, |i, j| normal[(i, j)] / (scale[i] * scale[j]));
     let inverse = scaled.cholesky()?.inverse();
     Some(DMatrix::from_fn(n, n, |i, j| inverse[(i, j)] / (scale[i] * scale[j])))
+}
+
+/// Residuals of the finest bins alone: those on the lines, evenly spaced there.
+fn on_lines(samples: &Samples, residuals: &[f64]) -> Vec<f64> {
+    let fine = |i: &usize| samples.bounds[i + 1] - samples.bounds[*i] == samples.finest;
+    (0..residuals.len()).filter(fine).map(|i| residuals[i]).collect()
 }
 
 /// How much residuals that remember each other inflate a variance: 1 + 2 Σ ρ over one line width, less what chance gives.
@@ -249,34 +227,33 @@ fn memory_factor(residuals: &[f64], width: f64) -> f64 {
 
 /// Heights of the same lines in one photodiode alone, centres, width and pole held.
 ///
+/// * `samples`: those of the fit; `signal`: the photodiode's, over the whole ramp.
+///
 /// Returns heights and their standard uncertainties, V; none if the lines lie on each other.
 pub(super) fn heights_in(
     signal: &[f64],
-    usable: &[bool],
+    samples: &Samples,
     fit: &LineFit,
     stretch: &[f64],
 ) -> Option<(Vec<f64>, Vec<f64>)> {
-    let samples = Samples::new(signal, usable, fit.width);
     let n_peaks = fit.centres.len();
-    let problem = Problem { samples: &samples, stretch, with_pole: fit.pole.is_some() };
-    let bin = samples.bin as f64;
-    let mut p: Vec<f64> = fit.centres.iter().map(|x| samples.binned(*x)).collect();
+    let problem = Problem { samples, stretch, with_pole: fit.pole.is_some() };
+    let mut p: Vec<f64> = fit.centres.clone();
     p.extend(vec![1.0; n_peaks]);
-    p.push(fit.width / bin);
-    p.extend(fit.pole.map(|pole| pole / bin));
+    p.push(fit.width);
+    p.extend(fit.pole);
     p.extend([0.0, 0.0]);
     let (_, mut columns) = problem.evaluate(&p, true);
     let tail = columns.split_off(columns.len() - 2);
     let mut linear: Vec<Column> = columns.drain(n_peaks..2 * n_peaks).collect();
     linear.extend(tail);
-    let used: Vec<f64> = samples.signal.iter().zip(&samples.usable).map(|(s, u)| if *u { *s } else { 0.0 }).collect();
+    let used: Vec<f64> = samples.means(signal).iter().zip(&samples.root).map(|(s, root)| s * root).collect();
     let (normal, gradient) = normal_equations(&linear, &used);
     let inverse = scaled_inverse(&normal)?;
     let solved = &inverse * &gradient;
     // ‖y − Ax‖² = y·y − x·Aᵀy for the least-squares x.
-    let left = used.iter().map(|y| y * y).sum::<f64>() - solved.dot(&gradient);
-    let n_used = samples.usable.iter().filter(|u| **u).count();
-    let variance = (left / (n_used.saturating_sub(linear.len())).max(1) as f64).max(0.0);
+    let left = product(&used, &used) - solved.dot(&gradient);
+    let variance = (left / (samples.n_used().saturating_sub(linear.len())).max(1) as f64).max(0.0);
     let heights = solved.iter().take(n_peaks).copied().collect();
     Some((heights, (0..n_peaks).map(|i| (inverse[(i, i)] * variance).max(0.0).sqrt()).collect()))
 }
@@ -296,7 +273,7 @@ mod tests {
         }
 
         fn n_points(&self) -> usize {
-            self.0.samples.signal.len()
+            self.0.samples.x.len()
         }
 
         fn evaluate(&self, parameters: &[f64], residuals: &mut [f64], jacobian: Option<&mut [f64]>) {
@@ -317,7 +294,7 @@ mod tests {
     /// Three overlapping lines behind a slow detector, with a small seeded noise.
     fn made() -> (Samples, Start) {
         let truth = [300.0, 345.0, 620.0, 1.0, 0.6, 0.8, 14.0, 6.0, 0.05, 0.01];
-        let blank = Samples { signal: vec![0.0; 900], usable: vec![true; 900], bin: 1 };
+        let blank = Samples::new(&[0.0; 900], &[true; 900], &[], 3.0);
         let stretch = [1.0, 1.02, 1.1];
         let problem = Problem { samples: &blank, stretch: &stretch, with_pole: true };
         let mut state = 1u64;

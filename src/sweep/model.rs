@@ -2,7 +2,7 @@
 //! Must not solve anything.
 //! Main type: [`Problem`].
 
-use super::lines::Samples;
+use super::{lag::Lag, samples::Samples};
 
 /// A column of the Jacobian that is zero outside its window.
 pub(super) struct Column {
@@ -38,111 +38,79 @@ impl Problem<'_> {
         2 * self.n_peaks() + 3 + usize::from(self.with_pole)
     }
 
-    /// Model and, where wanted, the columns of its Jacobian.
+    /// Model and, where wanted, the columns of its Jacobian weighted by the root of each bin's samples.
     // Over 60 lines: values and derivatives of each parameter in turn; apart they would be computed twice.
     pub fn evaluate(&self, p: &[f64], want_columns: bool) -> (Vec<f64>, Vec<Column>) {
-        let n = self.samples.signal.len();
+        let xs = &self.samples.x;
+        let n = xs.len();
         let n_peaks = self.n_peaks();
         let width = p[2 * n_peaks];
-        let pole = if self.with_pole { p[2 * n_peaks + 1] } else { 0.0 };
-        let extra = if self.with_pole { TAIL * pole } else { 0.0 };
+        let lag = self.with_pole.then(|| Lag::new(xs, p[2 * n_peaks + 1]));
+        let extra = if self.with_pole { TAIL * p[2 * n_peaks + 1] } else { 0.0 };
         let mut model = vec![0.0; n];
         let mut width_column = vec![0.0; if want_columns { n } else { 0 }];
         let mut columns: Vec<Column> = Vec::with_capacity(if want_columns { self.n_parameters() } else { 0 });
         let mut height_columns: Vec<Column> = Vec::new();
         for j in 0..n_peaks {
             let (centre, height, w) = (p[j], p[n_peaks + j], width * self.stretch[j]);
-            let from = (centre - REACH * w).floor().clamp(0.0, n as f64) as usize;
-            let to = (centre + REACH * w + extra).ceil().clamp(0.0, n as f64) as usize;
-            let (mut by_centre, mut by_height) = (Vec::new(), Vec::new());
+            let from = xs.partition_point(|x| *x < centre - REACH * w);
+            let to = xs.partition_point(|x| *x <= centre + REACH * w + extra);
+            let size = if want_columns { to - from } else { 0 };
+            let (mut by_centre, mut by_height) = (Vec::with_capacity(size), Vec::with_capacity(size));
+            let per = 2.0 / w;
             for i in from..to {
-                let q = 2.0 * (i as f64 - centre) / w;
+                let q = per * (xs[i] - centre);
                 let l = 1.0 / (1.0 + q * q);
-                model[i] += height * l;
+                // The bin's mean differs from its middle by the curvature.
+                let mean = l + self.samples.bow(i) * per * per * (6.0 * q * q - 2.0) * l * l * l;
+                model[i] += height * mean;
                 if want_columns {
-                    by_height.push(l);
-                    by_centre.push(height * 4.0 * q * l * l / w);
+                    by_height.push(mean);
+                    by_centre.push(height * 2.0 * per * q * l * l);
                     width_column[i] += height * 2.0 * q * q * l * l / width;
                 }
             }
             if want_columns {
-                if self.with_pole {
-                    lag(&mut by_centre, pole);
-                    lag(&mut by_height, pole);
+                if let Some(lag) = &lag {
+                    lag.apply(&mut by_centre, from);
+                    lag.apply(&mut by_height, from);
                 }
                 columns.push(Column { from, values: by_centre });
                 height_columns.push(Column { from, values: by_height });
             }
         }
         columns.append(&mut height_columns);
-        if want_columns {
-            if self.with_pole {
-                lag(&mut width_column, pole);
+        if let Some(lag) = &lag {
+            if want_columns {
+                lag.apply(&mut width_column, 0);
+                columns.push(Column { from: 0, values: width_column });
+                columns.push(Column { from: 0, values: lag.derivative(&mut model) });
+            } else {
+                lag.apply(&mut model, 0);
             }
+        } else if want_columns {
             columns.push(Column { from: 0, values: width_column });
         }
-        if self.with_pole {
-            let by_pole = lag_with_derivative(&mut model, pole);
-            if want_columns {
-                columns.push(Column { from: 0, values: by_pole });
-            }
-        }
         let (b0, b1) = (p[p.len() - 2], p[p.len() - 1]);
-        let half = n as f64 / 2.0;
-        let mut slope_column = Vec::with_capacity(n);
-        for (i, value) in model.iter_mut().enumerate() {
-            let u = (i as f64 - half) / half;
-            *value += b0 + b1 * u;
-            if want_columns {
-                slope_column.push(u);
-            }
-        }
+        let half = self.samples.n as f64 / 2.0;
+        let slope: Vec<f64> = xs.iter().map(|x| (x - half) / half).collect();
+        model.iter_mut().zip(&slope).for_each(|(value, u)| *value += b0 + b1 * u);
         if want_columns {
             columns.push(Column { from: 0, values: vec![1.0; n] });
-            columns.push(Column { from: 0, values: slope_column });
+            columns.push(Column { from: 0, values: slope });
             for column in &mut columns {
-                for (k, value) in column.values.iter_mut().enumerate() {
-                    if !self.samples.usable[column.from + k] {
-                        *value = 0.0;
-                    }
-                }
+                let roots = &self.samples.root[column.from..];
+                column.values.iter_mut().zip(roots).for_each(|(value, root)| *value *= root);
             }
         }
         (model, columns)
     }
 
-    /// Signal less model, 0 where a sample is not usable.
+    /// Signal less model, weighted by the root of each bin's samples: 0 where a bin may not be fitted.
     pub fn residuals(&self, model: &[f64]) -> Vec<f64> {
-        let pairs = self.samples.signal.iter().zip(model).zip(&self.samples.usable);
-        pairs.map(|((s, m), usable)| if *usable { s - m } else { 0.0 }).collect()
+        let pairs = self.samples.signal.iter().zip(model).zip(&self.samples.root);
+        pairs.map(|((s, m), root)| (s - m) * root).collect()
     }
-}
-
-/// One-pole low pass, started at rest at the first value.
-fn lag(values: &mut [f64], pole: f64) {
-    let a = (-1.0 / pole.max(1e-3)).exp();
-    let mut y = values.first().copied().unwrap_or(0.0);
-    for value in values {
-        y = a * y + (1.0 - a) * *value;
-        *value = y;
-    }
-}
-
-/// The same, with the derivative of its output by the pole.
-fn lag_with_derivative(values: &mut [f64], pole: f64) -> Vec<f64> {
-    let pole = pole.max(1e-3);
-    let a = (-1.0 / pole).exp();
-    let da = a / (pole * pole);
-    let mut y = values.first().copied().unwrap_or(0.0);
-    let mut dy = 0.0;
-    let mut derivative = Vec::with_capacity(values.len());
-    for value in values {
-        dy = a * dy + (y - *value);
-        y = a * y + (1.0 - a) * *value;
-        *value = y;
-        derivative.push(dy * da);
-    }
-    derivative
 }
 
 /// Scalar product of two columns.
@@ -152,5 +120,18 @@ pub(super) fn dot(a: &Column, b: &Column) -> f64 {
     if from >= to {
         return 0.0;
     }
-    a.values[from - a.from..to - a.from].iter().zip(&b.values[from - b.from..to - b.from]).map(|(x, y)| x * y).sum()
+    product(&a.values[from - a.from..to - a.from], &b.values[from - b.from..to - b.from])
+}
+
+/// Σ aᵢ·bᵢ in eight sums side by side: one sum alone waits for each addition.
+pub(super) fn product(a: &[f64], b: &[f64]) -> f64 {
+    let mut sums = [0.0; 8];
+    let (a_blocks, b_blocks) = (a.chunks_exact(8), b.chunks_exact(8));
+    let rest: f64 = a_blocks.remainder().iter().zip(b_blocks.remainder()).map(|(x, y)| x * y).sum();
+    for (x, y) in a_blocks.zip(b_blocks) {
+        for k in 0..8 {
+            sums[k] += x[k] * y[k];
+        }
+    }
+    rest + sums.iter().sum::<f64>()
 }

@@ -114,7 +114,7 @@ pub(super) fn fill(
         Ok(_) => result.mode_spacing = spacing_with_budget(choice, settings),
         Err(refusal) => result.no_spacing = Some(refusal.clone()),
     }
-    let heights = |signal: &[f64]| lines::heights_in(signal, &segment.usable, fit, &fitted.stretch);
+    let heights = |signal: &[f64]| lines::heights_in(signal, &fitted.samples, fit, &fitted.stretch);
     let apart = segment
         .pair
         .as_ref()
@@ -220,8 +220,7 @@ fn warn_of_result(
     if let Some(ratio) = result.off_axis.iter().map(|m| m.relative_height).max_by(f64::total_cmp) {
         result.warnings.push(Warning::OffAxis { count: result.off_axis.len(), ratio });
     }
-    let noise = segment.noise / ((fit.width / 12.0).floor().max(1.0)).sqrt();
-    let chi_square = if noise > 0.0 { (fit.residual / noise).powi(2) } else { 1.0 };
+    let chi_square = if segment.noise > 0.0 { (fit.residual / segment.noise).powi(2) } else { 1.0 };
     if chi_square > 4.0 {
         result.warnings.push(Warning::Misfit { chi_square });
     }

@@ -4,8 +4,6 @@
 
 #![allow(dead_code, clippy::unwrap_used, clippy::panic)]
 
-use std::collections::BTreeMap;
-
 use tubewright::{
     driver::{Driver, Engine, Interrupted, Watcher, resume},
     instruments::{SimulatedBench, SimulatedOptions},
@@ -116,12 +114,8 @@ impl Brisk {
         stored: &[Event],
         voice: Option<Box<dyn Person>>,
     ) -> Result<Driven, Interrupted> {
-        let options = SimulatedOptions {
-            started_at: STARTED_AT.parse().unwrap(),
-            pace: f64::INFINITY,
-            time_to_answer_ms: 2000,
-            looks: BTreeMap::new(),
-        };
+        let options =
+            SimulatedOptions { started_at: STARTED_AT.parse().unwrap(), pace: f64::INFINITY, time_to_answer_ms: 2000 };
         let mut bench = SimulatedBench::new(World::new(&self.truth, &self.bench, seed), options).bench_with(voice);
         let plan = Plan::from_texts(&self.recipe, &self.limits, &self.station).unwrap();
         let engine = Engine::of(&plan).unwrap();

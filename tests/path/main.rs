@@ -4,5 +4,6 @@
 #![allow(clippy::unwrap_used, clippy::panic, missing_docs)]
 
 mod bench;
+mod noise;
 mod warmup;
 mod watch;

@@ -7,11 +7,12 @@ use tubewright::{
     record::{
         event::{CaptureFact, Captured, Happening, Identity, Opened},
         finding::{CaptureFinding, ModeFinding, StoredLine, Trace},
+        light::{LightCaptured, LightFinding, StoredMains},
         question::{Answer, Expects, Question},
         sheet::Sheet,
     },
     run::{At, Plan, Run},
-    station::{CaptureRequest, ReadingKind, Want},
+    station::{CaptureRequest, LightRequest, ReadingKind, Want},
 };
 
 pub const FSR: f64 = 6.4e9;
@@ -269,6 +270,7 @@ impl Driver {
     pub fn one(&mut self) -> bool {
         match self.script.run.wants() {
             Want::Capture(request) => self.capture(&request),
+            Want::Light(request) => self.light(&request),
             Want::Reading(request) => {
                 let t = self.seconds();
                 let value = match request.what {
@@ -323,6 +325,30 @@ impl Driver {
         let finding = self.tube.finding(t, self.polarizer, request.trace, &mut self.noise);
         self.now_ms += CAPTURE_MS;
         self.happen(Happening::Captured(Box::new(Captured { step, number, fact, finding })));
+    }
+
+    /// A light trace as the tube's own tests want none: level and noise of an ordinary tube.
+    fn light(&mut self, request: &LightRequest) {
+        let level = if request.lit { 0.8 } else { 0.02 };
+        let finding = LightFinding {
+            engine: "made".into(),
+            sample_rate: request.sample_rate,
+            duration: request.samples as f64 / request.sample_rate,
+            mean: level,
+            noise: (1e-6 * level, 1e-8 * level, 1000.0),
+            mains: (request.band.0 < 50.0).then_some(StoredMains {
+                frequency: 50.0,
+                clear: true,
+                power: 1e-7 * level,
+                u_power: 1e-9,
+                n_harmonics: 39,
+            }),
+            ..LightFinding::default()
+        };
+        let fact = CaptureFact { taken_s: self.now_ms as f64 / 1e3, ..CaptureFact::default() };
+        self.now_ms += 1500;
+        let (step, number, lit) = (request.step.clone(), request.number, request.lit);
+        self.happen(Happening::Light(Box::new(LightCaptured { step, number, lit, fact, finding })));
     }
 
     fn answer(&mut self, question: &Question) {

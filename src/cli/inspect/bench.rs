@@ -92,7 +92,6 @@ fn simulated(
 ) -> Result<Bench, Failure> {
     let unknown = || Failure::unusable(format!("the simulated bench has no tube `{}`", inputs.serial));
     let scenario = inputs.scenario.as_ref().ok_or_else(unknown)?;
-    let tube = scenario.tube(&inputs.serial).ok_or_else(unknown)?;
     let world = scenario.world(&inputs.serial, inputs.seed).ok_or_else(unknown)?;
     if person.is_none() && technician.is_empty() {
         *technician = scenario.technician.clone();
@@ -102,7 +101,6 @@ fn simulated(
         started_at,
         pace: inputs.pace.unwrap_or(f64::INFINITY),
         time_to_answer_ms: of_answers.unwrap_or(scenario.time_to_answer_ms),
-        looks: tube.looks.clone(),
     };
     Ok(SimulatedBench::new(world, options).bench_with(person))
 }

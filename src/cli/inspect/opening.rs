@@ -11,12 +11,15 @@ use super::{
     inputs::{Inputs, faulty},
     run_id::run_id,
 };
-use crate::cli::Failure;
+use crate::cli::checks::{checks_of, last_of_each};
+use crate::cli::{Failure, output};
 use crate::disk::{FoundRun, RunFolder, SerialLock, TypeTexts};
 use crate::limits::{Limits, nearest};
 use crate::recipe::Recipe;
-use crate::record::event::{Event, Happening, Identity, Opened};
+use crate::record::event::{Event, Happening, Identity, Opened, RunKind};
+use crate::record::reference::ReferenceCheck;
 use crate::run::Plan;
+use crate::station::standing::unclosed;
 use crate::station::{Bench, Moment};
 
 /// A run about to be driven.
@@ -77,6 +80,9 @@ impl Opening {
         let Planned { tube_type, texts, plan } = planned;
         let (station_text, station) = &inputs.station;
         let started_at = started_at(inputs).with_timezone(&station.time_zone).fixed_offset();
+        let reference = station.reference(&inputs.serial).is_some();
+        let run_kind = if reference { RunKind::Reference } else { RunKind::Product };
+        let reference_checks = if reference { None } else { Some(bench_checks(inputs, started_at)?) };
         let mut technician = String::new();
         let bench = bench::build(inputs, started_at, &mut technician)?;
         let tube = inputs.scenario.as_ref().and_then(|scenario| scenario.tube(&inputs.serial));
@@ -98,6 +104,8 @@ impl Opening {
             from_captures: inputs.captures.is_some(),
             times_assumed: inputs.captures.as_ref().is_some_and(|folder| folder.first_at().is_none()),
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
+            run_kind,
+            reference_checks,
             ..Identity::default()
         };
         let opened = Opened {
@@ -121,6 +129,16 @@ impl Opening {
         }
         .map_err(|error| Failure::store(&error))
     }
+}
+
+/// The last check of each reference tube of the bench; says so where the last shift was not closed.
+fn bench_checks(inputs: &Inputs, at: DateTime<FixedOffset>) -> Result<Vec<ReferenceCheck>, Failure> {
+    let station = &inputs.station.1;
+    let checks = checks_of(&inputs.store, station, inputs.simulated(), at)?;
+    for sentence in unclosed(station, at, &checks) {
+        output::talk(&sentence);
+    }
+    Ok(last_of_each(station, &checks))
 }
 
 /// When a new run starts: as told, else as the scenario or the first capture says, else now.
@@ -161,6 +179,15 @@ fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<Planned, Failure> {
 
 /// `--type`, else the answers, else the serial's last run, else the scenario, else a person.
 fn tube_type(inputs: &Inputs, runs: &[FoundRun]) -> Result<String, Failure> {
+    if let Some(reference) = inputs.station.1.reference(&inputs.serial) {
+        return match &inputs.tube_type {
+            Some(given) if *given != reference.tube_type => Err(Failure::unusable(format!(
+                "`{}` is a reference tube of {}, of type `{}`; expected no other `--type`",
+                reference.serial, inputs.station.1.station, reference.tube_type
+            ))),
+            _ => Ok(reference.tube_type.clone()),
+        };
+    }
     let of_answers = || inputs.answers.as_ref()?.tube_type.clone();
     let of_last = || runs.last().map(|run| run.opened.identity.tube_type.clone());
     let of_scenario = || Some(inputs.scenario.as_ref()?.tube(&inputs.serial)?.tube_type.clone());

@@ -16,7 +16,7 @@ use truth::{shot, truth_json};
 
 use crate::{
     instruments::{CaptureHead, simulated_capture_name, simulated_csv},
-    phantom::{BenchTruth, Incident, Scenario, Setting, TubeTruth, World},
+    phantom::{BenchTruth, FAULT_KINDS, Fault, FaultKind, Incident, Scenario, Setting, TubeTruth, World},
     quantity::{Dimension, parse_as},
 };
 
@@ -69,6 +69,9 @@ pub struct SimulateArgs {
     /// Height of a transverse mode over its axial mode's.
     #[arg(long, value_parser = ratio)]
     pub off_axis: Option<f64>,
+    /// A fault of tube or supply and how much of it, such as `helium-lost=45%`. May be given again.
+    #[arg(long, value_name = "KIND=AMOUNT", long_help = fault_help())]
+    pub fault: Vec<Fault>,
     /// Free spectral range of the interferometer.
     #[arg(long, value_parser = frequency)]
     pub fsr: Option<f64>,
@@ -213,6 +216,7 @@ fn truths(args: &SimulateArgs) -> Result<(TubeTruth, BenchTruth), SimulateError>
         set(option, Some(value), &mut 0.0, |v| (0.0..=8.64e7).contains(&v), "0 to 8.64e7 s")?;
     }
     bench.bits = args.bits.unwrap_or(bench.bits);
+    args.fault.iter().for_each(|fault| fault.befall(&mut tube));
     tube.incidents.extend(args.hop.iter().copied());
     tube.incidents.extend(args.swap.iter().map(|&at| Incident::Swap { at }));
     tube.incidents.extend(args.knock.iter().map(|&at| Incident::Knock { at, to: 0.5, lasts: 1.0 }));
@@ -266,6 +270,14 @@ fn frequency(text: &str) -> Result<f64, String> {
 
 fn ratio(text: &str) -> Result<f64, String> {
     quantity(text, Dimension::Ratio)
+}
+
+/// What `--fault` takes, from the table of kinds.
+fn fault_help() -> String {
+    let head = "A fault of tube or supply and how much of it, such as `helium-lost=45%`. May be given again; changes what \
+                the other options say. Kinds:\n";
+    let line = |kind: &FaultKind| format!("\n  {:<16} {:<14} {}", kind.word, kind.range, kind.about);
+    head.to_owned() + &FAULT_KINDS.iter().map(line).collect::<String>()
 }
 
 fn hop(text: &str) -> Result<Incident, String> {

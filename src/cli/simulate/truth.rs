@@ -5,7 +5,7 @@
 use serde::Serialize;
 
 use super::SimulateArgs;
-use crate::phantom::{Axis, Incident, Mode, World};
+use crate::phantom::{Axis, Incident, Mode, World, discharge, getter, press_test};
 
 /// What is true, as it is written beside the captures. SI.
 #[derive(Serialize)]
@@ -21,6 +21,22 @@ struct TruthFile {
     warmup_tau_s: f64,
     walk_cycles: f64,
     off_axis_ratio: f64,
+    swap_detuning_hz: Option<f64>,
+    draught_cycles: f64,
+    line_ripple: f64,
+    run_voltage_v: f64,
+    run_current_a: f64,
+    dropout_current_a: f64,
+    start_delay_s: f64,
+    tries: u64,
+    helium_share: f64,
+    air_share: f64,
+    bore_over_design: f64,
+    mirror_tilt_rad: f64,
+    cathode_spent: f64,
+    discharge: &'static str,
+    getter: &'static str,
+    press_test: Option<&'static str>,
     free_spectral_range_hz: f64,
     finesse: f64,
     noise: f64,
@@ -69,6 +85,7 @@ pub(super) fn shot(world: &World, name: &str, at_ms: i64, lost: bool) -> Shot {
 /// The whole file.
 pub(super) fn truth_json(args: &SimulateArgs, world: &World, captures: Vec<Shot>) -> Vec<u8> {
     let (tube, bench, comb) = (world.tube(), world.bench(), world.comb());
+    let condition = &tube.condition;
     let hops = tube
         .incidents
         .iter()
@@ -86,6 +103,22 @@ pub(super) fn truth_json(args: &SimulateArgs, world: &World, captures: Vec<Shot>
         warmup_tau_s: tube.warmup_tau,
         walk_cycles: tube.walk_cycles,
         off_axis_ratio: tube.off_axis_share,
+        swap_detuning_hz: tube.swap_detuning,
+        draught_cycles: tube.draught_cycles,
+        line_ripple: tube.line_ripple,
+        run_voltage_v: tube.run_voltage,
+        run_current_a: tube.run_current,
+        dropout_current_a: tube.dropout_current,
+        start_delay_s: tube.start_delay,
+        tries: tube.tries,
+        helium_share: condition.helium,
+        air_share: condition.air,
+        bore_over_design: condition.bore,
+        mirror_tilt_rad: condition.mirror_tilt,
+        cathode_spent: condition.cathode_spent,
+        discharge: discharge(tube),
+        getter: getter(tube),
+        press_test: press_test(tube),
         free_spectral_range_hz: bench.free_spectral_range,
         finesse: bench.finesse,
         noise: bench.noise,

@@ -4,7 +4,7 @@
 
 use chrono::{DateTime, FixedOffset, SecondsFormat};
 
-use crate::phantom::RawTrace;
+use crate::phantom::{LightTrace, RawTrace};
 
 /// Decimals of times, s, and of voltages, V.
 const TIME_DECIMALS: u32 = 10;
@@ -53,6 +53,21 @@ pub fn simulated_csv(trace: &RawTrace, head: &CaptureHead) -> Vec<u8> {
             bytes.push(b',');
             push_fixed(&mut bytes, *value, VOLT_DECIMALS);
         }
+        bytes.push(b'\n');
+    }
+    bytes
+}
+
+/// One light trace as CSV: our own head lines, then one sample a line; the times follow from the interval in the head.
+pub fn simulated_light_csv(trace: &LightTrace, captured_at: DateTime<FixedOffset>, number: u64, lit: bool) -> Vec<u8> {
+    let mut text = format!("# captured_at = {}\n", captured_at.to_rfc3339_opts(SecondsFormat::Millis, true));
+    let lit = if lit { "lit" } else { "dark" };
+    text.push_str(&format!("# capture = {number}\n# light = {lit}\n"));
+    text.push_str(&format!("# sample_rate = {:.0} Hz\nlight_V\n", 1.0 / trace.time_step));
+    let mut bytes = text.into_bytes();
+    bytes.reserve(trace.volts.len() * 10);
+    for value in &trace.volts {
+        push_fixed(&mut bytes, *value, VOLT_DECIMALS);
         bytes.push(b'\n');
     }
     bytes

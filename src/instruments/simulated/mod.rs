@@ -7,7 +7,7 @@ mod hands;
 mod state;
 mod technician;
 
-use std::{cell::RefCell, collections::BTreeMap, rc::Rc};
+use std::{cell::RefCell, rc::Rc};
 
 use chrono::{DateTime, FixedOffset};
 
@@ -15,11 +15,11 @@ use crate::{
     phantom::{Scenario, World},
     record::event::Event,
     station::{
-        Bench, CaptureRequest, CaptureSource, CapturedBytes, Clock, Interlock, Meters, Moment, Person, ReadingKind,
-        ReadingRequest, Trouble,
+        Bench, CaptureRequest, CaptureSource, CapturedBytes, Clock, Interlock, LightRequest, Meters, Moment, Person,
+        ReadingKind, ReadingRequest, Trouble,
     },
 };
-pub use capture_text::{CaptureHead, simulated_capture_name, simulated_csv};
+pub use capture_text::{CaptureHead, simulated_capture_name, simulated_csv, simulated_light_csv};
 use state::State;
 use technician::Technician;
 
@@ -37,8 +37,6 @@ pub struct SimulatedOptions {
     pub pace: f64,
     /// What an answer costs in bench time, ms, whoever answers.
     pub time_to_answer_ms: u64,
-    /// What the technician sees: name of the look step, word.
-    pub looks: BTreeMap<String, String>,
 }
 
 /// A simulated bench whose parts share one state.
@@ -70,7 +68,6 @@ impl SimulatedBench {
             started_at: started_at.unwrap_or(tube.started_at),
             pace,
             time_to_answer_ms: scenario.time_to_answer_ms,
-            looks: tube.looks.clone(),
         };
         Some(Self::new(scenario.world(serial, seed)?, options))
     }
@@ -128,6 +125,17 @@ impl CaptureSource for SimulatedBench {
             return Err(Trouble::Instrument("the digitizer gave no data for this capture".to_owned()));
         };
         let bytes = simulated_csv(&trace, &head);
+        let files = vec![(simulated_capture_name(request.number), bytes)];
+        Ok(CapturedBytes { files, taken_ms: taken.elapsed_ms })
+    }
+
+    fn light(&mut self, request: &LightRequest) -> Result<CapturedBytes, Trouble> {
+        let mut state = self.state.borrow_mut();
+        let taken = state.now();
+        let (at, setting) = state.on_tube();
+        let trace = state.world.light(at, request.samples, request.sample_rate, setting);
+        state.advance_by((request.samples as f64 / request.sample_rate * 1e3).ceil() as u64);
+        let bytes = simulated_light_csv(&trace, taken.wall, request.number, request.lit);
         let files = vec![(simulated_capture_name(request.number), bytes)];
         Ok(CapturedBytes { files, taken_ms: taken.elapsed_ms })
     }

@@ -6,6 +6,7 @@ use std::{cell::RefCell, rc::Rc};
 
 use super::{hands, state::State};
 use crate::{
+    phantom::{cathode, discharge, getter, press_test},
     record::question::{Answer, Expects, Question},
     station::{Person, Trouble},
 };
@@ -66,18 +67,28 @@ fn own_answer(state: &State, question: &Question) -> Answer {
     }
 }
 
-/// What is seen on the tube; a tube of which nothing is said looks clean, else as the first word says, which is the good
-/// one. A look that the recipe has no word for is not turned into another.
+/// What is found at the tube, by the name of the look. A look that nothing of the truth answers is answered as of a sound
+/// tube: clean, else the first word, which is the good one. What the recipe has no word for is not turned into another.
+///
+/// A tube that is dark by then was seen while it burned; only the press test needs its light.
 fn choice(state: &State, question: &Question, words: &[String]) -> Answer {
-    if let Some(seen) = state.options.looks.get(&question.step) {
-        return match words.contains(seen) {
-            true => Answer::Choice(seen.clone()),
-            false => Answer::CannotSay(format!("what is seen, `{seen}`, is none of {}", words.join(", "))),
-        };
-    }
-    match words.iter().find(|word| *word == "clean").or(words.first()) {
-        Some(word) => Answer::Choice(word.clone()),
-        None => Answer::CannotSay("no word to choose from".to_owned()),
+    let tube = state.world.tube();
+    let found = match question.step.as_str() {
+        "discharge" => discharge(tube),
+        "getter" => getter(tube),
+        "cathode" => cathode(tube),
+        "press_test" => match press_test(tube).filter(|_| state.on_tube().1.lit) {
+            Some(found) => found,
+            None => return Answer::CannotSay("there is no light to watch while the mount is pressed".to_owned()),
+        },
+        _ => match words.iter().find(|word| *word == "clean").or(words.first()) {
+            Some(word) => word.as_str(),
+            None => return Answer::CannotSay("no word to choose from".to_owned()),
+        },
+    };
+    match words.iter().any(|word| word == found) {
+        true => Answer::Choice(found.to_owned()),
+        false => Answer::CannotSay(format!("what is seen, `{found}`, is none of {}", words.join(", "))),
     }
 }
 

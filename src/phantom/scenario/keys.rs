@@ -46,6 +46,10 @@ pub(super) const TUBE: &[Key<TubeTruth>] = &[
     key("dropout_current", Current, (1e-5, 0.1), |t, v| t.dropout_current = v),
     key("start_delay", Time, (0.0, 600.0), |t, v| t.start_delay = v),
     key("line_ripple", Ratio, (0.0, 0.5), |t, v| t.line_ripple = v),
+    key("discharge_noise", Ratio, (0.0, 0.5), |t, v| t.discharge_noise = v),
+    key("tone_level", Ratio, (0.0, 0.5), |t, v| t.tone_level = v),
+    key("tone_frequency", Frequency, (1.0, 1e8), |t, v| t.tone_frequency = v),
+    key("beat_level", Ratio, (0.0, 0.5), |t, v| t.beat_level = v),
 ];
 
 /// Keys of a bench.
@@ -70,4 +74,7 @@ pub(super) const BENCH: &[Key<BenchTruth>] = &[
     key("meter_dark", Power, (-1.0, 1.0), |b, v| b.meter_dark = v),
     key("ballast", Resistance, (0.0, 1e7), |b, v| b.ballast = v),
     key("mains", Frequency, (10.0, 1e3), |b, v| b.mains = v),
+    key("supply_ripple", Ratio, (0.0, 0.5), |b, v| b.supply_ripple = v),
+    key("light_noise", Ratio, (0.0, 0.5), |b, v| b.light_noise = v),
+    key("light_bandwidth", Frequency, (1e3, 1e9), |b, v| b.light_bandwidth = v),
 ];

@@ -13,6 +13,7 @@ use chrono_tz::Tz;
 
 use super::{bench::BenchTruth, tube::TubeTruth, world::World};
 pub use reader::ScenarioFault;
+pub(super) use reader::nearest_word;
 
 /// A simulated bench, or several, and the tubes that come to it.
 #[derive(Debug, Clone, PartialEq)]
@@ -35,6 +36,8 @@ pub struct Scenario {
     pub types: BTreeMap<String, TubeTruth>,
     /// Tubes in file order.
     pub tubes: Vec<ScenarioTube>,
+    /// Reference tubes of the benches, in file order.
+    pub references: Vec<ScenarioTube>,
 }
 
 /// One tube of a scenario.
@@ -56,10 +59,8 @@ pub struct ScenarioTube {
     pub bench: String,
     /// When its run is opened.
     pub started_at: DateTime<FixedOffset>,
-    /// What is true of it.
+    /// What is true of it, its faults included.
     pub truth: TubeTruth,
-    /// What the technician sees: name of the look step, word.
-    pub looks: BTreeMap<String, String>,
 }
 
 /// What is wrong in a scenario file, in file order.
@@ -106,7 +107,7 @@ impl Scenario {
 
     /// The tube with a serial.
     pub fn tube(&self, serial: &str) -> Option<&ScenarioTube> {
-        self.tubes.iter().find(|tube| tube.serial == serial)
+        self.tubes.iter().chain(&self.references).find(|tube| tube.serial == serial)
     }
 
     /// A tube on its bench.
@@ -133,6 +134,7 @@ impl Default for Scenario {
             benches: BTreeMap::new(),
             types: BTreeMap::new(),
             tubes: Vec::new(),
+            references: Vec::new(),
         }
     }
 }

@@ -2,7 +2,7 @@
 //! Must not stop at the first fault.
 //! Main function: [`scenario`].
 
-use std::{borrow::Cow, collections::BTreeMap};
+use std::borrow::Cow;
 
 use chrono::{DateTime, FixedOffset};
 use toml::{
@@ -13,6 +13,7 @@ use toml::{
 use super::{
     super::{
         bench::BenchTruth,
+        fault::{Fault, FaultError},
         tube::{Incident, TubeTruth},
     },
     Scenario, ScenarioTube,
@@ -24,7 +25,7 @@ use crate::quantity::Dimension;
 type Value<'i> = Spanned<DeValue<'i>>;
 
 const HEAD: &[&str] =
-    &["title", "started_at", "time_zone", "seed", "technician", "time_to_answer", "bench", "type", "tube"];
+    &["title", "started_at", "time_zone", "seed", "technician", "time_to_answer", "bench", "type", "tube", "reference"];
 const TUBE_WORDS: &[&str] = &[
     "serial",
     "type",
@@ -34,7 +35,7 @@ const TUBE_WORDS: &[&str] = &[
     "condition",
     "received",
     "started_at",
-    "looks",
+    "faults",
     "polarization",
     "tries",
     "incident",
@@ -67,6 +68,13 @@ pub(super) fn scenario(text: &str) -> Result<Scenario, Vec<ScenarioFault>> {
         for entry in entries(&mut reader, value) {
             if let Some(tube) = tube(&mut reader, &scenario, entry) {
                 scenario.tubes.push(tube);
+            }
+        }
+    }
+    if let Some(value) = table.get("reference") {
+        for entry in entries(&mut reader, value) {
+            if let Some(tube) = tube(&mut reader, &scenario, entry) {
+                scenario.references.push(tube);
             }
         }
     }
@@ -114,7 +122,7 @@ fn head(reader: &mut Reader<'_>, scenario: &mut Scenario, word: &Spanned<Cow<'_,
                 scenario.types.insert(name.get_ref().to_string(), truth);
             }
         }
-        "tube" => {}
+        "tube" | "reference" => {}
         _ => reader.unknown(word, HEAD.iter().copied()),
     }
 }
@@ -186,10 +194,13 @@ fn tube(reader: &mut Reader<'_>, scenario: &Scenario, entry: &Value<'_>) -> Opti
         bench: bench.map_or("", |(text, _)| text).to_owned(),
         started_at: scenario.started_at,
         truth: truth.unwrap_or_default(),
-        looks: BTreeMap::new(),
     };
     for (word, value) in table {
         tube_key(reader, &mut tube, word, value);
+    }
+    // Last: a fault changes what all the keys together say.
+    if let Some(value) = table.get("faults") {
+        faults(reader, value).iter().for_each(|fault| fault.befall(&mut tube.truth));
     }
     Some(tube)
 }
@@ -197,7 +208,7 @@ fn tube(reader: &mut Reader<'_>, scenario: &Scenario, entry: &Value<'_>) -> Opti
 fn tube_key(reader: &mut Reader<'_>, tube: &mut ScenarioTube, word: &Spanned<Cow<'_, str>>, value: &Value<'_>) {
     let key = word.get_ref().as_ref();
     match key {
-        "serial" | "type" | "bench" => {}
+        "serial" | "type" | "bench" | "faults" => {}
         "supplier" => tube.supplier = reader.text(key, value).unwrap_or_default().to_owned(),
         "lot" => tube.lot = reader.text(key, value).unwrap_or_default().to_owned(),
         "condition" => tube.condition = reader.text(key, value).unwrap_or_default().to_owned(),
@@ -206,12 +217,6 @@ fn tube_key(reader: &mut Reader<'_>, tube: &mut ScenarioTube, word: &Spanned<Cow
             _ => reader.fault(value.span(), "`received` must be a date such as 2026-03-02, without quotes"),
         },
         "started_at" => tube.started_at = instant(reader, key, value).unwrap_or(tube.started_at),
-        "looks" => {
-            for (step, value) in reader.table(value).into_iter().flatten() {
-                let seen = reader.text(step.get_ref(), value).unwrap_or_default().to_owned();
-                tube.looks.insert(step.get_ref().to_string(), seen);
-            }
-        }
         "incident" => {
             for entry in entries(reader, value) {
                 tube.truth.incidents.extend(incident(reader, entry));
@@ -223,6 +228,26 @@ fn tube_key(reader: &mut Reader<'_>, tube: &mut ScenarioTube, word: &Spanned<Cow
             }
         }
     }
+}
+
+/// A list of faults, each a text such as `helium-lost = 45 %`.
+fn faults(reader: &mut Reader<'_>, value: &Value<'_>) -> Vec<Fault> {
+    let DeValue::Array(list) = value.get_ref() else {
+        reader.fault(value.span(), "`faults` must be a list such as [\"helium-lost = 45 %\"]");
+        return Vec::new();
+    };
+    let mut found = Vec::new();
+    for entry in list.iter() {
+        match reader.text("faults", entry).map(str::parse) {
+            Some(Ok(fault)) => found.push(fault),
+            Some(Err(error)) => {
+                let error: FaultError = error;
+                reader.fault(entry.span(), error.to_string());
+            }
+            None => {}
+        }
+    }
+    found
 }
 
 fn incident(reader: &mut Reader<'_>, entry: &Value<'_>) -> Option<Incident> {

@@ -123,10 +123,15 @@ impl<'t> Reader<'t> {
     /// Notes an unknown key with the nearest known one.
     pub fn unknown<'k>(&mut self, word: &Spanned<std::borrow::Cow<'_, str>>, known: impl Iterator<Item = &'k str>) {
         let given = word.get_ref().as_ref();
-        let nearest = known.min_by_key(|known| distance(given, known));
+        let nearest = nearest_word(given, known);
         let hint = nearest.map(|nearest| format!("; the nearest known key is `{nearest}`")).unwrap_or_default();
         self.fault(word.span(), format!("`{given}` is not a key of this table{hint}"));
     }
+}
+
+/// The known word nearest to a given one.
+pub(in crate::phantom) fn nearest_word<'k>(given: &str, known: impl Iterator<Item = &'k str>) -> Option<&'k str> {
+    known.min_by_key(|known| distance(given, known))
 }
 
 /// Letters to insert, delete or change from one word to another (Levenshtein).

@@ -5,6 +5,7 @@
 mod comb;
 mod dwell;
 mod look;
+mod noise;
 mod polarizer;
 mod power;
 mod strike;
@@ -19,6 +20,7 @@ use crate::{
     recipe::StepKind,
     record::{
         event::Captured,
+        light::LightCaptured,
         question::{Answer, Expects},
     },
     station::ReadingKind,
@@ -70,12 +72,24 @@ pub(crate) struct Room<'a> {
 pub(crate) enum Wish {
     /// A capture.
     Capture { not_before_ms: u64, samples: usize, keep: bool, trace: bool },
+    /// A fast trace of the total light.
+    Light(LightWish),
     /// A reading.
     Reading(ReadingKind),
     /// An answer.
     Ask { word: String, text: String, expects: Expects, high_voltage: bool },
     /// It is done.
     Nothing,
+}
+
+/// A light trace as a step wants it; see [`crate::station::LightRequest`].
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(crate) struct LightWish {
+    pub lit: bool,
+    pub sample_rate: f64,
+    pub samples: usize,
+    pub band: (f64, f64),
+    pub overlap: (f64, f64),
 }
 
 impl Wish {
@@ -96,6 +110,8 @@ impl Wish {
 pub(crate) enum Given<'a> {
     /// The capture it wanted.
     Capture(&'a Captured),
+    /// The light trace it wanted.
+    Light(&'a LightCaptured),
     /// It could not be had or read; `for_good`: there will be none.
     Lost { reason: &'a str, for_good: bool },
     /// The reading it wanted, SI, or why there is none.
@@ -114,6 +130,7 @@ pub(crate) fn step_of(kind: &StepKind) -> Box<dyn Step> {
         StepKind::Polarizer(keys) => polarizer::step_of(keys),
         StepKind::Watch(keys) => Box::new(watch::Watch::new(keys)),
         StepKind::Power(keys) => Box::new(power::Power::new(keys)),
+        StepKind::Noise(keys) => Box::new(noise::Noise::new(keys)),
         StepKind::Supply(keys) => Box::new(supply::Supply::new(keys)),
         StepKind::Look(keys) => Box::new(look::Look::new(keys)),
     }

@@ -1,39 +1,15 @@
-//! The station file: a bench's name, zone and shifts, its instruments and their certificates.
-//! Must not touch an instrument, and must not decide what an overdue certificate means.
-//! Main type: [`StationFile`].
-
-use chrono::{NaiveDate, NaiveTime};
-use chrono_tz::{TZ_VARIANTS, Tz};
+//! The instruments of a station file: where their readings come from, how well they are known, their certificates.
+//! Must not touch an instrument.
+//! Main types: [`Interferometer`], [`PowerMeter`], [`Supply`], [`Polarizer`].
 
 use crate::{
     limits::{
-        Fault, nearest,
-        reading::{Item, Table, read, sha256_hex},
+        nearest,
+        reading::{Item, Table},
     },
     quantity::Dimension,
     uncertainty::Certificate,
 };
-
-/// A station file. An instrument that the station lacks is none.
-#[derive(Debug, Clone, PartialEq)]
-pub struct StationFile {
-    /// Name of the bench.
-    pub station: String,
-    /// Its time zone.
-    pub time_zone: Tz,
-    /// Starts of the shifts.
-    pub shifts: Vec<NaiveTime>,
-    /// Scanning interferometer.
-    pub interferometer: Option<Interferometer>,
-    /// Power meter.
-    pub power_meter: Option<PowerMeter>,
-    /// Supply of the tube.
-    pub supply: Option<Supply>,
-    /// Polarizer ahead of the power meter.
-    pub polarizer: Option<Polarizer>,
-    /// SHA-256 of the text, hexadecimal.
-    pub sha256: String,
-}
 
 /// Where an instrument's readings come from.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -102,99 +78,22 @@ pub struct Polarizer {
     pub u_angle: f64,
 }
 
-const TOP: &[&str] = &["station", "time_zone", "shifts", "interferometer", "power_meter", "supply", "polarizer"];
-const INTERFEROMETER: &[&str] = &["source", "fsr", "fsr_u", "columns", "certificate"];
-const POWER_METER: &[&str] = &["source", "factor", "u", "certificate"];
-const SUPPLY: &[&str] = &["source", "ballast", "ballast_distance", "u", "certificate"];
-const POLARIZER: &[&str] = &["source", "extinction", "u_angle"];
+/// Fast photodiode on the output beam.
+#[derive(Debug, Clone, PartialEq)]
+pub struct LightDetector {
+    /// Source of traces.
+    pub source: Source,
+    /// Where its response has fallen by 3 dB, with that of the digitizer, Hz.
+    pub bandwidth: f64,
+}
+
+pub(super) const LIGHT_DETECTOR: &[&str] = &["source", "bandwidth"];
+pub(super) const INTERFEROMETER: &[&str] = &["source", "fsr", "fsr_u", "columns", "certificate"];
+pub(super) const POWER_METER: &[&str] = &["source", "factor", "u", "certificate"];
+pub(super) const SUPPLY: &[&str] = &["source", "ballast", "ballast_distance", "u", "certificate"];
+pub(super) const POLARIZER: &[&str] = &["source", "extinction", "u_angle"];
 /// A bench whose scale is known worse than this decides nothing.
 const WORST_RELATIVE_U: f64 = 0.2;
-
-impl StationFile {
-    /// Reads a station file.
-    ///
-    /// * `name`: name of the file, for the faults.
-    ///
-    /// Errors: every fault, in the order of the file.
-    pub fn parse(name: &str, text: &str) -> Result<Self, Vec<Fault>> {
-        read(name, text, TOP, |root| {
-            let station = root.need("station").and_then(|item| item.text());
-            let time_zone = root.need("time_zone").and_then(|item| zone(&item));
-            let shifts = root.get("shifts").map_or(Some(Vec::new()), |item| shifts(&item));
-            let interferometer = part(root, "interferometer", INTERFEROMETER, interferometer);
-            let power_meter = part(root, "power_meter", POWER_METER, power_meter);
-            let supply = part(root, "supply", SUPPLY, supply);
-            let polarizer = part(root, "polarizer", POLARIZER, polarizer);
-            Some(Self {
-                station: station?.to_owned(),
-                time_zone: time_zone?,
-                shifts: shifts?,
-                interferometer: interferometer?,
-                power_meter: power_meter?,
-                supply: supply?,
-                polarizer: polarizer?,
-                sha256: sha256_hex(text),
-            })
-        })
-    }
-
-    /// Every instrument that stands on a certificate, in the order of the file.
-    pub fn certificates(&self) -> Vec<(&'static str, &Certificate)> {
-        let interferometer = self.interferometer.as_ref().and_then(|i| i.certificate.as_ref());
-        let power_meter = self.power_meter.as_ref().and_then(|p| p.certificate.as_ref());
-        let supply = self.supply.as_ref().and_then(|s| s.certificate.as_ref());
-        [("interferometer", interferometer), ("power meter", power_meter), ("supply", supply)]
-            .into_iter()
-            .filter_map(|(role, certificate)| Some((role, certificate?)))
-            .collect()
-    }
-
-    /// One sentence for each certificate that no longer holds on a day.
-    pub fn overdue_on(&self, day: NaiveDate) -> Vec<String> {
-        self.certificates()
-            .into_iter()
-            .filter(|(_, certificate)| certificate.overdue_on(day))
-            .map(|(role, certificate)| {
-                format!("The certificate {} of the {role} was due {}.", certificate.number, certificate.due)
-            })
-            .collect()
-    }
-}
-
-/// An instrument's table: `Some(None)` where the station lacks it, `None` after a fault.
-fn part<'a, T>(
-    root: &Table<'a>,
-    key: &str,
-    known: &[&'a str],
-    reader: impl FnOnce(&Table<'a>) -> Option<T>,
-) -> Option<Option<T>> {
-    match root.get(key) {
-        None => Some(None),
-        Some(item) => Some(Some(reader(&item.table(&format!("[{key}]"), known)?)?)),
-    }
-}
-
-fn zone(item: &Item<'_>) -> Option<Tz> {
-    let name = item.text()?;
-    let zone = name.parse().ok();
-    if zone.is_none() {
-        let message = format!("unknown time zone `{name}`; expected an IANA name such as Europe/Lisbon");
-        item.fault(message, nearest(name, TZ_VARIANTS.iter().map(|zone| zone.name())));
-    }
-    zone
-}
-
-fn shifts(item: &Item<'_>) -> Option<Vec<NaiveTime>> {
-    let read = |item: &Item<'_>| {
-        let text = item.text()?;
-        let time = NaiveTime::parse_from_str(text, "%H:%M").ok();
-        if time.is_none() {
-            item.fault(format!("`{text}` is no time of day; expected hours and minutes such as \"06:00\""), None);
-        }
-        time
-    };
-    item.list()?.iter().map(read).collect::<Vec<_>>().into_iter().collect()
-}
 
 fn source(table: &Table<'_>, allowed: &[&str]) -> Option<Source> {
     let item = table.need("source")?;
@@ -220,7 +119,7 @@ fn relative_u(table: &Table<'_>, key: &str) -> Option<f64> {
     item.quantity_within(Dimension::Ratio, (0.0, WORST_RELATIVE_U), "a share from 0 % to 20 %, with its sign: `0.3 %`")
 }
 
-fn interferometer(table: &Table<'_>) -> Option<Interferometer> {
+pub(super) fn interferometer(table: &Table<'_>) -> Option<Interferometer> {
     let source = source(table, &["simulated", "folder"]);
     let fsr = table.need("fsr").and_then(|item| item.positive(Dimension::Frequency));
     let fsr_u = relative_u(table, "fsr_u");
@@ -251,7 +150,7 @@ fn columns(item: &Item<'_>) -> Option<String> {
     Some(text.to_owned())
 }
 
-fn power_meter(table: &Table<'_>) -> Option<PowerMeter> {
+pub(super) fn power_meter(table: &Table<'_>) -> Option<PowerMeter> {
     let source = source(table, &["simulated", "folder", "typed"]);
     let factor = table.get("factor").map_or(Some(1.0), |item| item.positive(Dimension::Ratio));
     let u = relative_u(table, "u");
@@ -259,7 +158,7 @@ fn power_meter(table: &Table<'_>) -> Option<PowerMeter> {
     Some(PowerMeter { source: source?, factor: factor?, u: u?, certificate: certificate? })
 }
 
-fn supply(table: &Table<'_>) -> Option<Supply> {
+pub(super) fn supply(table: &Table<'_>) -> Option<Supply> {
     let source = source(table, &["simulated", "folder", "typed"]);
     let ballast = table.need("ballast").and_then(|item| item.positive(Dimension::Resistance));
     let ballast_distance = table.need("ballast_distance").and_then(|item| item.positive(Dimension::Length));
@@ -274,7 +173,7 @@ fn supply(table: &Table<'_>) -> Option<Supply> {
     })
 }
 
-fn polarizer(table: &Table<'_>) -> Option<Polarizer> {
+pub(super) fn polarizer(table: &Table<'_>) -> Option<Polarizer> {
     let source = source(table, &["simulated", "folder", "typed"]);
     let extinction = table.need("extinction");
     let extinction =
@@ -283,6 +182,12 @@ fn polarizer(table: &Table<'_>) -> Option<Polarizer> {
         item.quantity_within(Dimension::Angle, (0.0, std::f64::consts::FRAC_PI_4), "an angle from 0° to 45°")
     });
     Some(Polarizer { source: source?, extinction: extinction?, u_angle: u_angle? })
+}
+
+pub(super) fn light_detector(table: &Table<'_>) -> Option<LightDetector> {
+    let source = source(table, &["simulated", "folder"]);
+    let bandwidth = table.need("bandwidth").and_then(|item| item.positive(Dimension::Frequency));
+    Some(LightDetector { source: source?, bandwidth: bandwidth? })
 }
 
 /// `Some(None)` where there is none. Only an interferometer's says in which medium it was calibrated.
