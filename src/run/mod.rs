@@ -160,7 +160,7 @@ impl Run {
             }
             Wish::Reading(what) => Want::Reading(ReadingRequest { step, what, not_before_ms: 0 }),
             Wish::Ask { word, text, expects, high_voltage } => {
-                let caution = self.steps.get(self.current).map_or("", |step| step.caution()).to_owned();
+                let caution = caution::of_question(&word, &expects, high_voltage).to_owned();
                 Want::Answer(Question { step, word, text, caution, expects, high_voltage })
             }
             // Only a recipe whose every step wants nothing, before its first event.

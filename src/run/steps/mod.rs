@@ -37,10 +37,6 @@ pub(crate) trait Step: Send {
     fn wants(&self) -> Wish {
         Wish::Nothing
     }
-    /// What endangers whoever does what it asks now, and what to do against that; empty where nothing does.
-    fn caution(&self) -> &'static str {
-        ""
-    }
     /// Takes what it wanted: only ever what [`Step::wants`] named last.
     fn take(&mut self, _given: Given<'_>, _room: &mut Room<'_>) {}
     /// Its rows so far.

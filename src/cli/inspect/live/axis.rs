@@ -60,7 +60,7 @@ mod tests {
     fn figures_stand_at_their_place() {
         assert_eq!(figures(16.0, "GHz", 40, 12), "0           5           10        15 GHz");
         assert_eq!(figures(f64::NAN, "GHz", 40, 12), "");
-        assert_eq!(figures(3.0, "min", 6, 10), " 0 min");
+        assert_eq!(figures(3.0, "min", 6, 10), "0 min");
         assert_eq!(figures(21.0, "min", 79, 14).trim_end().rsplit_once("  ").map(|(_, last)| last), Some("20 min"));
     }
 }

@@ -35,7 +35,8 @@ pub(in crate::cli::inspect) fn row_lines(row: &Row, look: &Look) -> Vec<Line> {
     let line = margin.and(name, row.label.clone()).to_column(MARGIN + name_width).and(Role::Plain, " ");
     let text = value_text(row);
     let mut lines = if text.absent.is_empty() {
-        let parts = [text.spread, text.unit].into_iter().filter(|part| !part.is_empty());
+        let spread = text.spread.replace('±', look.sign("±", "+-"));
+        let parts = [spread, text.unit].into_iter().filter(|part| !part.is_empty());
         let spread: String = parts.map(|part| format!(" {part}")).collect();
         let line =
             line.and(Role::Strong, text.value).and(Role::Plain, spread).to_column(MARGIN + name_width + value_width);

@@ -144,35 +144,100 @@ fn all_rows(look: &Look) -> String {
 
 #[test]
 fn rows_at_80_columns() {
-    insta::assert_snapshot!(all_rows(&look(80, 24)), @"");
+    insta::assert_snapshot!(all_rows(&look(80, 24)), @r"
+      Mode spacing             998.7 ± 3.0 MHz     ··[──────━●━──────]·· pass
+    ▽ Power                    0.505 ± 0.015 mW    ───━━━[━●━━━━─── pass, not prime
+        prime lost in doubt; alignment, 0.30 mW, holds
+    × Power                    0.220 ± 0.010 mW    ··━━×━············[── fail, dim
+    × Axis swaps               2 (2 to 3)          [ 0] ┆ 1┆ ┆×2┆ ┆○3┆   fail, dim
+    ▒ Power ripple             no value: too few power readings over the whole
+                               cycles - hold
+      Warm-up time constant    6.300 ± 0.002 min
+    ");
 }
 
 #[test]
 fn rows_at_40_columns() {
-    insta::assert_snapshot!(all_rows(&look(40, 24)), @"");
+    insta::assert_snapshot!(all_rows(&look(40, 24)), @r"
+      Mode spacing: 998.7 ± 3.0 MHz - pass
+    ▽ Power: 0.505 ± 0.015 mW - prime lost
+      in doubt; alignment, 0.30 mW, holds -
+      pass, not prime
+    × Power: 0.220 ± 0.010 mW - outside -
+      fail, dim
+    × Axis swaps: 2 (2 to 3) - outside -
+      fail, dim
+    ▒ Power ripple: no value (too few power
+      readings over the whole cycles) -
+      hold
+      Warm-up time constant: 6.300 ± 0.002
+      min
+    ");
 }
 
 #[test]
 fn rows_at_200_columns_in_ascii() {
-    insta::assert_snapshot!(all_rows(&Look { charset: Charset::Ascii, ..look(200, 24) }), @"");
+    insta::assert_snapshot!(all_rows(&Look { charset: Charset::Ascii, ..look(200, 24) }), @r"
+      Mode spacing                  998.7 +- 3.0 MHz               979.3 ..[-------==o=--------].. 1019.3      pass
+    v Power                         0.505 +- 0.015 mW          0.5 . 0.3 -----=====[=o========----             pass, not prime
+        prime lost in doubt; alignment, 0.30 mW, holds
+    x Power                         0.220 +- 0.010 mW                0.3 ..==x===..............[--             fail, dim
+    x Axis swaps                    2 (2 to 3)             [ 0] : 1: :x2: :?3:                                fail, dim
+    # Power ripple                  no value: too few power readings over the whole cycles - hold
+      Warm-up time constant         6.300 +- 0.002 min
+    ");
 }
 
 #[test]
 fn block_at_80_columns() {
     let look = look(80, 24);
-    insta::assert_snapshot!(text(&block(&state(), &look), &look), @"");
+    insta::assert_snapshot!(text(&block(&state(), &look), &look), @r"
+    ── warm, step 2 of 11 ─────────────────────────────────────────────────────────
+    sweep 1408  2 modes, spacing 999 MHz  ◇ 1 off the comb
+                 █                                         █
+                ▂█                                         █
+          █     ██                                  █      █
+         ▂█▃   ▁██▂▄▂                              ▁█▅▁  ▁▆█▃▄▄
+          a      b ◇                                a      b ◇
+    ───────────────────────────────────────────────────────────────────────────────
+    0            2            4            6            8           10 GHz
+    walk  40.7 spacings since first light, expected to end at ┊ 19.6 min
+                              ▗▄▄▖▖ ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘┊▘
+            ▄▄▄▄▄▄▄▟▀▀▀▀▀▀▀▀▀▀▀                                                ┊
+    ▄▄▛▀▀▀▀▀▘                                                                  ┊
+    ───────────────────────────────────────────────────────────────────────────────
+    0                  5                 10                 15               20 min
+    1408 captures in 7 min 38 s; about 14 min left (14 s at this pace)
+    ");
 }
 
 #[test]
 fn block_at_40_columns_is_words() {
     let look = look(40, 24);
-    insta::assert_snapshot!(text(&block(&state(), &look), &look), @"");
+    insta::assert_snapshot!(text(&block(&state(), &look), &look), @r"
+    warm, step 2 of 11
+    About 14 min left (14 s at this pace)
+    ");
 }
 
 #[test]
 fn block_at_200_columns_has_sweep_and_walk_side_by_side() {
     let look = look(200, 20);
-    insta::assert_snapshot!(text(&block(&state(), &look), &look), @"");
+    insta::assert_snapshot!(text(&block(&state(), &look), &look), @r"
+    ── warm, step 2 of 11 ─────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────
+    sweep 1408  2 modes, spacing 999 MHz  ◇ 1 off the comb                                              walk  40.7 spacings since first light, expected to end at ┊ 19.6 min
+                   ██                                                  █                                                                                          ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▌ ▘ ▘ ▘ ▘ ▘ ▘ ▘┊▘
+                   ██                                                  █                                                                        ▖ ▖ ▖ ▖ ▘ ▘ ▘ ▘ ▘ ▘                                ┊
+                   ██                                                  █                                                           ▄▄▄▄▄▞▀▀▀▘ ▘                                                    ┊
+           ▄▄      ██                                          ▄       █                                                   ▄▄▄▄▀▀▀▀▘                                                               ┊
+           ██      ██                                          █      ▁█                                            ▗▄▄▟▀▀▀▘                                                                       ┊
+           ██      ██                                          █      ██                                       ▄▄▟▀▀▀                                                                              ┊
+         ▁▂██▂▁▁▁▁▃██▃▄▆▁▁                                  ▁▁██▂▁▁▁▁▂██▅▂▆▁▁                              ▄▄▀▀▘                                                                                   ┊
+            a       b  ◇                                       a       b  ◇                             ▄▀▀                                                                                        ┊
+    ────────────────────────────────────────────────────────────────────────────────────────────────    ────────────────────────────────────────────────────────────────────────────────────────────────
+    0               2               4               6               8              10 GHz               0                      5                     10                     15                    20 min
+    1408 captures in 7 min 38 s; about 14 min left (14 s at this pace)
+    ");
 }
 
 #[test]
@@ -223,7 +288,12 @@ fn every_verdict_has_a_shape_of_its_own() {
             shapes.push(lines);
         }
     }
-    insta::assert_snapshot!(shapes[2], @"");
+    insta::assert_snapshot!(shapes[2], @r"
+    ┌────────────────────────────────────────────────────────╲
+    │ DEMO-0001: a sentence.                                  │
+    │ A reason that is too long for one line of this box.     │
+    └─────────────────────────────────────────────────────────┘
+    ");
 }
 
 /// Nothing that is drawn is wider than the terminal, however odd its size.
