@@ -56,7 +56,7 @@ pub(super) fn prompt(question: &Question, look: &Look) -> Line {
 pub fn caution_lines(text: &str, look: &Look) -> Vec<Line> {
     let zigzag = |sign: &str| sign.repeat(width(look) / 2);
     let mut lines = vec![Line::of(Role::Alert, zigzag(look.sign("╱╲", "/\\")))];
-    lines.extend(wrapped(&Line::of(Role::Alert, look.sign("▲ ", "! ")), text, Role::Alert, look));
+    lines.extend(wrapped(&Line::of(Role::Alert, look.sign("▲ ", "! ")), text, Role::Strong, look));
     lines.push(Line::of(Role::Alert, zigzag(look.sign("╲╱", "\\/"))));
     lines
 }

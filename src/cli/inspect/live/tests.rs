@@ -178,10 +178,10 @@ fn rows_at_40_columns() {
 #[test]
 fn rows_at_200_columns_in_ascii() {
     insta::assert_snapshot!(all_rows(&Look { charset: Charset::Ascii, ..look(200, 24) }), @r"
-      Mode spacing                  998.7 +- 3.0 MHz               979.3 ..[-------==o=--------].. 1019.3      pass
-    v Power                         0.505 +- 0.015 mW          0.5 . 0.3 -----=====[=o========----             pass, not prime
+      Mode spacing                  998.7 +- 3.0 MHz              979.3 ..[-------==o=--------].. 1019.3      pass
+    v Power                         0.505 +- 0.015 mW         0.5 . 0.3 -----=====[=o========----             pass, not prime
         prime lost in doubt; alignment, 0.30 mW, holds
-    x Power                         0.220 +- 0.010 mW                0.3 ..==x===..............[--             fail, dim
+    x Power                         0.220 +- 0.010 mW               0.3 ..==x===..............[--             fail, dim
     x Axis swaps                    2 (2 to 3)             [ 0] : 1: :x2: :?3:                                fail, dim
     # Power ripple                  no value: too few power readings over the whole cycles - hold
       Warm-up time constant         6.300 +- 0.002 min
