@@ -52,7 +52,7 @@ pub(super) struct Show {
 /// How it is shown.
 enum Face {
     Plain(plain::Plain),
-    Live(Live),
+    Live(Box<Live>),
 }
 
 /// How fast bench time has passed, questions left out.
@@ -92,7 +92,7 @@ impl Show {
             pace,
             asks,
             is_shared: io::stdout().is_terminal(),
-            face: if screen.is_live() { Face::Live(Live::new(screen)) } else { Face::Plain(plain::Plain::default()) },
+            face: if screen.is_live() { Face::Live(Box::new(Live::new(screen))) } else { Face::Plain(plain::Plain::default()) },
             shown: HashSet::new(),
             done_steps: 0,
             clock: Pace::default(),
