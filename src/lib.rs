@@ -6,6 +6,7 @@ pub mod numerics;
 pub mod quantity;
 // L1
 pub mod constants;
+pub mod phrase;
 pub mod uncertainty;
 // L2
 pub mod behaviour;

@@ -35,6 +35,7 @@ const RULES: &[(&str, Rule)] = &[
     ("serde", rules::serde),
     ("names", rules::names),
     ("kinds", rules::kinds),
+    ("sentences", rules::sentences),
 ];
 
 /// Breaches of one rule over some files, each as a line of text.
@@ -101,4 +102,9 @@ fn no_module_is_a_drawer_for_everything() {
 #[test]
 fn a_run_names_step_kinds_in_one_table_only() {
     assert_rule("kinds");
+}
+
+#[test]
+fn every_sentence_of_a_sheet_stands_in_the_table() {
+    assert_rule("sentences");
 }

@@ -35,6 +35,7 @@ fn the_benches_of_the_demo_have_no_fault_and_one_is_overdue() {
     let bench = |name: &str| StationFile::parse(name, &text(&format!("fixtures/demo/{name}.toml"))).unwrap();
     assert!(bench("bench-1").overdue_on(day).is_empty());
     let overdue = bench("bench-2").overdue_on(day);
+    let overdue: Vec<String> = overdue.iter().map(|sentence| sentence.english()).collect();
     assert_eq!(overdue, ["The certificate SIM-0012 of the power meter was due 2026-03-01."]);
     assert!(bench("bench-2").overdue_on(day.pred_opt().unwrap()).is_empty(), "it holds on its last day");
 }
@@ -106,11 +107,11 @@ choices = ["pink", "pink"]
     recipe.toml:3:19: `nominal_spacing`: `mm` is not a unit of a frequency; expected one of Hz, kHz, MHz, GHz, THz
     recipe.toml:5:1: unknown key `retest` in the file; expected one of revision, nominal_spacing, wavelength, mode_floor, retests, step
       nearest known word: retests
-    recipe.toml:8:6: unknown step `dwel`; expected one of strike, dwell, sweep, comb, polarizer, watch, power, supply, look
+    recipe.toml:8:6: unknown step `dwel`; expected one of strike, dwell, sweep, comb, polarizer, watch, power, noise, supply, look
       nearest known word: dwell
     recipe.toml:12:8: `from` names `warn`, no earlier step; expected an earlier dwell or sweep step
       nearest known word: warm
-    recipe.toml:15:6: `noise` is a step of a later version; expected one of strike, dwell, sweep, comb, polarizer, watch, power, supply, look
+    recipe.toml:15:6: `noise` is a step of a later version; expected one of strike, dwell, sweep, comb, polarizer, watch, power, noise, supply, look
     recipe.toml:17:8: two steps are named `comb`; expected each name once
     recipe.toml:19:12: `captures` is the text "five"; expected a whole number from 1 to 100000
     recipe.toml:23:8: `from` names `comb`, a comb step; expected an earlier dwell step
@@ -161,7 +162,7 @@ done = false
     station.toml:14:15: the certificate has no `due`; expected one
     station.toml:14:26: `number` is the number 5; expected text in quotes
     station.toml:14:36: `date` is the text "2026-01-12"; expected a day such as 2026-01-12, without quotes
-    station.toml:15:2: unknown key `spply` in the file; expected one of station, time_zone, shifts, interferometer, power_meter, supply, polarizer, reference
+    station.toml:15:2: unknown key `spply` in the file; expected one of station, language, time_zone, shifts, interferometer, power_meter, supply, polarizer, light_detector, reference
       nearest known word: supply
     answers.toml:2:1: unknown key `technitian` in the file; expected one of technician, tube_type, time_to_answer, steps
       nearest known word: technician

@@ -146,6 +146,28 @@ fn files_named_as_channels_are_one_capture() {
 }
 
 #[test]
+fn one_channel_given_alone_finds_the_other_beside_it_or_says_that_it_is_missing() {
+    let place = made(1, &[]);
+    let samples = samples(&place);
+    let plain = without_crossed(&place, &samples);
+    place.write("both/tube7CH1.csv", table(&samples, "time_s,photodiode_V\n", &[0, 2]));
+    place.write("both/tube7CH2.csv", table(&samples, "time_s,ramp_V\n", &[0, 1]));
+    place.write("both/tube8CH2.csv", table(&samples, "time_s,ramp_V\n", &[0, 1]));
+    for given in ["both/tube7CH1.csv", "both/tube7CH2.csv"] {
+        let found = only(&measure(&place, &[given]));
+        same_spacing(&found, &plain);
+        assert!(found.capture == given && found.warns("which lies beside it"), "{:?}", found.warnings);
+    }
+    // What is said of one half depends on what it gives alone; that the other is missing is said whatever it gives.
+    place.write("half/tube7CH1.csv", table(&samples, "time_s,photodiode_V\n", &[0, 2]));
+    let found = results(&measure(&place, &["half/tube7CH1.csv"])).remove(0);
+    assert!(found.warns("no other lies beside it"), "{found:?}");
+    // A file that holds every channel lacks nothing, whatever its name.
+    place.write("whole/tube7CH1.csv", table(&samples, "time_s,ramp_V,photodiode_V\n", &[0, 1, 2]));
+    assert!(!only(&measure(&place, &["whole/tube7CH1.csv"])).warns("beside it"));
+}
+
+#[test]
 fn one_refusal_does_not_stop_the_others_and_the_highest_status_counts() {
     let place = made(2, &[]);
     let flat: String = (0..2000).fold("time_s,ramp_V,photodiode_V\n".to_owned(), |text, i| {

@@ -37,7 +37,6 @@ struct Row {
 struct Wanted {
     value: String,
     tolerance: String,
-    #[allow(dead_code, reason = "for readers of the table; it must be there")]
     reason: String,
 }
 
@@ -45,7 +44,6 @@ struct Wanted {
 #[serde(deny_unknown_fields)]
 struct Refused {
     says: Vec<String>,
-    #[allow(dead_code, reason = "for readers of the table; it must be there")]
     why: String,
 }
 
@@ -141,6 +139,44 @@ fn real_every_capture_is_measured_or_refused_as_its_row_says() {
     let faults: Vec<String> = rows.iter().filter_map(|row| fault_of(row, &folder).err()).collect();
     println!("real captures: {} rows", rows.len());
     assert!(faults.is_empty(), "{} of {} rows:\n{}", faults.len(), rows.len(), faults.join("\n"));
+}
+
+/// One line of the study: what is known, what is found, how far apart they are, and what is said of it.
+fn study_line(row: &Row, folder: &Path) -> String {
+    let ran = measure(row, folder);
+    let found = contract::check(ran.out.trim_end(), hertz(&row.fsr)).unwrap();
+    let mut given = row.fsr.clone();
+    given.extend(row.fsr_u.iter().map(|u| format!(" ± {u}")));
+    given.extend(row.nominal_spacing.iter().map(|nominal| format!(", nominal {nominal}")));
+    let (known, why) = match (&row.measured, &row.refused) {
+        (Some(wanted), _) => (wanted.value.clone(), wanted.reason.clone()),
+        (None, Some(refused)) => ("no comb".to_owned(), refused.why.clone()),
+        (None, None) => ("".to_owned(), "".to_owned()),
+    };
+    let (ours, off) = match (found.mode_spacing, &found.refused) {
+        (Some((value, u)), _) => {
+            let off = row.measured.as_ref().map(|wanted| {
+                let truth = hertz(&wanted.value);
+                format!("{:+.2} %, {:+.1} u", 100.0 * (value / truth - 1.0), (value - truth) / u)
+            });
+            let (value, u) = (value / 1e6, u / 1e6);
+            (format!("{value:.2} MHz, u {u:.2} MHz; {} modes", found.modes.len()), off.unwrap_or_default())
+        }
+        (None, why) => (format!("refused: {}", why.as_deref().unwrap_or_default()), String::new()),
+    };
+    let notes: Vec<&str> = found.warnings.iter().map(|w| w.split(';').next().unwrap_or(w)).collect();
+    let names: Vec<&str> = row.files.iter().map(String::as_str).collect();
+    let cells = [names.join("<br>"), given, known, ours, off, why, notes.join("<br>")];
+    format!("| {} |", cells.map(|cell| cell.replace('|', "/")).join(" | "))
+}
+
+#[test]
+#[ignore = "needs the real captures beside the project: ../shared/data; prints the table of reports/studies/captures.md"]
+fn real_study_as_markdown() {
+    let Some(folder) = folder() else { return println!("real captures: absent") };
+    println!("| file | free spectral range given | known | found here | apart | what is known of it | notes |");
+    println!("|---|---|---|---|---|---|---|");
+    table().iter().for_each(|row| println!("{}", study_line(row, &folder)));
 }
 
 /// Captures below a folder, but for those that have a test of their own or are none.

@@ -4,6 +4,7 @@
 use tubewright::{
     limits::{Judging, Limits, conformance_probability, judge},
     measurand::{Shape, find},
+    phrase::Saying,
     record::sheet::{Outcome, Row, RowVerdict, TubeVerdict, Value, Zone},
 };
 
@@ -13,10 +14,10 @@ fn limits(rule: &str, body: &str) -> Limits {
 }
 
 fn row(measurand: &str, value: Value) -> Row {
-    let label =
-        find(measurand).map_or(measurand.trim_start_matches("visual.").replace('_', " "), |m| m.name.to_owned());
+    let look = || Saying::outside(&measurand.trim_start_matches("visual.").replace('_', " "));
+    let label = find(measurand).map_or_else(look, |known| (&known.name).into());
     let (step, measurand) = ("s".to_owned(), measurand.to_owned());
-    Row { step, measurand, label, value, budget: vec![], judged: vec![], deciding: false, note: String::new() }
+    Row { step, measurand, label, value, budget: vec![], judged: vec![], deciding: false, note: Saying::none() }
 }
 
 /// A number with k = 2 and no doubt about its uncertainty.
@@ -96,7 +97,7 @@ fn every_zone_rule_severity_and_grade() {
                             assert_eq!(judged.verdict, if pass { RowVerdict::Pass } else { broken }, "{case}");
                             assert_eq!(judged.rule, *rule, "{case}");
                         }
-                        assert_eq!(rows[0].note.is_empty(), passes == [true, true], "{case}: {}", rows[0].note);
+                        assert_eq!(rows[0].note.is_empty(), passes == [true, true], "{case}: {:?}", rows[0].note);
                         cases += 1;
                     }
                 }
@@ -170,7 +171,7 @@ fn many(getter: &str, swaps: u64, tries: u64, modes: u64, hops: Option<u64>) -> 
     let count = |value| Value::Count { value, low: value, high: value };
     vec![
         row("mode_count_max", count(modes)),
-        row("hop_count", hops.map_or(Value::Absent("the captures are too far apart.".to_owned()), count)),
+        row("hop_count", hops.map_or(Value::Absent(Saying::outside("the captures are too far apart.")), count)),
         row("swap_count", count(swaps)),
         row("start_tries", count(tries)),
         row("visual.getter", Value::Word(getter.to_owned())),
@@ -210,21 +211,21 @@ fn the_order_of_outcomes_and_the_first_reject_code() {
 #[test]
 fn the_bench_comes_first_then_the_dark_tube() {
     let limits = limits("guarded", MANY);
-    let overdue = ["The certificate X of the power meter was due 2026-03-01.".to_owned()];
+    let overdue = [Saying::outside("The certificate X of the power meter was due 2026-03-01.")];
     for dark in [false, true] {
         let mut rows = many("bright", 0, 9, 9, None);
         let judging = Judging { limits: &limits, rows: &mut rows, bench_holds: &overdue, finished: true, dark };
         let verdict = judge(judging);
         assert_eq!(said(&verdict), "hold");
         assert_eq!(
-            verdict.reason,
+            verdict.reason.english(),
             "The certificate X of the power meter was due 2026-03-01. No verdict on the tube is given."
         );
         assert!(rows.iter().flat_map(|row| &row.judged).all(|judged| judged.verdict == RowVerdict::Hold));
     }
     let mut rows = many("bright", 0, 9, 9, None);
     let verdict = judge(Judging { limits: &limits, rows: &mut rows, bench_holds: &[], finished: true, dark: true });
-    assert_eq!((said(&verdict).as_str(), verdict.sentence.as_str()), ("fail dark", "fail, dark."));
+    assert_eq!((said(&verdict).as_str(), verdict.sentence.english().as_str()), ("fail dark", "fail, dark."));
 }
 
 #[test]
@@ -248,7 +249,7 @@ fn what_cannot_be_judged_gives_hold() {
         (Value::AtLeast(700.0), "hold"), // may be above 1000 or below
         (Value::AtLeast(300.0), "hold"),
         (Value::AtLeast(nan), "hold"),
-        (Value::Absent("why".to_owned()), "hold"),
+        (Value::Absent(Saying::outside("why")), "hold"),
         (Value::Word("much".to_owned()), "hold"),
         (number(nan, 1.0), "hold"),
         (number(1e4, nan), "hold"),
@@ -261,7 +262,10 @@ fn what_cannot_be_judged_gives_hold() {
     }
     let verdict = ending(&limits, &mut [row("power", number(1.0, 0.1))]);
     assert_eq!(said(&verdict), "hold", "no row holds the limited measurand");
-    assert_eq!(verdict.reason, "Extinction is limited, but no step filled it. No verdict on the tube is given.");
+    assert_eq!(
+        verdict.reason.english(),
+        "Extinction is limited, but no step filled it. No verdict on the tube is given."
+    );
 
     let body = "[[limit]]\nmeasurand = \"extinction\"\nupper = 500\nseverity = \"major\"\nreject = \"x\"\n";
     let limits = self::limits("guarded", body);
@@ -305,10 +309,10 @@ fn words(power: Value, off_axis: f64, ripple: f64, swaps: u64, mirror: &str) -> 
         row("visual.output_mirror", Value::Word(mirror.to_owned())),
     ];
     let verdict = ending(&limits("guarded", TWIN), &mut rows);
-    let mut text = format!("{}\n{}\n", verdict.sentence, verdict.reason);
+    let mut text = format!("{}\n{}\n", verdict.sentence.english(), verdict.reason.english());
     for row in rows.iter().filter(|row| !row.note.is_empty()) {
         let mark = if row.deciding { "*" } else { " " };
-        text += &format!("{mark} {}: {}\n", row.label, row.note);
+        text += &format!("{mark} {}: {}\n", row.label.english(), row.note.english());
     }
     text
 }
@@ -323,7 +327,7 @@ fn the_sentences_of_a_verdict() {
         words(milliwatt(0.220, 0.015), 0.004, 0.0004, 0, "clean"),
         words(milliwatt(0.305, 0.009), 0.031, 0.0004, 0, "clean"),
         words(milliwatt(0.880, 0.015), 0.004, 0.009, 0, "clean"),
-        words(Value::Absent("the walk did not settle in 60 min".to_owned()), 0.004, 0.009, 0, "clean"),
+        words(Value::Absent(Saying::outside("the walk did not settle in 60 min")), 0.004, 0.009, 0, "clean"),
     ];
     insta::assert_snapshot!(cases.join("\n"), @r#"
     pass, grade prime.

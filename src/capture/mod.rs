@@ -21,7 +21,7 @@ mod write;
 pub use columns::{Columns, Place};
 pub use error::CaptureError;
 pub use head::Head;
-pub use names::{natural_order, pair_names};
+pub use names::{is_channel_name, natural_order, pair_names};
 pub use remark::CaptureRemark;
 pub use timebase::TimeBase;
 pub use write::write_csv;

@@ -53,6 +53,11 @@ pub fn pair_names(names: &[String]) -> Vec<Vec<usize>> {
     groups.into_iter().map(|(_, group)| group).collect()
 }
 
+/// Whether a file's name says that it holds one channel of several: `F0001CH1.CSV`, `C2scan.csv`.
+pub fn is_channel_name(name: &str) -> bool {
+    key(name).is_some()
+}
+
 /// The name with its channel digit starred; `None` if it has none.
 fn key(name: &str) -> Option<String> {
     let base = name.rfind(['/', '\\']).map_or(0, |slash| slash + 1);

@@ -44,7 +44,7 @@ pub fn said(question: &Question, answer: &Answer) -> String {
 }
 
 /// Six significant digits are more than a bound of what is possible has.
-fn shown(value: f64) -> String {
+pub(super) fn shown(value: f64) -> String {
     let rounded: f64 = format!("{value:.5e}").parse().unwrap_or(value);
     format!("{}", rounded + 0.0)
 }

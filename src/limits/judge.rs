@@ -3,6 +3,7 @@
 //! Main function: [`judge`].
 
 use super::{Limit, Limits, Severity, decide::judge_row, words};
+use crate::phrase::{Saying, name, verdict as phrases};
 use crate::record::sheet::{Judged, Outcome, Row, RowVerdict, TubeVerdict};
 
 /// What is judged.
@@ -12,7 +13,7 @@ pub struct Judging<'a> {
     /// The rows; judged in place.
     pub rows: &'a mut [Row],
     /// Why the bench gives no verdicts, as sentences; empty if it is in order.
-    pub bench_holds: &'a [String],
+    pub bench_holds: &'a [Saying],
     /// Every step is done.
     pub finished: bool,
     /// The tube gave no light.
@@ -59,15 +60,14 @@ pub fn judge(judging: Judging<'_>) -> TubeVerdict {
                 judged.reject_code = None;
             }
         } else if let Some(limit) = limit {
-            let words = words::note(row, limit);
-            words::append(&mut row.note, words);
+            row.note = words::appended(&row.note, words::note(row, limit));
         }
     }
     if !finished {
-        return verdict(Outcome::Open, "open.".to_owned(), String::new());
+        return verdict(Outcome::Open, &phrases::OPEN, Saying::none());
     }
     if !bench_holds.is_empty() {
-        return verdict(Outcome::Hold, "hold.".to_owned(), words::bench_hold(bench_holds));
+        return verdict(Outcome::Hold, &phrases::HOLD, words::bench_hold(bench_holds));
     }
     let (ending, deciding) = conclude(limits, rows, dark);
     for index in deciding {
@@ -76,8 +76,12 @@ pub fn judge(judging: Judging<'_>) -> TubeVerdict {
     ending
 }
 
-fn verdict(outcome: Outcome, sentence: String, reason: String) -> TubeVerdict {
-    TubeVerdict { outcome, grade: None, reject_code: None, sentence, reason }
+fn verdict(outcome: Outcome, sentence: impl Into<Saying>, reason: Saying) -> TubeVerdict {
+    TubeVerdict { outcome, grade: None, reject_code: None, sentence: sentence.into(), reason }
+}
+
+fn failed_by(code: &str) -> Saying {
+    phrases::FAIL_CODE.with([name(code)])
 }
 
 /// Outcomes 3 to 5, and the indices of the rows that decide.
@@ -92,8 +96,7 @@ fn conclude(limits: &Limits, rows: &[Row], dark: bool) -> (TubeVerdict, Vec<usiz
         })
         .collect();
     if dark {
-        let reason = "The tube gave no light.".to_owned();
-        let ending = verdict(Outcome::Fail, format!("fail, {DARK}."), reason);
+        let ending = verdict(Outcome::Fail, failed_by(DARK), (&phrases::NO_LIGHT).into());
         return (TubeVerdict { reject_code: Some(DARK.to_owned()), ..ending }, Vec::new());
     }
 
@@ -103,7 +106,7 @@ fn conclude(limits: &Limits, rows: &[Row], dark: bool) -> (TubeVerdict, Vec<usiz
         failed.sort_by_key(|(_, row)| (row.limit.severity, row.index));
         let rows: Vec<&Limited<'_>> = failed.iter().map(|(_, row)| row).collect();
         let code = rows.first().and_then(|row| row.limit.reject.clone());
-        let sentence = code.as_ref().map_or("fail.".to_owned(), |code| format!("fail, {code}."));
+        let sentence = code.as_ref().map_or((&phrases::FAIL).into(), |code| failed_by(code));
         let ending = verdict(Outcome::Fail, sentence, words::fail(&rows));
         return (TubeVerdict { reject_code: code, ..ending }, failed.iter().map(|(at, _)| *at).collect());
     }
@@ -116,14 +119,14 @@ fn conclude(limits: &Limits, rows: &[Row], dark: bool) -> (TubeVerdict, Vec<usiz
     let unfilled: Vec<&Limit> = limits.limits.iter().filter(has_row).collect();
     if !held.is_empty() || !unfilled.is_empty() {
         let rows: Vec<&Limited<'_>> = held.iter().map(|(_, row)| row).collect();
-        let ending = verdict(Outcome::Hold, "hold.".to_owned(), words::hold(&rows, &unfilled));
+        let ending = verdict(Outcome::Hold, &phrases::HOLD, words::hold(&rows, &unfilled));
         return (ending, held.iter().map(|(at, _)| *at).collect());
     }
 
     let best = left[0].to_owned();
     let lost: Vec<&str> = limits.grades.iter().map(String::as_str).take_while(|grade| *grade != best).collect();
     let all: Vec<&Limited<'_>> = limited.iter().map(|(_, row)| row).collect();
-    let ending = verdict(Outcome::Pass, format!("pass, grade {best}."), words::pass(&all, &lost));
+    let ending = verdict(Outcome::Pass, phrases::PASS.with([name(best.as_str())]), words::pass(&all, &lost));
     let deciding = limited.iter().filter(|(_, row)| row.costs_a_grade()).map(|(at, _)| *at).collect();
     (TubeVerdict { grade: Some(best), ..ending }, deciding)
 }

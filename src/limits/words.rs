@@ -5,135 +5,145 @@
 use super::{Limit, Severity, judge::Limited};
 use crate::{
     measurand::{Measurand, find},
+    phrase::{Phrase, Piece, Saying, clause, figure, list, name, opening, said, verdict::*, within},
     record::sheet::{Judged, Row, RowVerdict, Value, Zone},
     uncertainty::joint,
 };
 
-/// Closes every reason for a hold.
-const NO_VERDICT: &str = "No verdict on the tube is given.";
-
-/// Adds words to a note that may hold some already.
-pub fn append(note: &mut String, words: String) {
-    if !words.is_empty() {
-        if !note.is_empty() {
-            note.push_str("; ");
-        }
-        note.push_str(&words);
+/// A note with more words behind it.
+pub fn appended(note: &Saying, words: Saying) -> Saying {
+    match (note.is_empty(), words.is_empty()) {
+        (_, true) => note.clone(),
+        (true, _) => words,
+        _ => Saying::list([note.clone(), words], &SEMICOLON),
     }
 }
 
 /// Why the bench gives hold.
-pub fn bench_hold(reasons: &[String]) -> String {
-    format!("{} {NO_VERDICT}", reasons.join(" "))
+pub fn bench_hold(reasons: &[Saying]) -> Saying {
+    Saying::list(reasons.iter().cloned().chain([(&NO_VERDICT).into()]), &SPACE)
 }
 
 /// Why a tube fails: the first row's reason, and the other codes. Rows come worst first.
-pub fn fail(rows: &[&Limited<'_>]) -> String {
-    let Some((first, others)) = rows.split_first() else { return "No grade is left.".to_owned() };
+pub fn fail(rows: &[&Limited<'_>]) -> Saying {
+    let Some((first, others)) = rows.split_first() else { return (&NO_GRADE_LEFT).into() };
     let judged = first.entries(RowVerdict::Fail).last();
-    let reason = judged.map_or(String::new(), |judged| capital(&why(first.row, judged)) + ".");
+    let reason = judged.map_or_else(Saying::none, |judged| SENTENCE.with([opening(why(first.row, judged))]));
     let mut codes: Vec<&str> = others.iter().filter_map(|row| row.limit.reject.as_deref()).collect();
     codes.dedup();
-    if codes.is_empty() { reason } else { format!("{reason} Also: {}.", codes.join(", ")) }
+    let also = if codes.is_empty() { Saying::none() } else { ALSO.with([names(&codes, &COMMA)]) };
+    Saying::list([reason, also], &SPACE)
+}
+
+/// Names one after the other.
+fn names(names: &[impl AsRef<str>], joint: &'static Phrase) -> Piece {
+    list(names.iter().map(|text| Saying::of(name(text.as_ref()))), joint)
 }
 
 /// Why there is no verdict: the first row's reason, and the names of the others.
-pub fn hold(rows: &[&Limited<'_>], unfilled: &[&Limit]) -> String {
-    let unfilled_name = |limit: &&Limit| find(&limit.measurand).map_or(limit.measurand.clone(), |m| m.name.to_owned());
-    let mut names: Vec<String> = rows.iter().map(|row| lower_case(&row.row.label)).collect();
-    names.extend(unfilled.iter().map(|limit| lower_case(&unfilled_name(limit))));
+pub fn hold(rows: &[&Limited<'_>], unfilled: &[&Limit]) -> Saying {
+    let unfilled_name = |limit: &&Limit| match find(&limit.measurand) {
+        Some(known) => (&known.name).into(),
+        None => Saying::of(name(limit.measurand.as_str())),
+    };
+    let labels = rows.iter().map(|row| row.row.label.clone()).chain(unfilled.iter().map(unfilled_name));
+    let others: Vec<Saying> = labels.skip(1).map(|label| Saying::of(within(label))).collect();
     let first = match (rows.first(), unfilled.first()) {
         (Some(row), _) => hold_reason(row),
-        (None, Some(limit)) => format!("{} is limited, but no step filled it.", capital(&unfilled_name(limit))),
-        (None, None) => String::new(),
+        (None, Some(limit)) => UNFILLED.with([opening(unfilled_name(limit))]),
+        (None, None) => Saying::none(),
     };
-    let also =
-        if names.len() > 1 { format!(" Also without a verdict: {}.", names[1..].join(", ")) } else { String::new() };
-    format!("{first}{also} {NO_VERDICT}")
+    let also = if others.is_empty() { Saying::none() } else { ALSO_HELD.with([list(others, &COMMA)]) };
+    Saying::list([first, also, (&NO_VERDICT).into()], &SPACE)
 }
 
-fn hold_reason(limited: &Limited<'_>) -> String {
+fn hold_reason(limited: &Limited<'_>) -> Saying {
     let row = limited.row;
-    let label = capital(&row.label);
-    let Some(judged) = limited.entries(RowVerdict::Hold).next() else { return String::new() };
+    let label = opening(row.label.clone());
+    let Some(judged) = limited.entries(RowVerdict::Hold).next() else { return Saying::none() };
     match &row.value {
-        Value::Absent(why) if why.trim().is_empty() => format!("{label} has no value."),
-        Value::Absent(why) => format!("{label} has no value: {}.", why.trim().trim_end_matches('.')),
-        Value::AtLeast(_) => format!("{} {}: undecided.", label, undecided(row, judged)),
-        Value::Number { .. } if judged.zone.is_none() => format!("{label} has no finite value."),
+        Value::Absent(why) if why.is_empty() => NO_VALUE.with([label]),
+        Value::Absent(why) => NO_VALUE_WHY.with([label, clause(why.clone())]),
+        Value::AtLeast(_) => UNDECIDED.with([label, shown(row), bound_of(row, judged)]),
+        Value::Number { .. } if judged.zone.is_none() => NO_FINITE_VALUE.with([label]),
         // The supply's ripple reaches the light through the current: the tube is not to blame (practice).
-        Value::Number { .. } if row.measurand == "line_ripple" => {
-            format!("{label} {} points at the supply, not at the tube: repeat on another supply.", shown(row))
-        }
-        Value::Word(_) if judged.wanted.is_empty() => format!("{label} holds a word where a number is due."),
-        _ => format!("{}, a limit that gives hold, not fail.", capital(&why(row, judged))),
+        Value::Number { .. } if row.measurand == "line_ripple" => POINTS_AT_SUPPLY.with([label, shown(row)]),
+        Value::Word(_) if judged.wanted.is_empty() => WORD_FOR_NUMBER.with([label]),
+        _ => LIMIT_HOLDS.with([opening(why(row, judged))]),
     }
 }
 
 /// Why the better grades were lost, and which rows are marked.
-pub fn pass(rows: &[&Limited<'_>], lost: &[&str]) -> String {
+pub fn pass(rows: &[&Limited<'_>], lost: &[&str]) -> Saying {
     let mut in_order: Vec<&&Limited<'_>> = rows.iter().collect();
     in_order.sort_by_key(|row| row.index);
     let mut sentences = Vec::new();
     for grade in lost {
-        let reasons: Vec<String> = in_order.iter().filter_map(|limited| why_lost(limited, grade)).collect();
-        sentences.push(format!("Not {grade}: {}.", reasons.join("; ")));
+        let reasons: Vec<Saying> = in_order.iter().filter_map(|limited| why_lost(limited, grade)).collect();
+        sentences.push(NOT_GRADE.with([name(*grade), list(reasons, &SEMICOLON)]));
     }
     for row in in_order.iter().filter(|row| row.limit.severity == Severity::Minor) {
         if let Some(judged) = row.entries(RowVerdict::Fail).last() {
-            sentences.push(format!("Marked: {} (minor).", why(row.row, judged)));
+            sentences.push(MARKED.with([said(why(row.row, judged))]));
         }
     }
-    sentences.join(" ")
+    if sentences.is_empty() { Saying::none() } else { Saying::list(sentences, &SPACE) }
 }
 
 /// Why a row costs a grade, if it does.
-fn why_lost(limited: &Limited<'_>, grade: &str) -> Option<String> {
+fn why_lost(limited: &Limited<'_>, grade: &str) -> Option<Saying> {
     let judged = limited.entries(RowVerdict::Fail).find(|judged| judged.grade == grade)?;
     (limited.limit.severity != Severity::Minor).then(|| why(limited.row, judged))
 }
 
 /// One line for the row itself; empty where all is well.
-pub fn note(row: &Row, limit: &Limit) -> String {
+pub fn note(row: &Row, limit: &Limit) -> Saying {
     let of = |verdict: RowVerdict| row.judged.iter().filter(move |judged| judged.verdict == verdict);
     if let Some(judged) = of(RowVerdict::Hold).next() {
         return match &row.value {
-            Value::Absent(_) => "limited, without a value: gives hold".to_owned(),
-            Value::AtLeast(_) => format!("{}: undecided, gives hold", undecided(row, judged)),
-            Value::Number { .. } if judged.zone.is_none() => "no finite value: gives hold".to_owned(),
-            Value::Word(_) if judged.wanted.is_empty() => "a word where a number is due: gives hold".to_owned(),
-            _ => format!("outside {}: gives hold, not fail", broken_bound(row, judged)),
+            Value::Absent(_) => (&NOTE_NO_VALUE).into(),
+            Value::AtLeast(_) => NOTE_UNDECIDED.with([shown(row), bound_of(row, judged)]),
+            Value::Number { .. } if judged.zone.is_none() => (&NOTE_NOT_FINITE).into(),
+            Value::Word(_) if judged.wanted.is_empty() => (&NOTE_WORD).into(),
+            _ => NOTE_HOLD.with([broken_bound(row, judged)]),
         };
     }
     let failed: Vec<&Judged> = of(RowVerdict::Fail).collect();
     let Some(last) = failed.last() else { return doubtful_count(row) };
-    let code = limit.reject.as_deref().unwrap_or("fails");
-    let side = place(row, last);
+    let code = limit.reject.as_deref().map_or(said(&NOTE_FAILS), name);
+    let side = said(place(row, last));
     if limit.severity == Severity::Minor {
-        return format!("{code}: {side}; minor, the grade stays");
+        return NOTE_MINOR.with([code, side]);
     }
-    let kept = row.judged.iter().find(|judged| judged.verdict == RowVerdict::Pass);
-    match kept {
-        Some(kept) if limit.severity == Severity::Major => {
-            let names = failed.iter().map(|judged| judged.grade.as_str()).collect::<Vec<_>>().join(", ");
-            let how = if in_doubt(last) { " in doubt".to_owned() } else { format!(": {side}") };
-            let bound = kept.lower.or(kept.upper).map(|bound| format!(", {},", bound_text(row, bound)));
-            format!("{names} lost{how}; {}{} holds", kept.grade, bound.unwrap_or_default())
-        }
-        _ if last.grade.is_empty() => format!("{code}: {side}"),
-        Some(_) => format!("{code}: {side}, the bound of grade {}", last.grade),
-        None => format!("{code}: {side}, the last grade's bound"),
+    match row.judged.iter().find(|judged| judged.verdict == RowVerdict::Pass) {
+        Some(kept) if limit.severity == Severity::Major => lost(row, &failed, last, kept),
+        _ if last.grade.is_empty() => COLON.with([code, side]),
+        Some(_) => BOUND_OF_GRADE.with([code, side, name(last.grade.as_str())]),
+        None => LAST_BOUND.with([code, side]),
+    }
+}
+
+/// "prime lost in doubt; alignment, 0.30 mW, holds".
+fn lost(row: &Row, failed: &[&Judged], last: &Judged, kept: &Judged) -> Saying {
+    let grades = failed.iter().map(|judged| judged.grade.as_str()).collect::<Vec<_>>();
+    let (grades, kept_grade) = (names(&grades, &COMMA), name(kept.grade.as_str()));
+    let bound = kept.lower.or(kept.upper).map(|bound| figure(bound_text(row, bound)));
+    match (in_doubt(last), bound) {
+        (true, Some(bound)) => LOST_IN_DOUBT_BOUND.with([grades, kept_grade, bound]),
+        (true, None) => LOST_IN_DOUBT.with([grades, kept_grade]),
+        (false, Some(bound)) => LOST_BOUND.with([grades, said(place(row, last)), kept_grade, bound]),
+        (false, None) => LOST.with([grades, said(place(row, last)), kept_grade]),
     }
 }
 
 /// A count that its interval would carry over the bound.
-fn doubtful_count(row: &Row) -> String {
-    let Value::Count { value, low, high } = row.value else { return String::new() };
+fn doubtful_count(row: &Row) -> Saying {
+    let Value::Count { value, low, high } = row.value else { return Saying::none() };
     let outside = |n: u64, judged: &Judged| {
         judged.lower.is_some_and(|lower| (n as f64) < lower) || judged.upper.is_some_and(|upper| n as f64 > upper)
     };
     let doubtful = row.judged.iter().any(|judged| outside(low.min(value), judged) || outside(high.max(value), judged));
-    if doubtful { format!("in doubt: may be {low} to {high}") } else { String::new() }
+    if doubtful { COUNT_IN_DOUBT.with([figure(low), figure(high)]) } else { Saying::none() }
 }
 
 /// It fails although it lies inside: for want of a margin.
@@ -142,48 +152,57 @@ fn in_doubt(judged: &Judged) -> bool {
 }
 
 /// "power 0.505 mW is above 0.50 mW, but not by its expanded uncertainty 0.015 mW (rule: guarded)".
-fn why(row: &Row, judged: &Judged) -> String {
-    let label = lower_case(&row.label);
+fn why(row: &Row, judged: &Judged) -> Saying {
+    let label = within(row.label.clone());
     match &row.value {
-        Value::Word(word) => format!("{label} {word}, wanted {}", judged.wanted.join(" or ")),
-        Value::Count { value, .. } => format!("{label}: {value}, {}", place(row, judged)),
+        Value::Word(word) => IS_WORD.with([label, name(word.as_str()), names(&judged.wanted, &OR)]),
+        Value::Count { .. } => IS_COUNTED.with([label, shown(row), said(place(row, judged))]),
         Value::Number { expanded, .. } if in_doubt(judged) => {
-            let (_, side, bound) = nearest_bound(row, judged);
-            let but = if judged.rule == "guarded" {
-                format!("not by its expanded uncertainty {}", expanded_text(row, *expanded))
+            let (side, rule) = (said(nearest_bound(row, judged)), said(rule(&judged.rule)));
+            if judged.rule == "guarded" {
+                IN_DOUBT_BY_U.with([label, shown(row), side, figure(expanded_text(row, *expanded)), rule])
             } else {
-                format!("with probability {:.3} only", judged.conformance_probability.unwrap_or(0.0))
-            };
-            format!("{label} {} is {side} {bound}, but {but} (rule: {})", shown(row), judged.rule)
+                let probability = figure(format!("{:.3}", judged.conformance_probability.unwrap_or(0.0)));
+                IN_DOUBT_BY_PROBABILITY.with([label, shown(row), side, probability, rule])
+            }
         }
-        _ => format!("{label} {} is {}", shown(row), place(row, judged)),
+        _ => IS.with([label, shown(row), said(place(row, judged))]),
     }
 }
 
 /// Where the value lies: "below 0.30 mW", "above 0.50 mW, but not by U", "wanted clean".
-fn place(row: &Row, judged: &Judged) -> String {
+fn place(row: &Row, judged: &Judged) -> Saying {
     if let Value::Word(_) = row.value {
-        return format!("wanted {}", judged.wanted.join(" or "));
+        return WANTED.with([names(&judged.wanted, &OR)]);
     }
-    let (_, side, bound) = nearest_bound(row, judged);
+    let side = nearest_bound(row, judged);
     match in_doubt(judged) {
-        true if judged.rule == "guarded" => format!("{side} {bound}, but not by U"),
-        true => format!("{side} {bound}, but with less than {}", judged.rule),
-        false => format!("{side} {bound}"),
+        true if judged.rule == "guarded" => NOT_BY_U.with([said(side)]),
+        true => NOT_BY_PROBABILITY.with([said(side), figure(&judged.rule)]),
+        false => side,
     }
 }
 
-fn broken_bound(row: &Row, judged: &Judged) -> String {
-    if judged.wanted.is_empty() { nearest_bound(row, judged).2 } else { judged.wanted.join(" or ") }
+fn broken_bound(row: &Row, judged: &Judged) -> Piece {
+    if !judged.wanted.is_empty() {
+        return names(&judged.wanted, &OR);
+    }
+    decisive(row, judged).map_or(said(&NO_BOUND), |(_, bound)| figure(bound_text(row, bound)))
 }
 
-fn undecided(row: &Row, judged: &Judged) -> String {
-    let bound = judged.lower.or(judged.upper).map_or(String::new(), |bound| bound_text(row, bound));
-    format!("is known only to be {}, the bound is {bound}", shown(row))
+fn bound_of(row: &Row, judged: &Judged) -> Piece {
+    figure(judged.lower.or(judged.upper).map_or(String::new(), |bound| bound_text(row, bound)))
 }
 
-/// The bound that decides: (its distance inward from the value, the value's side of it, its text).
-fn nearest_bound(row: &Row, judged: &Judged) -> (f64, &'static str, String) {
+/// The value's side of the bound that decides: "above 0.50 mW".
+fn nearest_bound(row: &Row, judged: &Judged) -> Saying {
+    let Some((above, bound)) = decisive(row, judged) else { return (&INSIDE_NONE).into() };
+    let side = if above { &ABOVE } else { &BELOW };
+    side.with([figure(bound_text(row, bound))])
+}
+
+/// The bound that decides, SI, and whether the value lies above it.
+fn decisive(row: &Row, judged: &Judged) -> Option<(bool, f64)> {
     let value = match row.value {
         Value::Number { value, .. } | Value::AtLeast(value) => value,
         Value::Count { value, .. } => value as f64,
@@ -195,23 +214,22 @@ fn nearest_bound(row: &Row, judged: &Judged) -> (f64, &'static str, String) {
         (Some(lower), Some(upper)) if upper.0 < lower.0 => Some(upper),
         (lower, upper) => lower.or(upper),
     };
-    let Some((distance, bound)) = nearest else { return (f64::INFINITY, "inside", "no bound".to_owned()) };
-    let side = if value >= bound { "above" } else { "below" };
-    (distance, side, bound_text(row, bound))
+    nearest.map(|(_, bound)| (value >= bound, bound))
 }
 
 /// The value as people see it, with its unit: "0.505 mW".
-fn shown(row: &Row) -> String {
+fn shown(row: &Row) -> Piece {
     let measurand = find(&row.measurand);
     match &row.value {
         Value::Number { value, expanded, .. } => {
             let most = measurand.map_or(6, |m| m.decimals);
-            with_unit(measurand, joint(si_to_shown(measurand, *value), si_to_shown(measurand, *expanded), most).0)
+            let number = joint(si_to_shown(measurand, *value), si_to_shown(measurand, *expanded), most).0;
+            figure(with_unit(measurand, number))
         }
-        Value::Count { value, .. } => value.to_string(),
-        Value::AtLeast(value) => format!("at least {}", bound_text(row, *value)),
-        Value::Word(word) => word.clone(),
-        Value::Absent(_) => "no value".to_owned(),
+        Value::Count { value, .. } => figure(value),
+        Value::AtLeast(value) => said(AT_LEAST.with([figure(bound_text(row, *value))])),
+        Value::Word(word) => name(word.as_str()),
+        Value::Absent(_) => said(&WITHOUT_VALUE),
     }
 }
 
@@ -244,20 +262,5 @@ fn with_unit(measurand: Option<&Measurand>, number: String) -> String {
         "" => number,
         "°" => format!("{number}°"),
         symbol => format!("{number} {symbol}"),
-    }
-}
-
-fn capital(text: &str) -> String {
-    let mut chars = text.chars();
-    chars.next().map_or(String::new(), |first| first.to_uppercase().chain(chars).collect())
-}
-
-/// First letter small, unless the second is a capital too (an abbreviation).
-fn lower_case(text: &str) -> String {
-    let mut chars = text.chars();
-    match (chars.next(), chars.clone().next()) {
-        (Some(_), Some(second)) if second.is_uppercase() => text.to_owned(),
-        (Some(first), _) => first.to_lowercase().chain(chars).collect(),
-        (None, _) => String::new(),
     }
 }

@@ -2,13 +2,13 @@
 //! Must not hold a limit.
 //! Main item: [`CATALOGUE`].
 
-use super::{Group, Measurand, Shape};
+use super::{Group, Measurand, Phrase, Shape};
 
 /// Everything the program can measure, in the order of the sheet.
 pub const CATALOGUE: &[Measurand] = &[
     Measurand {
         key: "mode_spacing",
-        name: "Mode spacing",
+        name: Phrase::new("Mode spacing", "Modenabstand"),
         symbol: "Δν",
         ucum: "MHz",
         decimals: 3,
@@ -18,7 +18,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "mirror_spacing",
-        name: "Mirror spacing",
+        name: Phrase::new("Mirror spacing", "Spiegelabstand"),
         symbol: "L",
         ucum: "mm",
         decimals: 3,
@@ -28,7 +28,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "mode_count_min",
-        name: "Fewest modes in a walk cycle",
+        name: Phrase::new("Fewest modes in a walk cycle", "Wenigste Moden je Wanderperiode"),
         symbol: "",
         ucum: "1",
         decimals: 0,
@@ -38,7 +38,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "mode_count_max",
-        name: "Most modes in a walk cycle",
+        name: Phrase::new("Most modes in a walk cycle", "Meiste Moden je Wanderperiode"),
         symbol: "",
         ucum: "1",
         decimals: 0,
@@ -48,7 +48,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "off_axis_ratio",
-        name: "Off-axis light",
+        name: Phrase::new("Off-axis light", "Außeraxiales Licht"),
         symbol: "",
         ucum: "%",
         decimals: 2,
@@ -58,7 +58,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "lasing_span",
-        name: "Lasing span",
+        name: Phrase::new("Lasing span", "Oszillationsbreite"),
         symbol: "",
         ucum: "MHz",
         decimals: 1,
@@ -68,7 +68,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "envelope_fwhm",
-        name: "Envelope width",
+        name: Phrase::new("Envelope width", "Breite der Einhüllenden"),
         symbol: "",
         ucum: "MHz",
         decimals: 1,
@@ -78,7 +78,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "dip_depth",
-        name: "Central dip",
+        name: Phrase::new("Central dip", "Einsattelung in Linienmitte"),
         symbol: "",
         ucum: "%",
         decimals: 2,
@@ -88,7 +88,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "gain_ratio",
-        name: "Gain over loss",
+        name: Phrase::new("Gain over loss", "Verstärkung zu Verlust"),
         symbol: "η",
         ucum: "1",
         decimals: 3,
@@ -98,7 +98,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "finesse",
-        name: "Finesse of the bench",
+        name: Phrase::new("Finesse of the bench", "Finesse des Messplatzes"),
         symbol: "F",
         ucum: "1",
         decimals: 1,
@@ -108,7 +108,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "extinction",
-        name: "Extinction",
+        name: Phrase::new("Extinction", "Polarisationsverhältnis"),
         symbol: "",
         ucum: "1",
         decimals: 1,
@@ -118,7 +118,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "polarization_azimuth",
-        name: "Azimuth",
+        name: Phrase::new("Azimuth", "Azimut"),
         symbol: "",
         ucum: "deg",
         decimals: 2,
@@ -128,7 +128,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "mode_orthogonality",
-        name: "Angle between neighbours",
+        name: Phrase::new("Angle between neighbours", "Winkel der Nachbarmoden"),
         symbol: "",
         ucum: "deg",
         decimals: 2,
@@ -138,7 +138,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "power",
-        name: "Power",
+        name: Phrase::new("Power", "Leistung"),
         symbol: "P",
         ucum: "mW",
         decimals: 4,
@@ -148,7 +148,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "power_peak_current",
-        name: "Current of greatest power",
+        name: Phrase::new("Current of greatest power", "Strom größter Leistung"),
         symbol: "",
         ucum: "mA",
         decimals: 2,
@@ -158,7 +158,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "power_ripple",
-        name: "Power ripple",
+        name: Phrase::new("Power ripple", "Leistungswelligkeit"),
         symbol: "",
         ucum: "%",
         decimals: 2,
@@ -168,7 +168,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "power_drift",
-        name: "Power drift",
+        name: Phrase::new("Power drift", "Leistungsdrift"),
         symbol: "",
         ucum: "%/h",
         decimals: 2,
@@ -178,7 +178,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "noise_rms",
-        name: "Noise, 10 Hz to 1 MHz",
+        name: Phrase::new("Noise, 10 Hz to 1 MHz", "Rauschen, 10 Hz bis 1 MHz"),
         symbol: "",
         ucum: "%",
         decimals: 3,
@@ -188,7 +188,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "line_ripple",
-        name: "Mains ripple",
+        name: Phrase::new("Mains ripple", "Netzbrummen"),
         symbol: "",
         ucum: "%",
         decimals: 3,
@@ -198,7 +198,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "tone_level",
-        name: "Strongest tone",
+        name: Phrase::new("Strongest tone", "Stärkster Störton"),
         symbol: "",
         ucum: "%",
         decimals: 3,
@@ -208,7 +208,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "tone_frequency",
-        name: "Frequency of that tone",
+        name: Phrase::new("Frequency of that tone", "Frequenz des Störtons"),
         symbol: "",
         ucum: "kHz",
         decimals: 3,
@@ -218,7 +218,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "warmup_tau",
-        name: "Warm-up time constant",
+        name: Phrase::new("Warm-up time constant", "Einlaufzeitkonstante"),
         symbol: "τ",
         ucum: "min",
         decimals: 3,
@@ -228,7 +228,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "warmup_ready",
-        name: "Ready after",
+        name: Phrase::new("Ready after", "Bereit nach"),
         symbol: "",
         ucum: "min",
         decimals: 2,
@@ -238,7 +238,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "walk_cycles",
-        name: "Walk cycles",
+        name: Phrase::new("Walk cycles", "Wanderperioden"),
         symbol: "N",
         ucum: "1",
         decimals: 3,
@@ -248,7 +248,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "walk_growth",
-        name: "Growth in warm-up",
+        name: Phrase::new("Growth in warm-up", "Längung beim Einlaufen"),
         symbol: "",
         ucum: "um",
         decimals: 3,
@@ -258,7 +258,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "walk_rate",
-        name: "Walk at the end",
+        name: Phrase::new("Walk at the end", "Wanderung am Ende"),
         symbol: "",
         ucum: "MHz/min",
         decimals: 2,
@@ -268,7 +268,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "hop_count",
-        name: "Hops",
+        name: Phrase::new("Hops", "Modensprünge"),
         symbol: "",
         ucum: "1",
         decimals: 0,
@@ -278,7 +278,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "swap_count",
-        name: "Axis swaps",
+        name: Phrase::new("Axis swaps", "Achsenwechsel"),
         symbol: "",
         ucum: "1",
         decimals: 0,
@@ -288,7 +288,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "cycles_watched",
-        name: "Cycles watched",
+        name: Phrase::new("Cycles watched", "Beobachtete Perioden"),
         symbol: "",
         ucum: "1",
         decimals: 2,
@@ -298,7 +298,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "start_voltage",
-        name: "Start voltage",
+        name: Phrase::new("Start voltage", "Zündspannung"),
         symbol: "",
         ucum: "kV",
         decimals: 3,
@@ -308,7 +308,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "start_delay",
-        name: "Start delay",
+        name: Phrase::new("Start delay", "Zündverzug"),
         symbol: "",
         ucum: "s",
         decimals: 2,
@@ -318,7 +318,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "start_tries",
-        name: "Tries to start",
+        name: Phrase::new("Tries to start", "Zündversuche"),
         symbol: "",
         ucum: "1",
         decimals: 0,
@@ -328,7 +328,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "run_voltage",
-        name: "Run voltage at the tube",
+        name: Phrase::new("Run voltage at the tube", "Betriebsspannung der Röhre"),
         symbol: "",
         ucum: "kV",
         decimals: 4,
@@ -338,7 +338,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "run_current",
-        name: "Run current",
+        name: Phrase::new("Run current", "Betriebsstrom"),
         symbol: "",
         ucum: "mA",
         decimals: 3,
@@ -348,7 +348,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "slope_resistance",
-        name: "Slope resistance",
+        name: Phrase::new("Slope resistance", "Differentieller Widerstand"),
         symbol: "",
         ucum: "kOhm",
         decimals: 2,
@@ -358,7 +358,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "dropout_current",
-        name: "Dropout current",
+        name: Phrase::new("Dropout current", "Löschstrom"),
         symbol: "",
         ucum: "mA",
         decimals: 3,
@@ -368,7 +368,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "dropout_fraction",
-        name: "Dropout, of run current",
+        name: Phrase::new("Dropout, of run current", "Löschstrom zu Betriebsstrom"),
         symbol: "",
         ucum: "%",
         decimals: 2,
@@ -378,7 +378,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "beam_diameter",
-        name: "Beam diameter",
+        name: Phrase::new("Beam diameter", "Strahldurchmesser"),
         symbol: "",
         ucum: "mm",
         decimals: 3,
@@ -388,7 +388,7 @@ pub const CATALOGUE: &[Measurand] = &[
     },
     Measurand {
         key: "beam_divergence",
-        name: "Beam divergence",
+        name: Phrase::new("Beam divergence", "Strahldivergenz"),
         symbol: "",
         ucum: "mrad",
         decimals: 3,

@@ -6,7 +6,10 @@ mod catalogue;
 
 pub use catalogue::CATALOGUE;
 
-use crate::quantity::{UNITS, Unit};
+use crate::{
+    phrase::{Phrase, page},
+    quantity::{UNITS, Unit},
+};
 
 /// What kind of number a measurand is; decides how its uncertainty is turned into a probability.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -40,15 +43,15 @@ pub enum Group {
 
 impl Group {
     /// Heading on the sheet.
-    pub fn heading(self) -> &'static str {
+    pub fn heading(self) -> &'static Phrase {
         match self {
-            Self::Optics => "Optics",
-            Self::Polarization => "Polarization",
-            Self::Power => "Power",
-            Self::Time => "Over time",
-            Self::Supply => "Supply",
-            Self::Beam => "Beam",
-            Self::Visual => "By eye",
+            Self::Optics => &page::OPTICS,
+            Self::Polarization => &page::POLARIZATION,
+            Self::Power => &page::POWER,
+            Self::Time => &page::OVER_TIME,
+            Self::Supply => &page::SUPPLY,
+            Self::Beam => &page::BEAM,
+            Self::Visual => &page::BY_EYE,
         }
     }
 }
@@ -59,7 +62,7 @@ pub struct Measurand {
     /// Its key in limits files, records and JSON.
     pub key: &'static str,
     /// Its name on the sheet.
-    pub name: &'static str,
+    pub name: Phrase,
     /// Its symbol, or empty.
     pub symbol: &'static str,
     /// UCUM code of the unit people see and the CSV holds.

@@ -8,7 +8,7 @@ const HALVING_AIR: f64 = 0.02;
 /// Share of the air that is in the gas at first light; the rest comes off walls and electrodes as they warm.
 const AIR_AT_START: f64 = 0.5;
 /// Time constant of its coming, s: power peaks and falls within minutes (common practice).
-const OUTGASSING_TIME: f64 = 300.0;
+const OUTGASSING_TIME: f64 = 480.0;
 /// Greatest relative change of the run voltage by air, and the share of air at which it is two thirds of that: 100–200 V
 /// low in some tubes of 0.9–1 kV, more than 200 V high in others (tables of fault signatures, common practice).
 const AIR_VOLTAGE: f64 = 0.25;

@@ -30,4 +30,6 @@ pub use tube::{Incident, TubeTruth};
 pub use world::{Setting, World};
 
 #[cfg(test)]
+mod fault_tests;
+#[cfg(test)]
 mod tests;

@@ -10,6 +10,7 @@ use super::{
     question::{Answer, Question},
     reference::ReferenceCheck,
 };
+use crate::phrase::Language;
 
 /// Version of the form of an event line. A newer one is refused, an older one stays readable.
 pub const EVENT_VERSION: u32 = 1;
@@ -154,6 +155,13 @@ pub struct Identity {
     /// Language of the sheet, two letters; empty is English.
     #[serde(default, skip_serializing_if = "String::is_empty")]
     pub language: String,
+}
+
+impl Identity {
+    /// The language of the sheet.
+    pub fn language(&self) -> Language {
+        Language::of_record(&self.language)
+    }
 }
 
 /// What a run is for.

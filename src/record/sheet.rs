@@ -6,6 +6,7 @@ use chrono::{DateTime, FixedOffset, NaiveDate};
 
 use super::event::Identity;
 use super::finding::Trace;
+use crate::phrase::{Language, Saying};
 use crate::uncertainty::BudgetLine;
 
 /// A sheet, at any moment of its run.
@@ -14,7 +15,7 @@ pub struct Sheet {
     /// Who and what.
     pub identity: Identity,
     /// Title of the type from the limits file.
-    pub title: String,
+    pub title: Saying,
     /// Station's name.
     pub station: String,
     /// When the run was opened.
@@ -46,11 +47,18 @@ pub struct Sheet {
     /// Chart of the walk.
     pub walk_chart: Option<WalkChart>,
     /// Things a reader must know that belong to no row.
-    pub remarks: Vec<String>,
+    pub remarks: Vec<Saying>,
     /// The line on laser class and cautions.
-    pub caution: String,
+    pub caution: Saying,
     /// Who measured: initials, when, meaning.
     pub measured_by: Option<MeasuredBy>,
+}
+
+impl Sheet {
+    /// The language in which page and terminal show it; files for programs are English.
+    pub fn language(&self) -> Language {
+        self.identity.language()
+    }
 }
 
 /// Revision and hash of a file frozen into the plan.
@@ -66,9 +74,9 @@ pub struct Revision {
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Instrument {
     /// `interferometer`, `power meter`, `supply`.
-    pub role: String,
+    pub role: Saying,
     /// What is said of it: "6.4 GHz ± 0.3 %".
-    pub what: String,
+    pub what: Saying,
     /// Certificate number, or empty where there is none.
     pub certificate: String,
     /// Last day on which the certificate holds.
@@ -115,9 +123,9 @@ pub struct TubeVerdict {
     /// First reject code, for a fail.
     pub reject_code: Option<String>,
     /// Filled into the head: "pass, grade prime." or "fail, dim."
-    pub sentence: String,
+    pub sentence: Saying,
     /// The reason beneath it, one or two sentences; may be empty.
-    pub reason: String,
+    pub reason: Saying,
 }
 
 /// Verdict of a row for one grade.
@@ -188,7 +196,7 @@ pub enum Value {
     /// A word from a look.
     Word(String),
     /// No value, and why.
-    Absent(String),
+    Absent(Saying),
 }
 
 /// One row.
@@ -199,7 +207,7 @@ pub struct Row {
     /// Measurand's key, or `visual.<step>`.
     pub measurand: String,
     /// Name on the sheet.
-    pub label: String,
+    pub label: Saying,
     /// What it holds.
     pub value: Value,
     /// Budget, in SI.
@@ -209,7 +217,7 @@ pub struct Row {
     /// The row decides the verdict: it is opened by `note`.
     pub deciding: bool,
     /// One line of words: "prime lost in doubt; alignment, 0.30 mW, holds".
-    pub note: String,
+    pub note: Saying,
 }
 
 /// A row judged for one grade.
@@ -299,5 +307,5 @@ pub struct MeasuredBy {
     /// When the last row was filled.
     pub at: DateTime<FixedOffset>,
     /// `measured`.
-    pub meaning: String,
+    pub meaning: Saying,
 }

@@ -1,10 +1,11 @@
-//! record.csv and budget.csv: RFC 4180, UTF-8, fixed columns.
+//! record.csv and budget.csv: RFC 4180, UTF-8, fixed columns; English with a decimal point, whatever the sheet speaks.
 //! Must not round what a reader could judge with: ten significant digits, so that every platform writes the same.
 //! Main functions: [`record_csv`], [`budget_csv`].
 
-use super::{SIMULATED, escape::neutralise};
+use super::escape::neutralise;
 use crate::{
     measurand::{self, Group},
+    phrase::{Saying, page::SIMULATED},
     record::sheet::{Judged, Row, RowVerdict, Sheet, Value},
     uncertainty::Evaluation,
 };
@@ -105,9 +106,9 @@ pub fn budget_csv(sheet: &Sheet) -> Vec<u8> {
 
 fn tube_cells(sheet: &Sheet) -> Cells {
     let verdict = &sheet.verdict;
-    let simulated = if sheet.identity.simulated { SIMULATED } else { "" };
-    let mut said: Vec<&str> = vec![simulated, &verdict.reason];
-    said.extend(super::remarks(sheet));
+    let simulated = if sheet.identity.simulated { SIMULATED.en } else { "" };
+    let mut said = vec![simulated.to_owned(), verdict.reason.english()];
+    said.extend(super::remarks(sheet).map(Saying::english));
     Cells {
         grade: neutralise(verdict.grade.as_deref().unwrap_or_default()),
         measurand: "tube".to_owned(),
@@ -150,10 +151,10 @@ fn row_cells(sheet: &Sheet, row: &Row, judged: Option<&Judged>) -> Cells {
         Value::Word(word) => cells.value = neutralise(word),
         Value::Absent(reason) => {
             cells.unit = unit;
-            said = format!("absent: {reason}");
+            said = format!("absent: {}", reason.english());
         }
     }
-    cells.note = neutralise(&joined(&[&said, &row.note, &at_current(sheet, row)]));
+    cells.note = neutralise(&joined(&[said, row.note.english(), at_current(sheet, row)]));
     cells.verdict = RowVerdict::NotJudged.word();
     if let Some(judged) = judged {
         cells.grade = neutralise(&judged.grade);
@@ -211,8 +212,8 @@ fn at_current(sheet: &Sheet, row: &Row) -> String {
     }
 }
 
-fn joined(parts: &[&str]) -> String {
-    parts.iter().filter(|part| !part.is_empty()).copied().collect::<Vec<_>>().join("; ")
+fn joined(parts: &[String]) -> String {
+    parts.iter().filter(|part| !part.is_empty()).map(String::as_str).collect::<Vec<_>>().join("; ")
 }
 
 /// Shortest text of a number rounded to ten significant digits; empty if it is not finite.

@@ -4,8 +4,10 @@
 
 use serde_json::{Value as Json, json};
 
-use super::SIMULATED;
-use crate::record::sheet::{Instrument, Sheet};
+use crate::{
+    phrase::{Saying, page::SIMULATED},
+    record::sheet::{Instrument, Sheet},
+};
 
 /// How cells of text columns are escaped, for whoever reads the files with a program.
 const ESCAPING: &str = "in columns of datatype string, text that begins (after any blanks) with one of = + - @, their full-width \
@@ -94,32 +96,32 @@ fn run_notes(sheet: &Sheet) -> Json {
     json!({
         "run_id": who.run_id,
         "serial": who.serial,
-        "title": sheet.title,
+        "title": sheet.title.english(),
         "supplier": who.supplier,
         "condition": who.condition,
         "received": who.received,
         "time_zone": who.time_zone,
         "simulated": who.simulated,
-        "simulated_note": if who.simulated { SIMULATED } else { "" },
+        "simulated_note": if who.simulated { SIMULATED.en } else { "" },
         "from_captures": who.from_captures,
         "ended_at": sheet.ended_at.map(|at| at.to_rfc3339()),
         "dwell_s": sheet.dwell.filter(|s| s.is_finite()),
         "recipe": { "revision": sheet.recipe.revision, "sha256": sheet.recipe.sha256 },
         "limits": { "revision": sheet.limits.revision, "sha256": sheet.limits.sha256 },
         "station_file": { "sha256": sheet.station_file.sha256 },
-        "verdict": { "sentence": sheet.verdict.sentence, "reason": sheet.verdict.reason },
-        "caution": sheet.caution,
-        "remarks": sheet.remarks,
+        "verdict": { "sentence": sheet.verdict.sentence.english(), "reason": sheet.verdict.reason.english() },
+        "caution": sheet.caution.english(),
+        "remarks": sheet.remarks.iter().map(Saying::english).collect::<Vec<_>>(),
         "measured_by": sheet.measured_by.as_ref().map(|by| json!({
-            "initials": by.initials, "at": by.at.to_rfc3339(), "meaning": by.meaning })),
+            "initials": by.initials, "at": by.at.to_rfc3339(), "meaning": by.meaning.english() })),
         "instruments": sheet.instruments.iter().map(instrument).collect::<Vec<_>>(),
     })
 }
 
 fn instrument(instrument: &Instrument) -> Json {
     json!({
-        "role": instrument.role,
-        "what": instrument.what,
+        "role": instrument.role.english(),
+        "what": instrument.what.english(),
         "certificate": instrument.certificate,
         "due": instrument.due.map(|day| day.to_string()),
         "overdue": instrument.overdue,

@@ -20,15 +20,15 @@ pub use self::page::{CountBox, InBox, Page, Part, RowScale, boxes, telling};
 pub use self::pdf::PdfError;
 pub use self::text::{ValueText, bound_text, probability_text, row_line, value_text};
 
-/// Said in the head, the CSV and the PDF title of every record of a simulated bench.
-pub const SIMULATED: &str = "Simulated bench: not a measurement of a tube";
-
 use self::typeface::Typeface;
-use crate::record::sheet::Sheet;
+use crate::{
+    phrase::{Saying, name, page as phrases},
+    record::sheet::Sheet,
+};
 
-/// The remarks that say more than [`SIMULATED`], which has its own place in every paper.
-fn remarks(sheet: &Sheet) -> impl Iterator<Item = &str> {
-    sheet.remarks.iter().map(String::as_str).filter(|remark| remark.trim_end_matches('.') != SIMULATED)
+/// The remarks that say more than that the bench is simulated, which has its own place in every paper.
+fn remarks(sheet: &Sheet) -> impl Iterator<Item = &Saying> {
+    sheet.remarks.iter().filter(|remark| remark.english().trim_end_matches('.') != phrases::SIMULATED.en)
 }
 
 /// The sheet laid out, page by page and part by part, before it becomes a PDF or anything else.
@@ -37,19 +37,21 @@ fn remarks(sheet: &Sheet) -> impl Iterator<Item = &str> {
 ///
 /// Errors only if the program's own typeface is damaged.
 pub fn sheet_pages(sheet: &Sheet, record_sha256: &str) -> Result<Vec<Page>, PdfError> {
-    Ok(page::pages(sheet, Typeface::embedded().ok_or(PdfError::Typeface)?, record_sha256))
+    Ok(page::pages(sheet, &Typeface::embedded(sheet.language()).ok_or(PdfError::Typeface)?, record_sha256))
 }
 
 /// record.pdf: the sheet on A4 with record.csv inside it; the same sheet gives the same bytes.
 ///
 /// * `record_sha256`: SHA-256 of record.csv, hexadecimal; shown at the foot, and the id of the document.
 pub fn record_pdf(sheet: &Sheet, record_sha256: &str) -> Result<Vec<u8>, PdfError> {
-    let face = Typeface::embedded().ok_or(PdfError::Typeface)?;
+    let language = sheet.language();
+    let face = &Typeface::embedded(language).ok_or(PdfError::Typeface)?;
     let scenes: Vec<_> = page::pages(sheet, face, record_sha256).iter().map(Page::scene).collect();
     let who = &sheet.identity;
-    let title = format!("Record of tube {}", who.serial);
+    let title = phrases::RECORD_OF.with([name(who.serial.as_str())]).text(language);
     let about = pdf::About {
-        title: if who.simulated { format!("{title}. {SIMULATED}") } else { title },
+        language: language.code(),
+        title: if who.simulated { format!("{title}. {}", phrases::SIMULATED.of(language)) } else { title },
         program: format!("tubewright {}", who.program_version),
         date: sheet.ended_at.or(sheet.started_at),
         id: document_id(record_sha256, &who.run_id),

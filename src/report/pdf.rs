@@ -28,6 +28,8 @@ pub enum PdfError {
 
 /// What a PDF says of itself.
 pub struct About<'a> {
+    /// Its language: a code of ISO 639-1.
+    pub language: &'static str,
     /// Title.
     pub title: String,
     /// Program and version.
@@ -45,8 +47,8 @@ pub fn write(pages: &[Scene], face: &Typeface, about: About<'_>) -> Result<Vec<u
     let mut document = PdfDocument::new(&about.title);
     document.metadata.info.creator = about.program.clone();
     document.metadata.info.producer = about.program.clone();
-    for (name, font) in [("Regular", &face.regular), ("Bold", &face.bold)] {
-        document.resources.fonts.map.insert(FontId(name.to_owned()), PdfFont::new(font.clone()));
+    for (name, font) in [("Regular", face.regular), ("Bold", face.bold)] {
+        document.resources.fonts.map.insert(FontId(name.to_owned()), PdfFont::new((*font).clone()));
     }
     let (width, height) = (Pt(WIDTH as f32).into(), Pt(HEIGHT as f32).into());
     document.with_pages(pages.iter().map(|page| PdfPage::new(width, height, operations(page))).collect());
@@ -76,7 +78,7 @@ fn finish(file: &mut lopdf::Document, about: About<'_>) -> Result<(), lopdf::Err
     });
     let names = vec![Object::string_literal(name), Object::Reference(attachment)];
     let catalog = file.catalog_mut()?;
-    catalog.set("Lang", Object::string_literal("en"));
+    catalog.set("Lang", Object::string_literal(about.language));
     catalog.set("ViewerPreferences", dictionary! { "DisplayDocTitle" => true });
     catalog.set("AF", vec![Object::Reference(attachment)]);
     catalog.set("Names", dictionary! { "EmbeddedFiles" => dictionary! { "Names" => names } });

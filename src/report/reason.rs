@@ -5,6 +5,7 @@
 use super::text::{bound_text, value_text};
 use crate::{
     measurand,
+    phrase::{Language, figure, name, page, within},
     record::sheet::{Judged, Outcome, Row, RowVerdict, Sheet, Value},
 };
 
@@ -12,7 +13,7 @@ use crate::{
 ///
 /// Nothing unless the tube passed and every limit of its grade holds. Nearest in units of the expanded uncertainty;
 /// counts and looks have none and are only counted.
-pub fn of_pass(sheet: &Sheet) -> Option<String> {
+pub fn of_pass(sheet: &Sheet, language: Language) -> Option<String> {
     let verdict = &sheet.verdict;
     if verdict.outcome != Outcome::Pass {
         return None;
@@ -28,13 +29,13 @@ pub fn of_pass(sheet: &Sheet) -> Option<String> {
     if limited.is_empty() || limited.iter().any(|(_, judged)| judged.verdict != RowVerdict::Pass) {
         return None;
     }
-    let all = match limited.len() {
-        1 => "The one limit holds".to_owned(),
-        n => format!("All {n} limits hold"),
-    };
     let margins = limited.iter().filter_map(|(row, judged)| Some((row, margin(row, judged)?)));
     let nearest = margins.min_by(|a, b| a.1.in_u.total_cmp(&b.1.in_u));
-    Some(nearest.map_or_else(|| format!("{all}."), |(row, margin)| format!("{all}; {}.", said(row, &margin))))
+    Some(match (nearest, limited.len()) {
+        (Some((row, margin)), n) => said(row, &margin, n, language),
+        (None, 1) => page::ONE_LIMIT_HOLDS.of(language).to_owned(),
+        (None, n) => page::LIMITS_HOLD.with([figure(n)]).text(language),
+    })
 }
 
 /// How far a value lies inside its nearer bound.
@@ -54,16 +55,17 @@ fn margin(row: &Row, judged: &Judged) -> Option<Margin> {
     lower.into_iter().chain(upper).filter(|m| m.in_u.is_finite()).min_by(|a, b| a.in_u.total_cmp(&b.in_u))
 }
 
-fn said(row: &Row, margin: &Margin) -> String {
-    let text = value_text(row);
+/// * `n`: limits that hold.
+fn said(row: &Row, margin: &Margin, n: usize, language: Language) -> String {
+    let text = value_text(row, language);
     let unit = if text.unit.is_empty() { String::new() } else { format!("\u{a0}{}", text.unit) };
-    let bound = bound_text(measurand::find(&row.measurand), margin.bound);
-    let side = if margin.upper { "at\u{a0}most" } else { "at\u{a0}least" };
-    format!("the nearest is {}, {}{unit} of {side}\u{a0}{bound}{unit}", lower_first(&row.label), text.value)
-}
-
-/// "Power ripple" inside a sentence.
-fn lower_first(label: &str) -> String {
-    let mut letters = label.chars();
-    letters.next().map_or_else(String::new, |first| first.to_lowercase().chain(letters).collect())
+    let bound = bound_text(measurand::find(&row.measurand), margin.bound, language);
+    let phrase = match (n, margin.upper) {
+        (1, true) => &page::ONE_LIMIT_NEAREST_MOST,
+        (1, false) => &page::ONE_LIMIT_NEAREST_LEAST,
+        (_, true) => &page::LIMITS_NEAREST_MOST,
+        (_, false) => &page::LIMITS_NEAREST_LEAST,
+    };
+    let (value, bound) = (name(format!("{}{unit}", text.value)), name(format!("{bound}{unit}")));
+    phrase.with([within(row.label.clone()), value, bound, figure(n)]).text(language)
 }

@@ -4,6 +4,7 @@
 
 use crate::{
     measurand::{self, Measurand},
+    phrase::{Language, figure, name, page},
     record::sheet::{Row, RowVerdict, Value},
     uncertainty::joint,
 };
@@ -22,34 +23,41 @@ pub struct ValueText {
 }
 
 /// Value and expanded uncertainty rounded together, in the unit of the catalogue.
-pub fn value_text(row: &Row) -> ValueText {
+///
+/// In a language: figures have its decimal sign.
+pub fn value_text(row: &Row, language: Language) -> ValueText {
     let known = measurand::find(&row.measurand);
     let unit = known.map_or("", |m| m.unit().symbol).to_owned();
     let shown = |si: f64| known.map_or(si, |m| m.shown(si));
     match &row.value {
         Value::Number { value, .. } if !shown(*value).is_finite() => {
-            ValueText { absent: "not a finite number".to_owned(), ..ValueText::default() }
+            ValueText { absent: page::NOT_FINITE.of(language).to_owned(), ..ValueText::default() }
         }
         Value::Number { value, expanded, .. } => {
             let (number, spread) = rounded(shown(*value), shown(*expanded), known.map_or(6, |m| m.decimals));
-            let spread = if shown(*expanded).is_finite() { spread_text(&spread) } else { String::new() };
-            ValueText { value: typeset(&number), spread, unit, absent: String::new() }
+            let spread = if shown(*expanded).is_finite() { spread_text(&spread, language) } else { String::new() };
+            ValueText { value: typeset(&number, language), spread, unit, absent: String::new() }
         }
         Value::Count { value, low, high } => {
-            let spread = if low == high { String::new() } else { format!("({low} to {high})") };
+            let doubt = || page::IN_DOUBT.with([figure(low), figure(high)]).text(language);
+            let spread = if low == high { String::new() } else { doubt() };
             ValueText { value: value.to_string(), spread, ..ValueText::default() }
         }
         Value::AtLeast(least) => {
-            ValueText { value: format!("≥ {}", bound_text(known, *least)), unit, ..ValueText::default() }
+            ValueText { value: format!("≥ {}", bound_text(known, *least, language)), unit, ..ValueText::default() }
         }
         Value::Word(word) => ValueText { value: word.clone(), ..ValueText::default() },
-        Value::Absent(reason) => ValueText { absent: reason.clone(), ..ValueText::default() },
+        Value::Absent(reason) => ValueText { absent: reason.text(language), ..ValueText::default() },
     }
 }
 
 /// `± 3.0`; `U < 0.0001` where no more can be said.
-pub fn spread_text(expanded: &str) -> String {
-    if expanded.starts_with('<') { format!("U {expanded}") } else { format!("± {}", typeset(expanded)) }
+pub fn spread_text(expanded: &str, language: Language) -> String {
+    if expanded.starts_with('<') {
+        format!("U {}", language.figure(expanded))
+    } else {
+        format!("± {}", typeset(expanded, language))
+    }
 }
 
 /// Rounded together; in powers of ten where a column of figures could not hold the number.
@@ -62,7 +70,7 @@ fn rounded(value: f64, expanded: f64, most: usize) -> (String, String) {
 }
 
 /// A bound in the unit of the catalogue, at most six significant digits, without the unit: `979.3`, `0.5`.
-pub fn bound_text(known: Option<&Measurand>, si: f64) -> String {
+pub fn bound_text(known: Option<&Measurand>, si: f64, language: Language) -> String {
     let shown = known.map_or(si, |m| m.shown(si));
     if !shown.is_finite() {
         return "?".to_owned();
@@ -70,43 +78,43 @@ pub fn bound_text(known: Option<&Measurand>, si: f64) -> String {
     let rounded: f64 = format!("{shown:.5e}").parse().unwrap_or(shown);
     let size = rounded.abs();
     let odd = size >= 1e7 || (size > 0.0 && size < 1e-4);
-    typeset(&if odd { format!("{rounded:e}") } else { format!("{}", rounded + 0.0) })
+    typeset(&if odd { format!("{rounded:e}") } else { format!("{}", rounded + 0.0) }, language)
 }
 
 /// A probability with three decimals that never claims certainty it has not: `0.748`, `< 0.001`, `> 0.999`.
-pub fn probability_text(probability: f64) -> String {
+pub fn probability_text(probability: f64, language: Language) -> String {
     match probability {
         p if !p.is_finite() => String::new(),
-        p if p < 0.0005 => "< 0.001".to_owned(),
-        p if p > 0.9995 => "> 0.999".to_owned(),
-        p => format!("{p:.3}"),
+        p if p < 0.0005 => language.figure("< 0.001"),
+        p if p > 0.9995 => language.figure("> 0.999"),
+        p => language.figure(&format!("{p:.3}")),
     }
 }
 
 /// One plain line for a row: `Mode spacing: 998.7 ± 3.0 MHz`, or the reason why there is no value.
-pub fn row_line(row: &Row) -> String {
-    let text = value_text(row);
+pub fn row_line(row: &Row, language: Language) -> String {
+    let text = value_text(row, language);
     let said = if text.absent.is_empty() {
         [text.value, text.spread, text.unit].into_iter().filter(|part| !part.is_empty()).collect::<Vec<_>>().join(" ")
     } else {
-        format!("no value ({})", text.absent)
+        page::NO_VALUE_IN_LINE.with([name(text.absent)]).text(language)
     };
     // The last grade tried is the least demanding one.
     let outside = row.judged.last().is_some_and(|judged| judged.verdict == RowVerdict::Fail);
     let mark = match (row.note.is_empty(), outside) {
-        (false, _) => format!(" - {}", row.note),
-        (true, true) => " - outside".to_owned(),
+        (false, _) => format!(" - {}", row.note.text(language)),
+        (true, true) => format!(" - {}", page::OUTSIDE.of(language)),
         (true, false) => String::new(),
     };
-    format!("{}: {said}{mark}", row.label)
+    format!("{}: {said}{mark}", row.label.text(language))
 }
 
 /// A true minus sign, and groups of three from five digits on (SI Brochure, 9th edition, 5.4.4).
-fn typeset(number: &str) -> String {
+fn typeset(number: &str, language: Language) -> String {
     let (sign, digits) = number.strip_prefix('-').map_or(("", number), |rest| ("−", rest));
     let (whole, rest) = digits.split_at(digits.find('.').unwrap_or(digits.len()));
     if whole.len() < 5 || !whole.bytes().all(|b| b.is_ascii_digit()) {
-        return format!("{sign}{digits}");
+        return language.figure(&format!("{sign}{digits}"));
     }
     let mut grouped = String::new();
     for (i, digit) in whole.chars().enumerate() {
@@ -115,16 +123,17 @@ fn typeset(number: &str) -> String {
         }
         grouped.push(digit);
     }
-    format!("{sign}{grouped}{rest}")
+    language.figure(&format!("{sign}{grouped}{rest}"))
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::phrase::Saying;
 
     fn row(measurand: &str, value: Value) -> Row {
-        let label = measurand::find(measurand).map_or("look", |m| m.name).to_owned();
-        let (step, note) = (String::new(), String::new());
+        let label = measurand::find(measurand).map_or(Saying::outside("look"), |m| (&m.name).into());
+        let (step, note) = (String::new(), Saying::none());
         Row {
             step,
             measurand: measurand.to_owned(),
@@ -143,21 +152,32 @@ mod tests {
 
     #[test]
     fn lines_of_every_kind_of_value() {
-        let line = |m, v| row_line(&row(m, v));
+        let line = |m, v| row_line(&row(m, v), Language::English);
         assert_eq!(line("mode_spacing", number(998.73e6, 3.02e6)), "Mode spacing: 998.7 ± 3.0 MHz");
         assert_eq!(line("polarization_azimuth", number(-0.5, 0.01)), "Azimuth: −28.65 ± 0.57 °");
         assert_eq!(line("hop_count", Value::Count { value: 1, low: 0, high: 1 }), "Hops: 1 (0 to 1)");
         assert_eq!(line("extinction", Value::AtLeast(12_345.0)), "Extinction: ≥ 12\u{a0}345");
         assert_eq!(line("visual.mirror", Value::Word("clean".into())), "look: clean");
-        assert_eq!(line("power", Value::Absent("no meter".into())), "Power: no value (no meter)");
+        assert_eq!(line("power", Value::Absent(Saying::outside("no meter"))), "Power: no value (no meter)");
         assert_eq!(line("power", number(f64::NAN, 1.0)), "Power: no value (not a finite number)");
     }
 
     #[test]
+    fn german_has_a_comma_and_its_own_words() {
+        let line = |m, v| row_line(&row(m, v), Language::German);
+        assert_eq!(line("mode_spacing", number(998.73e6, 3.02e6)), "Modenabstand: 998,7 ± 3,0 MHz");
+        assert_eq!(line("polarization_azimuth", number(-0.5, 0.01)), "Azimut: −28,65 ± 0,57 °");
+        assert_eq!(line("hop_count", Value::Count { value: 1, low: 0, high: 1 }), "Modensprünge: 1 (0 bis 1)");
+        assert_eq!(line("extinction", Value::AtLeast(12_345.6)), "Polarisationsverhältnis: ≥ 12\u{a0}345,6");
+        assert_eq!(line("power", number(f64::NAN, 1.0)), "Leistung: kein Wert (keine endliche Zahl)");
+        assert_eq!(probability_text(1.0, Language::German), "> 0,999");
+    }
+
+    #[test]
     fn probabilities_claim_no_certainty() {
-        assert_eq!(probability_text(0.7479), "0.748");
-        assert_eq!(probability_text(1.0), "> 0.999");
-        assert_eq!(probability_text(0.0), "< 0.001");
-        assert_eq!(probability_text(f64::NAN), "");
+        assert_eq!(probability_text(0.7479, Language::English), "0.748");
+        assert_eq!(probability_text(1.0, Language::English), "> 0.999");
+        assert_eq!(probability_text(0.0, Language::English), "< 0.001");
+        assert_eq!(probability_text(f64::NAN, Language::English), "");
     }
 }

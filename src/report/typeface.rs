@@ -1,4 +1,4 @@
-//! The embedded typeface: widths of text, wrapping, shortening.
+//! The embedded typeface, set in one language: widths of text, wrapping, shortening, decimal signs.
 //! Must not shape: no ligatures, no kerning, one glyph a character.
 //! Main type: [`Typeface`].
 
@@ -7,36 +7,51 @@ use std::sync::LazyLock;
 use printpdf::ParsedFont;
 
 use super::scene::Style;
+use crate::phrase::{Language, Phrase, Saying};
 
 /// Smallest size at which text is set, pt.
 pub const SMALLEST: f64 = 6.5;
 /// Stands for every character that has no glyph.
 const MISSING: char = '□';
 
-/// Regular and bold weight.
+/// Regular and bold weight, and the language that is set in them.
+#[derive(Clone, Copy)]
 pub struct Typeface {
     /// Regular weight.
-    pub regular: ParsedFont,
+    pub regular: &'static ParsedFont,
     /// Bold weight.
-    pub bold: ParsedFont,
+    pub bold: &'static ParsedFont,
+    /// Language of the page.
+    pub language: Language,
 }
 
-static EMBEDDED: LazyLock<Option<Typeface>> = LazyLock::new(|| {
+/// Regular and bold weight as they were read.
+static EMBEDDED: LazyLock<Option<(ParsedFont, ParsedFont)>> = LazyLock::new(|| {
     let read = |bytes: &[u8], name: &str| {
         let mut font = ParsedFont::from_bytes(bytes, 0, &mut Vec::new())?;
         font.font_name = Some(name.to_owned());
         Some(font)
     };
-    Some(Typeface {
-        regular: read(include_bytes!("font/TubewrightSans-Regular.ttf"), "TubewrightSans-Regular")?,
-        bold: read(include_bytes!("font/TubewrightSans-Bold.ttf"), "TubewrightSans-Bold")?,
-    })
+    Some((
+        read(include_bytes!("font/TubewrightSans-Regular.ttf"), "TubewrightSans-Regular")?,
+        read(include_bytes!("font/TubewrightSans-Bold.ttf"), "TubewrightSans-Bold")?,
+    ))
 });
 
 impl Typeface {
     /// The typeface in the program; none only if its bytes were damaged when it was built.
-    pub fn embedded() -> Option<&'static Self> {
-        EMBEDDED.as_ref()
+    pub fn embedded(language: Language) -> Option<Self> {
+        EMBEDDED.as_ref().map(|(regular, bold)| Self { regular, bold, language })
+    }
+
+    /// A saying in the language of the page.
+    pub fn say(&self, saying: &Saying) -> String {
+        saying.text(self.language)
+    }
+
+    /// A phrase without places in the language of the page.
+    pub fn word(&self, phrase: &Phrase) -> &'static str {
+        phrase.of(self.language)
     }
 
     /// Text with every character that cannot be shown replaced by `□`, blanks of any kind by a space.
@@ -52,7 +67,7 @@ impl Typeface {
 
     /// Width of a text, pt; the same whole thousandths of an em that the PDF declares.
     pub fn width(&self, text: &str, style: Style) -> f64 {
-        let font = if style.bold { &self.bold } else { &self.regular };
+        let font = if style.bold { self.bold } else { self.regular };
         let per_em = f64::from(font.units_per_em.max(1));
         let advance = |c: char| {
             let glyph = font.lookup_glyph_index(c as u32).unwrap_or(0);
@@ -135,7 +150,7 @@ mod tests {
 
     #[test]
     fn has_every_sign_of_the_trade() {
-        let face = Typeface::embedded().unwrap();
+        let face = Typeface::embedded(Language::English).unwrap();
         let signs = "µμ±λσ°ΔντηΩ−…·×≥≤≈äöüÄÖÜßéłž²³–—′″‰";
         assert_eq!(face.printable(signs), signs);
         assert!(signs.chars().all(|c| face.bold.lookup_glyph_index(c as u32).is_some()));
@@ -145,7 +160,7 @@ mod tests {
 
     #[test]
     fn wrapped_lines_fit_and_lose_nothing() {
-        let face = Typeface::embedded().unwrap();
+        let face = Typeface::embedded(Language::English).unwrap();
         let text = "a few words, then-one-that-is-much-longer-than-any-line-could-be, and a few more";
         let lines = face.wrap(text, STYLE, 60.0, 99);
         assert!(lines.len() > 3 && lines.iter().all(|line| face.width(line, STYLE) <= 60.0));
@@ -157,7 +172,7 @@ mod tests {
 
     #[test]
     fn a_width_too_small_for_one_letter_ends() {
-        let face = Typeface::embedded().unwrap();
+        let face = Typeface::embedded(Language::English).unwrap();
         assert_eq!(face.wrap("ab", STYLE, 0.1, 9), ["a", "b"]);
         assert_eq!(face.shorten("ab", STYLE, 0.1), "…");
     }

@@ -4,6 +4,7 @@
 
 use crate::{
     measurand,
+    phrase::{Saying, name, opening, reasons},
     record::sheet::{Row, Value},
     uncertainty::{BudgetLine, Measured},
 };
@@ -18,7 +19,7 @@ pub(crate) struct Filled {
     /// Budget, SI.
     pub budget: Vec<BudgetLine>,
     /// One line of words, or empty.
-    pub note: String,
+    pub note: Saying,
 }
 
 impl Filled {
@@ -27,10 +28,10 @@ impl Filled {
         let (value, u, dof) = (measured.value, measured.u(), measured.dof());
         let k = measured.coverage_factor();
         if !(value.is_finite() && u.is_finite() && k.is_finite() && !dof.is_nan()) {
-            return Self::absent(measurand, "the arithmetic gave no finite number");
+            return Self::absent(measurand, &reasons::NOT_FINITE);
         }
         let value = Value::Number { value, u, expanded: k * u, k, dof };
-        Self { measurand: measurand.into(), value, budget: measured.budget.clone(), note: String::new() }
+        Self { measurand: measurand.into(), value, budget: measured.budget.clone(), note: Saying::none() }
     }
 
     /// A whole number known exactly or within an interval.
@@ -39,17 +40,17 @@ impl Filled {
     }
 
     /// No value, and why.
-    pub fn absent(measurand: &str, reason: impl Into<String>) -> Self {
+    pub fn absent(measurand: &str, reason: impl Into<Saying>) -> Self {
         Self::plain(measurand, Value::Absent(reason.into()))
     }
 
     /// Any value without a budget.
     pub fn plain(measurand: &str, value: Value) -> Self {
-        Self { measurand: measurand.into(), value, budget: Vec::new(), note: String::new() }
+        Self { measurand: measurand.into(), value, budget: Vec::new(), note: Saying::none() }
     }
 
     /// The same with a note.
-    pub fn noted(mut self, note: impl Into<String>) -> Self {
+    pub fn noted(mut self, note: impl Into<Saying>) -> Self {
         self.note = note.into();
         self
     }
@@ -75,13 +76,12 @@ impl Filled {
 }
 
 /// Name of a row on the sheet: the catalogue's, or the look's step in words.
-fn label(key: &str) -> String {
+fn label(key: &str) -> Saying {
     match measurand::find(key) {
-        Some(measurand) => measurand.name.to_owned(),
+        Some(measurand) => (&measurand.name).into(),
         None => {
             let words = key.strip_prefix("visual.").unwrap_or(key).replace('_', " ");
-            let mut letters = words.chars();
-            letters.next().map_or_else(String::new, |first| first.to_uppercase().collect::<String>() + letters.as_str())
+            Saying::of(opening(Saying::of(name(words))))
         }
     }
 }

@@ -23,6 +23,8 @@ impl Run {
         self.pass_done();
         self.end_if_done(at);
         let new = self.book.remarks.get(said..).unwrap_or(&[]).iter().cloned();
+        let language = self.identity.language();
+        let new = new.map(|saying| saying.text(language));
         surprise.into_iter().chain(new).map(|text| Remark { step: step.clone(), text }).collect()
     }
 

@@ -160,8 +160,10 @@ impl Run {
             }
             Wish::Reading(what) => Want::Reading(ReadingRequest { step, what, not_before_ms: 0 }),
             Wish::Ask { word, text, expects, high_voltage } => {
-                let caution = caution::of_question(&word, &expects, high_voltage).to_owned();
-                Want::Answer(Question { step, word, text, caution, expects, high_voltage })
+                let language = self.identity.language();
+                let caution = caution::of_question(&word, &expects, high_voltage);
+                let caution = caution.map_or_else(String::new, |caution| caution.of(language).to_owned());
+                Want::Answer(Question { step, word, text: text.text(language), caution, expects, high_voltage })
             }
             // Only a recipe whose every step wants nothing, before its first event.
             Wish::Nothing => Want::WaitUntil { step, elapsed_ms: self.elapsed_ms },

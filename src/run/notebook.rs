@@ -4,6 +4,7 @@
 
 use crate::{
     behaviour::{Glimpse, GlimpseMode, Hop, Swap, Warmup},
+    phrase::Saying,
     record::{
         event::Captured,
         finding::{CaptureFinding, ModeFinding},
@@ -81,7 +82,7 @@ pub(crate) struct Notebook {
     /// Monotonic ms of first light.
     pub first_light_ms: Option<u64>,
     /// The tube gives no light, and how that was seen.
-    pub dark: Option<String>,
+    pub dark: Option<Saying>,
     /// Captures of each step, in the order of the steps.
     captures: Vec<Taken>,
     /// Dwells.
@@ -101,9 +102,9 @@ pub(crate) struct Notebook {
     /// Chart of heights along the gain line.
     pub gain_chart: Option<GainChart>,
     /// Why there can be no verdict on the tube, as sentences.
-    pub holds: Vec<String>,
+    pub holds: Vec<Saying>,
     /// For a reader of the sheet.
-    pub remarks: Vec<String>,
+    pub remarks: Vec<Saying>,
 }
 
 impl Notebook {
@@ -191,7 +192,7 @@ impl Notebook {
     }
 
     /// Puts a sentence on the sheet, once.
-    pub fn remark(&mut self, sentence: impl Into<String>) {
+    pub fn remark(&mut self, sentence: impl Into<Saying>) {
         let sentence = sentence.into();
         if !self.remarks.contains(&sentence) {
             self.remarks.push(sentence);

@@ -10,14 +10,12 @@ use super::{Run, caution::caution, filled::Filled, reference};
 use crate::{
     limits::{Judging, Limits, judge},
     measurand,
+    phrase::{Phrase, Saying, figure, name, reasons, said, verdict},
     quantity::{FrequencyDifference, Resistance},
     record::sheet::{Instrument, MeasuredBy, Outcome, Revision, Row, Sheet, TubeVerdict, Value},
     station::{file::StationFile, standing},
     uncertainty::Certificate,
 };
-
-/// Stands on every record of the simulated bench (`architecture.md`, same input, same bytes).
-const SIMULATED: &str = "Simulated bench: not a measurement of a tube.";
 
 /// The sheet at this moment.
 pub(super) fn sheet_of(run: &Run) -> Sheet {
@@ -44,11 +42,11 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
     let measured_by = finished.filter(|_| complete && !initials.is_empty()).map(|ending| MeasuredBy {
         initials: initials.clone(),
         at: ending.at,
-        meaning: "measured".into(),
+        meaning: (&reasons::MEASURED).into(),
     });
     Sheet {
         identity: run.identity.clone(),
-        title: limits.title.clone(),
+        title: reference::title(run).unwrap_or_else(|| Saying::of(name(limits.title.clone()))),
         station: plan.station.station.clone(),
         started_at: run.opened_at,
         ended_at: finished.map(|ending| ending.at),
@@ -74,7 +72,7 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
 fn limits(run: &Run) -> Cow<'_, Limits> {
     let reference = run.plan.station.reference(&run.identity.serial).filter(|_| !run.identity.run_kind.is_product());
     match reference {
-        Some(reference) => Cow::Owned(reference::limits(reference, &run.plan.station.station)),
+        Some(reference) => Cow::Owned(reference::limits(reference)),
         None => Cow::Borrowed(&run.plan.limits),
     }
 }
@@ -90,8 +88,8 @@ fn stopped(reason: &str) -> TubeVerdict {
         outcome: Outcome::Stopped,
         grade: None,
         reject_code: None,
-        sentence: "stopped.".into(),
-        reason: reason.to_owned(),
+        sentence: (&verdict::STOPPED).into(),
+        reason: Saying::outside(reason),
     }
 }
 
@@ -106,7 +104,7 @@ fn rows(run: &Run) -> Vec<Row> {
         let pending =
             step.kind.fills(&step.name).into_iter().filter(|key| filled.iter().all(|row| row.measurand != *key));
         let why = why_open(run, index);
-        let pending = pending.map(|key| Filled::absent(&key, why.as_str()));
+        let pending = pending.map(|key| Filled::absent(&key, why));
         for row in filled.iter().cloned().chain(pending) {
             put(&mut rows, step.kind.word(), row, &step.name);
         }
@@ -114,13 +112,13 @@ fn rows(run: &Run) -> Vec<Row> {
     let mut rows: Vec<Row> = rows.into_iter().map(|(_, row)| row).collect();
     if run.identity.times_assumed {
         for row in rows.iter_mut().filter(|row| NEED_TIME.contains(&row.measurand.as_str())) {
-            row.value = Value::Absent("the captures carry no time (`# captured_at = …`)".into());
+            row.value = Value::Absent((&reasons::NO_TIMES).into());
             row.budget = Vec::new();
-            row.note = String::new();
+            row.note = Saying::none();
         }
         // Counts stand, rates do not.
         for row in rows.iter_mut().filter(|row| ["hop_count", "swap_count"].contains(&row.measurand.as_str())) {
-            row.note = String::new();
+            row.note = Saying::none();
         }
     }
     // Stable: equal ranks stay in the order of the recipe.
@@ -139,26 +137,26 @@ fn put(rows: &mut Vec<(&'static str, Row)>, kind: &'static str, row: Filled, ste
 }
 
 /// Why a step has not filled its row.
-fn why_open(run: &Run, index: usize) -> String {
+fn why_open(run: &Run, index: usize) -> &'static Phrase {
     if run.book.dark.is_some() {
-        return "the tube gives no light".into();
+        return &reasons::TUBE_DARK;
     }
     match &run.ending {
-        Some(ending) if ending.stopped.is_some() => "stopped before it was measured".into(),
-        _ if index < run.current => "the step gave no value".into(),
-        _ => "not measured yet".into(),
+        Some(ending) if ending.stopped.is_some() => &reasons::STOPPED_BEFORE,
+        _ if index < run.current => &reasons::STEP_GAVE_NONE,
+        _ => &reasons::NOT_YET,
     }
 }
 
-fn remarks(run: &Run) -> Vec<String> {
-    let simulated = run.identity.simulated.then(|| SIMULATED.to_owned());
-    let captures = run.identity.from_captures.then(|| "Measured from a folder of captures, not at a bench.".to_owned());
-    let untimed =
-        run.identity.times_assumed.then(|| "The captures carry no time: they were taken in their order.".to_owned());
-    let dark = run.book.dark.as_ref().map(|how| format!("Dark tube: {how}."));
-    let stopped = run.ending.as_ref().and_then(|ending| ending.stopped.as_ref()).map(|why| format!("Stopped: {why}"));
+fn remarks(run: &Run) -> Vec<Saying> {
+    let simulated = run.identity.simulated.then(|| Saying::from(&reasons::SIMULATED));
+    let captures = run.identity.from_captures.then(|| (&reasons::FROM_CAPTURES).into());
+    let untimed = run.identity.times_assumed.then(|| (&reasons::UNTIMED).into());
+    let dark = run.book.dark.as_ref().map(|how| reasons::DARK_TUBE.with([said(how.clone())]));
+    let stopped = run.ending.as_ref().and_then(|ending| ending.stopped.as_ref());
+    let stopped = stopped.map(|why| reasons::STOPPED.with([said(Saying::outside(why))]));
     let reference = (!run.identity.run_kind.is_product())
-        .then(|| format!("Reference tube of {}: judges the bench, not the tube.", run.plan.station.station));
+        .then(|| reasons::REFERENCE_TUBE.with([name(run.plan.station.station.clone())]));
     let all = simulated.into_iter().chain(reference).chain(captures).chain(untimed).chain(dark).chain(stopped);
     all.chain(run.book.remarks.iter().cloned()).collect()
 }
@@ -166,7 +164,7 @@ fn remarks(run: &Run) -> Vec<String> {
 /// The instruments of the station with what their certificates say.
 fn instruments(station: &StationFile, day: Option<NaiveDate>) -> Vec<Instrument> {
     let percent = |u: f64| format!("{} %", (u * 1e6).round() / 1e4);
-    let one = |role: &str, what: String, certificate: Option<&Certificate>| Instrument {
+    let one = |role: &'static Phrase, what: Saying, certificate: Option<&Certificate>| Instrument {
         role: role.into(),
         what,
         certificate: certificate.map_or_else(String::new, |certificate| certificate.number.clone()),
@@ -174,20 +172,24 @@ fn instruments(station: &StationFile, day: Option<NaiveDate>) -> Vec<Instrument>
         overdue: certificate.zip(day).is_some_and(|(certificate, day)| certificate.overdue_on(day)),
     };
     let interferometer = station.interferometer.as_ref().map(|it| {
-        let what = format!("{} ± {}", FrequencyDifference::from_si(it.fsr), percent(it.fsr_u));
-        one("interferometer", what, it.certificate.as_ref())
+        let what = reasons::RANGE.with([figure(FrequencyDifference::from_si(it.fsr)), figure(percent(it.fsr_u))]);
+        one(&reasons::INTERFEROMETER, what, it.certificate.as_ref())
     });
     let power_meter = station.power_meter.as_ref().map(|it| {
-        let what = format!("reading × {} ± {}", it.factor, percent(it.u));
-        one("power meter", what, it.certificate.as_ref())
+        let what = reasons::READING_TIMES.with([figure(it.factor), figure(percent(it.u))]);
+        one(&reasons::POWER_METER, what, it.certificate.as_ref())
     });
     let supply = station.supply.as_ref().map(|it| {
-        let what = format!("ballast {}, readings ± {}", Resistance::from_si(it.ballast), percent(it.u));
-        one("supply", what, it.certificate.as_ref())
+        let what = reasons::BALLAST.with([figure(Resistance::from_si(it.ballast)), figure(percent(it.u))]);
+        one(&reasons::SUPPLY, what, it.certificate.as_ref())
     });
     let polarizer = station.polarizer.as_ref().map(|it| {
         let u_angle = (it.u_angle.to_degrees() * 1e4).round() / 1e4;
-        one("polarizer", format!("{}:1, angle ± {u_angle}°", it.extinction), None)
+        one(
+            &reasons::POLARIZER,
+            reasons::EXTINCTION_ANGLE.with([figure(it.extinction), figure(format!("{u_angle}°"))]),
+            None,
+        )
     });
     [interferometer, power_meter, supply, polarizer].into_iter().flatten().collect()
 }

@@ -7,7 +7,10 @@ use super::{
     notebook::{Notebook, Seen},
     pool::{Pooled, pool},
 };
-use crate::tube::mirror_spacing;
+use crate::{
+    phrase::{Saying, figure, reasons, said},
+    tube::mirror_spacing,
+};
 
 /// The spacing over the captures that show two modes or more.
 pub(crate) fn pooled<'a>(captures: impl IntoIterator<Item = &'a Seen>) -> Option<Pooled> {
@@ -20,19 +23,20 @@ pub(crate) fn pooled<'a>(captures: impl IntoIterator<Item = &'a Seen>) -> Option
 }
 
 /// Both rows, the spacing noted in the book; none without a spacing.
-pub(crate) fn rows(pooled: Option<Pooled>, from: &str, book: &mut Notebook) -> Option<[Filled; 2]> {
+pub(crate) fn rows(pooled: Option<Pooled>, from: Saying, book: &mut Notebook) -> Option<[Filled; 2]> {
     let pooled = pooled?;
     let spacing = &pooled.measured;
-    let mut note = format!("from {} capture{} {from}", pooled.used, if pooled.used == 1 { "" } else { "s" });
+    let phrase = if pooled.used == 1 { &reasons::FROM_ONE } else { &reasons::FROM_MANY };
+    let mut note = phrase.with([figure(pooled.used), said(from)]);
     if pooled.left_out > 0 {
-        note += &format!(", {} that stood apart left out", pooled.left_out);
+        note = reasons::LEFT_OUT.with([said(note), figure(pooled.left_out)]);
     }
     if let Some(birge) = pooled.birge.filter(|birge| *birge > 1.0) {
-        note += &format!("; Birge ratio {birge:.2}");
+        note = reasons::BIRGE.with([said(note), figure(format!("{birge:.2}"))]);
     }
     let mirror = match mirror_spacing(spacing) {
         Some(mirror) => Filled::number("mirror_spacing", &mirror),
-        None => Filled::absent("mirror_spacing", "the mode spacing is not above zero"),
+        None => Filled::absent("mirror_spacing", &reasons::SPACING_NOT_POSITIVE),
     };
     let rows = [Filled::number("mode_spacing", spacing).noted(note), mirror];
     book.spacing = Some(pooled.measured);

@@ -12,6 +12,7 @@ use super::{
 use crate::{
     gauge::reference::{ALARM, Target, drifts, inside},
     measurand,
+    phrase::{Piece, Saying, figure, minute, name, said, verdict::*, within},
     record::reference::{CheckedValue, ReferenceCheck},
 };
 
@@ -32,7 +33,7 @@ pub enum Standing {
         /// The last check.
         last: DateTime<Tz>,
         /// In words.
-        why: String,
+        why: Saying,
     },
     /// Checked within the shift, and in bounds.
     Good {
@@ -72,38 +73,33 @@ pub fn counted<'a>(
 }
 
 /// What is wrong with a check, for people; none if all of it is in order.
-pub fn out_of_bounds(reference: &Reference, check: &ReferenceCheck) -> Option<String> {
+pub fn out_of_bounds(reference: &Reference, check: &ReferenceCheck) -> Option<Saying> {
     targets(reference).iter().find_map(|target| match check.value(&target.measurand) {
-        None => Some(format!("{} was not measured", name(&target.measurand))),
+        None => Some(CHECK_LACKS.with([label(&target.measurand)])),
         Some(found) if !inside(target, found.value) => Some(stray(target, found)),
-        Some(CheckedValue { sums: Some(sums), .. }) if drifts(*sums) => Some(format!(
-            "{} drifts: its cumulative sum stands at {:.1} standard deviations, and {ALARM} is the alarm",
-            name(&target.measurand),
-            sums.0.max(sums.1)
-        )),
+        Some(CheckedValue { sums: Some(sums), .. }) if drifts(*sums) => {
+            let sum = figure(format!("{:.1}", sums.0.max(sums.1)));
+            Some(CHECK_DRIFTS.with([label(&target.measurand), sum, figure(ALARM)]))
+        }
         Some(_) => None,
     })
 }
 
-fn name(key: &str) -> String {
-    measurand::find(key).map_or(key.to_owned(), |measurand| measurand.name.to_lowercase())
+fn label(key: &str) -> Piece {
+    measurand::find(key).map_or_else(|| name(key), |measurand| within(&measurand.name))
 }
 
 /// "power 0.950 mW is 0.040 mW above 0.910 mW, and 0.027 mW is allowed".
-fn stray(target: &Target, found: &CheckedValue) -> String {
-    let shown = |si: f64| match measurand::find(&target.measurand) {
-        Some(m) => format!("{:.*} {}", m.decimals, m.shown(si), m.unit().symbol).trim_end().to_owned(),
-        None => si.to_string(),
+fn stray(target: &Target, found: &CheckedValue) -> Saying {
+    let shown = |si: f64| {
+        figure(match measurand::find(&target.measurand) {
+            Some(m) => format!("{:.*} {}", m.decimals, m.shown(si), m.unit().symbol).trim_end().to_owned(),
+            None => si.to_string(),
+        })
     };
-    format!(
-        "{} {} is {} {} {}, and {} is allowed",
-        name(&target.measurand),
-        shown(found.value),
-        shown((found.value - target.value).abs()),
-        if found.value < target.value { "below" } else { "above" },
-        shown(target.value),
-        shown(target.within)
-    )
+    let side = if found.value < target.value { &CHECK_BELOW } else { &CHECK_ABOVE };
+    let away = shown((found.value - target.value).abs());
+    side.with([label(&target.measurand), shown(found.value), away, shown(target.value), shown(target.within)])
 }
 
 /// How every reference tube of a station stands, in the order of its file.
@@ -130,7 +126,7 @@ pub fn standings<'a>(
 /// Why a bench gives no verdict on a tube at a moment, a sentence each; empty if it is in order.
 ///
 /// * `checks`: at least the last one of every reference tube; none where nobody looked (an earlier version of the program).
-pub fn holds(station: &StationFile, at: DateTime<FixedOffset>, checks: Option<&[ReferenceCheck]>) -> Vec<String> {
+pub fn holds(station: &StationFile, at: DateTime<FixedOffset>, checks: Option<&[ReferenceCheck]>) -> Vec<Saying> {
     let mut holds = station.overdue_on(at.date_naive());
     let standings = checks.map_or_else(Vec::new, |checks| standings(station, at, checks));
     holds.extend(standings.iter().filter_map(|(tube, standing)| sentence(&tube.serial, standing)));
@@ -138,19 +134,14 @@ pub fn holds(station: &StationFile, at: DateTime<FixedOffset>, checks: Option<&[
 }
 
 /// A standing that holds, in words: what, since when or by how much, what to do.
-fn sentence(serial: &str, standing: &Standing) -> Option<String> {
+fn sentence(serial: &str, standing: &Standing) -> Option<Saying> {
+    let tube = name(serial);
+    let at = |moment: &DateTime<Tz>| minute(moment.naive_local());
     Some(match standing {
         Standing::Good { .. } => return None,
-        Standing::Never => format!("Reference tube {serial} was never checked here: inspect it first."),
-        Standing::Due { since, last } => format!(
-            "Reference tube {serial} is due since {}, the start of the shift; its last check was {}: inspect it first.",
-            clock(since),
-            clock(last)
-        ),
-        Standing::Out { last, why } => format!(
-            "Reference tube {serial} was out of bounds at {}: {why}; set the bench right and inspect it again.",
-            clock(last)
-        ),
+        Standing::Never => NEVER_CHECKED.with([tube]),
+        Standing::Due { since, last } => CHECK_DUE.with([tube, at(since), at(last)]),
+        Standing::Out { last, why } => CHECK_OUT.with([tube, at(last), said(why.clone())]),
     })
 }
 
@@ -175,7 +166,8 @@ pub fn unclosed(station: &StationFile, at: DateTime<FixedOffset>, checks: &[Refe
         let (serial, from, to) = (&reference.serial, clock(&shift.start), clock(&shift.end));
         match out_of_bounds(reference, check) {
             Some(why) => Some(format!(
-                "The shift {from} to {to} ended with reference tube {serial} out of bounds: {why}; see `tubewright station`."
+                "The shift {from} to {to} ended with reference tube {serial} out of bounds: {}; see `tubewright station`.",
+                why.english()
             )),
             None if in_it < 2 => Some(format!(
                 "The shift {from} to {to} has no end check of reference tube {serial}; see `tubewright station`."

@@ -2,7 +2,7 @@
 //! Must not fit.
 //! Main entry: [`detect`].
 
-use super::segment::{Segment, ranked};
+use super::segment::{Segment, ranked, sampled};
 use crate::numerics::{peaks, smoothing};
 
 /// A peak as first seen.
@@ -33,21 +33,53 @@ pub(super) struct Look {
     pub width: f64,
 }
 
-/// Finds peaks in two passes: the second on a signal smoothed by a third of the width the first one found.
+/// Samples beyond which a ramp is thinned for the first look.
+const LONG: usize = 65_536;
+/// Thinned samples that a line must keep.
+const LEAST_WIDTH: f64 = 12.0;
+
+/// Finds peaks; on a long ramp among means of blocks, as long as a line keeps a dozen of them: it needs less room and sees
+/// weak peaks better.
 pub(super) fn detect(segment: &Segment) -> Look {
-    let signal = &segment.signal;
-    let mut values = signal.clone();
-    let baseline = ranked(&mut values, 0.05);
+    let mut block = (segment.signal.len() / LONG).max(1);
+    while block > 1 {
+        let thinned: Vec<f64> =
+            segment.signal.chunks_exact(block).map(|c| c.iter().sum::<f64>() / block as f64).collect();
+        let look = look(&thinned, segment.noise / (block as f64).sqrt());
+        if look.width >= LEAST_WIDTH && !look.peaks.is_empty() {
+            return look.spread(block as f64);
+        }
+        block /= 4;
+    }
+    look(&segment.signal, segment.noise)
+}
+
+impl Look {
+    /// From blocks of samples to samples.
+    fn spread(mut self, block: f64) -> Self {
+        for peak in &mut self.peaks {
+            peak.x = peak.x * block + (block - 1.0) / 2.0;
+            peak.width *= block;
+        }
+        self.width *= block;
+        self
+    }
+}
+
+/// Finds peaks in two passes: the second on a signal smoothed by a third of the width the first one found.
+fn look(signal: &[f64], noise: f64) -> Look {
+    let baseline = ranked(&mut sampled(signal), 0.05);
     let range = signal.iter().copied().fold(f64::MIN, f64::max) - baseline;
-    let first = pass(signal, baseline, (LEAST_SIGMA * segment.noise * 1.4).max(0.05 * range));
+    let first = pass(signal, baseline, (LEAST_SIGMA * noise * 1.4).max(0.05 * range));
     let rough = typical_width(&first);
     // Noise can break a top into several peaks, each too narrow: smooth once and look again.
-    let smoothed = smoothing::moving_mean(signal, half_window(rough));
-    let again = pass(&smoothed, baseline, (LEAST_SIGMA * segment.noise).max(0.05 * range));
-    let width = typical_width(&again).max(1.0);
-    let half = half_window(width);
+    let half = half_window(rough);
     let smoothed = smoothing::moving_mean(signal, half);
-    let noise = segment.noise / (2.0 * half as f64 + 1.0).sqrt();
+    let again = pass(&smoothed, baseline, (LEAST_SIGMA * noise).max(0.05 * range));
+    let width = typical_width(&again).max(1.0);
+    let smoothed =
+        if half_window(width) == half { smoothed } else { smoothing::moving_mean(signal, half_window(width)) };
+    let noise = noise / (2.0 * half_window(width) as f64 + 1.0).sqrt();
     let top = smoothed.iter().cloned().fold(f64::MIN, f64::max) - baseline;
     let mut peaks = pass(&smoothed, baseline, (LEAST_SIGMA * noise).max(LEAST_SHARE * top));
     peaks.truncate_strongest(MOST);
@@ -74,7 +106,13 @@ fn half_window(width: f64) -> usize {
 }
 
 fn pass(signal: &[f64], baseline: f64, prominence: f64) -> Vec<Seen> {
-    let options = peaks::Options { min_prominence: Some(prominence), ..Default::default() };
+    // What stands out by so much stands so much above the lowest sample: all else need not be looked at.
+    let lowest = signal.iter().copied().fold(f64::INFINITY, f64::min);
+    let options = peaks::Options {
+        min_height: Some(lowest + prominence * (1.0 - 1e-9)),
+        min_prominence: Some(prominence),
+        ..Default::default()
+    };
     peaks::find(signal, &options)
         .into_iter()
         .map(|peak| Seen {

@@ -3,12 +3,16 @@
 //! Main entry: [`measure`].
 
 use super::{
-    Measurement, Refusal, Settings, Warning, assign,
+    Measurement, Refusal, Settings, Warning,
+    assign::{self, Assigned},
+    comb::Class,
     detect::{self, Look},
-    fitted, orders,
+    fitted::{self, Fitted},
+    flatten, orders,
     orders::Orders,
-    outcome,
+    outcome, repeat as own_repeat,
     segment::{self, Segment},
+    steady,
 };
 use crate::capture::Capture;
 
@@ -18,6 +22,25 @@ const FEWEST_SAMPLES: usize = 100;
 const LEAST_FINESSE: f64 = 6.0;
 /// Share of the peaks' height that must be found again one order on.
 const LEAST_REPEAT: f64 = 0.55;
+/// Fewest steps of the digitizer from the baseline to the highest peak: below that single steps look like peaks (found).
+const FEWEST_LEVELS: f64 = 12.0;
+/// A detector whose time constant is more line widths than this has run the lines together (found).
+const FAR_TOO_SLOW: f64 = 6.0;
+/// A spacing this near to a whole part of the nominal one is that.
+const NEAR_PART: f64 = 0.04;
+/// Change of one mode's height against the others' that no sound sweep has, and that which is worth a warning.
+const UNSTEADY: f64 = 0.35;
+const UNEVEN_HEIGHTS: f64 = 0.08;
+/// Reduced chi-square from which the baseline is looked at.
+const BAD_FIT: f64 = 8.0;
+/// A baseline that moves by this share of the highest peak is worth taking out.
+const MOVING: f64 = 0.015;
+/// Departure from even spacing, over the spacing, that says the ramp turned in the record.
+const UNEVEN: f64 = 0.01;
+/// A nominal spacing this near confirms one found without a ramp channel.
+const CONFIRMED: f64 = 0.05;
+/// Combined standard uncertainties by which two ramps of one record may differ.
+const AGREE: f64 = 4.0;
 
 /// Measures one capture.
 ///
@@ -48,26 +71,60 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
         return Err(Refusal::TooShort { samples: capture.photodiode.len() });
     }
     let segment = segment::find(capture);
-    result.noise = Some(segment.noise);
     if segment.signal.len() < FEWEST_SAMPLES {
+        result.noise = Some(segment.noise);
         return Err(Refusal::TooShort { samples: segment.signal.len() });
     }
-    warn_of_segment(&segment, result);
-    let look = detect::detect(&segment);
+    let before = result.clone();
+    // Only a record of several ramps repeats as a whole: then one of them is measured, and the next must say the same.
+    if !segment.has_ramp
+        && let Some(found) = by_own_repeat(capture, &segment, settings, &before)
+    {
+        *result = found;
+        return Ok(());
+    }
+    let first = attempt(&segment, settings, result);
+    if doubtful(&first, result)
+        && let Some(better) = without_baseline(&segment, settings, &before, result)
+    {
+        *result = better;
+        return Ok(());
+    }
+    first?;
+    if !segment.has_ramp && turns(result, settings) {
+        result.mode_spacing = None;
+        return Err(Refusal::NoTurn);
+    }
+    Ok(())
+}
+
+/// Measures one ramp.
+fn attempt(segment: &Segment, settings: &Settings, result: &mut Measurement) -> Result<(), Refusal> {
+    result.noise = Some(segment.noise);
+    warn_of_segment(segment, result);
+    let look = detect::detect(segment);
     let mean = segment.signal.iter().sum::<f64>() / segment.signal.len() as f64;
     result.mean_level = Some(mean - look.baseline);
     if look.peaks.is_empty() {
         result.dark = true;
         return Err(Refusal::Dark);
     }
+    let levels = look.peaks.iter().map(|peak| peak.height).fold(0.0, f64::max) / segment.step;
+    if levels < FEWEST_LEVELS {
+        return Err(Refusal::FewLevels { levels });
+    }
     if look.peaks.len() > MOST_LINES {
         return Err(Refusal::Clutter { count: look.peaks.len() });
     }
-    let orders = repeat(&look, &segment, settings)?;
-    let fitted = fitted::fit_lines(&segment, &look, &orders).ok_or(Refusal::NoFit)?;
+    let orders = repeat(&look, segment, settings)?;
+    let fitted = fitted::fit_lines(segment, &look, &orders).ok_or(Refusal::NoFit)?;
     if let Some(pole) = fitted.fit.pole {
         let time_constant = pole * segment.dt;
-        if pole > 0.3 * fitted.fit.width {
+        let ratio = pole / fitted.fit.width;
+        if ratio > FAR_TOO_SLOW {
+            return Err(Refusal::FarTooSlow { ratio });
+        }
+        if ratio > 0.3 {
             result.warnings.push(Warning::SlowDetector { time_constant });
         }
     }
@@ -75,8 +132,118 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
     if assigned.n_stray > 0 {
         result.warnings.push(Warning::Stray { count: assigned.n_stray });
     }
-    outcome::fill(&segment, &fitted, &assigned, settings, result);
+    outcome::fill(segment, &fitted, &assigned, settings, result);
+    doubt(&assigned, &fitted, segment, settings, result);
     Ok(())
+}
+
+/// Withdraws a spacing that looks sound and is not.
+fn doubt(assigned: &Assigned, fitted: &Fitted, segment: &Segment, settings: &Settings, result: &mut Measurement) {
+    let Some(spacing) = result.mode_spacing.as_ref().map(|spacing| spacing.value) else { return };
+    let withdraw = |refusal: Refusal, result: &mut Measurement| {
+        result.mode_spacing = None;
+        result.no_spacing = Some(refusal);
+    };
+    if let Some(nominal) = settings.nominal_spacing
+        && let ratio = spacing / nominal
+        // Twice nominal is a polarizing element in the way, and warned of by name.
+        && [1.0 / 4.0, 1.0 / 3.0, 1.0 / 2.0, 3.0, 4.0].iter().any(|part| (ratio / part - 1.0).abs() < NEAR_PART)
+    {
+        return withdraw(Refusal::FalseComb { spacing, nominal }, result);
+    }
+    if segment.n_clipped > 0 {
+        // Heights of clipped lines are guesses from their flanks.
+        return;
+    }
+    let on: Vec<&Class> = match &assigned.comb {
+        Ok(comb) => assigned.classes.iter().zip(&comb.teeth).filter(|(_, t)| t.is_some()).map(|(c, _)| c).collect(),
+        Err(_) => return,
+    };
+    let change = steady::height_change(&on, &fitted.fit);
+    if change > UNSTEADY {
+        withdraw(Refusal::Unsteady { change }, result);
+    } else if change > UNEVEN_HEIGHTS {
+        result.warnings.push(Warning::HeightsChange { change });
+    }
+}
+
+/// Whether another way to read the capture should be tried.
+fn doubtful(first: &Result<(), Refusal>, result: &Measurement) -> bool {
+    match first {
+        Err(Refusal::Dark | Refusal::FewLevels { .. } | Refusal::FarTooSlow { .. } | Refusal::Fringes { .. }) => false,
+        Err(_) => true,
+        Ok(()) => misfits(result) || result.no_spacing.is_some(),
+    }
+}
+
+/// The ramp once more without a baseline that moves; none if it does not move, or if that is no surer.
+///
+/// * `before`: the result before any attempt. `first`: what the plain attempt made of it.
+fn without_baseline(
+    segment: &Segment,
+    settings: &Settings,
+    before: &Measurement,
+    first: &Measurement,
+) -> Option<Measurement> {
+    let look = detect::detect(segment);
+    let top = look.peaks.iter().map(|peak| peak.height).fold(0.0, f64::max);
+    let (flat, moved) = flatten::flattened(segment, look.width)?;
+    let share = moved / top;
+    if share < MOVING {
+        return None;
+    }
+    // On the flat baseline the lines' width is better known: once more with that.
+    let look = detect::detect(&flat);
+    let (flat, _) = flatten::flattened(segment, look.width).unwrap_or((flat, moved));
+    let mut result = before.clone();
+    attempt(&flat, settings, &mut result).ok()?;
+    let surer = u_spacing(&result) < u_spacing(first) || (first.modes.is_empty() && !result.modes.is_empty());
+    result.warnings.push(Warning::Baseline { share });
+    surer.then_some(result)
+}
+
+/// A result from one ramp of a record without a ramp channel; the next ramp must say the same.
+fn by_own_repeat(
+    capture: &Capture,
+    segment: &Segment,
+    settings: &Settings,
+    before: &Measurement,
+) -> Option<Measurement> {
+    let (period, stretches) = own_repeat::stretches(segment)?;
+    let of = |range: (usize, usize)| {
+        let mut result = before.clone();
+        attempt(&segment::cut(capture, range, false), settings, &mut result).ok()?;
+        (!turns(&result, settings) && !misfits(&result) && result.mode_spacing.is_some()).then_some(result)
+    };
+    let mut best: Option<Measurement> = None;
+    for stretch in stretches {
+        let (Some(mut result), Some(again)) = (of(stretch.range), of(stretch.again)) else { continue };
+        let (Some(a), Some(b)) = (&result.mode_spacing, &again.mode_spacing) else { continue };
+        let agree = (a.value - b.value).abs() <= AGREE * a.u().hypot(b.u());
+        if agree && u_spacing(&result) < best.as_ref().map_or(f64::INFINITY, u_spacing) {
+            result.warnings.push(Warning::OwnRepeat { period });
+            best = Some(result);
+        }
+    }
+    best
+}
+
+fn u_spacing(result: &Measurement) -> f64 {
+    result.mode_spacing.as_ref().map_or(f64::INFINITY, |spacing| spacing.u())
+}
+
+/// Residuals far beyond the noise.
+fn misfits(result: &Measurement) -> bool {
+    result.warnings.iter().any(|w| matches!(w, Warning::Misfit { chi_square } if *chi_square > BAD_FIT))
+}
+
+/// Whether a record without a ramp channel looks as if the ramp turned within it: modes less even than a ramp without a turn
+/// leaves them, or lines that do not fit and a spacing that nothing confirms.
+fn turns(result: &Measurement, settings: &Settings) -> bool {
+    let Some(spacing) = result.mode_spacing.as_ref().map(|spacing| spacing.value) else { return false };
+    let uneven = |w: &Warning| matches!(w, Warning::UnevenComb { rms } if *rms > UNEVEN * spacing);
+    let confirmed = settings.nominal_spacing.is_some_and(|nominal| (spacing / nominal - 1.0).abs() < CONFIRMED);
+    result.warnings.iter().any(uneven) || (misfits(result) && !confirmed)
 }
 
 fn check(settings: &Settings) -> Result<(), Refusal> {

@@ -56,6 +56,30 @@ pub enum Refusal {
     NoFit,
     /// The scale is not determined by what was seen.
     WeakScale,
+    /// The detector follows the ramp so slowly that lines run into each other.
+    FarTooSlow {
+        /// Its time constant over the time the ramp takes for one line.
+        ratio: f64,
+    },
+    /// The digitizer has too few steps on the highest peak.
+    FewLevels {
+        /// Steps from the baseline to the highest peak.
+        levels: f64,
+    },
+    /// Modes change in height from order to order, not all alike.
+    Unsteady {
+        /// Greatest change of one against the others, as a share.
+        change: f64,
+    },
+    /// A whole part or a multiple of the nominal spacing.
+    FalseComb {
+        /// The spacing found, Hz.
+        spacing: f64,
+        /// The nominal one, Hz.
+        nominal: f64,
+    },
+    /// Without a ramp channel, and the record is not one ramp without a turn.
+    NoTurn,
     /// A setting is not usable.
     Setting(String),
 }
@@ -111,6 +135,39 @@ impl fmt::Display for Refusal {
                 f,
                 "the peaks seen do not fix the frequency scale; raise the ramp until every mode shows at least twice"
             ),
+            Self::FarTooSlow { ratio } => write!(
+                f,
+                "the detector is far too slow for this ramp: its time constant is {ratio:.0} times what the ramp takes for one \
+                 line; slow the ramp tenfold, or take the low-pass filter out"
+            ),
+            Self::FewLevels { levels } => write!(
+                f,
+                "the highest peak is only {levels:.0} steps of the digitizer high; raise the gain until it fills half of the range"
+            ),
+            Self::Unsteady { change } => write!(
+                f,
+                "one mode changes in height by {:.0} % against the others from order to order: the tube hopped or swapped in \
+                 mid-sweep, or two captures were spliced; take another capture",
+                change * 100.0
+            ),
+            Self::FalseComb { spacing, nominal } => {
+                let (spacing, nominal) = (spacing / 1e6, nominal / 1e6);
+                write!(f, "the spacing reads {spacing:.1} MHz, ")?;
+                if spacing < nominal {
+                    write!(
+                        f,
+                        "a whole part of the nominal {nominal:.1} MHz: light between the modes looks like a comb of its own; "
+                    )?;
+                } else {
+                    write!(f, "a multiple of the nominal {nominal:.1} MHz: modes between those seen are missing; ")?;
+                }
+                write!(f, "realign, set the gain so that no peak is lost, and repeat")
+            }
+            Self::NoTurn => write!(
+                f,
+                "no usable ramp channel, and the modes come out as if the ramp turned within the record; record the ramp, or at \
+                 least two and a half of its periods"
+            ),
             Self::Setting(what) => f.write_str(what),
         }
     }
@@ -165,6 +222,21 @@ pub enum Warning {
     FewOrders,
     /// The digitizer's steps are coarser than the noise.
     CoarseSteps,
+    /// The ramp was cut out by the repeat of the signal.
+    OwnRepeat {
+        /// Samples of one ramp period.
+        period: f64,
+    },
+    /// A moving baseline was taken out.
+    Baseline {
+        /// How far it moved, of the highest peak.
+        share: f64,
+    },
+    /// Modes change in height from order to order, not all alike, by less than what is refused.
+    HeightsChange {
+        /// Greatest change of one against the others, as a share.
+        change: f64,
+    },
 }
 
 impl fmt::Display for Warning {
@@ -212,6 +284,21 @@ impl fmt::Display for Warning {
             ),
             Self::FewOrders => write!(f, "two orders only: the curvature of the ramp rests on the comb itself"),
             Self::CoarseSteps => write!(f, "the digitizer's steps are coarser than the noise"),
+            Self::OwnRepeat { period } => {
+                write!(f, "one ramp was cut out by the signal's own repeat, every {period:.0} samples; record the ramp")
+            }
+            Self::Baseline { share } => write!(
+                f,
+                "the baseline moves by {:.0} % of the highest peak (mains, ambient light, coupling or the ramp itself); it was \
+                 taken out: shield the photodiode",
+                share * 100.0
+            ),
+            Self::HeightsChange { change } => write!(
+                f,
+                "one mode changes in height by {:.0} % against the others from order to order: the tube may have hopped in \
+                 mid-sweep, or the gain is not linear; repeat",
+                change * 100.0
+            ),
         }
     }
 }

@@ -54,12 +54,21 @@ const SLOPE_SHARE: f64 = 0.3;
 /// Blocks without slope inside a ramp that do not end it: a monitor of forty levels stands still for two.
 const ODD_BLOCKS: usize = 3;
 
-/// Finds the longest one-way ramp of a capture and prepares its signal.
+/// A ramp this many times quicker than another is a flyback.
+const FLYBACK: usize = 4;
+
+/// Finds the longest one-way ramp of a capture and prepares its signal; the whole capture where no channel ramps.
 pub(super) fn find(capture: &Capture) -> Segment {
     let n = capture.photodiode.len();
     let found = capture.ramp.as_deref().filter(|ramp| ramp.len() == n).and_then(longest_ramp);
-    let has_ramp = found.is_some();
-    let (start, end) = found.unwrap_or((0, n));
+    cut(capture, found.unwrap_or((0, n)), found.is_some())
+}
+
+/// Cuts samples (first, one past last) out of a capture and prepares their signal.
+///
+/// * `has_ramp`: the ramp channel runs one way there; else time stands for it.
+pub(super) fn cut(capture: &Capture, (start, end): (usize, usize), has_ramp: bool) -> Segment {
+    let n = capture.photodiode.len();
     let line = match (&capture.ramp, has_ramp) {
         (Some(ramp), true) => ramp_line(&ramp[start..end]),
         _ => None,
@@ -71,14 +80,16 @@ pub(super) fn find(capture: &Capture) -> Segment {
     let main = &capture.photodiode[start..end];
     let crossed = capture.crossed.as_ref().filter(|crossed| crossed.len() == n).map(|crossed| &crossed[start..end]);
     // One photodiode may see one family of modes only: peaks are sought in both together.
-    let all: Vec<f64> = match crossed {
+    let mut signal: Vec<f64> = match crossed {
         Some(crossed) => main.iter().zip(crossed).map(|(a, b)| a + b).collect(),
         None => main.to_vec(),
     };
-    let inverted = points_down(&all);
+    let inverted = points_down(&signal);
+    if inverted {
+        signal.iter_mut().for_each(|v| *v = -*v);
+    }
     let upward = |values: &[f64]| if inverted { values.iter().map(|v| -v).collect() } else { values.to_vec() };
     let pair = crossed.map(|crossed| (upward(main), upward(crossed)));
-    let signal = upward(&all);
     let (noise, step) = noise_of(&signal);
     let (mut usable, mut n_clipped) = unclipped(&signal, noise, step);
     if let Some((main, crossed)) = &pair {
@@ -155,7 +166,10 @@ fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
     }
     let span = |r: &(usize, usize)| (means[r.1] - means[r.0]).abs();
     let widest = joined.iter().map(span).fold(0.0, f64::max);
-    let best = joined.iter().filter(|r| span(r) >= 0.5 * widest).max_by_key(|r| r.1 - r.0)?;
+    let longest = |share: f64| joined.iter().filter(|r| span(r) >= share * widest).max_by_key(|r| r.1 - r.0);
+    let (whole, part) = (longest(0.5)?, longest(0.2)?);
+    // A flyback shows every order, but too fast: the part of the slow ramp that was recorded is preferred.
+    let best = if part.1 - part.0 >= FLYBACK * (whole.1 - whole.0) { part } else { whole };
     // Block means stand in the middle of their block: run[0] to run[1] in means; keep whole blocks between.
     let start = (best.0 * block + block / 2).min(n);
     let end = (best.1 * block + block / 2 + 1).min(n);
@@ -189,6 +203,14 @@ fn reference_on((start, slope): (f64, f64), n: usize) -> f64 {
     ((middle / unit).round() * unit - start) / slope
 }
 
+/// Samples that are enough for a quantile: a hundred thousand would say the same.
+const ENOUGH: usize = 8192;
+
+/// Every so many values, such that about [`ENOUGH`] are left.
+pub(super) fn sampled(values: &[f64]) -> Vec<f64> {
+    values.iter().copied().step_by((values.len() / ENOUGH).max(1)).collect()
+}
+
 /// The value below which a share of the values lies; reorders them. Selection, not sorting: a capture has many samples.
 pub(super) fn ranked(values: &mut [f64], share: f64) -> f64 {
     let Some(last) = values.len().checked_sub(1) else { return 0.0 };
@@ -198,19 +220,24 @@ pub(super) fn ranked(values: &mut [f64], share: f64) -> f64 {
 
 /// Whether the peaks point downward: the signal leans further below its median than above.
 fn points_down(signal: &[f64]) -> bool {
-    let mut values: Vec<f64> = signal.to_vec();
+    let mut values = sampled(signal);
     let (low, median, high) = (ranked(&mut values, 0.001), ranked(&mut values, 0.5), ranked(&mut values, 0.999));
     median - low > 2.0 * (high - median)
 }
 
 /// Noise from the median size of differences of neighbours, and the smallest step between levels.
 fn noise_of(signal: &[f64]) -> (f64, f64) {
-    let mut sizes: Vec<f64> = signal.windows(2).map(|w| (w[1] - w[0]).abs()).collect();
+    let every = (signal.len() / ENOUGH).max(1);
+    let mut sizes: Vec<f64> = signal.windows(2).step_by(every).map(|w| (w[1] - w[0]).abs()).collect();
     if sizes.is_empty() {
         return (0.0, 0.0);
     }
     let largest = sizes.iter().copied().fold(0.0, f64::max);
-    let step = sizes.iter().copied().filter(|s| *s > 1e-9 * largest).fold(f64::INFINITY, f64::min);
+    let mut step = f64::INFINITY;
+    for pair in signal.windows(2) {
+        let size = (pair[1] - pair[0]).abs();
+        step = if size > 1e-9 * largest && size < step { size } else { step };
+    }
     let step = if step.is_finite() { step } else { 0.0 };
     // |difference| of two normal deviates has its median at 0.6745·√2 σ.
     let by_median = ranked(&mut sizes, 0.5) / (0.674_489_75 * std::f64::consts::SQRT_2);

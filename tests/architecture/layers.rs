@@ -9,7 +9,7 @@ use super::tokens::paths;
 /// Modules from the bottom up. Those that are still to come have their place.
 pub const LAYERS: &[&[&str]] = &[
     &["numerics", "quantity"],
-    &["constants", "uncertainty"],
+    &["constants", "uncertainty", "phrase"],
     &["measurand", "tube", "capture", "sweep", "behaviour", "record"],
     &["limits", "recipe", "phantom"],
     &["station", "run", "quality", "lots", "gauge", "seal", "report"],
@@ -42,6 +42,7 @@ const ONLY: &[(&str, &[&str])] = &[
     ("numerics", &[]),
     ("quantity", &[]),
     ("constants", &["quantity"]),
+    ("phrase", &[]),
     ("uncertainty", &["quantity", "numerics"]),
     ("phantom", &["quantity", "constants"]),
 ];

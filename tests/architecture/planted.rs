@@ -135,3 +135,19 @@ fn kinds() {
     assert_eq!(finds("kinds", "run/fold.rs", "use crate::recipe::StepKind;"), [1]);
     assert_eq!(finds("kinds", "run/steps/mod.rs", "use crate::recipe::StepKind;"), NONE);
 }
+
+#[test]
+fn sentences_outside_the_table() {
+    let of = |path: &str, text: &str| finds("sentences", path, text);
+    assert_eq!(of("run/a.rs", "let a = 1;\nValue::Absent(Saying::outside(\"no light\"));"), [2]);
+    assert_eq!(
+        of("run/a.rs", "A.with([name(\"a few words\")]);\nstatic A: Phrase = Phrase::new(\"a\", \"b\");"),
+        [1, 2]
+    );
+    assert_eq!(
+        of("run/a.rs", "Saying::outside(reason); name(step); // name(\"a\")\nlet a = file_name(\"a\"); b.name(\"a\");"),
+        NONE
+    );
+    assert_eq!(of("phrase/page.rs", "static A: Phrase = Phrase::new(\"a\", \"b\");"), NONE);
+    assert_eq!(of("run/a.rs", "#[cfg(test)]\nmod tests {\n    fn a() { Saying::outside(\"b\"); }\n}"), NONE);
+}

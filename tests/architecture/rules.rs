@@ -137,3 +137,28 @@ pub fn kinds(file: &Source) -> Vec<Breach> {
     let found = words(&file.code).into_iter().filter(|(line, word)| word == "StepKind" && !file.is_test(*line));
     found.map(|(line, _)| (file.path.clone(), line, "`StepKind` outside the table of kinds".to_owned())).collect()
 }
+
+/// Where phrases are written down: the table, and the names of the catalogue.
+const PHRASES: &[&str] = &["phrase/", "measurand/catalogue.rs"];
+
+/// Rule: no sentence of a sheet outside the table. A literal goes into a saying through none of its doors.
+pub fn sentences(file: &Source) -> Vec<Breach> {
+    if PHRASES.iter().any(|place| file.path.starts_with(place)) {
+        return Vec::new();
+    }
+    let doors = ["Saying::outside(", "Saying::of(name(", "name(", "Phrase::new("];
+    let opens = |text: &str, code: &str| {
+        doors.iter().any(|door| {
+            text.match_indices(&format!("{door}\"")).any(|(at, _)| {
+                let before = text[..at].chars().next_back();
+                // A longer name, a method or a path is another function; a comment is masked in the code.
+                let own = before.is_none_or(|c| !c.is_alphanumeric() && !"_.".contains(c));
+                own && code.get(at..at + door.len()) == Some(*door)
+            })
+        })
+    };
+    let lines = file.text.lines().zip(file.code.lines()).enumerate();
+    let found = lines.filter(|(i, (text, code))| !file.is_test(i + 1) && opens(text, code));
+    let what = "a literal on the sheet; write it as a phrase in `src/phrase/`";
+    found.map(|(i, _)| (file.path.clone(), i + 1, what.to_owned())).collect()
+}

@@ -23,9 +23,9 @@ fn alone(brisk: Brisk) -> Brisk {
 }
 
 #[track_caller]
-fn absent<'a>(driven: &'a Driven, key: &str) -> &'a str {
+fn absent(driven: &Driven, key: &str) -> String {
     match &driven.row(key).value {
-        Value::Absent(reason) => reason,
+        Value::Absent(reason) => reason.english(),
         other => panic!("{key}: {other:?}"),
     }
 }
@@ -67,7 +67,7 @@ fn a_supply_that_ripples_is_read_within_its_uncertainty_on_either_mains() {
             (found - ripple.hypot(brisk.bench.supply_ripple)).abs() < expanded,
             "{found} ± {expanded} at {mains} Hz"
         );
-        let note = &driven.row("line_ripple").note;
+        let note = driven.row("line_ripple").note.english();
         assert!(note.contains(&format!("{mains:.2} Hz")), "{note}");
         // The ripple is no noise.
         let (noise, _, expanded) = driven.number("noise_rms");
@@ -83,10 +83,11 @@ fn a_tone_is_named_by_what_it_does() {
     assert!((level / 2e-3 - 1.0).abs() < 0.01 + 4.0 * u / 2e-3, "{level} ± {u}");
     let (frequency, u, _) = fixed.number("tone_frequency");
     assert!((frequency - 210e3).abs() < 4.0 * u, "{frequency} ± {u}");
-    assert!(fixed.row("tone_level").note.contains("stayed"));
+    assert!(fixed.row("tone_level").note.english().contains("stayed"));
     // Three modes of a warming tube beat at a frequency that sweeps.
     let beats = alone(Brisk::quad()).with(|tube| tube.beat_level = 2e-3);
-    let moved = (1..=6).filter(|seed| beats.drive(*seed).row("tone_level").note.contains("beat of modes")).count();
+    let moved =
+        (1..=6).filter(|seed| beats.drive(*seed).row("tone_level").note.english().contains("beat of modes")).count();
     assert!(moved >= 4, "a beat below 2 kHz is in the slow trace, taken once: {moved} of 6");
 }
 

@@ -5,6 +5,7 @@
 use chrono::{DateTime, FixedOffset, NaiveDate};
 use tubewright::{
     measurand,
+    phrase::{Saying, opening},
     record::{event::Identity, finding::Trace, sheet::*},
     uncertainty::{BudgetLine, Evaluation},
 };
@@ -26,7 +27,7 @@ pub fn number(key: &str, value: f64, expanded: f64) -> Value {
 }
 
 pub fn row(step: &str, key: &str, value: Value) -> Row {
-    let label = measurand::find(key).map_or_else(|| key.replace("visual.", ""), |m| m.name.to_owned());
+    let label = measurand::find(key).map_or_else(|| say(key.replace("visual.", "")), |m| (&m.name).into());
     Row {
         step: step.into(),
         measurand: key.into(),
@@ -35,7 +36,7 @@ pub fn row(step: &str, key: &str, value: Value) -> Row {
         budget: vec![],
         judged: vec![],
         deciding: false,
-        note: String::new(),
+        note: Saying::none(),
     }
 }
 
@@ -71,8 +72,7 @@ fn count(step: &str, key: &str, value: u64, lower: Option<f64>, upper: Option<f6
 
 fn look(name: &str, word: &str) -> Row {
     let mut row = row(name, &format!("visual.{name}"), Value::Word(word.into()));
-    row.label = name.replace('_', " ");
-    row.label[..1].make_ascii_uppercase();
+    row.label = Saying::of(opening(say(name.replace('_', " "))));
     row.judged = vec![Judged { wanted: vec!["clean".into()], ..judged("", "", None, None, None) }];
     row
 }
@@ -159,7 +159,12 @@ fn walk_chart() -> WalkChart {
 
 fn instrument(role: &str, what: &str, certificate: &str) -> Instrument {
     let due = NaiveDate::from_ymd_opt(2027, 1, 12);
-    Instrument { role: role.into(), what: what.into(), certificate: certificate.into(), due, overdue: false }
+    Instrument { role: say(role), what: say(what), certificate: certificate.into(), due, overdue: false }
+}
+
+/// Words that are in no table.
+pub fn say(text: impl AsRef<str>) -> Saying {
+    Saying::outside(text.as_ref())
 }
 
 /// A sound tube of the best grade.
@@ -183,7 +188,7 @@ pub fn pass() -> Sheet {
             program_version: "0.1.0".into(),
             ..Default::default()
         },
-        title: "Two-mode tube, random polarization, mirrors 150 mm apart".into(),
+        title: say("Two-mode tube, random polarization, mirrors 150 mm apart"),
         station: "bench-1".into(),
         started_at: Some(at("2026-03-02T10:12:40+00:00")),
         ended_at: Some(at("2026-03-02T10:46:52+00:00")),
@@ -201,8 +206,8 @@ pub fn pass() -> Sheet {
             outcome: Outcome::Pass,
             grade: Some("prime".into()),
             reject_code: None,
-            sentence: "pass, grade prime.".into(),
-            reason: String::new(),
+            sentence: say("pass, grade prime."),
+            reason: Saying::none(),
         },
         rows: rows(),
         sweep_chart: Some(sweep_chart()),
@@ -210,14 +215,14 @@ pub fn pass() -> Sheet {
         walk_chart: Some(walk_chart()),
         run_current: None,
         remarks: vec![],
-        caution:
+        caution: say(
             "Laser light, start pulses to 10 kV, stored charge, glass under vacuum. Power in the range of class 2 \
-                  (IEC 60825-1): treat as at least 2. Local rules and licensed practice decide."
-                .into(),
+                  (IEC 60825-1): treat as at least 2. Local rules and licensed practice decide.",
+        ),
         measured_by: Some(MeasuredBy {
             initials: "KT".into(),
             at: at("2026-03-02T10:46:52+00:00"),
-            meaning: "measured".into(),
+            meaning: say("measured"),
         }),
     }
 }
@@ -235,10 +240,9 @@ pub fn fail() -> Sheet {
         outcome: Outcome::Fail,
         grade: None,
         reject_code: Some("dim".into()),
-        sentence: "fail, dim.".into(),
-        reason: "Power 0.220 mW is below 0.30 mW. Likely cause: helium lost (0.8; deeper red-orange, lasing span \
-                 short); next: air leak (0.1)."
-            .into(),
+        sentence: say("fail, dim."),
+        reason: say("Power 0.220 mW is below 0.30 mW. Likely cause: helium lost (0.8; deeper red-orange, lasing span \
+                 short); next: air leak (0.1)."),
     };
     let power = row_mut(&mut sheet, "power");
     power.value = number("power", 0.22, 0.015);
@@ -251,7 +255,7 @@ pub fn fail() -> Sheet {
         })
         .into();
     power.deciding = true;
-    power.note = "dim: below 0.30 mW, the last grade's bound".into();
+    power.note = say("dim: below 0.30 mW, the last grade's bound");
     let swaps = row_mut(&mut sheet, "swap_count");
     swaps.value = Value::Count { value: 2, low: 2, high: 2 };
     swaps.judged[0].verdict = RowVerdict::Fail;
@@ -270,21 +274,22 @@ pub fn hold() -> Sheet {
         outcome: Outcome::Hold,
         grade: None,
         reject_code: None,
-        sentence: "hold.".into(),
-        reason: "Mains ripple 0.90 % points at the supply, not at the tube: repeat on another supply. No verdict on \
-                 the tube is given."
-            .into(),
+        sentence: say("hold."),
+        reason: say(
+            "Mains ripple 0.90 % points at the supply, not at the tube: repeat on another supply. No verdict on \
+                 the tube is given.",
+        ),
     };
     let mut ripple = limited("noise", "line_ripple", (0.9, 0.01), None, Some(0.5));
     ripple.judged[0].verdict = RowVerdict::Hold;
     ripple.judged[0].zone = Some(Zone::OutsideByU);
     ripple.judged[0].conformance_probability = Some(0.0);
     ripple.deciding = true;
-    ripple.note = "outside 0.5 %: gives hold, not fail".into();
+    ripple.note = say("outside 0.5 %: gives hold, not fail");
     sheet.rows.insert(9, ripple);
     sheet.instruments[1].overdue = true;
     sheet.instruments[1].due = NaiveDate::from_ymd_opt(2026, 1, 12);
-    sheet.remarks = vec!["The power meter's certificate ended on 2026-01-12.".into()];
+    sheet.remarks = vec![say("The power meter's certificate ended on 2026-01-12.")];
     sheet
 }
 
@@ -294,10 +299,10 @@ pub fn doubt() -> Sheet {
     sheet.identity.serial = "DEMO-0009".into();
     sheet.identity.simulated = false;
     sheet.verdict.grade = Some("alignment".into());
-    sheet.verdict.sentence = "pass, grade alignment.".into();
-    sheet.verdict.reason = "Not prime: power 0.505 mW is above 0.50 mW, but not by its expanded uncertainty 0.015 mW \
-                            (rule: guarded)."
-        .into();
+    sheet.verdict.sentence = say("pass, grade alignment.");
+    sheet.verdict.reason =
+        say("Not prime: power 0.505 mW is above 0.50 mW, but not by its expanded uncertainty 0.015 mW \
+                            (rule: guarded).");
     let power = row_mut(&mut sheet, "power");
     power.value = number("power", 0.505, 0.015);
     power.judged = vec![
@@ -309,7 +314,16 @@ pub fn doubt() -> Sheet {
         judged("power", "alignment", Some(0.3), None, Some(1.0)),
     ];
     power.deciding = true;
-    power.note = "prime lost in doubt; alignment, 0.30 mW, holds".into();
+    power.note = say("prime lost in doubt; alignment, 0.30 mW, holds");
+    sheet
+}
+
+/// The one below the last grade's bound, in German, with what has no value.
+pub fn german() -> Sheet {
+    let mut sheet = fail();
+    sheet.identity.language = "de".into();
+    let finesse = row_mut(&mut sheet, "finesse");
+    finesse.value = Value::Absent((&tubewright::phrase::reasons::NO_FINESSE).into());
     sheet
 }
 
@@ -320,12 +334,12 @@ pub fn stopped() -> Sheet {
         outcome: Outcome::Stopped,
         grade: None,
         reject_code: None,
-        sentence: "stopped.".into(),
-        reason: "Stopped by KT after 4 min: arc at the anode cap.".into(),
+        sentence: say("stopped."),
+        reason: say("Stopped by KT after 4 min: arc at the anode cap."),
     };
     for row in &mut sheet.rows {
         if row.step != "strike" {
-            row.value = Value::Absent("the run was stopped before".into());
+            row.value = Value::Absent(say("the run was stopped before"));
             row.judged.iter_mut().for_each(|judged| {
                 judged.verdict = RowVerdict::Hold;
                 judged.zone = None;
@@ -355,8 +369,8 @@ pub fn empty() -> Sheet {
         outcome: Outcome::Open,
         grade: None,
         reject_code: None,
-        sentence: "open.".into(),
-        reason: String::new(),
+        sentence: say("open."),
+        reason: Saying::none(),
     };
     sheet
 }
@@ -371,22 +385,22 @@ pub fn long() -> Sheet {
     sheet.identity.supplier = words.clone();
     sheet.identity.condition = words.clone();
     sheet.identity.technician = "Ä".repeat(40);
-    sheet.title = words.clone();
+    sheet.title = say(&words);
     sheet.station = "bench-".repeat(30);
-    sheet.verdict.sentence = format!("fail, {endless}.");
-    sheet.verdict.reason = words.clone() + &endless;
-    sheet.caution = words.repeat(3);
-    sheet.remarks = vec![words.clone(), endless.clone(), words.clone(), words.clone()];
+    sheet.verdict.sentence = say(format!("fail, {endless}."));
+    sheet.verdict.reason = say(words.clone() + &endless);
+    sheet.caution = say(words.repeat(3));
+    sheet.remarks = [&words, &endless, &words, &words].map(say).into();
     sheet.measured_by.as_mut().unwrap().initials = "Ö".repeat(64);
-    sheet.measured_by.as_mut().unwrap().meaning = words.clone();
+    sheet.measured_by.as_mut().unwrap().meaning = say(&words);
     for instrument in &mut sheet.instruments {
-        instrument.what = words.clone();
+        instrument.what = say(&words);
         instrument.certificate = endless.clone();
-        instrument.role = endless.clone();
+        instrument.role = say(&endless);
     }
-    row_mut(&mut sheet, "power").note = words.clone() + &endless;
-    row_mut(&mut sheet, "mode_spacing").label = endless.clone();
-    row_mut(&mut sheet, "mirror_spacing").value = Value::Absent(words.clone() + &endless);
+    row_mut(&mut sheet, "power").note = say(words.clone() + &endless);
+    row_mut(&mut sheet, "mode_spacing").label = say(&endless);
+    row_mut(&mut sheet, "mirror_spacing").value = Value::Absent(say(words.clone() + &endless));
     row_mut(&mut sheet, "finesse").value = number("finesse", -1.234_567e17, 9.9e3);
     row_mut(&mut sheet, "visual.output_mirror").value = Value::Word(endless.clone());
     row_mut(&mut sheet, "visual.output_mirror").judged[0].wanted = vec![words, endless];
@@ -416,7 +430,7 @@ pub fn full() -> Sheet {
         .collect();
     let looks = ["output_mirror", "cathode", "bore", "glow", "leads", "label"];
     sheet.rows.extend(looks.map(|name| look(name, "clean")));
-    sheet.remarks = vec!["Two captures were lost during the dwell.".into()];
+    sheet.remarks = vec![say("Two captures were lost during the dwell.")];
     sheet
 }
 

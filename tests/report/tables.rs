@@ -162,7 +162,7 @@ fn metadata_describes_both_tables() {
     assert_eq!(json["notes"][0]["supplier"], "A");
     assert_eq!(json["notes"][0]["limits"]["sha256"], "2".repeat(64));
     assert_eq!(json["notes"][0]["simulated"], true);
-    assert_eq!(json["notes"][0]["caution"], sheets::pass().caution);
+    assert_eq!(json["notes"][0]["caution"], sheets::pass().caution.english());
 }
 
 #[test]

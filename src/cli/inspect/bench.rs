@@ -12,6 +12,7 @@ use crate::instruments::{
     FilePerson, HandInterlock, NoInstrument, Nobody, Screen, SimulatedBench, SimulatedOptions, TerminalPerson,
     WallClock, folder_bench,
 };
+use crate::phrase::terminal as phrase;
 use crate::run::Run;
 use crate::station::{Bench, Person, Trouble, Want};
 
@@ -63,7 +64,7 @@ pub(super) fn looked(inputs: &Inputs, run: &Run) -> Result<(), Trouble> {
     if !at_a_bench || matches!(run.wants(), Want::MakeSafe | Want::Finished) {
         return Ok(());
     }
-    terminal(&inputs.screen).wait_for("Supply and tube looked at, hands clear")
+    terminal(&inputs.screen).wait_for(&phrase::LOOKED)
 }
 
 /// Who was named to answer: a person here, or a file.

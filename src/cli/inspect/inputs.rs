@@ -12,6 +12,7 @@ use crate::cli::{Ending, Failure, home};
 use crate::disk::{Home, Store, demo_bench};
 use crate::instruments::{CaptureFolder, Screen};
 use crate::phantom::Scenario;
+use crate::phrase::Language;
 use crate::station::{
     answers::Answers,
     file::{Source, StationFile},
@@ -41,6 +42,8 @@ pub(super) struct Inputs {
     /// Where the run is shown and people are asked.
     pub screen: Screen,
     pub start: Option<DateTime<FixedOffset>>,
+    /// Language, if it was asked for.
+    pub language: Option<Language>,
     pub format: Format,
 }
 
@@ -74,6 +77,7 @@ impl Inputs {
                 "`{name}` has no [interferometer]; expected one, since captures need its free spectral range `fsr`"
             )));
         }
+        let screen = arguments.screen.screen(arguments.language.unwrap_or(station.language));
         Ok(Self {
             // A scanner's stray blank is no part of a serial number.
             serial: arguments.serial.trim().to_owned(),
@@ -87,8 +91,9 @@ impl Inputs {
             ask: arguments.ask,
             pace: simulated.then(|| arguments.pace.unwrap_or(PACE)),
             seed: arguments.seed,
-            screen: arguments.screen.screen(),
+            screen,
             start: arguments.start,
+            language: arguments.language,
             format: arguments.format,
         })
     }

@@ -20,6 +20,7 @@ use clap::{Args, ValueEnum};
 use self::{inputs::Inputs, opening::Opening, show::Show};
 use super::{Ending, Failure};
 use crate::driver::{Driver, Engine, Interrupted, Watcher as _, resume};
+use crate::phrase::Language;
 use crate::record::sheet::Outcome;
 use crate::run::Run;
 
@@ -71,6 +72,9 @@ pub struct Arguments {
     /// Scenario of the simulated bench
     #[arg(long, value_name = "FILE", conflicts_with = "captures")]
     scenario: Option<PathBuf>,
+    /// Language of the sheet and of the questions: en or de (else the station's)
+    #[arg(long, value_name = "CODE", value_parser = language)]
+    language: Option<Language>,
     /// How to print
     #[arg(long, value_enum, default_value = "text")]
     format: Format,
@@ -83,6 +87,11 @@ fn pace(text: &str) -> Result<f64, String> {
     number
         .filter(|number| number.is_finite() && *number > 0.0)
         .ok_or_else(|| format!("`{text}` is no pace; expected a factor above zero such as 60x"))
+}
+
+fn language(text: &str) -> Result<Language, String> {
+    let known = || Language::CODES.map(|(code, _)| code).join(", ");
+    Language::of_code(text).ok_or_else(|| format!("`{text}` is no language of a sheet; expected one of {}", known()))
 }
 
 fn moment(text: &str) -> Result<DateTime<FixedOffset>, String> {

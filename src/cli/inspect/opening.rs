@@ -69,6 +69,9 @@ impl Opening {
         if identity.simulated != inputs.simulated() {
             return other(if identity.simulated { "is on a simulated bench" } else { "is on a real bench" });
         }
+        if inputs.language.is_some_and(|given| given != identity.language()) {
+            return other(&format!("has its sheet in language `{}`", identity.language().code()));
+        }
         let plan = Plan::from_texts(recipe, limits, station).map_err(|faults| faulty("stored plan", &faults))?;
         let started_at = DateTime::parse_from_rfc3339(&identity.started_at).unwrap_or_default();
         let bench = bench::build(inputs, started_at, &mut identity.technician.clone())?;
@@ -104,6 +107,7 @@ impl Opening {
             from_captures: inputs.captures.is_some(),
             times_assumed: inputs.captures.as_ref().is_some_and(|folder| folder.first_at().is_none()),
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
+            language: inputs.language.unwrap_or(station.language).stored(),
             run_kind,
             reference_checks,
             ..Identity::default()

@@ -5,6 +5,7 @@
 use clap::{Args, ValueEnum};
 
 use crate::instruments::{Colour, Screen};
+use crate::phrase::Language;
 
 /// Arguments as given.
 #[derive(Debug, Args)]
@@ -30,7 +31,7 @@ enum When {
 
 impl ScreenArguments {
     /// The terminal behind standard error, looked at.
-    pub fn screen(&self) -> Screen {
+    pub fn screen(&self, language: Language) -> Screen {
         Screen::of_stderr(
             self.plain,
             match self.color {
@@ -38,6 +39,7 @@ impl ScreenArguments {
                 When::Auto => Colour::Auto,
                 When::Always => Colour::Always,
             },
+            language,
         )
     }
 }

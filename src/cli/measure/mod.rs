@@ -3,15 +3,17 @@
 //! Main function: [`run`].
 
 mod print;
+mod siblings;
 
 use std::path::{Path, PathBuf};
 use std::time::Instant;
 
 use clap::{Args, ValueEnum};
 use rayon::prelude::*;
+use siblings::Siblings;
 
 use super::{Ending, Failure, output};
-use crate::capture::{Columns, Place, pair_names, read_many};
+use crate::capture::{Capture, Columns, Place, pair_names, read_many};
 use crate::quantity::{Dimension, parse_as};
 use crate::sweep::{Measurement, Settings, measure};
 
@@ -174,7 +176,8 @@ fn outcome_of(files: &[PathBuf], columns: Option<&Columns>, settings: &Settings)
         warnings: Vec::new(),
         computed_in_s: 0.0,
     };
-    match read(files, columns) {
+    let (read, siblings) = read_with_siblings(files, columns);
+    match read {
         Ok(capture) => {
             let measurement = measure(&capture, settings);
             let refusal = measurement.refused.as_ref().or(measurement.no_spacing.as_ref());
@@ -185,11 +188,35 @@ fn outcome_of(files: &[PathBuf], columns: Option<&Columns>, settings: &Settings)
         }
         Err(why) => outcome.refused = Some(why),
     }
+    let lacks_ramp = outcome.measurement.as_ref().is_none_or(|m| m.ramp_ends.is_none());
+    match siblings {
+        Siblings::Found(joined) => {
+            let names: Vec<String> = joined.iter().map(|path| path.display().to_string()).collect();
+            outcome.warnings.push(format!("joined with {}, which lies beside it", names.join(", ")));
+        }
+        Siblings::Missing if lacks_ramp => outcome.warnings.push(siblings::MISSING.to_owned()),
+        Siblings::Missing | Siblings::NotSought => {}
+    }
     outcome.computed_in_s = began.elapsed().as_secs_f64();
     outcome
 }
 
-fn read(files: &[PathBuf], columns: Option<&Columns>) -> Result<crate::capture::Capture, String> {
+/// Reads a capture; one channel's file alone together with those of the other channels beside it, if they fit.
+fn read_with_siblings(files: &[PathBuf], columns: Option<&Columns>) -> (Result<Capture, String>, Siblings) {
+    // Whoever names columns says what belongs together.
+    if columns.is_none()
+        && let Siblings::Found(more) = siblings::beside(files)
+    {
+        let all: Vec<PathBuf> = files.iter().chain(&more).cloned().collect();
+        return match read(&all, None) {
+            Ok(capture) => (Ok(capture), Siblings::Found(more)),
+            Err(_) => (read(files, None), Siblings::NotSought),
+        };
+    }
+    (read(files, columns), siblings::beside(files))
+}
+
+fn read(files: &[PathBuf], columns: Option<&Columns>) -> Result<Capture, String> {
     let mut contents = Vec::with_capacity(files.len());
     for path in files {
         if path.is_dir() {

@@ -3,17 +3,14 @@
 //! Main functions: [`question_lines`], [`caution_lines`], [`explanation`].
 
 use super::ink::{Line, Look, Role};
-use crate::instruments::typed::expected;
+use crate::instruments::typed::shown;
 use crate::measurand;
-use crate::quantity::UNITS;
+use crate::phrase::{figure, name, terminal};
+use crate::quantity::{UNITS, Unit};
 use crate::record::question::{Expects, Question};
 
 /// Most columns that words take: longer lines are hard to read at arm's length.
 const MOST: usize = 96;
-/// Said once, at the first question.
-const WAYS_OUT: &str = "At any question: `?` explains it, `skip: why` leaves it open on the sheet with the reason, \
-    `stop: why` ends the run; what was measured is kept.";
-
 /// Everything above the line that is typed on.
 ///
 /// * `first`: nobody has been asked yet.
@@ -29,27 +26,40 @@ pub(super) fn question_lines(question: &Question, look: &Look, first: bool) -> V
     lines.extend(wrapped(&bar, &question.text, Role::Strong, look));
     match &question.expects {
         Expects::Choice(words) => lines.extend(choices(&bar, words, look)),
-        Expects::Done => {}
-        other => lines.extend(wrapped(&bar, &expected(other), Role::Plain, look)),
+        other => lines.extend(range(other, look).iter().flat_map(|range| wrapped(&bar, range, Role::Plain, look))),
     }
     if first {
-        lines.extend(wrapped(&bar, WAYS_OUT, Role::Quiet, look));
+        lines.extend(wrapped(&bar, terminal::WAYS_OUT.of(look.language), Role::Quiet, look));
     }
     lines
 }
 
 /// The line that is typed on, without its end.
 pub(super) fn prompt(question: &Question, look: &Look) -> Line {
-    let line = Line::of(Role::Strong, look.sign("└▶ ", "+> "));
-    line.and(
-        Role::Plain,
-        match &question.expects {
-            Expects::Done => "Enter once it is done: ".to_owned(),
-            Expects::Choice(_) => "number or word, then Enter: ".to_owned(),
-            Expects::Number { ucum, .. } => format!("in {}: ", symbol(ucum)),
-            Expects::Whole { .. } => "a count: ".to_owned(),
-        },
-    )
+    let text = match &question.expects {
+        Expects::Done => terminal::ENTER_WHEN_DONE.of(look.language).to_owned(),
+        Expects::Choice(_) => terminal::CHOOSE.of(look.language).to_owned(),
+        Expects::Number { ucum, .. } => format!("in {}", unit(ucum).map_or("?", |unit| unit.symbol)),
+        Expects::Whole { .. } => terminal::A_COUNT.of(look.language).to_owned(),
+    };
+    Line::of(Role::Strong, look.sign("└▶ ", "+> ")).and(Role::Plain, format!("{text}: "))
+}
+
+fn unit(ucum: &str) -> Option<&'static Unit> {
+    UNITS.iter().find(|unit| unit.ucum == ucum)
+}
+
+/// The range of a number; nothing for what has none.
+fn range(expects: &Expects, look: &Look) -> Option<String> {
+    let (low, high) = match expects {
+        Expects::Number { ucum, lowest, highest } => {
+            let unit = unit(ucum)?;
+            (shown(lowest / unit.factor), format!("{} {}", shown(highest / unit.factor), unit.symbol))
+        }
+        Expects::Whole { lowest, highest } => (lowest.to_string(), highest.to_string()),
+        Expects::Choice(_) | Expects::Done => return None,
+    };
+    Some(terminal::FROM_TO.with([figure(low), figure(high)]).text(look.language))
 }
 
 /// Words on a danger between two zigzags, wherever they stand.
@@ -61,10 +71,6 @@ pub fn caution_lines(text: &str, look: &Look) -> Vec<Line> {
     lines
 }
 
-fn symbol(ucum: &str) -> &str {
-    UNITS.iter().find(|unit| unit.ucum == ucum).map_or("the unit shown", |unit| unit.symbol)
-}
-
 /// What `?` says.
 pub(super) fn explanation(question: &Question, look: &Look) -> Vec<Line> {
     let bar = Line::of(Role::Quiet, look.sign("│ ", "| "));
@@ -72,19 +78,17 @@ pub(super) fn explanation(question: &Question, look: &Look) -> Vec<Line> {
         "tries" => "start_tries",
         word => word,
     };
-    let meaning = measurand::find(key).map(|known| format!("{}: {}", known.name, known.definition));
+    // The definition is that of the catalogue, which is data: English.
+    let meaning = measurand::find(key).map(|known| format!("{}: {}", known.name.of(look.language), known.definition));
     let how = match &question.expects {
-        Expects::Number { .. } => {
-            "A number alone is in the unit shown; another unit of its kind may follow it. A comma \
-            may stand for the point. `-` alone: no instrument for it here."
-        }
-        Expects::Whole { .. } => "A count, in digits.",
-        Expects::Choice(_) => "The digit before a word, or the word, then Enter.",
-        Expects::Done => "Enter, once the hands have done it. An Enter that comes with the question is not taken.",
+        Expects::Number { .. } => &terminal::HOW_NUMBER,
+        Expects::Whole { .. } => &terminal::HOW_COUNT,
+        Expects::Choice(_) => &terminal::HOW_CHOICE,
+        Expects::Done => &terminal::HOW_DONE,
     };
-    let parts = meaning.into_iter().chain([how.to_owned(), WAYS_OUT.to_owned()]);
-    let key = format!("In a file of answers: `{}` below [steps.{}].", question.word, question.step);
-    let parts = parts.chain([key]);
+    let said = [how, &terminal::WAYS_OUT].map(|phrase| phrase.of(look.language).to_owned());
+    let key = terminal::IN_A_FILE.with([name(question.word.as_str()), name(question.step.as_str())]);
+    let parts = meaning.into_iter().chain(said).chain([key.text(look.language)]);
     parts.flat_map(|part| wrapped(&bar, &part, Role::Plain, look)).collect()
 }
 

@@ -3,6 +3,7 @@
 //! Main items: [`as_meant`], [`HandInterlock`].
 
 use super::TerminalPerson;
+use crate::phrase::terminal;
 use crate::record::question::{Expects, Question};
 use crate::station::{Interlock, Trouble};
 
@@ -52,11 +53,7 @@ impl HandInterlock {
 
 impl Interlock for HandInterlock {
     fn make_safe(&mut self) -> Result<(), Trouble> {
-        self.person.confirm(
-            "Supply off. Charge stays in tube and ballast after switch-off: discharge both with an insulated tool before \
-             a hand comes near. Local rules and licensed practice decide who may do this.",
-            "Supply off, tube dark, charge taken off",
-        )
+        self.person.confirm(&terminal::TAKE_OFF, &terminal::IS_OFF)
     }
 }
 

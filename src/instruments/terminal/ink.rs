@@ -2,6 +2,8 @@
 //! Must not carry a meaning by colour alone: whoever puts a role on words also says it in words, shape or place.
 //! Main types: [`Line`], [`Role`], [`Look`].
 
+use crate::phrase::Language;
+
 /// How words stand out from the others.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Role {
@@ -58,6 +60,8 @@ pub struct Look {
     pub height: usize,
     /// What it can write.
     pub charset: Charset,
+    /// Language of what stands around rows and questions.
+    pub language: Language,
     /// Roles are coloured; else nothing but the text is written.
     pub colour: bool,
 }
@@ -264,7 +268,8 @@ mod tests {
 
     #[test]
     fn lines_are_cut_to_columns_and_cannot_move_the_cursor() {
-        let look = Look { width: 80, height: 24, charset: Charset::Unicode, colour: false };
+        let look =
+            Look { width: 80, height: 24, charset: Charset::Unicode, language: Language::English, colour: false };
         let line = Line::of(Role::Plain, "tube \x1b[2J").and(Role::Alert, " 管 1");
         assert_eq!(line.width(), 14);
         assert_eq!(line.clone().cut(11).coded(&look), "tube \u{fffd}[2J ");

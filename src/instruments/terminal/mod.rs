@@ -16,6 +16,7 @@ use std::io::{BufRead, Write};
 use std::time::{Duration, Instant};
 
 use super::typed::parse_answer;
+use crate::phrase::{Phrase, name, outside, said, terminal};
 use crate::record::question::{Answer, Expects, Question};
 use crate::station::{Person, Trouble};
 
@@ -24,9 +25,6 @@ const TRIES: usize = 20;
 /// An Enter that comes sooner after its question was meant for something else: a second line end of a scanner, a bounced
 /// key. Nobody reads a question and acts within this time (simple reactions take 0.2 s; from memory).
 const TOO_SOON: Duration = Duration::from_millis(400);
-
-/// What `-` stands for, the reason given most.
-const NO_INSTRUMENT: &str = "no instrument for it at this bench";
 
 /// Asks a person. `skip: why` leaves a row empty with the reason, `stop: why` ends the run, `?` explains.
 pub struct TerminalPerson {
@@ -52,20 +50,21 @@ impl TerminalPerson {
     /// Puts a caution and waits for Enter.
     ///
     /// Errors: the input ended.
-    pub fn confirm(&mut self, caution: &str, what: &str) -> Result<(), Trouble> {
+    pub fn confirm(&mut self, caution: &Phrase, what: &'static Phrase) -> Result<(), Trouble> {
         let look = self.screen.look();
-        self.show(caution_lines(caution, &look), &look);
+        self.show(caution_lines(caution.of(look.language), &look), &look);
         self.wait_for(what)
     }
 
     /// Waits for Enter: what the program cannot see, a person has looked at or done.
     ///
     /// Errors: the input ended.
-    pub fn wait_for(&mut self, what: &str) -> Result<(), Trouble> {
+    pub fn wait_for(&mut self, what: &'static Phrase) -> Result<(), Trouble> {
         let look = self.screen.look();
         for _ in 0..TRIES {
             let asked = Instant::now();
-            self.begin(Line::of(Role::Strong, format!("{what}, then Enter: ")), &look);
+            let prompt = terminal::THEN_ENTER.with([said(what)]).text(look.language);
+            self.begin(Line::of(Role::Strong, format!("{prompt}: ")), &look);
             match self.line() {
                 None => {
                     return Err(Trouble::NoAnswer("the input ended before the bench was said to be safe".to_owned()));
@@ -139,15 +138,13 @@ impl TerminalPerson {
                 self.show(form::explanation(question, look), look);
                 return None;
             }
-            ("", Expects::Done) if self.too_soon(asked) => {
-                "That Enter came with the question: once more, when it is done.".to_owned()
-            }
+            ("", Expects::Done) if self.too_soon(asked) => terminal::TOO_SOON.of(look.language).to_owned(),
             ("", Expects::Done) => return Some(Ok(Answer::Done)),
-            ("-", Expects::Number { .. }) => return Some(Ok(Answer::CannotSay(NO_INSTRUMENT.to_owned()))),
-            ("", _) => "Nothing was typed; `?` explains.".to_owned(),
+            ("-", Expects::Number { .. }) => return Some(Ok(Answer::CannotSay(outside::NO_INSTRUMENT.en.to_owned()))),
+            ("", _) => terminal::NOTHING_TYPED.of(look.language).to_owned(),
             _ => match parse_answer(question, &hand::as_meant(question, text), true) {
                 Ok(answer) => return Some(Ok(answer)),
-                Err(why) => format!("Not taken: {why}."),
+                Err(why) => terminal::NOT_TAKEN.with([name(why)]).text(look.language),
             },
         };
         let bar = Line::of(Role::Alert, look.sign("│ × ", "| x "));
@@ -158,12 +155,13 @@ impl TerminalPerson {
     /// The reason behind `skip` or `stop`, asked for if it was left out.
     fn reason(&mut self, given: &str, word: &str, look: &Look) -> String {
         let given = if given.is_empty() {
-            self.begin(Line::of(Role::Strong, format!("{word}, and why: ")), look);
+            let prompt = terminal::AND_WHY.with([name(word)]).text(look.language);
+            self.begin(Line::of(Role::Strong, format!("{prompt}: ")), look);
             self.line().unwrap_or_default().trim().to_owned()
         } else {
             given.to_owned()
         };
-        if given.is_empty() { "no reason given".to_owned() } else { given }
+        if given.is_empty() { outside::NO_REASON.en.to_owned() } else { given }
     }
 }
 

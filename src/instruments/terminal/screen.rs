@@ -7,6 +7,8 @@ use std::env;
 use std::io::{self, IsTerminal as _, Write as _};
 use std::rc::Rc;
 
+use crate::phrase::Language;
+
 use super::ink::{Charset, Line, Look, Role};
 
 /// When colour is used.
@@ -28,6 +30,7 @@ pub struct Screen {
     colour: bool,
     charset: Charset,
     is_keyboard: bool,
+    language: Language,
     foot: Rc<RefCell<Foot>>,
 }
 
@@ -48,10 +51,10 @@ impl Screen {
     /// Looks at standard error and the environment.
     ///
     /// * `plain`: nothing but lines, even on a terminal.
-    pub fn of_stderr(plain: bool, colour: Colour) -> Self {
+    pub fn of_stderr(plain: bool, colour: Colour, language: Language) -> Self {
         let set = |name: &str| env::var_os(name).map(|value| value.to_string_lossy().into_owned());
         let is_keyboard = io::stdin().is_terminal();
-        Self { is_keyboard, ..Self::of(io::stderr().is_terminal() && !plain, colour, set) }
+        Self { is_keyboard, language, ..Self::of(io::stderr().is_terminal() && !plain, colour, set) }
     }
 
     /// By what the environment says of the terminal, if it is one.
@@ -70,12 +73,19 @@ impl Screen {
             true => Charset::Unicode,
             false => Charset::Ascii,
         };
-        Self { is_live, colour: is_live && colour, charset, is_keyboard: false, foot: Rc::default() }
+        Self { is_live, colour: is_live && colour, charset, ..Self::plain() }
     }
 
     /// Nothing but lines.
     pub fn plain() -> Self {
-        Self { is_live: false, colour: false, charset: Charset::Words, is_keyboard: false, foot: Rc::default() }
+        Self {
+            is_live: false,
+            colour: false,
+            charset: Charset::Words,
+            is_keyboard: false,
+            language: Language::English,
+            foot: Rc::default(),
+        }
     }
 
     /// Lines can be drawn again in place.
@@ -92,7 +102,13 @@ impl Screen {
     pub fn look(&self) -> Look {
         let size = if self.is_live { terminal_size::terminal_size_of(io::stderr()) } else { None };
         let (width, height) = size.map_or((80, 24), |(width, height)| (usize::from(width.0), usize::from(height.0)));
-        Look { width: width.max(1), height: height.max(1), charset: self.charset, colour: self.colour }
+        Look {
+            width: width.max(1),
+            height: height.max(1),
+            charset: self.charset,
+            language: self.language,
+            colour: self.colour,
+        }
     }
 
     /// Puts `lasting` lines above the foot, where they scroll away, and draws the foot anew.
@@ -250,7 +266,7 @@ mod tests {
     impl<I: Iterator<Item = char>> TakeWhileInclusive for I {}
 
     fn look(width: usize, height: usize) -> Look {
-        Look { width, height, charset: Charset::Unicode, colour: true }
+        Look { width, height, charset: Charset::Unicode, language: Language::English, colour: true }
     }
 
     fn lines(texts: &[&str]) -> Vec<Line> {

@@ -172,6 +172,35 @@ mod tests {
     }
 
     #[test]
+    fn faults_change_what_all_the_other_keys_say() {
+        let text = "started_at = 2026-03-02T08:00:00Z\n[bench.b]\n[type.t]\npower = \"1 mW\"\n[[tube]]\nserial = \"X\"\n\
+                    faults = [\"helium-lost = 20 %\", \"draught = 1 K\"]\ntype = \"t\"\nbench = \"b\"\npower = \"2 mW\"\n";
+        let tube = |text: &str| Scenario::parse("s.toml", text).unwrap().tubes[0].truth.clone();
+        let (sound, faulty) = (tube(&text.replace("faults", "#")), tube(text));
+        assert_eq!((sound.power, sound.draught_cycles), (2e-3, 0.0));
+        assert!(faulty.power < 1.5e-3 && faulty.draught_cycles > 1.0, "{faulty:?}");
+        let later = tube(&(text.replace("faults", "#") + "faults = [\"helium-lost = 20 %\", \"draught = 1 K\"]\n"));
+        assert_eq!(later, faulty, "wherever they stand");
+    }
+
+    #[test]
+    fn what_is_wrong_with_faults_is_reported_where_it_stands() {
+        let with = |faults: &str| {
+            let text = format!(
+                "started_at = 2026-03-02T08:00:00Z\n[bench.b]\n[type.t]\n[[tube]]\nserial = \"X\"\n\
+                                type = \"t\"\nbench = \"b\"\nfaults = {faults}\n"
+            );
+            Scenario::parse("s.toml", &text).unwrap_err().to_string()
+        };
+        let error = with("[\"wear = 10 %\", \"wearr = 1 %\", \"wear = 200 %\", 3]");
+        let lines: Vec<&str> = error.lines().collect();
+        assert!(lines[0].starts_with("s.toml:8:26: `wearr` is no kind of fault"), "{error}");
+        assert!(lines[1].starts_with("s.toml:8:41: `wear` is 200 %; expected 0 to 100 %"), "{error}");
+        assert_eq!((lines[2], lines.len()), ("s.toml:8:57: `faults` must be a text in quotes", 3));
+        assert!(with("\"wear = 1 %\"").contains("`faults` must be a list"));
+    }
+
+    #[test]
     fn broken_syntax_is_one_fault_with_its_place() {
         let error = Scenario::parse("s.toml", "title = \"x\"\nseed = = 3\n").unwrap_err();
         assert_eq!((error.faults.len(), error.faults[0].line), (1, 2));

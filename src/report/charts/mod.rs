@@ -14,6 +14,7 @@ use super::{
     scene::{Anchor, DARK, GREY, MIST, Point, Scene, Stroke, Style, corners},
     typeface::Typeface,
 };
+use crate::phrase::Phrase;
 
 /// Height of a chart beyond its plot: title, subtitle, room for marks, ticks, name of the axis.
 pub const OVERHEAD: f64 = 54.0;
@@ -78,6 +79,7 @@ impl Plot {
         scene.line(vec![(self.left, self.top), (self.left, self.bottom), (self.right, self.bottom)], line);
         let mut free_from = f64::NEG_INFINITY;
         for (value, text) in ticks(self.x, x_ticks) {
+            let text = face.language.figure(&text);
             let x = self.at_x(value);
             scene.line(vec![(x, self.bottom), (x, self.bottom + 2.5)], line);
             let half = face.width(&text, TICK) / 2.0;
@@ -87,6 +89,7 @@ impl Plot {
             }
         }
         for (value, text) in ticks(self.y, y_ticks) {
+            let text = face.language.figure(&text);
             let y = self.at_y(value);
             scene.line(vec![(self.left - 2.5, y), (self.left, y)], line);
             scene.fitted(face, (self.left - 4.0, y + 2.3), Anchor::End, &text, TICK, 14.0);
@@ -103,15 +106,15 @@ fn titles(scene: &mut Scene, face: &Typeface, frame: Frame, title: &str, subtitl
 }
 
 /// The place of a chart that there is none for says why.
-fn missing(face: &Typeface, frame: Frame, title: &str, why: &str) -> Scene {
+fn missing(face: &Typeface, frame: Frame, title: &Phrase, why: &Phrase) -> Scene {
     let mut scene = Scene::default();
-    titles(&mut scene, face, frame, title, "");
+    titles(&mut scene, face, frame, face.word(title), "");
     let (width, height) = (frame.width - 2.0, frame.plot);
     let top = frame.top + TITLES;
     scene.outline(corners((frame.left, top), (width, height)), Stroke::dashed(MIST, 0.6, 2.0, 2.0));
     let style = Style::plain(7.4, GREY);
     let middle = (frame.left + width / 2.0, top + height / 2.0 + 2.5);
-    scene.fitted(face, middle, Anchor::Middle, why, style, width - 12.0);
+    scene.fitted(face, middle, Anchor::Middle, face.word(why), style, width - 12.0);
     scene
 }
 

@@ -2,8 +2,11 @@
 //! Must not draw a fit from anything but the sheet's modes.
 //! Main function: [`sweep`].
 
+use chrono::{DateTime, FixedOffset};
+
 use super::{Frame, Plot, missing, range, titles};
 use crate::{
+    phrase::{name, page},
     record::sheet::{ChartMode, SweepChart},
     report::{
         scene::{Anchor, BLUE, DARK, MIST, Point, Scene, Stroke, Style},
@@ -16,10 +19,10 @@ const GIGAHERTZ: f64 = 1e9;
 /// The chart, or why there is none.
 pub fn sweep(chart: Option<&SweepChart>, face: &Typeface, frame: Frame) -> Scene {
     let Some(chart) = chart else {
-        return missing(face, frame, "Sweep", "no sweep was kept");
+        return missing(face, frame, &page::SWEEP, &page::NO_SWEEP);
     };
     let Some((from, to)) = range(chart.trace.detuning.iter().copied()).filter(|(from, to)| to > from) else {
-        return missing(face, frame, "Sweep", "the sweep that was kept is empty");
+        return missing(face, frame, &page::SWEEP, &page::EMPTY_SWEEP);
     };
     let strongest = strongest(chart);
     let lowest = range(chart.trace.low.iter().copied()).map_or(0.0, |(low, _)| (low / strongest).clamp(-0.2, 0.0));
@@ -27,8 +30,9 @@ pub fn sweep(chart: Option<&SweepChart>, face: &Typeface, frame: Frame) -> Scene
     let plot = Plot::new(frame, (0.0, (to - from) / GIGAHERTZ), (lowest, 1.06));
     let shifted = |detuning: f64| (detuning - from) / GIGAHERTZ;
     let mut scene = Scene::default();
-    let title = chart.taken_at.map_or("Sweep".to_owned(), |at| format!("Sweep, {}", at.format("%H:%M:%S")));
-    titles(&mut scene, face, frame, &title, "signal, of the strongest mode; thin line: fitted modes");
+    let at = |at: DateTime<FixedOffset>| page::SWEEP_AT.with([name(at.format("%H:%M:%S").to_string())]);
+    let title = face.say(&chart.taken_at.map_or_else(|| (&page::SWEEP).into(), at));
+    titles(&mut scene, face, frame, &title, face.word(&page::SWEEP_SIGNAL));
     let columns = chart.trace.detuning.iter().zip(chart.trace.low.iter().zip(&chart.trace.high));
     let measured: Vec<Point> = columns
         .filter(|(x, (low, high))| x.is_finite() && low.is_finite() && high.is_finite())
@@ -39,7 +43,7 @@ pub fn sweep(chart: Option<&SweepChart>, face: &Typeface, frame: Frame) -> Scene
     let fitted = fitted_curve(chart, (from, to));
     let fitted = fitted.into_iter().map(|(x, signal)| plot.at((shifted(x), signal / strongest))).collect();
     scene.line(fitted, Stroke::solid(DARK, 0.6));
-    plot.axes(&mut scene, face, "detuning of the scan, GHz", 4, 2);
+    plot.axes(&mut scene, face, face.word(&page::SWEEP_AXIS), 4, 2);
     names(&mut scene, face, chart, &plot, &shifted);
     scene
 }

@@ -5,6 +5,7 @@
 use super::{Frame, Plot, TICK, missing, range, titles};
 use crate::{
     measurand,
+    phrase::{Language, Phrase, Piece, figure, name, page},
     record::sheet::{Row, WalkChart},
     report::{
         scene::{Anchor, BLUE, DARK, Point, RUST, Scene, Stroke, Style},
@@ -20,18 +21,17 @@ const MINUTE: f64 = 60.0;
 ///
 /// * `rows`: of the sheet; what is written in the chart of time constant and ready is theirs.
 pub fn walk(chart: Option<&WalkChart>, rows: &[Row], face: &Typeface, frame: Frame) -> Scene {
-    const TITLE: &str = "Walk";
     let Some(chart) = chart else {
-        return missing(face, frame, TITLE, "no walk was followed");
+        return missing(face, frame, &page::WALK, &page::NO_WALK);
     };
     let everything = || chart.points.iter().chain(&chart.prediction).filter(|(t, n)| t.is_finite() && n.is_finite());
     let Some((_, last)) = range(everything().map(|point| point.0 / MINUTE)) else {
-        return missing(face, frame, TITLE, "the walk showed no modes");
+        return missing(face, frame, &page::WALK, &page::EMPTY_WALK);
     };
     let (low, high) = range(everything().map(|point| point.1)).unwrap_or((0.0, 1.0));
     let plot = Plot::new(frame, (0.0, last * 1.02), (low.min(0.0), high.max(1.0) * 1.08));
     let mut scene = Scene::default();
-    titles(&mut scene, face, frame, TITLE, "mode spacings walked; dashed: fitted and predicted");
+    titles(&mut scene, face, frame, face.word(&page::WALK), face.word(&page::WALK_SPACINGS));
     let drawn = |points: &[Point]| {
         let sound = points.iter().filter(|(t, n)| t.is_finite() && n.is_finite());
         sound.map(|&(t, n)| plot.at((t / MINUTE, n))).collect::<Vec<_>>()
@@ -54,7 +54,7 @@ pub fn walk(chart: Option<&WalkChart>, rows: &[Row], face: &Typeface, frame: Fra
             scene.outline(diamond, Stroke::solid(RUST, 0.9));
         }
     }
-    plot.axes(&mut scene, face, "minutes since first light", 3, 3);
+    plot.axes(&mut scene, face, face.word(&page::WALK_AXIS), 3, 3);
     sayings(&mut scene, face, (chart, rows), &plot);
     scene
 }
@@ -78,42 +78,46 @@ fn on_curve(chart: &WalkChart, t: f64, plot: &Plot) -> Option<Point> {
 
 /// A time in minutes with its expanded uncertainty: as the row has it, so that a sheet never says two things; as the
 /// chart has it where there is no such row.
-fn timing(rows: &[Row], key: &str, of_chart: Option<(f64, f64)>) -> Option<String> {
+fn timing(rows: &[Row], key: &str, of_chart: Option<(f64, f64)>, language: Language) -> Option<Piece> {
     if let Some(row) = rows.iter().find(|row| row.measurand == key) {
-        let text = value_text(row);
-        return text.absent.is_empty().then(|| [text.value, text.spread, text.unit].join(" "));
+        let text = value_text(row, language);
+        return text.absent.is_empty().then(|| name([text.value, text.spread, text.unit].join(" ")));
     }
     let (value, expanded) = of_chart.filter(|(value, expanded)| value.is_finite() && expanded.is_finite())?;
     let most = measurand::find(key).map_or(2, |m| m.decimals);
     let (value, expanded) = joint(value / MINUTE, expanded / MINUTE, most);
-    Some(format!("{value} {} min", spread_text(&expanded)))
+    Some(name(format!("{} {} min", language.figure(&value), spread_text(&expanded, language))))
 }
 
 /// Time constant, ready, and what the marks mean, where the walk leaves room: low at the right.
 fn sayings(scene: &mut Scene, face: &Typeface, (chart, rows): (&WalkChart, &[Row]), plot: &Plot) {
-    let plural = |n: usize, one: &str, many: &str| format!("{n} {}", if n == 1 { one } else { many });
+    let timing = |key, of_chart| timing(rows, key, of_chart, face.language);
+    let counted = |n: usize, one: &'static Phrase, many: &'static Phrase| {
+        let phrase = if n == 1 { one } else { many };
+        phrase.with([figure(n)])
+    };
     let mut lines = Vec::new();
-    lines.extend(timing(rows, "warmup_tau", chart.tau).map(|tau| (format!("τ {tau}"), TICK)));
+    lines.extend(timing("warmup_tau", chart.tau).map(|tau| (page::TAU.with([tau]), TICK)));
     let blue = Style { ink: BLUE, ..TICK };
-    lines.extend(timing(rows, "warmup_ready", chart.ready).map(|ready| (format!("ready {ready}"), blue)));
+    lines.extend(timing("warmup_ready", chart.ready).map(|ready| (page::READY.with([ready]), blue)));
     lines.extend(
         chart
             .dwell_end
             .filter(|end| end.is_finite())
-            .map(|end| (format!("dwell ended at {:.1} min", end / MINUTE), TICK)),
+            .map(|end| (page::DWELL_ENDED.with([figure(format!("{:.1}", end / MINUTE))]), TICK)),
     );
     let rust = Style { ink: RUST, ..TICK };
     if !chart.hops.is_empty() {
-        lines.push((format!("{} (cross)", plural(chart.hops.len(), "hop", "hops")), rust));
+        lines.push((counted(chart.hops.len(), &page::ONE_HOP, &page::HOPS), rust));
     }
     if !chart.swaps.is_empty() {
-        lines.push((format!("{} (diamond)", plural(chart.swaps.len(), "swap", "swaps")), rust));
+        lines.push((counted(chart.swaps.len(), &page::ONE_SWAP, &page::SWAPS), rust));
     }
     let end = chart.dwell_end.map(|t| plot.at_x(t / MINUTE) - 4.0);
     let right = end.filter(|x| (plot.left + 80.0..plot.right).contains(x)).unwrap_or(plot.right - 4.0);
     let first = plot.bottom - 6.0 - 9.0 * (lines.len() as f64 - 1.0);
     for (i, (text, style)) in lines.iter().enumerate() {
         let at = (right, first + 9.0 * i as f64);
-        scene.fitted(face, at, Anchor::End, text, *style, right - plot.left - 4.0);
+        scene.fitted(face, at, Anchor::End, &face.say(text), *style, right - plot.left - 4.0);
     }
 }

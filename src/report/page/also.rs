@@ -11,7 +11,10 @@ use super::{
     Density, LEFT, RIGHT,
     rows::{Block, heading},
 };
-use crate::record::sheet::{Row, Sheet, Value};
+use crate::{
+    phrase::{figure, page},
+    record::sheet::{Row, Sheet, Value},
+};
 
 const COLUMNS: usize = 3;
 const GAP: f64 = 12.0;
@@ -37,8 +40,8 @@ pub fn blocks(sheet: &Sheet, face: &Typeface, density: &Density) -> Vec<Block> {
         return vec![];
     }
     let air = Block { height: 3.0, is_heading: true, scene: Scene::default() };
-    let mut blocks = vec![air, heading("Also measured, for information", face, density)];
-    let entries = entries(&rows);
+    let mut blocks = vec![air, heading(face.word(&page::ALSO), face, density)];
+    let entries = entries(&rows, face);
     let lines = entries.len().div_ceil(COLUMNS);
     for line in 0..lines {
         let mut scene = Scene::default();
@@ -64,23 +67,28 @@ struct Entry {
 }
 
 /// Every row with a value; fewest and most modes share one entry.
-fn entries(rows: &[&Row]) -> Vec<Entry> {
+fn entries(rows: &[&Row], face: &Typeface) -> Vec<Entry> {
     let count = |key: &str| rows.iter().find(|row| row.measurand == key).and_then(|row| certain(row));
     let modes = count("mode_count_min").zip(count("mode_count_max"));
     let mut entries = Vec::new();
     for row in rows {
-        let text = value_text(row);
+        let text = value_text(row, face.language);
         match (row.measurand.as_str(), modes) {
             ("mode_count_min", Some((fewest, most))) => entries.push(Entry {
-                name: "Modes over a walk cycle".to_owned(),
-                value: if fewest == most { most.to_string() } else { format!("{fewest} to {most}") },
+                name: face.word(&page::MODES).to_owned(),
+                value: if fewest == most {
+                    most.to_string()
+                } else {
+                    face.say(&page::TO.with([figure(fewest), figure(most)]))
+                },
                 spread: String::new(),
                 unit: String::new(),
             }),
             ("mode_count_max", Some(_)) => {}
             _ if !text.absent.is_empty() => {}
             _ => {
-                entries.push(Entry { name: row.label.clone(), value: text.value, spread: text.spread, unit: text.unit })
+                let name = face.say(&row.label);
+                entries.push(Entry { name, value: text.value, spread: text.spread, unit: text.unit });
             }
         }
     }
@@ -118,27 +126,28 @@ fn draw(scene: &mut Scene, face: &Typeface, entry: &Entry, left: f64, density: &
 
 /// One paragraph on the rows without a value, rows of one reason together.
 fn absent(rows: &[&Row], face: &Typeface, density: &Density) -> Option<Block> {
-    let mut reasons: Vec<(String, Vec<&str>)> = Vec::new();
+    let mut reasons: Vec<(String, Vec<String>)> = Vec::new();
     for row in rows {
-        let reason = value_text(row).absent;
+        let reason = value_text(row, face.language).absent;
         match reasons.iter_mut().find(|(known, _)| *known == reason) {
             _ if reason.is_empty() => {}
-            Some((_, names)) => names.push(&row.label),
-            None => reasons.push((reason, vec![&row.label])),
+            Some((_, names)) => names.push(face.say(&row.label)),
+            None => reasons.push((reason, vec![face.say(&row.label)])),
         }
     }
-    let said = |(reason, names): &(String, Vec<&str>)| format!("{} ({})", names.join(", "), shortened(reason));
+    let said = |(reason, names): &(String, Vec<String>)| format!("{} ({})", names.join(", "), shortened(reason));
     let text = reasons.iter().map(said).collect::<Vec<_>>().join("; ");
     let style = Style::plain((density.size * 0.86).max(6.8), GREY);
     let mut scene = Scene::default();
     let leading = style.size * 1.3;
     let mut baseline = pitch(density) * 0.5 + style.size * 0.35;
-    let lead = face.width("No value: ", style);
+    let no_value = face.word(&page::WITHOUT_VALUE);
+    let lead = face.width(no_value, style) + face.width(" ", style);
     let lines = face.wrap(&text, style, RIGHT - LEFT - lead, 4);
     if lines.is_empty() {
         return None;
     }
-    scene.text(face, (LEFT, baseline), Anchor::Start, "No value:", style);
+    scene.text(face, (LEFT, baseline), Anchor::Start, no_value, style);
     for (i, line) in lines.iter().enumerate() {
         baseline += if i > 0 { leading } else { 0.0 };
         scene.text(face, (LEFT + lead, baseline), Anchor::Start, line, style);

@@ -4,13 +4,19 @@
 
 use super::{
     super::{
-        SIMULATED, reason,
+        reason,
         scene::{Anchor, DARK, GREY, RULE, RUST, Scene, Stroke, Style},
         typeface::Typeface,
     },
     LEFT, RIGHT,
 };
-use crate::record::sheet::{Instrument, Outcome, Sheet};
+use crate::{
+    phrase::{
+        self, Phrase, Saying, figure, name, page as phrases, said as piece,
+        verdict::{COMMA, rule},
+    },
+    record::sheet::{Instrument, Outcome, Sheet},
+};
 
 const BOX_LEFT: f64 = 318.0;
 const BOX_TOP: f64 = 54.0;
@@ -20,10 +26,10 @@ const VALUE: Style = Style::plain(7.6, DARK);
 /// The head and where it ends.
 pub fn head(sheet: &Sheet, face: &Typeface) -> (Scene, f64) {
     let mut scene = Scene::default();
-    scene.text(face, (LEFT, 44.0), Anchor::Start, "RECORD OF ONE TUBE", Style::bold(7.0, GREY).spaced(1.2));
+    scene.text(face, (LEFT, 44.0), Anchor::Start, face.word(&phrases::RECORD), Style::bold(7.0, GREY).spaced(1.2));
     let origin = match (sheet.identity.simulated, sheet.identity.from_captures) {
-        (true, _) => SIMULATED,
-        (false, true) => "From files of captured sweeps",
+        (true, _) => face.word(&phrases::SIMULATED),
+        (false, true) => face.word(&phrases::FROM_FILES),
         (false, false) => "",
     };
     scene.text(face, (RIGHT, 44.0), Anchor::End, origin, Style::plain(7.0, RUST));
@@ -31,7 +37,7 @@ pub fn head(sheet: &Sheet, face: &Typeface) -> (Scene, f64) {
     let box_end = verdict_box(&mut scene, face, sheet);
     let rule = f64::max(title_end, box_end) + 11.0;
     scene.line(vec![(LEFT, rule), (RIGHT, rule)], Stroke::solid(DARK, 0.6));
-    let columns = [tube(sheet), bench(sheet), run(sheet)];
+    let columns = [tube(sheet, face), bench(sheet, face), run(sheet, face)];
     let mut end = rule + 20.0;
     for (place, lines) in COLUMNS.iter().zip(&columns) {
         end = end.max(column(&mut scene, face, place, rule + 12.0, lines));
@@ -42,9 +48,9 @@ pub fn head(sheet: &Sheet, face: &Typeface) -> (Scene, f64) {
 /// Head of a further page.
 pub fn continued(sheet: &Sheet, face: &Typeface) -> (Scene, f64) {
     let mut scene = Scene::default();
-    let serial = format!("{}, continued", sheet.identity.serial);
+    let serial = face.say(&phrases::CONTINUED.with([name(sheet.identity.serial.as_str())]));
     scene.fitted(face, (LEFT, 44.0), Anchor::Start, &serial, Style::bold(9.0, DARK), 300.0);
-    let origin = if sheet.identity.simulated { SIMULATED } else { "" };
+    let origin = if sheet.identity.simulated { face.word(&phrases::SIMULATED) } else { "" };
     scene.text(face, (RIGHT, 44.0), Anchor::End, origin, Style::plain(7.0, RUST));
     scene.line(vec![(LEFT, 50.0), (RIGHT, 50.0)], Stroke::solid(DARK, 0.6));
     (scene, 60.0)
@@ -68,8 +74,8 @@ fn serial_and_title(scene: &mut Scene, face: &Typeface, sheet: &Sheet) -> f64 {
         }
     }
     let title = match sheet.identity.tube_type.as_str() {
-        "" => sheet.title.clone(),
-        kind => format!("{} ({kind})", sheet.title),
+        "" => face.say(&sheet.title),
+        kind => format!("{} ({kind})", face.say(&sheet.title)),
     };
     let style = Style::plain(8.5, GREY);
     for line in face.wrap(&title, style, room, 2) {
@@ -83,22 +89,22 @@ fn serial_and_title(scene: &mut Scene, face: &Typeface, sheet: &Sheet) -> f64 {
 fn verdict_box(scene: &mut Scene, face: &Typeface, sheet: &Sheet) -> f64 {
     let verdict = &sheet.verdict;
     let (inner, room) = (BOX_LEFT + 10.0, RIGHT - BOX_LEFT - 20.0);
-    let lead = scene.text(face, (inner, 70.0), Anchor::Start, "This tube:", Style::plain(8.5, GREY));
+    let lead = scene.text(face, (inner, 70.0), Anchor::Start, face.word(&phrases::THIS_TUBE), Style::plain(8.5, GREY));
     let from = inner + lead + 8.0;
     let until = RIGHT - 14.0;
     let large = Style::bold(10.5, DARK);
-    let style =
-        if face.width(&face.printable(&verdict.sentence), large) <= until - from { large } else { large.sized(8.0) };
+    let sentence = face.say(&verdict.sentence);
+    let style = if face.width(&face.printable(&sentence), large) <= until - from { large } else { large.sized(8.0) };
     let mut y = 70.0;
-    let lines = face.wrap(&verdict.sentence, style, until - from, 3);
+    let lines = face.wrap(&sentence, style, until - from, 3);
     for (i, line) in lines.iter().enumerate() {
         y += if i > 0 { 11.0 } else { 0.0 };
         scene.text(face, (from + 2.0, y), Anchor::Start, line, style);
         scene.line(vec![(from, y + 3.0), (until, y + 3.0)], Stroke::solid(RULE, 0.6));
     }
     y += 4.0;
-    let own = if verdict.reason.is_empty() { reason::of_pass(sheet) } else { None };
-    for line in face.wrap(own.as_deref().unwrap_or(&verdict.reason), VALUE, room, 6) {
+    let own = if verdict.reason.is_empty() { reason::of_pass(sheet, face.language) } else { None };
+    for line in face.wrap(&own.unwrap_or_else(|| face.say(&verdict.reason)), VALUE, room, 6) {
         y += 9.6;
         scene.text(face, (inner, y), Anchor::Start, &line, VALUE);
     }
@@ -133,7 +139,7 @@ fn edge(scene: &mut Scene, outcome: Outcome, end: f64) {
 
 /// Where a column of the head stands.
 struct Column {
-    title: &'static str,
+    title: &'static Phrase,
     left: f64,
     /// Left end of what is said, from the left end of the column.
     indent: f64,
@@ -143,9 +149,9 @@ struct Column {
 
 /// The bench is said at most length.
 const COLUMNS: [Column; 3] = [
-    Column { title: "Tube", left: LEFT, indent: 38.0, room: 84.0 },
-    Column { title: "Bench", left: LEFT + 132.0, indent: 52.0, room: 154.0 },
-    Column { title: "Run", left: LEFT + 350.0, indent: 52.0, room: RIGHT - LEFT - 402.0 },
+    Column { title: &phrases::TUBE, left: LEFT, indent: 38.0, room: 84.0 },
+    Column { title: &phrases::BENCH, left: LEFT + 132.0, indent: 52.0, room: 154.0 },
+    Column { title: &phrases::RUN, left: LEFT + 350.0, indent: 52.0, room: RIGHT - LEFT - 402.0 },
 ];
 
 /// One line of a column.
@@ -163,58 +169,60 @@ fn said(label: &str, text: &str) -> Said {
     Said { label: label.to_owned(), text: text.to_owned(), rest: String::new(), stands_out: false }
 }
 
-fn tube(sheet: &Sheet) -> Vec<Said> {
+fn tube(sheet: &Sheet, face: &Typeface) -> Vec<Said> {
     let who = &sheet.identity;
     vec![
-        said("supplier", &who.supplier),
-        said("lot", &who.lot),
-        said("condition", &who.condition),
-        said("received", &who.received),
+        said(face.word(&phrases::SUPPLIER), &who.supplier),
+        said(face.word(&phrases::LOT), &who.lot),
+        said(face.word(&phrases::CONDITION), &who.condition),
+        said(face.word(&phrases::RECEIVED), &face.language.day_text(&who.received)),
     ]
 }
 
-fn bench(sheet: &Sheet) -> Vec<Said> {
-    let mut lines = vec![said("station", &sheet.station)];
-    lines.extend(sheet.instruments.iter().map(instrument));
+fn bench(sheet: &Sheet, face: &Typeface) -> Vec<Said> {
+    let mut lines = vec![said(face.word(&phrases::STATION), &sheet.station)];
+    lines.extend(sheet.instruments.iter().map(|it| instrument(it, face)));
     lines
 }
 
 /// What it is and until when its certificate holds; the certificate's number stands in the metadata of record.csv.
-fn instrument(instrument: &Instrument) -> Said {
+fn instrument(instrument: &Instrument, face: &Typeface) -> Said {
     let due = match (instrument.due, instrument.overdue) {
-        (Some(day), false) => format!("due\u{a0}{day}"),
-        (Some(day), true) => format!("overdue\u{a0}since\u{a0}{day}"),
-        (None, true) => "overdue".to_owned(),
-        (None, false) if instrument.certificate.is_empty() => "no\u{a0}certificate".to_owned(),
+        (Some(day), false) => face.say(&phrases::DUE.with([phrase::day(day)])),
+        (Some(day), true) => face.say(&phrases::OVERDUE_SINCE.with([phrase::day(day)])),
+        (None, true) => face.word(&phrases::OVERDUE).to_owned(),
+        (None, false) if instrument.certificate.is_empty() => face.word(&phrases::NO_CERTIFICATE).to_owned(),
         (None, false) => instrument.certificate.clone(),
     };
-    let comma = if instrument.what.is_empty() { "" } else { ", " };
+    let what = face.say(&instrument.what);
+    let comma = if what.is_empty() { "" } else { ", " };
     Said {
-        label: instrument.role.clone(),
-        text: instrument.what.clone(),
+        label: face.say(&instrument.role),
+        text: what,
         rest: format!("{comma}{due}"),
         stands_out: instrument.overdue,
     }
 }
 
-fn run(sheet: &Sheet) -> Vec<Said> {
-    let minutes = |seconds: f64| format!("{:.0} min", seconds / 60.0);
+fn run(sheet: &Sheet, face: &Typeface) -> Vec<Said> {
+    let minutes = |seconds: f64| phrases::MINUTES.with([figure(format!("{:.0}", seconds / 60.0))]);
     let took = sheet.started_at.zip(sheet.ended_at).map(|(from, to)| minutes((to - from).num_seconds() as f64));
-    let dwell = sheet.dwell.filter(|s| s.is_finite()).map(|s| format!("dwell {}", minutes(s)));
-    let started = sheet.started_at.map(|at| at.format("%Y-%m-%d %H:%M:%S %:z").to_string()).unwrap_or_default();
-    let revisions = format!("revision {}, revision {}", sheet.recipe.revision, sheet.limits.revision);
+    let dwell = sheet.dwell.filter(|s| s.is_finite()).map(|s| phrases::DWELL.with([piece(minutes(s))]));
+    let started = sheet.started_at.map(|at| face.language.moment(at)).unwrap_or_default();
+    let revisions = phrases::REVISIONS.with([figure(sheet.recipe.revision), figure(sheet.limits.revision)]);
+    let took = Saying::list([took, dwell].into_iter().flatten(), &COMMA);
     vec![
-        said("started", &started),
-        said("took", &[took, dwell].into_iter().flatten().collect::<Vec<_>>().join(", ")),
-        said("recipe, limits", &revisions),
-        said("rule", &sheet.rule),
-        said("technician", &sheet.identity.technician),
+        said(face.word(&phrases::STARTED), &started),
+        said(face.word(&phrases::TOOK), &face.say(&took)),
+        said(face.word(&phrases::RECIPE_LIMITS), &face.say(&revisions)),
+        said(face.word(&phrases::RULE), &face.say(&rule(&sheet.rule))),
+        said(face.word(&phrases::TECHNICIAN), &sheet.identity.technician),
     ]
 }
 
 /// One column of the head, a line for each thing said. Returns its last baseline.
 fn column(scene: &mut Scene, face: &Typeface, place: &Column, top: f64, lines: &[Said]) -> f64 {
-    scene.text(face, (place.left, top), Anchor::Start, place.title, Style::bold(8.0, DARK));
+    scene.text(face, (place.left, top), Anchor::Start, face.word(place.title), Style::bold(8.0, DARK));
     let mut y = top + 1.0;
     for line in lines {
         y += 10.2;

@@ -12,6 +12,7 @@ use super::{
 };
 use crate::{
     measurand::{self, Group},
+    phrase::{Saying, list, name, page, verdict},
     record::sheet::{Judged, Row, RowVerdict, Sheet, Value},
 };
 
@@ -40,10 +41,10 @@ pub struct Block {
 pub fn table_head(face: &Typeface) -> Scene {
     let mut scene = Scene::default();
     let style = Style::plain(7.0, GREY);
-    scene.text(face, (LEFT, 12.0), Anchor::Start, "Measured", Style::bold(8.0, DARK));
-    scene.text(face, (SPREAD + 22.0, 12.0), Anchor::End, "value ± U", style);
-    scene.text(face, (scale::LEFT_END, 12.0), Anchor::Start, "limits, value, uncertainty", style);
-    scene.text(face, (RIGHT, 12.0), Anchor::End, "conforms", style);
+    scene.text(face, (LEFT, 12.0), Anchor::Start, face.word(&page::TABLE), Style::bold(8.0, DARK));
+    scene.text(face, (SPREAD + 22.0, 12.0), Anchor::End, face.word(&page::VALUE_U), style);
+    scene.text(face, (scale::LEFT_END, 12.0), Anchor::Start, face.word(&page::LIMITS_VALUE), style);
+    scene.text(face, (RIGHT, 12.0), Anchor::End, face.word(&page::CONFORMS), style);
     scene
 }
 
@@ -57,7 +58,7 @@ pub fn blocks(sheet: &Sheet, face: &Typeface, density: &Density, notes: bool) ->
         let group = group(row);
         if last != Some(group) {
             last = Some(group);
-            blocks.push(heading(group.heading(), face, density));
+            blocks.push(heading(face.word(group.heading()), face, density));
         }
         blocks.push(row_block(row, face, density, notes));
     }
@@ -87,7 +88,8 @@ fn row_block(row: &Row, face: &Typeface, density: &Density, notes: bool) -> Bloc
     let size = density.size;
     let baseline = density.pitch * 0.5 + size * 0.33;
     let label = Style { bold: row.deciding, ..Style::plain(size, DARK) };
-    let label_width = scene.fitted(face, (LEFT, baseline), Anchor::Start, &row.label, label, WORDS - 5.0 - LEFT);
+    let label_width =
+        scene.fitted(face, (LEFT, baseline), Anchor::Start, &face.say(&row.label), label, WORDS - 5.0 - LEFT);
     let placed = value(&mut scene, face, row, baseline, size);
     let middle = baseline - size * 0.3;
     // Where the drawing of a row ends, if it leaves room behind it.
@@ -107,12 +109,13 @@ fn row_block(row: &Row, face: &Typeface, density: &Density, notes: bool) -> Bloc
     // Behind the drawing, or between name and value.
     let rooms =
         [(drawn.map_or(conforms, |end| end + 7.0), conforms - 7.0), (LEFT + label_width + 7.0, placed.left - 12.0)];
-    let width = face.width(&face.printable(&row.note), note.sized(SMALLEST));
+    let words = face.say(&row.note);
+    let width = face.width(&face.printable(&words), note.sized(SMALLEST));
     let room = rooms.into_iter().find(|(from, to)| !row.deciding && width <= to - from);
     if let Some((from, to)) = room {
-        scene.fitted(face, (from, baseline), Anchor::Start, &row.note, note, to - from);
+        scene.fitted(face, (from, baseline), Anchor::Start, &words, note, to - from);
     } else if row.deciding || notes {
-        for line in face.wrap(&row.note, note, RIGHT - LEFT, if row.deciding { 2 } else { 1 }) {
+        for line in face.wrap(&words, note, RIGHT - LEFT, if row.deciding { 2 } else { 1 }) {
             end += size * 1.1;
             scene.text(face, (LEFT, end), Anchor::Start, &line, note);
         }
@@ -145,10 +148,10 @@ struct Placed {
 
 /// Value, spread and unit, or in words why there is none.
 fn value(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) -> Placed {
-    let text = value_text(row);
+    let text = value_text(row, face.language);
     let small = Style::plain(size * 0.9, GREY);
     if !text.absent.is_empty() {
-        let lines = face.wrap(&format!("no value: {}", text.absent), small, CONFORMS - 8.0 - WORDS, 2);
+        let lines = face.wrap(&face.say(&page::NO_VALUE.with([name(text.absent)])), small, CONFORMS - 8.0 - WORDS, 2);
         let mut end = baseline;
         for (i, line) in lines.iter().enumerate() {
             end = baseline + size * 1.1 * i as f64;
@@ -182,7 +185,8 @@ fn wanted(scene: &mut Scene, face: &Typeface, row: &Row, word: &str, baseline: f
     } else {
         scene.cross((x, y), 2.6, scale::CROSS);
     }
-    let text = format!("wanted: {}", judged.wanted.join(" or "));
+    let words = judged.wanted.iter().map(|word| Saying::of(name(word.as_str())));
+    let text = face.say(&page::WANTED.with([list(words, &verdict::OR)]));
     let width = scene.fitted(face, (x + 10.0, baseline), Anchor::Start, &text, style, CONFORMS - 8.0 - x - 10.0);
     Some(x + 10.0 + width)
 }
@@ -201,9 +205,9 @@ pub fn telling(row: &Row) -> Option<&Judged> {
 fn conforms(scene: &mut Scene, face: &Typeface, row: &Row, baseline: f64, size: f64) -> f64 {
     let Some(judged) = telling(row) else { return RIGHT };
     let text = match (&row.value, judged.conformance_probability) {
-        (Value::Count { .. }, _) => "exact".to_owned(),
-        (Value::Word(_), _) => "by eye".to_owned(),
-        (_, Some(p)) if p.is_finite() => probability_text(p),
+        (Value::Count { .. }, _) => face.word(&page::EXACT).to_owned(),
+        (Value::Word(_), _) => face.word(&page::SEEN).to_owned(),
+        (_, Some(p)) if p.is_finite() => probability_text(p, face.language),
         _ => "–".to_owned(),
     };
     let style = if row.deciding { Style::bold(size * 0.9, DARK) } else { Style::plain(size * 0.9, GREY) };

@@ -12,6 +12,7 @@ use super::{
 };
 use crate::{
     measurand::{self, Measurand, Shape},
+    phrase::Language,
     record::sheet::{Judged, Row, RowVerdict, Value, Zone},
 };
 
@@ -49,7 +50,7 @@ pub struct RowScale {
 
 impl RowScale {
     /// None where nothing is limited or nothing can be drawn to scale.
-    pub fn of(row: &Row) -> Option<Self> {
+    pub fn of(row: &Row, language: Language) -> Option<Self> {
         let (value, expanded, open) = match row.value {
             Value::Number { value, .. } if !value.is_finite() => return None,
             Value::Number { value, expanded, .. } => (value, if expanded.is_finite() { expanded } else { 0.0 }, false),
@@ -64,8 +65,10 @@ impl RowScale {
         // To scale around the bounds that tell most: those of another grade would squeeze a doubt into a dot.
         let telling: Vec<(f64, f64)> = rows::telling(row).and_then(bounds_of).into_iter().collect();
         let axis = Axis::around(if telling.is_empty() { &bounds } else { &telling }, value, expanded, known);
-        let (lower_text, upper_text) =
-            (figures(row, known, |judged| judged.lower), figures(row, known, |judged| judged.upper));
+        let (lower_text, upper_text) = (
+            figures(row, known, language, |judged| judged.lower),
+            figures(row, known, language, |judged| judged.upper),
+        );
         Some(Self { axis, bounds, value, expanded, open, crossed: crossed(row), lower_text, upper_text })
     }
 
@@ -82,7 +85,7 @@ impl RowScale {
 
 /// The drawing, its axis at `y`; nothing where nothing is limited.
 pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
-    let Some(scale) = RowScale::of(row) else { return };
+    let Some(scale) = RowScale::of(row, face.language) else { return };
     let (axis, bounds) = (&scale.axis, &scale.bounds);
     let half = pitch * 0.235;
     scene.line(vec![(LEFT_END, y), (RIGHT_END, y)], Stroke::solid(RULE, 0.5));
@@ -170,9 +173,14 @@ fn bracket(scene: &mut Scene, x: Option<f64>, serif: f64, y: f64, half: f64) {
 }
 
 /// Bounds in figures, best grade first, each once.
-fn figures(row: &Row, known: Option<&'static Measurand>, bound: fn(&Judged) -> Option<f64>) -> String {
+fn figures(
+    row: &Row,
+    known: Option<&'static Measurand>,
+    language: Language,
+    bound: fn(&Judged) -> Option<f64>,
+) -> String {
     let mut texts: Vec<String> = Vec::new();
-    for text in row.judged.iter().filter_map(bound).map(|b| bound_text(known, b)) {
+    for text in row.judged.iter().filter_map(bound).map(|b| bound_text(known, b, language)) {
         if !texts.contains(&text) {
             texts.push(text);
         }

@@ -5,6 +5,7 @@
 use super::{Room, Step};
 use crate::{
     behaviour::count_modes,
+    phrase::{Saying, figure, name, reasons},
     recipe,
     record::finding::ModeFinding,
     run::{
@@ -31,22 +32,22 @@ impl Comb {
 /// The window of seconds since first light in which whole cycles of a step lie; all of a step that is no dwell.
 ///
 /// Errors: why there is none, for the row.
-pub(super) fn whole_cycles(book: &Notebook, from: &str, cycles: f64) -> Result<(f64, f64), String> {
+pub(super) fn whole_cycles(book: &Notebook, from: &str, cycles: f64) -> Result<(f64, f64), Saying> {
     let Some(dwelt) = book.dwelt(from) else { return Ok((f64::NEG_INFINITY, f64::INFINITY)) };
     if dwelt.end == Some(DwellEnd::Longest) {
-        return Err(format!("{from} did not settle within {:.0} min", dwelt.longest / 60.0));
+        return Err(reasons::DID_NOT_SETTLE.with([name(from), figure(format!("{:.0}", dwelt.longest / 60.0))]));
     }
-    dwelt.warmup.last_cycles(cycles).ok_or_else(|| format!("{from} shows no {cycles} whole walk cycles"))
+    dwelt.warmup.last_cycles(cycles).ok_or_else(|| reasons::NO_WHOLE_CYCLES.with([name(from), figure(cycles)]))
 }
 
 fn counts(room: &Room<'_>, from: &str, cycles: f64) -> [Filled; 2] {
     let keys = ["mode_count_min", "mode_count_max"];
     if room.book.dwelt(from).is_none() {
-        return keys.map(|key| Filled::absent(key, format!("{from} is at rest: no walk cycle was seen")));
+        return keys.map(|key| Filled::absent(key, reasons::STEP_AT_REST.with([name(from)])));
     }
     let captures = match whole_cycles(room.book, from, cycles).or_else(|_| whole_cycles(room.book, from, 1.0)) {
         Ok(window) => room.book.of_within(from, window),
-        Err(reason) => return keys.map(|key| Filled::absent(key, reason.as_str())),
+        Err(reason) => return keys.map(|key| Filled::absent(key, reason.clone())),
     };
     let glimpses: Vec<_> = captures.iter().map(|seen| seen.glimpse.clone()).collect();
     let spacing = room.book.spacing.as_ref().map_or(room.plan.recipe.nominal_spacing, |spacing| spacing.value);
@@ -55,7 +56,7 @@ fn counts(room: &Room<'_>, from: &str, cycles: f64) -> [Filled; 2] {
             counted(keys[0], counts.min, counts.min_doubt, counts.min_probability),
             counted(keys[1], counts.max, counts.max_doubt, counts.max_probability),
         ],
-        None => keys.map(|key| Filled::absent(key, "under one walk cycle or 20 phases of it could be counted")),
+        None => keys.map(|key| Filled::absent(key, &reasons::TOO_FEW_PHASES)),
     }
 }
 
@@ -64,11 +65,7 @@ fn counted(key: &str, n: u32, doubt: bool, probability: f64) -> Filled {
     let n = u64::from(n);
     let by = u64::from(doubt);
     let row = Filled::count(key, n, n.saturating_sub(by), n + by);
-    if doubt {
-        row.noted(format!("the mode nearest to the floor: {:.3} that it is on the side found", probability))
-    } else {
-        row
-    }
+    if doubt { row.noted(reasons::NEAREST_TO_FLOOR.with([figure(format!("{probability:.3}"))])) } else { row }
 }
 
 /// Highest off-axis area over highest comb area in one capture, with its standard uncertainty; without a peak off the comb
@@ -102,10 +99,10 @@ fn off_axis(captures: &[Seen]) -> Filled {
         Some((value, u)) => {
             let words = if value > 0.0 { "scatter of both peaks" } else { "noise of a peak's height" };
             let line = BudgetLine::direct("scatter", words, Evaluation::TypeA, u, f64::INFINITY);
-            let note = if value > 0.0 { "" } else { "no peak off the comb" };
+            let note = if value > 0.0 { Saying::none() } else { (&reasons::NO_PEAK_OFF).into() };
             Filled::number("off_axis_ratio", &Measured::with_line(value, line)).noted(note)
         }
-        None => Filled::absent("off_axis_ratio", "no capture could be measured"),
+        None => Filled::absent("off_axis_ratio", &reasons::NOT_MEASURABLE),
     }
 }
 
@@ -120,7 +117,11 @@ impl Step for Comb {
                 Err(_) => room.book.of(&self.from),
             };
             let pooled = spacing::pooled(captures);
-            self.filled.extend(spacing::rows(pooled, &format!("of {}", self.from), room.book).into_iter().flatten());
+            self.filled.extend(
+                spacing::rows(pooled, reasons::OF_STEP.with([name(self.from.as_str())]), room.book)
+                    .into_iter()
+                    .flatten(),
+            );
         }
         self.filled.extend(counts(room, &self.from, cycles));
         self.filled.push(match window {

@@ -5,6 +5,7 @@
 use super::{Given, Room, Step, Wish};
 use crate::{
     behaviour::{Glimpse, Warmup, WarmupSettings, WarmupState, line_drift, tau_per_slope},
+    phrase::{Saying, figure, name, reasons, said},
     recipe,
     run::{
         charts,
@@ -34,7 +35,7 @@ pub(super) struct Dwell {
     any_dark: bool,
     n_lost: u64,
     /// Why the first of them was lost.
-    first_lost: Option<String>,
+    first_lost: Option<Saying>,
     begun: bool,
     done: bool,
     filled: Vec<Filled>,
@@ -67,9 +68,9 @@ impl Dwell {
         }
     }
 
-    fn lose(&mut self, why: &str) {
+    fn lose(&mut self, why: impl Into<Saying>) {
         self.n_lost += 1;
-        self.first_lost.get_or_insert_with(|| why.to_owned());
+        self.first_lost.get_or_insert_with(|| why.into());
     }
 
     fn captured(&mut self, captured: &crate::record::event::Captured, room: &mut Room<'_>) {
@@ -82,8 +83,10 @@ impl Dwell {
         }
         let kept = room.book.keep(captured);
         if kept == Kept::No {
-            let why = captured.finding.refused.as_deref().unwrap_or("out of the order of time");
-            self.lose(why);
+            match &captured.finding.refused {
+                Some(reason) => self.lose(Saying::outside(reason)),
+                None => self.lose(&reasons::OUT_OF_ORDER),
+            }
             return self.go_on(room);
         }
         self.lit_ms = room.now_ms;
@@ -147,18 +150,18 @@ impl Dwell {
         let state = dwelt.warmup.state();
         let longest = self.keys.longest_s / 60.0;
         match end {
-            DwellEnd::Dark => room.book.dark = Some("no light in the captures for 30 s".into()),
-            DwellEnd::Longest => room.book.remark(format!(
-                "The walk had not settled when the dwell ended at its longest, {longest:.0} min: what needs whole cycles is empty."
-            )),
+            DwellEnd::Dark => room.book.dark = Some((&reasons::NO_LIGHT_FOR).into()),
+            DwellEnd::Longest => {
+                room.book.remark(reasons::NOT_SETTLED_REMARK.with([figure(format!("{longest:.0}"))]));
+            }
             DwellEnd::SourceEnded if self.any_dark && !self.any_light => {
-                room.book.dark = Some("no light in any capture of the dwell".into());
+                room.book.dark = Some((&reasons::NO_LIGHT_IN_DWELL).into());
             }
             _ => {}
         }
         if self.n_lost > 0 {
-            let why = self.first_lost.as_deref().unwrap_or_default();
-            room.book.remark(format!("{} captures of step {step} could not be read; the first: {why}.", self.n_lost));
+            let why = said(self.first_lost.clone().unwrap_or_default());
+            room.book.remark(reasons::UNREADABLE_FIRST.with([figure(self.n_lost), name(step), why]));
         }
         if room.book.dark.is_none() {
             self.filled = self.rows(end, &state, room);
@@ -181,16 +184,12 @@ impl Dwell {
             let line =
                 BudgetLine::direct("walk", "tube phase at both ends", Evaluation::TypeA, state.u_walked, f64::INFINITY);
             let cycles = drift.on(Measured::with_line(state.walked, line), drift.walked);
-            let note = if state.early_unknown {
-                "early cycles unknown: counted from the first that could be followed"
-            } else {
-                ""
-            };
-            rows.push(Filled::number(KEYS[2], &cycles).noted(note));
+            let note = if state.early_unknown { (&reasons::EARLY_UNKNOWN).into() } else { Saying::none() };
+            rows.push(Filled::number(KEYS[2], &cycles).noted(note.clone()));
             rows.push(Filled::number(KEYS[3], &cycles.scaled(self.wavelength / 2.0)).noted(note));
         }
         let rate = state.rate.clone().map(|rate| drift.on(rate, 1.0));
-        rows.push(some_number(KEYS[4], rate.as_ref(), "the rate of the walk could not be found"));
+        rows.push(some_number(KEYS[4], rate.as_ref(), &Saying::from(&reasons::NO_RATE)));
         rows
     }
 }
@@ -249,19 +248,22 @@ impl Drift {
     }
 }
 
-fn some_number(key: &str, measured: Option<&Measured>, why: &str) -> Filled {
-    measured.map_or_else(|| Filled::absent(key, why), |measured| Filled::number(key, measured))
+fn some_number(key: &str, measured: Option<&Measured>, why: &Saying) -> Filled {
+    measured.map_or_else(|| Filled::absent(key, why.clone()), |measured| Filled::number(key, measured))
 }
 
-fn why_empty(end: DwellEnd, keys: &recipe::Dwell, state: &WarmupState) -> String {
+fn why_empty(end: DwellEnd, keys: &recipe::Dwell, state: &WarmupState) -> Saying {
     // The same as what the end of the dwell hangs on: what strayed from the fit may stray again.
     let residual = state.residual_upper.map(|residual| residual + strayed(state, keys.horizon_s));
     let residual = residual.filter(|residual| residual.is_finite());
-    let residual = residual.map_or(String::new(), |cycles| format!("; predicted walk up to {cycles:.1} spacings"));
-    match end {
-        DwellEnd::Longest => format!("not settled within {:.0} min{residual}", keys.longest_s / 60.0),
-        DwellEnd::SourceEnded => format!("the captures ended before the walk settled{residual}"),
-        _ => "the warm-up could not be fitted".into(),
+    let residual = residual.map(|cycles| figure(format!("{cycles:.1}")));
+    let longest = figure(format!("{:.0}", keys.longest_s / 60.0));
+    match (end, residual) {
+        (DwellEnd::Longest, Some(residual)) => reasons::NOT_SETTLED_PREDICTED.with([longest, residual]),
+        (DwellEnd::Longest, None) => reasons::NOT_SETTLED.with([longest]),
+        (DwellEnd::SourceEnded, Some(residual)) => reasons::ENDED_EARLY_PREDICTED.with([residual]),
+        (DwellEnd::SourceEnded, None) => (&reasons::ENDED_EARLY).into(),
+        _ => (&reasons::NO_FIT).into(),
     }
 }
 
@@ -297,15 +299,15 @@ impl Step for Dwell {
             Given::Capture(captured) => self.captured(captured, room),
             Given::Lost { for_good: true, reason } => {
                 if !self.any_light && !self.any_dark {
-                    let reason = self.first_lost.as_deref().unwrap_or(reason);
-                    self.filled = KEYS.iter().map(|key| Filled::absent(key, reason)).collect();
+                    let reason = self.first_lost.clone().unwrap_or_else(|| Saying::outside(reason));
+                    self.filled = KEYS.iter().map(|key| Filled::absent(key, reason.clone())).collect();
                     self.done = true;
                 } else {
                     self.end(DwellEnd::SourceEnded, room);
                 }
             }
             Given::Lost { for_good: false, reason } => {
-                self.lose(reason);
+                self.lose(Saying::outside(reason));
                 self.go_on(room);
             }
             _ => {}

@@ -4,6 +4,7 @@
 
 use super::{Given, Room, Step, Wish};
 use crate::{
+    phrase::{Saying, name},
     recipe,
     record::{
         question::{Answer, Expects},
@@ -33,14 +34,14 @@ impl Step for Look {
             return Wish::Nothing;
         }
         let expects = Expects::Choice(self.choices.clone());
-        Wish::Ask { word: "choice".into(), text: self.ask.clone(), expects, high_voltage: false }
+        Wish::Ask { word: "choice".into(), text: Saying::of(name(self.ask.clone())), expects, high_voltage: false }
     }
 
     fn take(&mut self, given: Given<'_>, room: &mut Room<'_>) {
         let key = format!("visual.{}", room.step);
         match given {
             Given::Answer(Answer::Choice(word)) => self.filled.push(Filled::plain(&key, Value::Word(word.clone()))),
-            Given::Answer(Answer::CannotSay(reason)) => self.filled.push(Filled::absent(&key, reason.as_str())),
+            Given::Answer(Answer::CannotSay(reason)) => self.filled.push(Filled::absent(&key, Saying::outside(reason))),
             _ => {}
         }
     }

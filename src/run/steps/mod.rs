@@ -17,6 +17,7 @@ use chrono::{DateTime, FixedOffset};
 
 use super::{filled::Filled, notebook::Notebook, plan::Plan};
 use crate::{
+    phrase::Saying,
     recipe::StepKind,
     record::{
         event::Captured,
@@ -73,7 +74,7 @@ pub(crate) enum Wish {
     /// A reading.
     Reading(ReadingKind),
     /// An answer.
-    Ask { word: String, text: String, expects: Expects, high_voltage: bool },
+    Ask { word: String, text: Saying, expects: Expects, high_voltage: bool },
     /// It is done.
     Nothing,
 }
@@ -90,13 +91,13 @@ pub(crate) struct LightWish {
 
 impl Wish {
     /// A number in a unit, SI bounds.
-    pub fn number(word: &str, text: impl Into<String>, ucum: &str, lowest: f64, highest: f64) -> Self {
+    pub fn number(word: &str, text: impl Into<Saying>, ucum: &str, lowest: f64, highest: f64) -> Self {
         let expects = Expects::Number { ucum: ucum.into(), lowest, highest };
         Self::Ask { word: word.into(), text: text.into(), expects, high_voltage: false }
     }
 
     /// Enter, once it is done.
-    pub fn done(word: impl Into<String>, text: impl Into<String>) -> Self {
+    pub fn done(word: impl Into<String>, text: impl Into<Saying>) -> Self {
         Self::Ask { word: word.into(), text: text.into(), expects: Expects::Done, high_voltage: false }
     }
 }

@@ -5,6 +5,7 @@
 use super::{Given, LightWish, Room, Step, Wish};
 use crate::{
     behaviour::{LightMeasurement, LightSet, LightTone, MainsRipple, NoiseFound, ToneOrigin, light_noise},
+    phrase::{Phrase, Saying, figure, questions, reasons, said},
     quantity::Frequency,
     recipe,
     record::{light::LightFinding, question::Answer},
@@ -44,7 +45,7 @@ pub(super) struct Noise {
     /// Slow, fast, slow dark, fast dark, fast later.
     traces: Vec<LightMeasurement>,
     blocked: bool,
-    reason: Option<String>,
+    reason: Option<Saying>,
     filled: Vec<Filled>,
 }
 
@@ -76,7 +77,7 @@ impl Noise {
     }
 
     /// Gives up: what is missing is said once, in every row.
-    fn give_up(&mut self, reason: impl Into<String>) {
+    fn give_up(&mut self, reason: impl Into<Saying>) {
         self.reason.get_or_insert(reason.into());
         // A beam that was blocked is opened again for the steps that follow.
         self.stage = if self.blocked { Stage::Open } else { Stage::Done };
@@ -89,7 +90,7 @@ impl Noise {
                 self.stage = Stage::Done;
                 return;
             }
-            return self.give_up(reason.as_str());
+            return self.give_up(Saying::outside(reason));
         }
         self.traces.push(live(finding));
         self.stage = match self.stage {
@@ -110,7 +111,7 @@ impl Noise {
     fn answered(&mut self, answer: &Answer) {
         match (self.stage, answer) {
             (Stage::Block, Answer::CannotSay(why)) => {
-                self.give_up(format!("no trace in the dark, so the level without light is unknown: {why}"));
+                self.give_up(reasons::NO_DARK_TRACE.with([said(Saying::outside(why))]));
             }
             (Stage::Block, _) => {
                 self.blocked = true;
@@ -130,40 +131,40 @@ impl Noise {
             (Some(reason), _) => Err(reason.clone()),
             (None, [slow, fast, slow_dark, fast_dark, later @ ..]) => {
                 let set = LightSet { slow, slow_dark, fast, fast_dark, fast_later: later.first() };
-                light_noise(&set, self.bandwidth, self.keys.highest).map(|found| self.rows(&set, &found, book))
+                let found = light_noise(&set, self.bandwidth, self.keys.highest);
+                found.map(|found| self.rows(&set, &found, book)).map_err(|why| Saying::outside(&why))
             }
-            (None, _) => Err("light traces are missing".to_owned()),
+            (None, _) => Err((&reasons::NO_LIGHT_TRACES).into()),
         };
-        self.filled = rows.unwrap_or_else(|why| KEYS.iter().map(|key| Filled::absent(key, why.as_str())).collect());
+        self.filled = rows.unwrap_or_else(|why| KEYS.iter().map(|key| Filled::absent(key, why.clone())).collect());
     }
 
     fn rows(&self, set: &LightSet<'_>, found: &NoiseFound, book: &mut Notebook) -> Vec<Filled> {
-        let band = format!("{} to {}", hertz(self.keys.lowest), hertz(self.keys.highest));
+        let hertz = |value: f64| figure(Frequency::from_si(value));
+        let band = || said(reasons::BAND.with([hertz(self.keys.lowest), hertz(self.keys.highest)]));
         let noise = match &found.noise_rms {
             _ if self.bandwidth < self.keys.highest => Filled::absent(
                 KEYS[0],
-                format!("the light detector reaches {}, the band {}", hertz(self.bandwidth), hertz(self.keys.highest)),
+                reasons::DETECTOR_REACHES.with([hertz(self.bandwidth), hertz(self.keys.highest)]),
             ),
-            Some(noise) => Filled::number(KEYS[0], noise).noted(format!(
-                "{band}: {:.2} s, then {:.1} ms; dark noise {:.3} % taken off",
-                set.slow.duration,
-                set.fast.duration * 1e3,
-                found.dark_rms * 100.0
-            )),
-            None => {
-                let why = "the slow trace folds noise down from above its band: average the light over each sample";
-                Filled::absent(KEYS[0], why)
-            }
+            Some(noise) => Filled::number(KEYS[0], noise).noted(reasons::NOISE_BAND.with([
+                band(),
+                figure(format!("{:.2}", set.slow.duration)),
+                figure(format!("{:.1}", set.fast.duration * 1e3)),
+                figure(format!("{:.3}", found.dark_rms * 100.0)),
+            ])),
+            None => Filled::absent(KEYS[0], &reasons::FOLDED),
         };
         let (mains, clear, n) = found.mains;
         if !clear {
-            book.remark(format!("No mains line stands clear of the noise: {mains:.0} Hz was taken."));
+            book.remark(reasons::NO_MAINS.with([figure(format!("{mains:.0}"))]));
         }
-        let ripple = Filled::number(KEYS[1], &found.line_ripple).noted(format!(
-            "{n} harmonics of {mains:.2} Hz, {:.2} s; {:.3} % could hide in the noise",
-            set.slow.duration,
-            found.ripple_floor * 100.0
-        ));
+        let ripple = Filled::number(KEYS[1], &found.line_ripple).noted(reasons::HARMONICS.with([
+            figure(n),
+            figure(format!("{mains:.2}")),
+            figure(format!("{:.2}", set.slow.duration)),
+            figure(format!("{:.3}", found.ripple_floor * 100.0)),
+        ]));
         let mut rows = vec![noise, ripple];
         rows.extend(match &found.tone {
             Some(tone) => [
@@ -171,8 +172,8 @@ impl Noise {
                 Filled::number(KEYS[3], &tone.frequency),
             ],
             None => {
-                let why = format!("no line stands above the noise, {band}; a tone of the discharge may lie higher");
-                [KEYS[2], KEYS[3]].map(|key| Filled::absent(key, why.as_str()))
+                let why = reasons::NO_TONE.with([band()]);
+                [KEYS[2], KEYS[3]].map(|key| Filled::absent(key, why.clone()))
             }
         });
         rows
@@ -180,17 +181,13 @@ impl Noise {
 }
 
 /// What a tone is, as far as two traces tell.
-fn words(origin: ToneOrigin) -> &'static str {
+fn words(origin: ToneOrigin) -> &'static Phrase {
     match origin {
-        ToneOrigin::ModeBeat => "moved between two traces, as a beat of modes does: no fault",
-        ToneOrigin::Moving => "moved between two traces, too high for a beat of modes: points at the discharge",
-        ToneOrigin::Fixed => "stayed between two traces: supply or discharge; try another current",
-        ToneOrigin::Unknown => "seen in one trace only: whether it moves is not known",
+        ToneOrigin::ModeBeat => &reasons::TONE_OF_MODES,
+        ToneOrigin::Moving => &reasons::TONE_MOVING,
+        ToneOrigin::Fixed => &reasons::TONE_FIXED,
+        ToneOrigin::Unknown => &reasons::TONE_ONCE,
     }
-}
-
-fn hertz(value: f64) -> String {
-    Frequency::from_si(value).to_string()
 }
 
 fn live(finding: &LightFinding) -> LightMeasurement {
@@ -222,7 +219,7 @@ impl Step for Noise {
         match &room.plan.station.light_detector {
             Some(detector) => self.bandwidth = detector.bandwidth,
             None => {
-                self.give_up("the station file names no light detector");
+                self.give_up(&reasons::NO_LIGHT_DETECTOR);
                 self.finish(room.book);
             }
         }
@@ -234,8 +231,8 @@ impl Step for Noise {
             Stage::Fast | Stage::FastLater => self.trace(true, true),
             Stage::SlowDark => self.trace(false, false),
             Stage::FastDark => self.trace(false, true),
-            Stage::Block => Wish::done("block_beam", "Block the beam ahead of the light detector, with a beam stop"),
-            Stage::Open => Wish::done("open_beam", "Open the beam again"),
+            Stage::Block => Wish::done("block_beam", &questions::BLOCK_LIGHT),
+            Stage::Open => Wish::done("open_beam", &questions::OPEN_BEAM),
             Stage::Done => Wish::Nothing,
         }
     }
@@ -244,10 +241,10 @@ impl Step for Noise {
         match given {
             Given::Light(light) => self.took(&light.finding),
             Given::Lost { reason, .. } if self.stage == Stage::FastLater => {
-                room.book.remark(format!("Whether a tone moves was not seen: {reason}."));
+                room.book.remark(reasons::TONE_UNSEEN.with([said(Saying::outside(reason))]));
                 self.stage = Stage::Done;
             }
-            Given::Lost { reason, .. } => self.give_up(reason),
+            Given::Lost { reason, .. } => self.give_up(Saying::outside(reason)),
             Given::Answer(answer) => self.answered(answer),
             _ => {}
         }

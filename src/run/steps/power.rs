@@ -5,6 +5,7 @@
 use super::{Room, Step, comb::whole_cycles};
 use crate::{
     behaviour::{CyclePower, Glimpse, cycle_power, power_drift},
+    phrase::{Saying, name, reasons},
     recipe,
     run::{
         filled::Filled,
@@ -29,29 +30,29 @@ impl Power {
         Self { from: keys.from.clone(), filled: Vec::new() }
     }
 
-    fn rows(&self, room: &mut Room<'_>) -> Result<Vec<Filled>, String> {
+    fn rows(&self, room: &mut Room<'_>) -> Result<Vec<Filled>, Saying> {
         let from = self.from.as_str();
-        let meter = room.plan.station.power_meter.as_ref().ok_or("the station file names no power meter")?;
+        let meter = room.plan.station.power_meter.as_ref().ok_or(&reasons::NO_POWER_METER)?;
         let glimpses: Vec<Glimpse> = room.book.of(from).iter().map(|seen| seen.glimpse.clone()).collect();
         if glimpses.iter().all(|glimpse| glimpse.power.is_none()) {
-            return Err(format!("the captures of {from} carry no power reading"));
+            return Err(reasons::NO_POWER_READING.with([name(from)]));
         }
         for watts in glimpses.iter().filter_map(|glimpse| glimpse.power).map(|power| power * meter.factor) {
             room.book.power_seen(watts, (watts * meter.u).abs());
         }
         let Some(dwelt) = room.book.dwelt(from) else {
-            let at_rest = format!("{from} is at rest: no walk cycle was seen");
-            let row = power(cycle_power(&glimpses, ends(&glimpses)), meter).noted("at rest, not over a walk cycle");
-            return Ok(vec![row, Filled::absent(KEYS[1], at_rest.as_str()), Filled::absent(KEYS[2], at_rest)]);
+            let at_rest = reasons::STEP_AT_REST.with([name(from)]);
+            let row = power(cycle_power(&glimpses, ends(&glimpses)), meter).noted(&reasons::NOT_OVER_CYCLE);
+            return Ok(vec![row, Filled::absent(KEYS[1], at_rest.clone()), Filled::absent(KEYS[2], at_rest)]);
         };
         if dwelt.end == Some(DwellEnd::SourceEnded) && !dwelt.warmup.state().settled {
-            return Err("the captures ended before the walk settled".into());
+            return Err((&reasons::ENDED_EARLY).into());
         }
         let last = whole_cycles(room.book, from, 1.0)?;
         let whole = whole_cycles(room.book, from, dwelt.cycles.max(1.0)).unwrap_or(last);
         let ripple = match cycle_power(&glimpses, whole) {
             Some(found) => Filled::number(KEYS[1], &found.ripple),
-            None => Filled::absent(KEYS[1], "too few power readings over the whole cycles"),
+            None => Filled::absent(KEYS[1], &reasons::FEW_READINGS_CYCLES),
         };
         Ok(vec![power(cycle_power(&glimpses, last), meter), ripple, drift(&glimpses, dwelt)])
     }
@@ -64,7 +65,7 @@ fn ends(glimpses: &[Glimpse]) -> (f64, f64) {
 /// True power = reading × factor.
 fn power(found: Option<CyclePower>, meter: &PowerMeter) -> Filled {
     let Some(found) = found else {
-        return Filled::absent(KEYS[0], "too few power readings in the last whole cycle");
+        return Filled::absent(KEYS[0], &reasons::FEW_READINGS_LAST);
     };
     let mut measured = found.mean.scaled(meter.factor);
     let source = meter.certificate.as_ref().map_or("power meter", |certificate| certificate.number.as_str());
@@ -84,7 +85,7 @@ fn drift(glimpses: &[Glimpse], dwelt: &Dwelt) -> Filled {
     cycles.reverse();
     match power_drift(glimpses, &cycles) {
         Some(measured) => Filled::number(KEYS[2], &measured),
-        None => Filled::absent(KEYS[2], "too few whole cycles near the end of the dwell show a slope"),
+        None => Filled::absent(KEYS[2], &reasons::FEW_CYCLES),
     }
 }
 
@@ -92,7 +93,7 @@ impl Step for Power {
     fn begin(&mut self, room: &mut Room<'_>) {
         self.filled = match self.rows(room) {
             Ok(rows) => rows,
-            Err(reason) => KEYS.iter().map(|key| Filled::absent(key, reason.as_str())).collect(),
+            Err(reason) => KEYS.iter().map(|key| Filled::absent(key, reason.clone())).collect(),
         };
     }
 

@@ -4,6 +4,7 @@
 
 use super::{Given, Room, Step, Wish};
 use crate::{
+    phrase::{Saying, figure, questions, reasons},
     recipe,
     record::question::{Answer, Expects},
     run::{filled::Filled, notebook::Notebook},
@@ -14,9 +15,6 @@ use crate::{
 const U_BY_HAND: f64 = 0.05;
 /// Relative standard uncertainty of a start voltage from an instrument that no certificate names (from memory).
 const U_NO_CERTIFICATE: f64 = 0.05;
-
-const SWITCH_ON: &str = "Tube seated, leads covered, beam stop in place, hands clear: switch the supply on and time \
-    it until first light. Start pulses of up to 10 kV; laser radiation";
 
 /// The step.
 pub(super) struct Strike {
@@ -45,8 +43,8 @@ impl Strike {
     fn tries(&mut self, answer: &Answer, room: &mut Room<'_>) {
         self.filled.push(match answer {
             Answer::Whole(0) => {
-                room.book.dark = Some(format!("no light after {} tries", self.tries_at_most));
-                Filled::absent("start_tries", "the tube did not light")
+                room.book.dark = Some(reasons::NO_LIGHT_AFTER.with([figure(self.tries_at_most)]));
+                Filled::absent("start_tries", &reasons::NOT_LIT)
             }
             Answer::Whole(tries) => Filled::count("start_tries", *tries, *tries, *tries),
             answer => absent("start_tries", answer),
@@ -71,8 +69,8 @@ impl Strike {
 /// A row that an answer leaves empty.
 pub(super) fn absent(key: &str, answer: &Answer) -> Filled {
     match answer {
-        Answer::CannotSay(reason) => Filled::absent(key, reason.as_str()),
-        _ => Filled::absent(key, "the answer gave no value"),
+        Answer::CannotSay(reason) => Filled::absent(key, Saying::outside(reason)),
+        _ => Filled::absent(key, &reasons::NO_ANSWER),
     }
 }
 
@@ -83,17 +81,17 @@ impl Step for Strike {
         match self.stage {
             0 => Wish::Ask {
                 word: "start_delay".into(),
-                text: SWITCH_ON.into(),
+                text: (&questions::SWITCH_ON).into(),
                 expects: Expects::Number { ucum: "s".into(), lowest: 0.0, highest: 600.0 },
                 high_voltage: true,
             },
             1 => Wish::Ask {
                 word: "tries".into(),
-                text: format!("Tries to start, at most {}; 0 if there was no light", self.tries_at_most),
+                text: questions::TRIES.with([figure(self.tries_at_most)]),
                 expects: Expects::Whole { lowest: 0, highest: self.tries_at_most },
                 high_voltage: false,
             },
-            2 => Wish::number("start_voltage", "Highest voltage at the anode in the first try", "kV", 0.0, 30e3),
+            2 => Wish::number("start_voltage", &questions::START_VOLTAGE, "kV", 0.0, 30e3),
             _ => Wish::Nothing,
         }
     }

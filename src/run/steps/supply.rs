@@ -4,6 +4,7 @@
 
 use super::{Given, Room, Step, Wish, strike::absent};
 use crate::{
+    phrase::{Saying, figure, questions, reasons},
     recipe,
     record::question::Answer,
     run::{filled::Filled, notebook::Notebook},
@@ -16,9 +17,6 @@ use crate::{
 
 /// Standard uncertainty of a current read from a display with steps of 0.01 mA, A: half a step, rectangular.
 const U_READING: f64 = 0.005e-3 / 1.732_050_8;
-
-const DROPOUT: &str = "Lower the current slowly until the discharge goes out and note the last current. The tube stays \
-    dark; charge stays in tube and ballast";
 
 /// The step.
 pub(super) struct Supply {
@@ -41,7 +39,7 @@ impl Supply {
                 self.current = Some(current);
                 Filled::number("run_current", &current_measured(current, supply))
             }
-            (Ok(_), None) => Filled::absent("run_current", "the station file names no supply"),
+            (Ok(_), None) => Filled::absent("run_current", &reasons::NO_SUPPLY),
             (Err(absent), _) => absent,
         });
     }
@@ -61,10 +59,10 @@ impl Supply {
                 let ballast = crate::quantity::Resistance::from_si(supply.ballast);
                 let distance = crate::quantity::Length::from_si(supply.ballast_distance);
                 Filled::number("run_voltage", &measured)
-                    .noted(format!("less the drop in {ballast}, {distance} from the anode"))
+                    .noted(reasons::LESS_DROP.with([figure(ballast), figure(distance)]))
             }
-            (Ok(_), None, _) => Filled::absent("run_voltage", "the drop in the ballast is unknown without run_current"),
-            (Ok(_), _, None) => Filled::absent("run_voltage", "the station file names no supply"),
+            (Ok(_), None, _) => Filled::absent("run_voltage", &reasons::DROP_UNKNOWN),
+            (Ok(_), _, None) => Filled::absent("run_voltage", &reasons::NO_SUPPLY),
             (Err(absent), ..) => absent,
         };
         self.filled.push(row);
@@ -75,13 +73,13 @@ impl Supply {
             (Ok(dropout), Some(supply)) => {
                 let row = Filled::number("dropout_current", &current_measured(dropout, supply));
                 let ballast = crate::quantity::Resistance::from_si(supply.ballast);
-                self.filled.push(row.noted(format!("with {ballast} of ballast")));
+                self.filled.push(row.noted(reasons::WITH_BALLAST.with([figure(ballast)])));
                 self.filled.push(self.fraction(dropout));
             }
-            (Ok(_), None) => self.filled.push(Filled::absent("dropout_current", "the station file names no supply")),
+            (Ok(_), None) => self.filled.push(Filled::absent("dropout_current", &reasons::NO_SUPPLY)),
             (Err(absent), _) => {
                 self.filled.push(absent);
-                self.filled.push(Filled::absent("dropout_fraction", "no dropout current"));
+                self.filled.push(Filled::absent("dropout_fraction", &reasons::NO_DROPOUT));
             }
         }
     }
@@ -98,7 +96,7 @@ impl Supply {
                 lower.sensitivity = -dropout / current.powi(2);
                 Filled::number("dropout_fraction", &Measured { value: dropout / current, budget: vec![upper, lower] })
             }
-            _ => Filled::absent("dropout_fraction", "no run current above zero"),
+            _ => Filled::absent("dropout_fraction", &reasons::NO_RUN_CURRENT),
         }
     }
 }
@@ -137,7 +135,7 @@ impl Step for Supply {
         if self.station.is_none() {
             let keys = ["run_current", "run_voltage", "dropout_current", "dropout_fraction"];
             let wanted = if self.dropout { 4 } else { 2 };
-            let reason = "the station file names no supply";
+            let reason = &reasons::NO_SUPPLY;
             self.filled = keys.iter().take(wanted).map(|key| Filled::absent(key, reason)).collect();
             self.stage = self.last;
         }
@@ -148,10 +146,10 @@ impl Step for Supply {
         match (self.stage, read) {
             (stage, _) if stage >= self.last => Wish::Nothing,
             (0, true) => Wish::Reading(ReadingKind::RunCurrent),
-            (0, false) => Wish::number("run_current", "Run current, in the cathode return", "mA", 0.0, 0.1),
+            (0, false) => Wish::number("run_current", &questions::RUN_CURRENT, "mA", 0.0, 0.1),
             (1, true) => Wish::Reading(ReadingKind::RunVoltage),
-            (1, false) => Wish::number("run_voltage", "Run voltage at the supply", "kV", 0.0, 20e3),
-            _ => Wish::number("dropout_current", DROPOUT, "mA", 0.0, 0.1),
+            (1, false) => Wish::number("run_voltage", &questions::RUN_VOLTAGE, "kV", 0.0, 20e3),
+            _ => Wish::number("dropout_current", &questions::DROPOUT, "mA", 0.0, 0.1),
         }
     }
 
@@ -161,7 +159,7 @@ impl Step for Supply {
             Given::Answer(Answer::Number(value)) => Ok(*value),
             Given::Reading(Ok(value)) => Ok(value),
             Given::Answer(answer) => Err(absent(key, answer)),
-            Given::Reading(Err(reason)) => Err(Filled::absent(key, reason)),
+            Given::Reading(Err(reason)) => Err(Filled::absent(key, Saying::outside(reason))),
             _ => return,
         };
         match self.stage {

@@ -4,6 +4,7 @@
 
 use super::{Given, Room, Step, Wish};
 use crate::{
+    phrase::{Saying, figure, list, name, reasons, said, verdict},
     recipe,
     record::event::Captured,
     run::{
@@ -31,7 +32,7 @@ pub(super) struct Sweep {
     done: bool,
     finesse: Vec<f64>,
     /// Why captures are missing, first reason first.
-    reasons: Vec<String>,
+    reasons: Vec<Saying>,
     filled: Vec<Filled>,
 }
 
@@ -55,14 +56,15 @@ impl Sweep {
         match &finding.refused {
             Some(reason) => {
                 let number = captured.number;
-                self.reasons.push(format!("capture {number}: {reason}"));
+                let reason = Saying::outside(reason);
+                self.reasons.push(of_capture(number, reason.clone()));
                 // A verdict leans on these captures singly (`formats.md`: one that cannot be read gives hold).
-                room.book.holds.push(format!("Capture {number} could not be read: {reason}."));
+                room.book.holds.push(verdict::CAPTURE_UNREADABLE.with([figure(number), said(reason)]));
             }
-            None if finding.dark => self.reasons.push(format!("capture {}: no light", captured.number)),
+            None if finding.dark => self.reasons.push(of_capture(captured.number, &reasons::NO_LIGHT)),
             None => {
                 if room.book.keep(captured) == Kept::No {
-                    self.reasons.push(format!("capture {}: out of the order of time", captured.number));
+                    self.reasons.push(of_capture(captured.number, &reasons::OUT_OF_ORDER));
                 }
                 self.finesse.extend(finding.finesse.filter(|finesse| finesse.is_finite()));
                 if let Some(chart) = charts::sweep_chart(captured, room) {
@@ -75,25 +77,25 @@ impl Sweep {
     fn finish(&mut self, room: &mut Room<'_>) {
         self.done = true;
         if self.dark > 0 && self.dark == self.taken {
-            room.book.dark = Some(format!("no light in any of {} captures", self.dark));
+            room.book.dark = Some(reasons::NO_LIGHT_IN_ANY.with([figure(self.dark)]));
             return;
         }
         let own = room.book.of(room.step);
         let n_own = own.len();
         let mut pooled = spacing::pooled(own);
-        let mut from = "at rest".to_owned();
+        let mut from = &reasons::AT_REST;
         if pooled.is_none() {
             pooled = spacing::pooled(room.book.of_dwells());
-            from = if n_own > 0 { "of the dwell: one mode alone at rest" } else { "of the dwell: none at rest" }.into();
+            from = if n_own > 0 { &reasons::OF_DWELL_ONE_MODE } else { &reasons::OF_DWELL_NONE };
         }
-        match spacing::rows(pooled, &from, room.book) {
+        match spacing::rows(pooled, from.into(), room.book) {
             Some(rows) => self.filled.extend(rows),
             None => {
                 let reason = match self.reasons.first() {
                     Some(reason) if n_own == 0 => reason.clone(),
-                    _ => "no capture shows two modes".into(),
+                    _ => (&reasons::NOT_TWO_MODES).into(),
                 };
-                self.filled.push(Filled::absent("mode_spacing", reason.as_str()));
+                self.filled.push(Filled::absent("mode_spacing", reason.clone()));
                 self.filled.push(Filled::absent("mirror_spacing", reason));
             }
         }
@@ -106,18 +108,23 @@ impl Sweep {
         if !self.reasons.is_empty() {
             let step = room.step;
             let more = self.reasons.len().saturating_sub(SHOWN);
-            let more = if more > 0 { format!("; and {more} more") } else { String::new() };
-            let shown = self.reasons.get(..SHOWN).unwrap_or(&self.reasons).join("; ");
-            room.book.remark(format!("Step {step}: {shown}{more}."));
+            let more = (more > 0).then(|| reasons::AND_MORE.with([figure(more)]));
+            let shown = self.reasons.iter().take(SHOWN).cloned().chain(more);
+            room.book.remark(reasons::STEP.with([name(step), list(shown, &verdict::SEMICOLON)]));
         }
     }
+}
+
+/// What is to be said of one capture.
+fn of_capture(number: u64, what: impl Into<Saying>) -> Saying {
+    reasons::CAPTURE.with([figure(number), said(what)])
 }
 
 /// Mean over captures with its scatter.
 fn finesse(values: &[f64]) -> Filled {
     let pairs: Vec<_> = values.iter().map(|value| (*value, &[][..])).collect();
     let Some(pooled) = pool(&pairs) else {
-        return Filled::absent("finesse", "no capture gave a finesse");
+        return Filled::absent("finesse", &reasons::NO_FINESSE);
     };
     let mut measured = pooled.measured;
     if pooled.used == 1 {
@@ -150,13 +157,14 @@ impl Step for Sweep {
             Given::Lost { reason, for_good } => {
                 if !for_good {
                     let step = room.step;
-                    self.reasons.push(reason.to_owned());
-                    room.book.holds.push(format!("A capture of step {step} could not be had or read: {reason}."));
+                    let reason = Saying::outside(reason);
+                    self.reasons.push(reason.clone());
+                    room.book.holds.push(verdict::CAPTURE_NOT_HAD.with([name(step), said(reason)]));
                 } else {
                     // The end of a folder is no capture.
                     self.taken -= 1;
                     if self.taken == 0 {
-                        self.reasons.push(reason.to_owned());
+                        self.reasons.push(Saying::outside(reason));
                     }
                     return self.finish(room);
                 }

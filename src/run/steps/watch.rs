@@ -6,6 +6,7 @@ use super::{Given, Room, Step, Wish};
 use crate::{
     behaviour::{Glimpse, Hop, Swap, watch},
     numerics::summary,
+    phrase::{Piece, Saying, figure, list, name, reasons, said, verdict},
     recipe,
     run::{
         filled::Filled,
@@ -57,7 +58,7 @@ impl Watch {
         }
         let glimpses: Vec<Glimpse> = room.book.of(from).iter().map(|seen| seen.glimpse.clone()).collect();
         let (Some(first), Some(last)) = (glimpses.first(), glimpses.last()) else {
-            self.filled = KEYS.map(|key| Filled::absent(key, "no capture was watched")).to_vec();
+            self.filled = KEYS.map(|key| Filled::absent(key, &reasons::NOT_WATCHED)).to_vec();
             return;
         };
         let spacing = room.book.spacing.as_ref().map_or(room.plan.recipe.nominal_spacing, |spacing| spacing.value);
@@ -66,11 +67,7 @@ impl Watch {
         let hops = match watched.unattributed.first() {
             Some(hop) => Filled::absent(
                 KEYS[0],
-                format!(
-                    "unattributed jump of {:.1} MHz at {:.1} s: tube or interferometer, repeat the watch",
-                    hop.size / 1e6,
-                    hop.at
-                ),
+                reasons::UNATTRIBUTED.with([figure(format!("{:.1}", hop.size / 1e6)), at_second(hop.at)]),
             ),
             None => counted(KEYS[0], watched.hops.len(), seconds, hops_named(&watched.hops)),
         };
@@ -78,11 +75,7 @@ impl Watch {
             counted(KEYS[1], watched.swaps.len(), seconds, swaps_named(&watched.swaps, watched.cycles))
         } else {
             let crossed = glimpses.iter().any(|glimpse| glimpse.modes.iter().any(|mode| mode.crossed.is_some()));
-            let reason = if crossed {
-                "the axes of the modes could not be told apart"
-            } else {
-                "the captures have no crossed photodiode"
-            };
+            let reason = if crossed { &reasons::AXES_ALIKE } else { &reasons::NO_CROSSED };
             Filled::absent(KEYS[1], reason)
         };
         let u = phase_u(first, spacing).hypot(phase_u(last, spacing));
@@ -94,54 +87,55 @@ impl Watch {
         }
         if self.n_lost > 0 {
             let step = room.step;
-            room.book.remark(format!("{} captures of step {step} could not be read.", self.n_lost));
+            room.book.remark(reasons::UNREADABLE.with([figure(self.n_lost), name(step)]));
         }
     }
 }
 
 /// A count with when they were, or with what none says about the rate.
-fn counted(key: &str, n: usize, seconds: f64, named: String) -> Filled {
+fn counted(key: &str, n: usize, seconds: f64, named: Saying) -> Filled {
     let n = n as u64;
     let row = Filled::count(key, n, n, n);
     if n == 0 && seconds > 0.0 {
-        row.noted(format!(
-            "none in {:.1} min: fewer than {:.0} an hour (95 %)",
-            seconds / 60.0,
-            (NONE_SEEN * 3600.0 / seconds).ceil()
-        ))
+        let an_hour = (NONE_SEEN * 3600.0 / seconds).ceil();
+        row.noted(reasons::NONE_IN.with([figure(format!("{:.1}", seconds / 60.0)), figure(format!("{an_hour:.0}"))]))
     } else {
         row.noted(named)
     }
 }
 
 /// When each hop was and how far it went, modulo one spacing: "at 150.8 s (+210 MHz), …".
-fn hops_named(hops: &[Hop]) -> String {
-    let named = hops.iter().take(NAMED).map(|hop| format!("at {:.1} s ({})", hop.at, signed_megahertz(hop.size)));
+fn hops_named(hops: &[Hop]) -> Saying {
+    let named = hops.iter().take(NAMED).map(|hop| reasons::AT_BY.with([at_second(hop.at), signed_megahertz(hop.size)]));
     and_more(named.collect(), hops.len())
 }
 
 /// When each swap was; of many, also how many a cycle and at what detuning: a tube that swaps does so at one place.
-fn swaps_named(swaps: &[Swap], cycles: f64) -> String {
-    let named = swaps.iter().take(NAMED).map(|swap| format!("at {:.1} s", swap.at));
+fn swaps_named(swaps: &[Swap], cycles: f64) -> Saying {
+    let named = swaps.iter().take(NAMED).map(|swap| reasons::AT.with([at_second(swap.at)]));
     let named = and_more(named.collect(), swaps.len());
     if swaps.len() <= NAMED || cycles <= 0.0 {
         return named;
     }
-    let place = match summary::median(&swaps.iter().filter_map(|swap| swap.detuning).collect::<Vec<f64>>()) {
-        Some(detuning) => format!(", {} from the middle of the line", signed_megahertz(detuning)),
-        None => String::new(),
-    };
-    format!("{:.1} a walk cycle{place}; {named}", swaps.len() as f64 / cycles)
+    let a_cycle = figure(format!("{:.1}", swaps.len() as f64 / cycles));
+    match summary::median(&swaps.iter().filter_map(|swap| swap.detuning).collect::<Vec<f64>>()) {
+        Some(detuning) => reasons::A_CYCLE_AT.with([a_cycle, signed_megahertz(detuning), said(named)]),
+        None => reasons::A_CYCLE.with([a_cycle, said(named)]),
+    }
 }
 
-fn and_more(named: Vec<String>, n: usize) -> String {
-    let more = n - named.len();
-    let named = named.join(", ");
-    if more > 0 { format!("{named} and {more} more") } else { named }
+fn and_more(named: Vec<Saying>, n: usize) -> Saying {
+    let more = n.saturating_sub(named.len());
+    let named = list(named, &verdict::COMMA);
+    if more > 0 { reasons::LIST_AND_MORE.with([named, figure(more)]) } else { Saying::of(named) }
 }
 
-fn signed_megahertz(hertz: f64) -> String {
-    format!("{:+.0} MHz", hertz / 1e6)
+fn at_second(at: f64) -> Piece {
+    figure(format!("{at:.1}"))
+}
+
+fn signed_megahertz(hertz: f64) -> Piece {
+    figure(format!("{:+.0} MHz", hertz / 1e6))
 }
 
 /// Standard uncertainty of the comb's phase in one capture, in spacings.
@@ -201,14 +195,14 @@ mod tests {
     #[test]
     fn notes_name_when() {
         assert_eq!(
-            hops_named(&[hop(150.83, 210.2e6), hop(161.0, -90e6)]),
+            hops_named(&[hop(150.83, 210.2e6), hop(161.0, -90e6)]).english(),
             "at 150.8 s (+210 MHz), at 161.0 s (-90 MHz)"
         );
         let swap = |at| Swap { at, detuning: Some(-180e6) };
-        assert_eq!(swaps_named(&[swap(3.04), swap(9.0)], 4.0), "at 3.0 s, at 9.0 s");
+        assert_eq!(swaps_named(&[swap(3.04), swap(9.0)], 4.0).english(), "at 3.0 s, at 9.0 s");
         let many: Vec<Swap> = (1..=6).map(|k| swap(f64::from(k))).collect();
         assert_eq!(
-            swaps_named(&many, 6.0),
+            swaps_named(&many, 6.0).english(),
             "1.0 a walk cycle, -180 MHz from the middle of the line; at 1.0 s, at 2.0 s, at 3.0 s, at 4.0 s and 2 more"
         );
     }
@@ -216,6 +210,6 @@ mod tests {
     #[test]
     fn none_seen_bounds_the_rate() {
         // 3.00 expected at most in a quarter of an hour: 12 an hour.
-        assert!(counted(KEYS[0], 0, 900.0, String::new()).note.ends_with("fewer than 12 an hour (95 %)"));
+        assert!(counted(KEYS[0], 0, 900.0, Saying::none()).note.english().ends_with("fewer than 12 an hour (95 %)"));
     }
 }

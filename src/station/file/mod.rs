@@ -13,6 +13,7 @@ use crate::{
         Fault, nearest,
         reading::{Item, Table, read, sha256_hex},
     },
+    phrase::{self, Language, Phrase, Saying, name, reasons, said, verdict},
     uncertainty::Certificate,
 };
 use instruments::{INTERFEROMETER, LIGHT_DETECTOR, POLARIZER, POWER_METER, SUPPLY};
@@ -24,6 +25,8 @@ pub use reference::{BeatNote, Reference, ReferenceValue};
 pub struct StationFile {
     /// Name of the bench.
     pub station: String,
+    /// Language of its sheets and questions.
+    pub language: Language,
     /// Its time zone.
     pub time_zone: Tz,
     /// Starts of the shifts.
@@ -46,6 +49,7 @@ pub struct StationFile {
 
 const TOP: &[&str] = &[
     "station",
+    "language",
     "time_zone",
     "shifts",
     "interferometer",
@@ -65,6 +69,7 @@ impl StationFile {
     pub fn parse(name: &str, text: &str) -> Result<Self, Vec<Fault>> {
         read(name, text, TOP, |root| {
             let station = root.need("station").and_then(|item| item.text());
+            let language = root.get("language").map_or(Some(Language::default()), |item| item.word(&Language::CODES));
             let time_zone = root.need("time_zone").and_then(|item| zone(&item));
             let shifts = root.get("shifts").map_or(Some(Vec::new()), |item| shifts(&item));
             let interferometer = part(root, "interferometer", INTERFEROMETER, instruments::interferometer);
@@ -75,6 +80,7 @@ impl StationFile {
             let references = reference::references(root, shifts.as_deref());
             Some(Self {
                 station: station?.to_owned(),
+                language: language?,
                 time_zone: time_zone?,
                 shifts: shifts?,
                 interferometer: interferometer?,
@@ -89,11 +95,11 @@ impl StationFile {
     }
 
     /// Every instrument that stands on a certificate, in the order of the file.
-    pub fn certificates(&self) -> Vec<(&'static str, &Certificate)> {
+    pub fn certificates(&self) -> Vec<(&'static Phrase, &Certificate)> {
         let interferometer = self.interferometer.as_ref().and_then(|i| i.certificate.as_ref());
         let power_meter = self.power_meter.as_ref().and_then(|p| p.certificate.as_ref());
         let supply = self.supply.as_ref().and_then(|s| s.certificate.as_ref());
-        [("interferometer", interferometer), ("power meter", power_meter), ("supply", supply)]
+        [(&reasons::INTERFEROMETER, interferometer), (&reasons::POWER_METER, power_meter), (&reasons::SUPPLY, supply)]
             .into_iter()
             .filter_map(|(role, certificate)| Some((role, certificate?)))
             .collect()
@@ -105,12 +111,13 @@ impl StationFile {
     }
 
     /// One sentence for each certificate that no longer holds on a day.
-    pub fn overdue_on(&self, day: NaiveDate) -> Vec<String> {
+    pub fn overdue_on(&self, day: NaiveDate) -> Vec<Saying> {
         self.certificates()
             .into_iter()
             .filter(|(_, certificate)| certificate.overdue_on(day))
             .map(|(role, certificate)| {
-                format!("The certificate {} of the {role} was due {}.", certificate.number, certificate.due)
+                let number = name(certificate.number.clone());
+                verdict::CERTIFICATE_OVERDUE.with([number, said(role), phrase::day(certificate.due)])
             })
             .collect()
     }

@@ -4,6 +4,7 @@
 
 use super::{state::State, sweep, walk};
 use crate::instruments::{Line, Look, Role};
+use crate::phrase::{Language, figure, name, terminal};
 
 /// Below this many columns there are words only.
 pub(in crate::cli::inspect) const NARROW: usize = 60;
@@ -24,27 +25,27 @@ pub(super) fn block(state: &State, look: &Look) -> Vec<Line> {
         } else {
             lines.extend(stacked(state, width, room - 2, look));
         }
-        lines.push(where_it_is(state));
+        lines.push(where_it_is(state, look));
     } else if look.width >= NARROW {
         lines.push(rule(state, width, look));
-        lines.push(where_it_is(state));
+        lines.push(where_it_is(state, look));
     } else {
-        lines.push(Line::of(Role::Strong, state.step.clone()).and(Role::Plain, step_of(state)));
-        lines.push(Line::of(Role::Plain, capital(&left(state))));
+        lines.push(Line::of(Role::Strong, step_of(state, look)));
+        lines.push(Line::of(Role::Plain, left(state, look)));
     }
     lines
 }
 
 fn rule(state: &State, width: usize, look: &Look) -> Line {
     let sign = look.sign("─", "-");
-    let line = Line::of(Role::Quiet, sign.repeat(2)).and(Role::Strong, format!(" {}", state.step));
-    let line = line.and(Role::Plain, format!("{} ", step_of(state)));
+    let line = Line::of(Role::Quiet, sign.repeat(2)).and(Role::Strong, format!(" {} ", step_of(state, look)));
     let rest = width.saturating_sub(line.width());
     line.and(Role::Quiet, sign.repeat(rest))
 }
 
-fn step_of(state: &State) -> String {
-    format!(", step {} of {}", state.step_number, state.n_steps)
+fn step_of(state: &State, look: &Look) -> String {
+    let pieces = [name(state.step.as_str()), figure(state.step_number), figure(state.n_steps)];
+    terminal::STEP_OF.with(pieces).text(look.language)
 }
 
 fn side_by_side(state: &State, width: usize, rows: usize, look: &Look) -> Vec<Line> {
@@ -66,29 +67,28 @@ fn stacked(state: &State, width: usize, rows: usize, look: &Look) -> Vec<Line> {
     lines
 }
 
-fn where_it_is(state: &State) -> Line {
-    let captures = match state.captures {
-        1 => "1 capture".to_owned(),
-        n => format!("{n} captures"),
-    };
-    Line::of(Role::Plain, format!("{captures} in {}; {}", clock(state.elapsed_s), left(state)))
+fn where_it_is(state: &State, look: &Look) -> Line {
+    let pieces = [figure(state.captures), figure(clock(state.elapsed_s)), name(left(state, look))];
+    Line::of(Role::Plain, terminal::CAPTURES.with(pieces).text(look.language))
 }
 
 /// "about 6 min left (6 s at this pace)".
-fn left(state: &State) -> String {
+fn left(state: &State, look: &Look) -> String {
     let Some(bench) = state.left_s.1.filter(|left| left.is_finite()) else {
-        return "time left not known yet".to_owned();
+        return terminal::LEFT_UNKNOWN.of(look.language).to_owned();
     };
+    let here = about(bench, look.language);
     match state.rate.filter(|rate| *rate > 0.0) {
-        Some(rate) => format!("about {} left ({} at this pace)", about(bench), about(bench / rate)),
-        None => format!("about {} left", about(bench)),
+        Some(rate) => terminal::LEFT_PACED.with([name(here), name(about(bench / rate, look.language))]),
+        None => terminal::LEFT.with([name(here)]),
     }
+    .text(look.language)
 }
 
 /// "6 min", "40 s".
-pub(in crate::cli::inspect) fn about(seconds: f64) -> String {
+pub(in crate::cli::inspect) fn about(seconds: f64, language: Language) -> String {
     match seconds {
-        s if s < 1.0 => "a moment".to_owned(),
+        s if s < 1.0 => terminal::A_MOMENT.of(language).to_owned(),
         s if s < 90.0 => format!("{s:.0} s"),
         s => format!("{:.0} min", s / 60.0),
     }
@@ -102,9 +102,4 @@ fn clock(seconds: f64) -> String {
         (0, minutes, seconds) => format!("{minutes} min {seconds:02} s"),
         (hours, minutes, _) => format!("{hours} h {minutes:02} min"),
     }
-}
-
-fn capital(text: &str) -> String {
-    let mut chars = text.chars();
-    chars.next().map_or_else(String::new, |first| first.to_uppercase().chain(chars).collect())
 }

@@ -3,6 +3,7 @@
 //! Main function: [`row_lines`].
 
 use crate::instruments::{Line, Look, Role};
+use crate::phrase::{Saying, list, name, page, terminal, verdict};
 use crate::record::sheet::{Row, RowVerdict, Value};
 use crate::report::{InBox, RowScale, boxes, row_line, telling, value_text};
 
@@ -28,12 +29,12 @@ pub(in crate::cli::inspect) fn row_lines(row: &Row, look: &Look) -> Vec<Line> {
     let (name_width, value_width, word_width) = columns(look);
     if look.width < NARROW {
         let word = if word.is_empty() { String::new() } else { format!(" - {word}") };
-        let text = format!("{}{word}", row_line(row));
+        let text = format!("{}{word}", row_line(row, look.language));
         return margin.wrapped(&text, Role::Plain, &Line::default().to_column(MARGIN), most);
     }
-    let name = if row.deciding { Role::Strong } else { Role::Plain };
-    let line = margin.and(name, row.label.clone()).to_column(MARGIN + name_width).and(Role::Plain, " ");
-    let text = value_text(row);
+    let ink = if row.deciding { Role::Strong } else { Role::Plain };
+    let line = margin.and(ink, row.label.text(look.language)).to_column(MARGIN + name_width).and(Role::Plain, " ");
+    let text = value_text(row, look.language);
     let mut lines = if text.absent.is_empty() {
         let spread = text.spread.replace('±', look.sign("±", "+-"));
         let parts = [spread, text.unit].into_iter().filter(|part| !part.is_empty());
@@ -49,12 +50,17 @@ pub(in crate::cli::inspect) fn row_lines(row: &Row, look: &Look) -> Vec<Line> {
     } else {
         let ends = if word.is_empty() { String::new() } else { format!(" - {word}") };
         let hanging = Line::default().to_column(MARGIN + name_width + 1);
-        line.wrapped(&format!("no value: {}{ends}", text.absent), Role::Quiet, &hanging, most)
+        line.wrapped(
+            &format!("{}{ends}", page::NO_VALUE.with([name(text.absent)]).text(look.language)),
+            Role::Quiet,
+            &hanging,
+            most,
+        )
     };
     if !row.note.is_empty() {
         let role = if row.deciding { role } else { Role::Quiet };
         let margin = Line::default().to_column(MARGIN + 2);
-        lines.extend(margin.clone().wrapped(&row.note, role, &margin, most));
+        lines.extend(margin.clone().wrapped(&row.note.text(look.language), role, &margin, most));
     }
     lines
 }
@@ -64,13 +70,20 @@ fn state(row: &Row, look: &Look) -> (&'static str, String, Role) {
     let Some(last) = row.judged.last() else { return ("", String::new(), Role::Plain) };
     match last.verdict {
         RowVerdict::Fail => {
-            let code = last.reject_code.as_ref().map_or_else(String::new, |code| format!(", {code}"));
-            (look.sign("×", "x"), format!("fail{code}"), Role::Alert)
+            let fail: Saying = match &last.reject_code {
+                Some(code) => terminal::FAIL_CODE.with([name(code.as_str())]),
+                None => (&terminal::FAIL).into(),
+            };
+            (look.sign("×", "x"), fail.text(look.language), Role::Alert)
         }
-        RowVerdict::Hold => (look.sign("▒", "#"), "hold".to_owned(), Role::Alert),
+        RowVerdict::Hold => (look.sign("▒", "#"), terminal::HOLD.of(look.language).to_owned(), Role::Alert),
         RowVerdict::Pass => match row.judged.iter().find(|judged| judged.verdict != RowVerdict::Pass) {
-            Some(lost) => (look.sign("▽", "v"), format!("pass, not {}", lost.grade), Role::Strong),
-            None => ("", "pass".to_owned(), Role::Plain),
+            Some(lost) => (
+                look.sign("▽", "v"),
+                terminal::PASS_NOT.with([name(lost.grade.as_str())]).text(look.language),
+                Role::Strong,
+            ),
+            None => ("", terminal::PASS.of(look.language).to_owned(), Role::Plain),
         },
         RowVerdict::NotJudged => ("", String::new(), Role::Plain),
     }
@@ -80,8 +93,8 @@ fn state(row: &Row, look: &Look) -> (&'static str, String, Role) {
 fn drawing(row: &Row, width: usize, look: &Look) -> Line {
     match &row.value {
         Value::Count { .. } => counted(row, width, look),
-        Value::Word(_) => wanted(row).cut(width),
-        _ => RowScale::of(row).map_or_else(Line::default, |scale| scaled(&scale, width, look)),
+        Value::Word(_) => wanted(row, look).cut(width),
+        _ => RowScale::of(row, look.language).map_or_else(Line::default, |scale| scaled(&scale, width, look)),
     }
 }
 
@@ -161,9 +174,14 @@ fn counted(row: &Row, width: usize, look: &Look) -> Line {
 }
 
 /// What a look should have said.
-fn wanted(row: &Row) -> Line {
+fn wanted(row: &Row, look: &Look) -> Line {
     match telling(row) {
-        Some(judged) => Line::of(Role::Quiet, format!("wanted: {}", judged.wanted.join(" or "))),
+        Some(judged) => Line::of(Role::Quiet, wanted_words(&judged.wanted).text(look.language)),
         None => Line::default(),
     }
+}
+
+fn wanted_words(wanted: &[String]) -> Saying {
+    let words = wanted.iter().map(|word| Saying::of(name(word.as_str())));
+    page::WANTED.with([list(words, &verdict::OR)])
 }

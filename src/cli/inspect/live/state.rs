@@ -43,8 +43,20 @@ pub(super) struct Sweep {
     pub n_off_axis: usize,
     /// Mode spacing, Hz.
     pub mode_spacing: Option<f64>,
-    /// Why nothing is to be seen.
-    pub nothing: String,
+    /// Whether there is anything to see.
+    pub seen: Seen,
+}
+
+/// Whether a sweep shows anything.
+#[derive(Debug, Clone, PartialEq, Eq, Default)]
+pub(super) enum Seen {
+    /// Modes.
+    #[default]
+    Light,
+    /// No light.
+    Dark,
+    /// Nothing could be measured, for this reason.
+    Refused(String),
 }
 
 impl Sweep {
@@ -52,10 +64,10 @@ impl Sweep {
     ///
     /// * `top`: greatest signal of the sweeps before in the same step, V.
     pub fn of(number: u64, finding: &CaptureFinding, trace: Option<Trace>, top: f64) -> Self {
-        let nothing = match &finding.refused {
-            Some(reason) => format!("could not be measured: {reason}"),
-            None if finding.dark => "no light".to_owned(),
-            None => String::new(),
+        let seen = match &finding.refused {
+            Some(reason) => Seen::Refused(reason.clone()),
+            None if finding.dark => Seen::Dark,
+            None => Seen::Light,
         };
         let highs = trace.iter().flat_map(|trace| &trace.high).copied();
         let top = highs.filter(|high| high.is_finite()).fold(top, f64::max);
@@ -66,7 +78,7 @@ impl Sweep {
             n_modes: finding.modes.len(),
             n_off_axis: finding.off_axis.len(),
             mode_spacing: finding.mode_spacing.filter(|spacing| spacing.is_finite()),
-            nothing,
+            seen,
         }
     }
 }

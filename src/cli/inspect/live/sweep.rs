@@ -2,8 +2,13 @@
 //! Must not measure: trace and modes come in.
 //! Main function: [`panel`].
 
-use super::{axis, canvas::bars, state::Sweep};
+use super::{
+    axis,
+    canvas::bars,
+    state::{Seen, Sweep},
+};
 use crate::instruments::{Line, Look, Role};
+use crate::phrase::{Saying, figure, said, terminal};
 use crate::record::finding::{Trace, mode_letter};
 
 /// Title, dots, marks, axis and figures in that many columns and rows.
@@ -11,7 +16,7 @@ pub(super) fn panel(sweep: Option<&Sweep>, width: usize, rows: usize, look: &Loo
     let mut lines = vec![title(sweep, look).cut(width)];
     let dots = rows.saturating_sub(4);
     match sweep.and_then(|sweep| Some((sweep, sweep.trace.as_ref()?))) {
-        Some((sweep, trace)) if sweep.nothing.is_empty() && span(trace) > 0.0 => {
+        Some((sweep, trace)) if sweep.seen == Seen::Light && span(trace) > 0.0 => {
             let drawn = bars(&heights(trace, sweep.top, width), dots, look.draws_unicode());
             lines.extend(drawn.into_iter().map(|row| Line::of(Role::Plain, row)));
             lines.push(marks(trace, sweep.n_modes, width, look));
@@ -28,18 +33,25 @@ pub(super) fn panel(sweep: Option<&Sweep>, width: usize, rows: usize, look: &Loo
 }
 
 fn title(sweep: Option<&Sweep>, look: &Look) -> Line {
-    let Some(sweep) = sweep else { return Line::of(Role::Quiet, "no sweep yet") };
-    let line = Line::of(Role::Quiet, format!("sweep {}", sweep.number));
-    if !sweep.nothing.is_empty() {
-        return line.and(Role::Plain, ": ").and(Role::Strong, sweep.nothing.clone());
+    let Some(sweep) = sweep else { return Line::of(Role::Quiet, terminal::NO_SWEEP.of(look.language)) };
+    let line = Line::of(Role::Quiet, terminal::SWEEP.with([figure(sweep.number)]).text(look.language));
+    match &sweep.seen {
+        Seen::Dark => return line.and(Role::Strong, format!("  {}", terminal::DARK.of(look.language))),
+        Seen::Refused(why) => {
+            let why = terminal::NOT_MEASURED.with([said(Saying::outside(why))]).text(look.language);
+            return line.and(Role::Strong, format!("  {why}"));
+        }
+        Seen::Light => {}
     }
-    let modes = if sweep.n_modes == 1 { "1 mode".to_owned() } else { format!("{} modes", sweep.n_modes) };
+    let modes = terminal::MODES.with([figure(sweep.n_modes)]).text(look.language);
     let mut line = line.and(Role::Plain, format!("  {modes}"));
     if let Some(spacing) = sweep.mode_spacing {
-        line = line.and(Role::Plain, format!(", spacing {:.0} MHz", spacing / 1e6));
+        let spacing = terminal::SPACING.with([figure(format!("{:.0}", spacing / 1e6))]).text(look.language);
+        line = line.and(Role::Plain, format!("  {spacing}"));
     }
     if sweep.n_off_axis > 0 {
-        line = line.and(Role::Alert, format!("  {} {} off the comb", look.sign("◇", "*"), sweep.n_off_axis));
+        let off = terminal::OFF_COMB.with([figure(sweep.n_off_axis)]).text(look.language);
+        line = line.and(Role::Alert, format!("  {} {off}", look.sign("◇", "*")));
     }
     line
 }

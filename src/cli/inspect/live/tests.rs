@@ -7,11 +7,12 @@ use std::time::Instant;
 
 use super::{block::block, row_lines, state::State, state::Sweep, verdict_lines};
 use crate::instruments::{Charset, Line, Look};
+use crate::phrase::{Language, Saying};
 use crate::record::finding::{CaptureFinding, ModeFinding, Trace};
 use crate::record::sheet::{Judged, Outcome, Row, RowVerdict, Value, WalkChart, Zone};
 
 fn look(width: usize, height: usize) -> Look {
-    Look { width, height, charset: Charset::Unicode, colour: false }
+    Look { width, height, charset: Charset::Unicode, language: Language::English, colour: false }
 }
 
 fn text(lines: &[Line], look: &Look) -> String {
@@ -65,12 +66,12 @@ fn row(label: &str, measurand: &str, value: Value, judged: Vec<Judged>, note: &s
     Row {
         step: "s".into(),
         measurand: measurand.into(),
-        label: label.into(),
+        label: Saying::outside(label),
         value,
         budget: vec![],
         judged,
         deciding: false,
-        note: note.into(),
+        note: Saying::outside(note),
     }
 }
 
@@ -130,7 +131,7 @@ fn rows() -> Vec<Row> {
         row(
             "Power ripple",
             "power_ripple",
-            Value::Absent("too few power readings over the whole cycles".into()),
+            Value::Absent(Saying::outside("too few power readings over the whole cycles")),
             vec![judged("", None, Some(0.1), RowVerdict::Hold, Zone::Inside)],
             "",
         ),
@@ -193,7 +194,7 @@ fn block_at_80_columns() {
     let look = look(80, 24);
     insta::assert_snapshot!(text(&block(&state(), &look), &look), @r"
     ── warm, step 2 of 11 ─────────────────────────────────────────────────────────
-    sweep 1408  2 modes, spacing 999 MHz  ◇ 1 off the comb
+    sweep 1408  modes 2  spacing 999 MHz  ◇ 1 off the comb
                  █                                         █
                 ▂█                                         █
           █     ██                                  █      █
@@ -201,13 +202,13 @@ fn block_at_80_columns() {
           a      b ◇                                a      b ◇
     ───────────────────────────────────────────────────────────────────────────────
     0            2            4            6            8           10 GHz
-    walk  40.7 spacings since first light, expected to end at ┊ 19.6 min
+    walk 40.7 spacings since first light, expected to end at ┊ 19.6 min
                               ▗▄▄▖▖ ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘ ▘┊▘
             ▄▄▄▄▄▄▄▟▀▀▀▀▀▀▀▀▀▀▀                                                ┊
     ▄▄▛▀▀▀▀▀▘                                                                  ┊
     ───────────────────────────────────────────────────────────────────────────────
     0                  5                 10                 15               20 min
-    1408 captures in 7 min 38 s; about 14 min left (14 s at this pace)
+    captures 1408, 7 min 38 s; about 14 min left (14 s at this pace)
     ");
 }
 
@@ -216,7 +217,7 @@ fn block_at_40_columns_is_words() {
     let look = look(40, 24);
     insta::assert_snapshot!(text(&block(&state(), &look), &look), @r"
     warm, step 2 of 11
-    About 14 min left (14 s at this pace)
+    about 14 min left (14 s at this pace)
     ");
 }
 
@@ -225,7 +226,7 @@ fn block_at_200_columns_has_sweep_and_walk_side_by_side() {
     let look = look(200, 20);
     insta::assert_snapshot!(text(&block(&state(), &look), &look), @r"
     ── warm, step 2 of 11 ─────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────────
-    sweep 1408  2 modes, spacing 999 MHz  ◇ 1 off the comb                                              walk  40.7 spacings since first light, expected to end at ┊ 19.6 min
+    sweep 1408  modes 2  spacing 999 MHz  ◇ 1 off the comb                                              walk 40.7 spacings since first light, expected to end at ┊ 19.6 min
                    ██                                                  █                                                                                          ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▖ ▌ ▘ ▘ ▘ ▘ ▘ ▘ ▘┊▘
                    ██                                                  █                                                                        ▖ ▖ ▖ ▖ ▘ ▘ ▘ ▘ ▘ ▘                                ┊
                    ██                                                  █                                                           ▄▄▄▄▄▞▀▀▀▘ ▘                                                    ┊
@@ -236,7 +237,7 @@ fn block_at_200_columns_has_sweep_and_walk_side_by_side() {
             a       b  ◇                                       a       b  ◇                             ▄▀▀                                                                                        ┊
     ────────────────────────────────────────────────────────────────────────────────────────────────    ────────────────────────────────────────────────────────────────────────────────────────────────
     0               2               4               6               8              10 GHz               0                      5                     10                     15                    20 min
-    1408 captures in 7 min 38 s; about 14 min left (14 s at this pace)
+    captures 1408, 7 min 38 s; about 14 min left (14 s at this pace)
     ");
 }
 
@@ -246,7 +247,7 @@ fn no_light_and_no_trace_are_said() {
     let dark = CaptureFinding { dark: true, ..CaptureFinding::default() };
     let state = State { sweep: Some(Sweep::of(7, &dark, None, 0.0)), walk: None, left_s: (None, None), ..state() };
     let lines = text(&block(&state, &look), &look);
-    assert!(lines.contains("sweep 7: no light") && lines.contains("time left not known yet"), "{lines}");
+    assert!(lines.contains("sweep 7  no light") && lines.contains("time left not known yet"), "{lines}");
 }
 
 /// No state may be told from another by ink alone: with all ink gone, sign at the margin, drawing and word still differ.

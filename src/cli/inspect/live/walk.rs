@@ -4,6 +4,7 @@
 
 use super::{axis, canvas::Canvas};
 use crate::instruments::{Line, Look, Role};
+use crate::phrase::{figure, terminal};
 use crate::record::sheet::WalkChart;
 
 /// Title, dots, axis and figures in that many columns and rows.
@@ -19,7 +20,7 @@ pub(super) fn panel(
     let dots = rows.saturating_sub(3);
     let rule = || Line::of(Role::Quiet, look.sign("─", "-").repeat(width));
     let Some((walk, now)) = walk.and_then(|walk| Some((walk, *walk.points.last()?))) else {
-        let mut lines = vec![Line::of(Role::Quiet, "no walk yet")];
+        let mut lines = vec![Line::of(Role::Quiet, terminal::NO_WALK.of(look.language))];
         lines.extend((0..dots).map(|_| Line::default()));
         lines.extend([rule(), Line::default()]);
         return lines;
@@ -35,13 +36,14 @@ pub(super) fn panel(
 }
 
 fn title(walk: &WalkChart, now: (f64, f64), end: Option<f64>, look: &Look) -> Line {
-    let line = Line::of(Role::Quiet, "walk").and(Role::Plain, format!("  {:.1} spacings since first light", now.1));
-    let sign = look.sign("┊", "|");
-    match (walk.dwell_end, end) {
-        (Some(end), _) => line.and(Role::Plain, format!(", dwell ended at {sign} {:.1} min", end / 60.0)),
-        (None, Some(end)) => line.and(Role::Plain, format!(", expected to end at {sign} {:.1} min", end / 60.0)),
-        (None, None) => line.and(Role::Quiet, ", its end cannot be foretold yet"),
-    }
+    let walked = terminal::WALK.with([figure(format!("{:.1}", now.1))]).text(look.language);
+    let at = |end: f64| [figure(format!("{} {:.1}", look.sign("┊", "|"), end / 60.0))];
+    let (role, ends) = match (walk.dwell_end, end) {
+        (Some(end), _) => (Role::Plain, terminal::WALK_ENDED.with(at(end))),
+        (None, Some(end)) => (Role::Plain, terminal::WALK_ENDS.with(at(end))),
+        (None, None) => (Role::Quiet, (&terminal::WALK_OPEN).into()),
+    };
+    Line::of(Role::Plain, format!("{walked}, ")).and(role, ends.text(look.language))
 }
 
 /// Points measured as dots, the fit as every fourth dot, the end as a dashed line.

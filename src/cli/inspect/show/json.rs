@@ -16,7 +16,7 @@ pub(super) fn row_json(row: &Row) -> String {
         Value::Count { value, .. } => (json!(value), Json::Null, Json::Null),
         Value::AtLeast(least) => (json!(least), Json::Null, Json::Null),
         Value::Word(word) => (json!(word), Json::Null, Json::Null),
-        Value::Absent(reason) => (Json::Null, Json::Null, json!(reason)),
+        Value::Absent(reason) => (Json::Null, Json::Null, json!(reason.english())),
     };
     let mut fields = vec![("step", json!(row.step)), ("measurand", json!(row.measurand)), (key.as_str(), value)];
     let u_key = known.map(|m| format!("{}_u{}", m.key, m.unit().dimension.suffix()));
@@ -27,7 +27,7 @@ pub(super) fn row_json(row: &Row) -> String {
     fields.push(("is_lower_bound", json!(matches!(row.value, Value::AtLeast(_)))));
     fields.push(("absent", absent));
     fields.push(("judged", verdicts.collect()));
-    fields.push(("note", json!(row.note)));
+    fields.push(("note", json!(row.note.english())));
     object(&fields)
 }
 
@@ -46,8 +46,8 @@ pub(super) fn ended_json(sheet: &Sheet, folder: &std::path::Path) -> String {
         ("verdict", json!(verdict.outcome.word())),
         ("grade", json!(verdict.grade)),
         ("reject_code", json!(verdict.reject_code)),
-        ("sentence", json!(verdict.sentence)),
-        ("reason", json!(verdict.reason)),
+        ("sentence", json!(verdict.sentence.english())),
+        ("reason", json!(verdict.reason.english())),
         ("record_csv", json!(folder.join("record.csv").to_string_lossy())),
         ("record_pdf", json!(folder.join("record.pdf").to_string_lossy())),
     ])

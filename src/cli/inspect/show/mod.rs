@@ -17,6 +17,7 @@ use super::{
 use crate::cli::{Failure, output};
 use crate::driver::Watcher;
 use crate::instruments::{Role, Screen, caution_lines, said};
+use crate::phrase::{Language, name, page, terminal};
 use crate::record::{
     event::{Event, Happening},
     finding::{CaptureFinding, Trace},
@@ -25,12 +26,6 @@ use crate::record::{
 };
 use crate::report::row_line;
 use crate::run::{Remark, Run};
-
-/// Said at the end of every run at a bench: the program sees no supply.
-const MAKE_SAFE: &str =
-    "Supply off. Charge stays in tube and ballast after switch-off: discharge them before touching.";
-/// Said when a run at a bench is taken up again.
-const LOOK_FIRST: &str = "Look first whether the supply is on and the tube lit: high voltage may still be there.";
 
 /// Shows a run on the two streams.
 pub(super) struct Show {
@@ -92,7 +87,11 @@ impl Show {
             pace,
             asks,
             is_shared: io::stdout().is_terminal(),
-            face: if screen.is_live() { Face::Live(Box::new(Live::new(screen))) } else { Face::Plain(plain::Plain::default()) },
+            face: if screen.is_live() {
+                Face::Live(Box::new(Live::new(screen)))
+            } else {
+                Face::Plain(plain::Plain::default())
+            },
             shown: HashSet::new(),
             done_steps: 0,
             clock: Pace::default(),
@@ -105,7 +104,7 @@ impl Show {
     pub fn begun(&mut self, run: &Run, folder: &Path) {
         let identity = run.identity();
         if identity.simulated {
-            self.say(crate::report::SIMULATED);
+            self.say(page::SIMULATED.of(identity.language()));
         }
         let (serial, tube_type) = (&identity.serial, &identity.tube_type);
         self.say(&format!("{serial}, type {tube_type}: sheet opened in {}", folder.display()));
@@ -123,7 +122,7 @@ impl Show {
         let rows = if n == 1 { "1 row".to_owned() } else { format!("{n} rows") };
         self.say(&format!("taken up again after {}, {rows} so far", last.at));
         if !run.identity().from_captures {
-            self.caution(LOOK_FIRST);
+            self.caution(terminal::LOOK_FIRST.of(run.identity().language()));
         }
     }
 
@@ -163,14 +162,14 @@ impl Show {
         }
     }
 
-    fn row(&mut self, row: &Row) {
+    fn row(&mut self, row: &Row, language: Language) {
         let is_json = self.format == Format::Json;
         // A terminal shows a row once: as it is asked for.
         let drawn = matches!(self.face, Face::Live(_)) && !(is_json && self.is_shared);
         if is_json {
             self.result(&json::row_json(row));
         } else if !(drawn && self.is_shared) {
-            self.result(&row_line(row));
+            self.result(&row_line(row, language));
         }
         if let (true, Face::Live(live)) = (drawn, &mut self.face) {
             let lines = row_lines(row, &live.screen().look());
@@ -182,7 +181,7 @@ impl Show {
     fn rows(&mut self, sheet: &Sheet, is_done: impl Fn(&str) -> bool) {
         for row in sheet.rows.iter().filter(|row| is_done(&row.step)) {
             if self.shown.insert(key(row)) {
-                self.row(row);
+                self.row(row, sheet.language());
             }
         }
     }
@@ -207,12 +206,12 @@ impl Show {
         match self.format {
             Format::Json => output::result(&json::ended_json(sheet, folder)),
             Format::Text => {
-                let verdict = &sheet.verdict;
+                let (verdict, language) = (&sheet.verdict, sheet.language());
                 if !drawn || !self.is_shared {
                     output::result("")?;
-                    output::result(&format!("{}: {}", sheet.identity.serial, verdict.sentence))?;
+                    output::result(&format!("{}: {}", sheet.identity.serial, verdict.sentence.text(language)))?;
                     if !verdict.reason.is_empty() {
-                        output::result(&verdict.reason)?;
+                        output::result(&verdict.reason.text(language))?;
                     }
                 }
                 output::result(&folder.join("record.csv").display().to_string())?;
@@ -224,13 +223,13 @@ impl Show {
     /// The caution, and on a terminal the verdict in its box. Returns whether it was drawn.
     fn drawn_end(&mut self, sheet: &Sheet) -> bool {
         if !sheet.identity.from_captures {
-            self.caution(MAKE_SAFE);
+            self.caution(terminal::TAKE_OFF.of(sheet.language()));
         }
         let Face::Live(live) = &mut self.face else { return false };
         let look = live.screen().look();
         let verdict = &sheet.verdict;
-        let (serial, sentence) = (&sheet.identity.serial, &verdict.sentence);
-        let lines = verdict_lines(serial, verdict.outcome, sentence, &verdict.reason, &look);
+        let (sentence, reason) = (verdict.sentence.text(look.language), verdict.reason.text(look.language));
+        let lines = verdict_lines(&sheet.identity.serial, verdict.outcome, &sentence, &reason, &look);
         live.lasting(&lines);
         true
     }
@@ -239,10 +238,9 @@ impl Show {
     fn noted(&mut self, answer: &Answer) {
         let Some(question) = self.asked.take() else { return };
         if let (Face::Live(live), true) = (&mut self.face, self.asks && *answer != Answer::Done) {
-            live.say(
-                Role::Quiet,
-                &format!("  noted: {}, {}: {}", question.step, question.word, said(&question, answer)),
-            );
+            let answered = said(&question, answer);
+            let noted = terminal::NOTED.with([name(question.step), name(question.word), name(answered)]);
+            live.say(Role::Quiet, &format!("  {}", noted.text(live.screen().look().language)));
         }
     }
 }

@@ -6,6 +6,7 @@ use std::time::{Duration, Instant};
 
 use super::super::live::about;
 use crate::cli::output;
+use crate::phrase::Language;
 use crate::run::Progress;
 
 /// A line about the same step is enough this often.
@@ -29,7 +30,8 @@ impl Plain {
         }
         self.last = Some((progress.step.clone(), Instant::now()));
         let left = progress.expected_s.map(|seconds| seconds / rate).filter(|seconds| seconds.is_finite());
-        let left = left.map_or_else(String::new, |seconds| format!(", about {} left", about(seconds)));
+        let left =
+            left.map_or_else(String::new, |seconds| format!(", about {} left", about(seconds, Language::English)));
         output::talk(&format!("[{}/{}] {}{left}", progress.done_steps + 1, progress.n_steps, progress.step));
     }
 }

@@ -4,6 +4,7 @@
 
 use super::{take_out, turn};
 use crate::{
+    phrase::{Saying, figure, questions, reasons},
     recipe::Polarizer,
     record::{question::Answer, sheet::Value},
     run::{
@@ -44,7 +45,7 @@ pub(super) struct Linear {
     fit: Option<Malus>,
     dark: Option<f64>,
     /// Why something is missing.
-    reason: Option<String>,
+    reason: Option<Saying>,
     filled: Vec<Filled>,
 }
 
@@ -89,7 +90,7 @@ impl Linear {
             if self.stage == Stage::Coarse { self.coarse.push(point) } else { self.fine.push(point) }
         }
         if let Err(reason) = reading {
-            self.reason.get_or_insert_with(|| reason.to_owned());
+            self.reason.get_or_insert_with(|| Saying::outside(reason));
         }
         self.turned = false;
         self.index += 1;
@@ -108,12 +109,10 @@ impl Linear {
     fn finish(&mut self) {
         self.stage = Stage::Done;
         let Some((fit, station)) = self.fit.zip(self.station.clone()) else {
-            let few = format!("{} readings with the polarizer, expected {FEWEST} or more", self.coarse.len());
+            let few = reasons::FEW_ANGLE_READINGS.with([figure(self.coarse.len()), figure(FEWEST)]);
             let reason = self.reason.clone().unwrap_or(few);
-            self.filled = vec![
-                Filled::absent("extinction", reason.as_str()),
-                Filled::absent("polarization_azimuth", reason.as_str()),
-            ];
+            self.filled =
+                vec![Filled::absent("extinction", reason.clone()), Filled::absent("polarization_azimuth", reason)];
             return;
         };
         self.filled = vec![self.extinction(&fit, &station), azimuth(&fit, station.u_angle)];
@@ -122,13 +121,13 @@ impl Linear {
     fn extinction(&self, fit: &Malus, station: &StationPolarizer) -> Filled {
         let key = "extinction";
         let Some(dark) = self.dark else {
-            let reason = self.reason.clone().unwrap_or_else(|| "no reading with the beam blocked".into());
+            let reason = self.reason.clone().unwrap_or_else(|| (&reasons::NO_DARK_READING).into());
             return Filled::absent(key, reason);
         };
         let null_at = self.null_at();
         let scan: Vec<_> = self.fine.iter().map(|(at, watts)| (malus::difference(*at, null_at), *watts)).collect();
         let Some((least, u_least, _)) = malus::null(&scan) else {
-            return Filled::absent(key, "the fine scan shows no null");
+            return Filled::absent(key, &reasons::NO_NULL);
         };
         let greatest = fit.mean + fit.swing - dark;
         let u_greatest = fit.scatter / ((fit.dof + 3) as f64).sqrt() * 3f64.sqrt();
@@ -138,12 +137,12 @@ impl Linear {
         let u_dark = u_least * (self.fine.len() as f64 / 3.0).sqrt();
         let u_low = u_least.hypot(u_dark);
         if !greatest.is_finite() || greatest <= 0.0 {
-            return Filled::absent(key, "no light through the polarizer");
+            return Filled::absent(key, &reasons::NO_LIGHT_THROUGH);
         }
         if least < 2.0 * u_low {
             let bound = greatest / (least.max(0.0) + 2.0 * u_low).max(f64::MIN_POSITIVE);
             let bound = bound.min(station.extinction);
-            return Filled::plain(key, Value::AtLeast(bound)).noted("the null is under the noise of the meter");
+            return Filled::plain(key, Value::AtLeast(bound)).noted(&reasons::NULL_UNDER_NOISE);
         }
         let value = greatest / least;
         let line = |source: &str, words: &str, evaluation, u: f64, dof: f64, sensitivity: f64| {
@@ -177,9 +176,9 @@ impl Step for Linear {
     fn begin(&mut self, room: &mut Room<'_>) {
         let station = &room.plan.station;
         let lacking = match (&station.polarizer, &station.power_meter) {
-            (None, _) => Some("the station file names no polarizer"),
-            (_, None) => Some("the station file names no power meter"),
-            _ if room.from_captures => Some("captures from a folder carry no turn of a polarizer"),
+            (None, _) => Some(&reasons::NO_POLARIZER),
+            (_, None) => Some(&reasons::NO_POWER_METER),
+            _ if room.from_captures => Some(&reasons::FOLDER_HAS_NO_TURN),
             _ => None,
         };
         self.station.clone_from(&station.polarizer);
@@ -196,9 +195,9 @@ impl Step for Linear {
                 Some((_, ask)) => ask,
                 None => Wish::Nothing,
             },
-            Stage::Block => Wish::done("block_beam", "Block the beam ahead of the power meter"),
+            Stage::Block => Wish::done("block_beam", &questions::BLOCK_BEAM),
             Stage::Dark => Wish::Reading(ReadingKind::DarkPower),
-            Stage::Open => Wish::done("open_beam", "Open the beam again"),
+            Stage::Open => Wish::done("open_beam", &questions::OPEN_BEAM),
             Stage::Out => take_out(),
             Stage::Done => Wish::Nothing,
         }
@@ -208,20 +207,20 @@ impl Step for Linear {
         match (self.stage, given) {
             (Stage::Coarse | Stage::Fine, Given::Answer(Answer::Done)) => self.turned = true,
             (Stage::Coarse | Stage::Fine, Given::Answer(Answer::CannotSay(reason))) => {
-                self.reason = Some(reason.clone());
+                self.reason = Some(Saying::outside(reason));
                 self.fit = None;
                 self.stage = Stage::Out;
             }
             (Stage::Coarse | Stage::Fine, Given::Reading(reading)) => self.read(reading),
             (Stage::Block, Given::Answer(Answer::Done)) => self.stage = Stage::Dark,
             (Stage::Block, Given::Answer(Answer::CannotSay(reason))) => {
-                self.reason = Some(reason.clone());
+                self.reason = Some(Saying::outside(reason));
                 self.stage = Stage::Out;
             }
             (Stage::Dark, Given::Reading(reading)) => {
                 match reading {
                     Ok(watts) => self.dark = Some(watts),
-                    Err(reason) => self.reason = Some(reason.to_owned()),
+                    Err(reason) => self.reason = Some(Saying::outside(reason)),
                 }
                 self.stage = Stage::Open;
             }

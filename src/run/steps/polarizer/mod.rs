@@ -7,7 +7,10 @@ mod neighbours;
 mod random;
 
 use super::{Step, Wish};
-use crate::recipe::{Polarization, Polarizer};
+use crate::{
+    phrase::{figure, questions},
+    recipe::{Polarization, Polarizer},
+};
 
 /// The step for the polarization that the recipe expects.
 pub(super) fn step_of(keys: &Polarizer) -> Box<dyn Step> {
@@ -21,13 +24,13 @@ pub(super) fn step_of(keys: &Polarizer) -> Box<dyn Step> {
 fn turn(angle: f64) -> (f64, Wish) {
     let degrees = (angle.to_degrees().rem_euclid(180.0) * 10.0).round() / 10.0;
     let degrees = if degrees >= 180.0 { 0.0 } else { degrees };
-    let text = format!("Turn the polarizer to {degrees:.1}°, counter-clockwise looking toward the tube");
+    let text = questions::TURN.with([figure(format!("{degrees:.1}"))]);
     (degrees.to_radians(), Wish::done(format!("turn_{degrees:.1}"), text))
 }
 
 /// Taking it out again.
 fn take_out() -> Wish {
-    Wish::done("polarizer_out", "Take the polarizer out of the beam")
+    Wish::done("polarizer_out", &questions::POLARIZER_OUT)
 }
 
 #[cfg(test)]

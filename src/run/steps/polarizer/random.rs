@@ -7,6 +7,7 @@ use super::{
     take_out, turn,
 };
 use crate::{
+    phrase::{Saying, figure, reasons},
     recipe::Polarizer,
     record::{event::Captured, finding::ModeFinding, question::Answer},
     run::{
@@ -65,7 +66,7 @@ pub(super) struct Random {
     neighbours: Neighbours,
     /// Polarizer of each capture that could be used, rad.
     angles: Vec<f64>,
-    reason: Option<String>,
+    reason: Option<Saying>,
     filled: Vec<Filled>,
 }
 
@@ -114,7 +115,8 @@ impl Random {
         let finding = &captured.finding;
         if finding.refused.is_some() || finding.dark || finding.modes.is_empty() {
             // Across a single mode's axis nothing is left to measure.
-            let why = finding.refused.clone().unwrap_or_else(|| "no mode through the polarizer".into());
+            let refused = finding.refused.as_deref().map(Saying::outside);
+            let why = refused.unwrap_or_else(|| (&reasons::NO_MODE_THROUGH).into());
             self.reason.get_or_insert(why);
             return;
         }
@@ -194,9 +196,9 @@ impl Random {
     fn finish(&mut self) {
         self.done = true;
         if self.angles.len() < FEWEST {
-            let few = format!("{} captures with the polarizer, expected {FEWEST} or more", self.angles.len());
+            let few = reasons::FEW_ANGLE_CAPTURES.with([figure(self.angles.len()), figure(FEWEST)]);
             let reason = self.reason.clone().unwrap_or(few);
-            self.filled = KEYS.map(|key| Filled::absent(key, reason.as_str())).to_vec();
+            self.filled = KEYS.map(|key| Filled::absent(key, reason.clone())).to_vec();
             return;
         }
         let axes = self.axes();
@@ -205,11 +207,10 @@ impl Random {
         let first = families.iter().find(|family| family.axis < std::f64::consts::FRAC_PI_2).or(families.first());
         let azimuth = match first {
             Some(family) => self.azimuth(family),
-            None => Filled::absent(KEYS[0], "no mode kept its axis over the angles"),
+            None => Filled::absent(KEYS[0], &reasons::NO_AXIS_KEPT),
         };
         let between = self.between();
-        self.filled =
-            vec![azimuth, between.unwrap_or_else(|| Filled::absent(KEYS[1], "no neighbours were seen together"))];
+        self.filled = vec![azimuth, between.unwrap_or_else(|| Filled::absent(KEYS[1], &reasons::NO_NEIGHBOURS))];
     }
 
     /// The angle between neighbours, by families that kept their axes, else by pairs seen at once.
@@ -224,7 +225,7 @@ impl Random {
         let words = "scatter of shares of neighbours";
         let scatter = BudgetLine::direct("scatter", words, Evaluation::TypeA, found.u, found.dof as f64);
         let row = known(&Measured { value: found.angle, budget: vec![scatter, self.scale_line()] });
-        if row.is_absent() { row } else { row.noted("from captures that show both at once") }
+        if row.is_absent() { row } else { row.noted(&reasons::BOTH_AT_ONCE) }
     }
 
     fn scale_line(&self) -> BudgetLine {
@@ -235,8 +236,7 @@ impl Random {
         let scatter =
             BudgetLine::direct("scatter", "scatter about Malus's law", Evaluation::TypeA, family.u, family.dof);
         let measured = Measured { value: family.axis, budget: vec![scatter, self.scale_line()] };
-        Filled::number(KEYS[0], &measured)
-            .noted("of one family of modes; the other's is given by the angle between neighbours")
+        Filled::number(KEYS[0], &measured).noted(&reasons::OF_ONE_FAMILY)
     }
 
     /// In [0°, 180°): which neighbour comes first is chance, so 90.3° and 89.7° say the same.
@@ -254,7 +254,7 @@ fn known(measured: &Measured) -> Filled {
     if expanded <= WORST {
         Filled::number(KEYS[1], measured)
     } else {
-        Filled::absent(KEYS[1], format!("the axes of neighbours are known to {expanded:.0}° only"))
+        Filled::absent(KEYS[1], reasons::AXES_KNOWN_TO.with([figure(format!("{expanded:.0}"))]))
     }
 }
 
@@ -290,8 +290,8 @@ fn family(axes: &[(i64, Malus)], parity: i64) -> Option<Family> {
 impl Step for Random {
     fn begin(&mut self, room: &mut Room<'_>) {
         let lacking = match &room.plan.station.polarizer {
-            None => Some("the station file names no polarizer"),
-            Some(_) if room.from_captures => Some("captures from a folder carry no turn of a polarizer"),
+            None => Some(&reasons::NO_POLARIZER),
+            Some(_) if room.from_captures => Some(&reasons::FOLDER_HAS_NO_TURN),
             Some(polarizer) => {
                 self.u_angle = polarizer.u_angle;
                 None
@@ -322,7 +322,7 @@ impl Step for Random {
             _ if self.out || self.keys.angles.is_empty() => self.finish(),
             Given::Answer(Answer::Done) => self.turned = true,
             Given::Answer(Answer::CannotSay(reason)) => {
-                self.reason = Some(reason.clone());
+                self.reason = Some(Saying::outside(reason));
                 self.angles.clear();
                 self.out = true;
             }
@@ -331,7 +331,7 @@ impl Step for Random {
                 self.go_on();
             }
             Given::Lost { reason, for_good } => {
-                self.reason.get_or_insert_with(|| reason.to_owned());
+                self.reason.get_or_insert_with(|| Saying::outside(reason));
                 self.go_on();
                 self.out |= for_good;
             }

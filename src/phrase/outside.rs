@@ -1,0 +1,72 @@
+//! The table: words that come back out of stored events (engine, instruments, the simulated technician), which keep English.
+//! Must not hold a phrase that is all place: everything would read like it.
+//! Main items: the constants, and [`ALL`].
+
+use super::table;
+
+table! {
+    // Instruments and people.
+    NO_PROBE = "no high-voltage probe on this bench", "kein Hochspannungstastkopf an diesem Messplatz";
+    NO_INSTRUMENT = "no instrument for it at this bench", "kein Messgerät dafür an diesem Messplatz";
+    NOT_HERE = "not on this bench", "nicht an diesem Messplatz";
+    CAPTURES_ONLY = "captures only: nobody at a bench", "nur Aufnahmen: niemand am Messplatz";
+    NO_REASON = "no reason given", "kein Grund angegeben";
+    FOLDER_AT_END = "captures only: the folder holds no further capture", "nur Aufnahmen: der Ordner hat keine weitere";
+    NO_DATA = "the digitizer gave no data for this capture", "der Digitalisierer gab für diese Aufnahme keine Daten";
+    NO_INTERFEROMETER = "the station has no interferometer", "die Station hat kein Interferometer";
+    METER_NOT_FINITE = "the meter gave no finite number", "das Messgerät gab keine endliche Zahl";
+    METER_NONE = "the meter gave no value", "das Messgerät gab keinen Wert";
+    METER_GAVE = "the meter gave {0}, no finite number", "das Messgerät gab {0}, keine endliche Zahl";
+
+    // Traces of the light.
+    LIGHT_TOO_SHORT = "{0} samples in {1} s are too few for noise from {2} Hz; expected {3} s or more",
+        "{0} Abtastwerte in {1} s sind zu wenige für Rauschen ab {2} Hz; nötig sind {3} s oder mehr";
+    LIGHT_TOO_SLOW = "{0} samples a second are too slow for noise to {1} Hz; expected {2} or more",
+        "{0} Abtastwerte je Sekunde sind zu langsam für Rauschen bis {1} Hz; nötig sind {2} oder mehr";
+    LIGHT_NOT_FINITE = "the samples hold no finite noise", "die Abtastwerte ergeben kein endliches Rauschen";
+    LIGHT_STANDS = "the light does not move by one step: the light detector is saturated or not connected",
+        "das Licht ändert sich um keinen Schritt: der Lichtempfänger ist übersteuert oder nicht angeschlossen";
+    LIGHT_CLIPPED = "{0} % of the samples stand at {1} V, the top: the light detector is saturated; weaken the light",
+        "{0} % der Abtastwerte stehen bei {1} V, dem Anschlag: der Lichtempfänger ist übersteuert; Licht abschwächen";
+    LIGHT_NO_MAINS = "the slow traces are too short to show the mains",
+        "die langsamen Aufnahmen sind zu kurz, um das Netz zu zeigen";
+    LIGHT_NOT_BLOCKED = "the light detector reads {0} V with the beam open and {1} V with it blocked: no light in it, or the \
+        beam was not blocked",
+        "der Lichtempfänger zeigt {0} V bei offenem und {1} V bei abgedecktem Strahl: kein Licht, oder der Strahl war nicht \
+        abgedeckt";
+
+    // Refusals of the engine.
+    TOO_SHORT = "the longest ramp has {0} samples; at least 100 are needed: record more samples a ramp",
+        "die längste Rampe hat {0} Abtastwerte; mindestens 100 sind nötig: mehr Abtastwerte je Rampe aufnehmen";
+    NOT_FINITE = "sample {0} is not a finite number; record the capture again",
+        "Abtastwert {0} ist keine endliche Zahl; erneut aufnehmen";
+    DARK = "no peak stands above the noise: is the tube lit and the beam on the interferometer?",
+        "keine Linie ragt aus dem Rauschen: Leuchtet die Röhre, trifft der Strahl das Interferometer?";
+    CLUTTER = "clutter: {0} peaks on one ramp, more than any comb has; realign the interferometer, or reduce the ramp",
+        "Wirrwarr: {0} Linien auf einer Rampe, mehr als ein Kamm hat; Interferometer neu justieren oder Rampe verkleinern";
+    FRINGES = "broad fringes, no peaks: the bumps are {0} % as wide as their distance; a finesse of 6 or more is needed",
+        "breite Streifen, keine Linien: die Buckel sind {0} % so breit wie ihr Abstand; nötig ist eine Finesse von 6 oder mehr";
+    ONE_ORDER = "one order only: nothing repeats, so there is no frequency scale; raise the ramp until every mode shows twice",
+        "nur eine Ordnung: nichts wiederholt sich, daher keine Frequenzskala; Rampe erhöhen, bis jede Mode zweimal erscheint";
+    NO_REPEAT = "the peaks do not repeat: only {0} % of their height is found again one order on; raise the ramp until every \
+        mode shows twice, or realign the interferometer",
+        "die Linien wiederholen sich nicht: nur {0} % ihrer Höhe kehrt eine Ordnung weiter wieder; Rampe erhöhen, bis jede \
+        Mode zweimal erscheint, oder Interferometer neu justieren";
+    NO_COMB = "the peaks form no comb: only {0} % of their height fits evenly spaced modes; realign and repeat",
+        "die Linien bilden keinen Kamm: nur {0} % ihrer Höhe passt zu gleichen Abständen; neu justieren und wiederholen";
+    AMBIGUOUS_NEAR = "spacings of {0} MHz and {1} MHz fit equally well, and neither is near the nominal {2} MHz, or use an \
+        interferometer of another free spectral range",
+        "Abstände von {0} MHz und {1} MHz passen gleich gut, und keiner liegt beim Nennwert {2} MHz; oder ein Interferometer \
+        mit anderem freien Spektralbereich verwenden";
+    AMBIGUOUS = "spacings of {0} MHz and {1} MHz fit equally well; give the nominal spacing, or use an interferometer of \
+        another free spectral range",
+        "Abstände von {0} MHz und {1} MHz passen gleich gut; Nennabstand angeben oder ein Interferometer mit anderem freien \
+        Spektralbereich verwenden";
+    ONE_MODE = "one mode an order: a spacing needs two; take more captures while the tube walks, or remove the polarizer",
+        "eine Mode je Ordnung: ein Abstand braucht zwei; weiter aufnehmen, während die Moden wandern, oder den Polarisator \
+        entfernen";
+    NO_FIT = "the fit of the peaks did not come to rest; realign and repeat",
+        "die Anpassung der Linien kam nicht zur Ruhe; neu justieren und wiederholen";
+    WEAK_SCALE = "the peaks seen do not fix the frequency scale; raise the ramp until every mode shows at least twice",
+        "die Linien legen die Frequenzskala nicht fest; Rampe erhöhen, bis jede Mode mindestens zweimal erscheint";
+}
