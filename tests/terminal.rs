@@ -82,3 +82,37 @@ fn control_characters_that_are_typed_never_reach_the_terminal() {
     let ran = asked(&place, "KT\n0.6\n1\nskip: no\u{1b}[2J probe\nstop: \u{1b}]0;x\u{7}\n");
     is_plain(ran.ends(22, &["no value (no\u{fffd}[2J probe)", "stopped"]));
 }
+
+/// A bench without instruments: whoever runs it takes the high voltage off, and says so.
+#[test]
+fn a_person_at_a_real_bench_says_that_it_is_safe() {
+    let place = Place::new();
+    let station = "station = \"bare\"\ntime_zone = \"Europe/Lisbon\"\nshifts = [\"06:00\"]\n";
+    let station = place.write("bare.toml", station);
+    let home = format!("{}/fixtures/brisk", env!("CARGO_MANIFEST_DIR"));
+    let arguments = [
+        "inspect",
+        "T-1",
+        "--type",
+        "brisk-150",
+        "--station",
+        &station,
+        "--home",
+        &home,
+        "--reports",
+        "reports",
+        "--ask",
+    ];
+    let run = |typed: &str| {
+        let before = listing(place.path());
+        let mut command = place.command(&arguments);
+        command.stdin(Stdio::piped()).stdout(Stdio::piped()).stderr(Stdio::piped());
+        let mut child = command.spawn().unwrap();
+        child.stdin.take().unwrap().write_all(typed.as_bytes()).unwrap();
+        place.ran(before, child.wait_with_output().unwrap())
+    };
+    // The input ends where Enter is waited for: the sheet stays open.
+    let open = run("KT\n0.6\n1\n-\n1\n");
+    open.ends(22, &["Supply off, tube dark, charge taken off, then Enter", "before the bench was said to be safe"]);
+    run("\n").ends(21, &["taken up again", "insulated tool", "hold"]);
+}

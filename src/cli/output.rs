@@ -6,6 +6,7 @@ use std::borrow::Cow;
 use std::io::{self, Write as _};
 
 use super::{Ending, Failure};
+use crate::disk::said;
 
 /// One line of results.
 ///
@@ -14,7 +15,7 @@ pub fn result(line: &str) -> Result<(), Failure> {
     let mut out = io::stdout().lock();
     match writeln!(out, "{}", harmless(line)).and_then(|()| out.flush()) {
         Err(error) if error.kind() != io::ErrorKind::BrokenPipe => {
-            Err(Failure::new(Ending::Store, format!("cannot write to standard output: {error}")))
+            Err(Failure::new(Ending::Store, format!("cannot write to standard output: {}", said(&error))))
         }
         _ => Ok(()),
     }

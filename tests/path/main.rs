@@ -5,5 +5,6 @@
 
 mod bench;
 mod noise;
+mod rack;
 mod warmup;
 mod watch;

@@ -8,7 +8,7 @@ use crate::instruments::{Colour, Screen};
 use crate::phrase::Language;
 
 /// Arguments as given.
-#[derive(Debug, Args)]
+#[derive(Debug, Clone, Args)]
 pub struct ScreenArguments {
     /// Plain lines even on a terminal: nothing is drawn, no control characters
     #[arg(long)]

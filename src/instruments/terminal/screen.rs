@@ -34,6 +34,12 @@ pub struct Screen {
     foot: Rc<RefCell<Foot>>,
 }
 
+impl Default for Screen {
+    fn default() -> Self {
+        Self::plain()
+    }
+}
+
 /// What stands at the foot now.
 #[derive(Debug, Default)]
 struct Foot {
@@ -136,6 +142,12 @@ impl Screen {
         if self.is_live {
             write(&(self.back_to_top(&self.look()) + "\x1b[J"));
         }
+    }
+
+    /// The stop key went to a line of its own below the foot, by itself.
+    pub fn interrupted(&self) {
+        let mut foot = self.foot.borrow_mut();
+        foot.below += usize::from(std::mem::take(&mut foot.is_open));
     }
 
     /// Leaves the foot where it is, for a question below it: the cursor goes to a line of its own, unless it is there.

@@ -26,6 +26,7 @@ use crate::record::{
 };
 use crate::report::row_line;
 use crate::run::{Remark, Run};
+use crate::station::standing::holds;
 
 /// Shows a run on the two streams.
 pub(super) struct Show {
@@ -109,6 +110,11 @@ impl Show {
         let (serial, tube_type) = (&identity.serial, &identity.tube_type);
         self.say(&format!("{serial}, type {tube_type}: sheet opened in {}", folder.display()));
         self.say(&format!("Decision rule: {}", run.sheet().rule));
+        if let Some(at) = run.sheet().started_at.filter(|_| identity.run_kind.is_product()) {
+            for sentence in holds(&run.plan().station, at, identity.reference_checks.as_deref()) {
+                self.say(&format!("No verdict will be given: {}", sentence.english()));
+            }
+        }
     }
 
     /// The run was taken up again after so many events: its rows were shown before.
@@ -127,7 +133,7 @@ impl Show {
     }
 
     /// A line that stays, on standard error.
-    fn say(&mut self, line: &str) {
+    pub fn say(&mut self, line: &str) {
         match &mut self.face {
             Face::Plain(_) => output::talk(line),
             Face::Live(live) => live.say(Role::Quiet, line),
