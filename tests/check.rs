@@ -165,7 +165,7 @@ done = false
     station.toml:14:36: `date` is the text "2026-01-12"; expected a day such as 2026-01-12, without quotes
     station.toml:15:2: unknown key `spply` in the file; expected one of station, language, time_zone, shifts, interferometer, power_meter, supply, polarizer, light_detector, reference
       nearest known word: supply
-    answers.toml:2:1: unknown key `technitian` in the file; expected one of technician, tube_type, time_to_answer, steps
+    answers.toml:2:1: unknown key `technitian` in the file; expected one of technician, tube_type, time_to_answer, lit_since, steps
       nearest known word: technician
     answers.toml:3:18: `time_to_answer`: `m` is not a unit of a time; expected one of s, ms, µs, min, h
     answers.toml:5:9: `tries` is the number -1; expected a whole number from 0 to 4294967295

@@ -14,6 +14,7 @@ mod light;
 mod line;
 mod noise;
 mod power;
+mod rest;
 mod swaps;
 #[cfg(test)]
 mod synthetic;
@@ -30,6 +31,7 @@ pub use glimpse::{Glimpse, GlimpseMode};
 pub use light::{LIGHT_ENGINE, LightMeasurement, LightSettings, LightTone, MainsRipple, measure_light};
 pub use noise::{LightSet, NoiseFound, ToneFound, ToneOrigin, light_noise};
 pub use power::{CyclePower, cycle_power, power_drift};
+pub use rest::{Rest, rest};
 pub use warmup::{Warmup, WarmupSettings, WarmupState};
 pub use watch::{Hop, Swap, Watched, watch};
 

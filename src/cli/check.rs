@@ -9,6 +9,7 @@ use std::{
 };
 
 use crate::{
+    disk::said,
     limits::{Fault, Limits, nearest, reading::top_keys},
     recipe::Recipe,
     station::{answers::Answers, file::StationFile},
@@ -91,7 +92,7 @@ fn gather(path: &Path, depth: usize, texts: &mut Vec<(String, String)>, faults: 
                     faults.push(Fault::of_file(&name, "the folder holds no `.toml` file; expected at least one"));
                 }
             }
-            Err(error) => faults.push(Fault::of_file(&name, format!("the folder cannot be read: {error}"))),
+            Err(error) => faults.push(Fault::of_file(&name, format!("the folder cannot be read: {}", said(&error)))),
         }
         return;
     }
@@ -102,7 +103,7 @@ fn gather(path: &Path, depth: usize, texts: &mut Vec<(String, String)>, faults: 
         Err(error) if error.kind() == io::ErrorKind::InvalidData => {
             faults.push(Fault::of_file(&name, "the file is not UTF-8; expected plain text"));
         }
-        Err(error) => faults.push(Fault::of_file(&name, format!("the file cannot be read: {error}"))),
+        Err(error) => faults.push(Fault::of_file(&name, format!("the file cannot be read: {}", said(&error)))),
     }
 }
 

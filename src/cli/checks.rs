@@ -6,7 +6,7 @@ use chrono::{DateTime, FixedOffset};
 
 use super::Failure;
 use crate::{
-    disk::{FoundRun, Store, demo_checks, read_record},
+    disk::{FoundRun, Store, demo_checks, frozen_record},
     gauge::reference::with_sums,
     measurand,
     record::{
@@ -65,14 +65,14 @@ fn check_of(run: &FoundRun, station: &StationFile, tube: &Reference) -> Result<O
     if !run.frozen || identity.run_kind != RunKind::Reference || !is_at(run, station) {
         return Ok(None);
     }
-    let record = read_record(&run.path).map_err(|error| Failure::store(&error))?;
-    if !record.first().is_some_and(|tube| ["pass", "fail"].contains(&tube.verdict.as_str())) {
+    let record = frozen_record(&run.path).map_err(|error| Failure::store(&error))?;
+    if !["pass", "fail"].contains(&record.outcome.as_str()) {
         return Ok(None);
     }
     let value = |key: &String| {
-        let line = record.iter().find(|line| line.measurand == *key)?;
+        let read = record.values.iter().find(|value| value.measurand == *key)?;
         let factor = measurand::find(key)?.unit().factor;
-        Some(CheckedValue { measurand: key.clone(), value: line.value? * factor, sums: None })
+        Some(CheckedValue { measurand: key.clone(), value: read.number()? * factor, sums: None })
     };
     Ok(Some(ReferenceCheck {
         serial: tube.serial.clone(),

@@ -5,11 +5,14 @@
 pub mod check;
 mod checks;
 mod ending;
+mod history;
 mod home;
 mod inspect;
 mod measure;
 mod output;
+mod rack;
 pub mod simulate;
+mod station;
 
 pub use ending::{Ending, Failure};
 
@@ -19,6 +22,7 @@ use std::process::ExitCode;
 use clap::{Parser, Subcommand};
 
 use self::simulate::SimulateError;
+use crate::limits::nearest;
 
 /// Test station for helium-neon laser tubes: warm up, sweep, measure, judge, record.
 #[derive(Debug, Parser)]
@@ -42,6 +46,12 @@ enum Command {
         #[arg(long, value_name = "DIR")]
         home: Option<PathBuf>,
     },
+    /// Every run of a tube side by side, what changed between them, and what was done to it meanwhile
+    History(history::Arguments),
+    /// Show a bench: certificates, reference tubes with their chart, what is due, whether it gives verdicts
+    Station(station::Arguments),
+    /// Keep which tubes burn in the rack since when
+    Rack(rack::Arguments),
     /// Write captures of a simulated tube, sound or faulty, and the truth about it
     Simulate(Box<simulate::SimulateArgs>),
 }
@@ -52,7 +62,8 @@ enum Command {
 pub fn run() -> ExitCode {
     let arguments = match Arguments::try_parse() {
         Ok(arguments) => arguments,
-        Err(error) => {
+        Err(mut error) => {
+            name_the_nearest(&mut error);
             // Nobody to tell if this fails too.
             let _ = error.print();
             return ExitCode::from(u8::try_from(error.exit_code()).unwrap_or(2));
@@ -62,6 +73,9 @@ pub fn run() -> ExitCode {
         Command::Inspect(arguments) => inspect::run(*arguments),
         Command::Measure(arguments) => measure::run(&arguments),
         Command::Check { arguments, home } => check(&arguments, home),
+        Command::History(arguments) => history::run(arguments),
+        Command::Station(arguments) => station::run(&arguments),
+        Command::Rack(arguments) => rack::run(arguments),
         Command::Simulate(arguments) => simulate(&arguments),
     };
     let ending = ended.unwrap_or_else(|failure| {
@@ -69,6 +83,25 @@ pub fn run() -> ExitCode {
         failure.ending
     });
     ExitCode::from(ending.status())
+}
+
+/// An option that does not exist: names the nearest that does, transposed letters included.
+fn name_the_nearest(error: &mut clap::Error) {
+    use clap::{
+        CommandFactory as _,
+        error::{ContextKind, ContextValue, ErrorKind},
+    };
+    let (ErrorKind::UnknownArgument, Some(ContextValue::String(found))) =
+        (error.kind(), error.get(ContextKind::InvalidArg))
+    else {
+        return;
+    };
+    let program = Arguments::command();
+    let command = std::env::args().nth(1).and_then(|name| program.find_subcommand(name));
+    let options = command.into_iter().flat_map(|command| command.get_arguments().filter_map(clap::Arg::get_long));
+    if let Some(near) = nearest(found.trim_start_matches('-'), options) {
+        error.insert(ContextKind::SuggestedArg, ContextValue::String(format!("--{near}")));
+    }
 }
 
 /// Prints every fault; any makes the files unusable.

@@ -5,6 +5,7 @@
 use std::io::{self, Write as _};
 
 use super::{Ending, Failure};
+use crate::disk::said;
 
 /// One line of results.
 ///
@@ -13,7 +14,7 @@ pub fn result(line: &str) -> Result<(), Failure> {
     let mut out = io::stdout().lock();
     match writeln!(out, "{line}").and_then(|()| out.flush()) {
         Err(error) if error.kind() != io::ErrorKind::BrokenPipe => {
-            Err(Failure::new(Ending::Store, format!("cannot write to standard output: {error}")))
+            Err(Failure::new(Ending::Store, format!("cannot write to standard output: {}", said(&error))))
         }
         _ => Ok(()),
     }

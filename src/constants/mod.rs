@@ -62,6 +62,15 @@ pub const RED_LINE: Constant = Constant {
     source: "DOI 10.59161/CIPM2007REC2E",
 };
 
+/// Refractive index of air at 633 nm, less 1.
+pub const AIR_REFRACTIVITY: Constant = Constant {
+    value: 2.7e-4,
+    u_value: 1.5e-5,
+    unit: "1",
+    edition: "20 °C, sea level",
+    source: "dispersion formulas of air; uncertainty for weather and the height of a plant, from memory",
+};
+
 /// Linear expansion of borosilicate glass.
 pub const BOROSILICATE: Constant = Constant {
     value: 3.25e-6,

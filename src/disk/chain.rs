@@ -1,8 +1,9 @@
-//! Lines of `events.jsonl` ↔ events: every line holds the hash of the line before.
+//! Lines of a chained file (`events.jsonl`, the life of a tube) ↔ what they hold: every line holds the hash of the line before.
 //! Must not touch the disk: bytes in, events out.
-//! Main functions: [`read_chain`], [`line_of`].
+//! Main functions: [`read_chain`], [`read_links`], [`line_of`].
 
 use crate::record::event::{EVENT_VERSION, Event, Happening};
+use crate::record::link::Link;
 use crate::station::Moment;
 
 use super::{DiskError, name::sha256_hex};
@@ -39,33 +40,39 @@ pub enum ChainFault {
     NotOpened,
 }
 
-/// The events of a file, and what is needed to go on.
+/// The lines of a chained file, and what is needed to go on.
 #[derive(Debug, Clone, PartialEq)]
-pub struct Chain {
-    /// Events in order.
-    pub events: Vec<Event>,
+pub struct Chain<T = Event> {
+    /// What the lines hold, in order.
+    pub events: Vec<T>,
     /// Length of the whole lines, bytes: a torn line begins here.
     pub whole: u64,
     /// Hash of the last whole line.
     pub last: String,
 }
 
-/// Reads stored events.
+/// Reads the stored events of a run: as [`read_links`], and the first line must be the opening.
+pub fn read_chain(bytes: &[u8]) -> Result<Chain, ChainFault> {
+    let chain = read_links::<Event>(bytes)?;
+    match chain.events.first() {
+        Some(event) if !matches!(event.what, Happening::Opened(_)) => Err(ChainFault::NotOpened),
+        _ => Ok(chain),
+    }
+}
+
+/// Reads a chained file.
 ///
 /// A last line without its line end is torn: it was never acknowledged and is dropped. Everything before it must fit, else the error names the line.
-pub fn read_chain(bytes: &[u8]) -> Result<Chain, ChainFault> {
+pub fn read_links<T: Link>(bytes: &[u8]) -> Result<Chain<T>, ChainFault> {
     let mut chain = Chain { events: Vec::new(), whole: 0, last: sha256_hex(b"") };
     for (index, line) in bytes.split_inclusive(|&b| b == b'\n').enumerate() {
         let Some(text) = line.strip_suffix(b"\n") else { break };
-        let event = read_line(text, index + 1)?;
-        if event.seq != index as u64 {
+        let event: T = read_line(text, index + 1)?;
+        if event.seq() != index as u64 {
             return Err(ChainFault::Broken { line: index + 1, what: "its number is not the next one" });
         }
-        if event.before != chain.last {
+        if event.before() != chain.last {
             return Err(ChainFault::Broken { line: index + 1, what: "the hash is another" });
-        }
-        if index == 0 && !matches!(event.what, Happening::Opened(_)) {
-            return Err(ChainFault::NotOpened);
         }
         chain.events.push(event);
         chain.whole += line.len() as u64;
@@ -74,18 +81,18 @@ pub fn read_chain(bytes: &[u8]) -> Result<Chain, ChainFault> {
     Ok(chain)
 }
 
-fn read_line(text: &[u8], line: usize) -> Result<Event, ChainFault> {
-    let event: Result<Event, _> = serde_json::from_slice(text);
+fn read_line<T: Link>(text: &[u8], line: usize) -> Result<T, ChainFault> {
+    let event: Result<T, _> = serde_json::from_slice(text);
     match event {
-        Ok(event) if event.version <= EVENT_VERSION => Ok(event),
-        Ok(event) => Err(ChainFault::Newer { line, found: u64::from(event.version) }),
+        Ok(event) if event.version() <= T::NEWEST => Ok(event),
+        Ok(event) => Err(ChainFault::Newer { line, found: u64::from(event.version()) }),
         Err(error) => {
             // A newer form may not be readable at all: its version says so better than a missing field.
             let version = serde_json::from_slice::<serde_json::Value>(text)
                 .ok()
                 .and_then(|value| value.get("version").and_then(serde_json::Value::as_u64));
             match version {
-                Some(found) if found > u64::from(EVENT_VERSION) => Err(ChainFault::Newer { line, found }),
+                Some(found) if found > u64::from(T::NEWEST) => Err(ChainFault::Newer { line, found }),
                 _ => Err(ChainFault::NotAnEvent { line, reason: error.to_string() }),
             }
         }

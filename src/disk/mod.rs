@@ -6,8 +6,10 @@ mod atomic;
 mod chain;
 mod folder;
 mod home;
+mod life;
 mod lock;
 mod name;
+mod rack;
 mod record;
 mod store;
 
@@ -15,9 +17,11 @@ pub use atomic::write_atomic;
 pub use chain::{ChainFault, read_chain};
 pub use folder::{Frozen, RunFolder};
 pub use home::{Home, TypeTexts, demo_bench, demo_checks};
+pub use life::{add_to_life, life_of};
 pub use lock::SerialLock;
 pub use name::{folder_name, is_folder_name};
-pub use record::{RecordLine, read_record};
+pub use rack::Rack;
+pub use record::frozen_record;
 pub use store::{FoundRun, Store};
 
 use std::path::{Path, PathBuf};
@@ -26,7 +30,7 @@ use std::path::{Path, PathBuf};
 #[derive(Debug, thiserror::Error)]
 pub enum DiskError {
     /// The operating system said no.
-    #[error("cannot {doing} `{}`: {error}{}", .path.display(), hint(.error))]
+    #[error("cannot {doing} `{}`: {}{}", .path.display(), said(.error), hint(.error))]
     Io {
         /// "create the folder", "write".
         doing: &'static str,
@@ -51,9 +55,43 @@ pub enum DiskError {
         /// What does not fit.
         fault: ChainFault,
     },
+    /// A frozen record is not as it was frozen.
+    #[error("`{}`: {what}", .path.display())]
+    Record {
+        /// The run's folder.
+        path: PathBuf,
+        /// What does not fit.
+        what: String,
+    },
+    /// A run folder without its first event: opening it was cut short, and nothing was measured.
+    #[error("`{}`: no run was ever opened here (it holds no whole first event); it can be removed", .path.display())]
+    Half {
+        /// The folder.
+        path: PathBuf,
+    },
     /// Something cannot be put into a line of JSON.
     #[error("cannot write an event as JSON: {0}")]
     Json(String),
+}
+
+/// What the system said, as a fragment without its number.
+pub fn said(error: &std::io::Error) -> String {
+    use std::io::ErrorKind;
+    let words = match error.kind() {
+        ErrorKind::NotFound => "there is no such file or folder",
+        ErrorKind::IsADirectory => "it is a folder",
+        ErrorKind::NotADirectory => "it is not a folder",
+        ErrorKind::AlreadyExists => "something of that name is in the way",
+        ErrorKind::PermissionDenied => "it is not allowed here",
+        ErrorKind::ReadOnlyFilesystem => "nothing can be written there",
+        ErrorKind::StorageFull => "the disk is full",
+        ErrorKind::InvalidData => "it is not plain text (UTF-8)",
+        _ => {
+            let text = error.to_string();
+            return text.split(" (os error").next().unwrap_or_default().to_owned();
+        }
+    };
+    words.to_owned()
 }
 
 /// What to do about the most frequent refusals of the system.

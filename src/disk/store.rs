@@ -51,7 +51,16 @@ impl Store {
     ///
     /// Errors: a folder that is there cannot be read, or a first line is no opening.
     pub fn runs_of(&self, serial: &str) -> Result<Vec<FoundRun>, DiskError> {
-        let mut runs = Vec::new();
+        let (runs, faults) = self.survey(serial)?;
+        // A folder without its first event was never opened; what cannot be read must not be passed over.
+        faults.into_iter().find(|fault| !matches!(fault, DiskError::Half { .. })).map_or(Ok(runs), Err)
+    }
+
+    /// As [`Store::runs_of`], with what is wrong with each folder that cannot be read instead of stopping at it.
+    ///
+    /// Errors: the folder of records, or that of the serial, cannot be read.
+    pub fn survey(&self, serial: &str) -> Result<(Vec<FoundRun>, Vec<DiskError>), DiskError> {
+        let (mut runs, mut faults) = (Vec::new(), Vec::new());
         for year in names_in(&self.reports)? {
             if !year.bytes().all(|b| b.is_ascii_digit()) {
                 continue;
@@ -59,13 +68,40 @@ impl Store {
             let folder = self.reports.join(year).join(folder_name(serial));
             for run in names_in(&folder)? {
                 let path = folder.join(run);
-                if let Some(opened) = first_event(&path)? {
-                    let frozen = path.join(RECORD).is_file();
-                    runs.push(FoundRun { path, opened, frozen });
+                match first_event(&path) {
+                    Ok(Some(opened)) => {
+                        let frozen = path.join(RECORD).is_file();
+                        runs.push(FoundRun { path, opened, frozen });
+                    }
+                    Ok(None) => faults.push(DiskError::Half { path }),
+                    Err(fault) => faults.push(fault),
                 }
             }
         }
         // Version 7: the id begins with the time, then the number among the runs of that millisecond.
+        runs.sort_by(|a, b| a.opened.identity.run_id.cmp(&b.opened.identity.run_id));
+        Ok((runs, faults))
+    }
+
+    /// Every run opened at or after a moment, in the order in which they were opened. Looks at the names of all runs, and
+    /// reads only those.
+    ///
+    /// * `from_ms`: milliseconds of the Unix epoch.
+    pub fn runs_from(&self, from_ms: i64) -> Result<Vec<FoundRun>, DiskError> {
+        let mut runs = Vec::new();
+        for year in names_in(&self.reports)?.into_iter().filter(|year| year.bytes().all(|b| b.is_ascii_digit())) {
+            let year = self.reports.join(year);
+            for serial in names_in(&year)? {
+                let folder = year.join(serial);
+                for run in names_in(&folder)?.into_iter().filter(|run| opened_ms(run).is_some_and(|ms| ms >= from_ms)) {
+                    let path = folder.join(run);
+                    if let Some(opened) = first_event(&path)? {
+                        let frozen = path.join(RECORD).is_file();
+                        runs.push(FoundRun { path, opened, frozen });
+                    }
+                }
+            }
+        }
         runs.sort_by(|a, b| a.opened.identity.run_id.cmp(&b.opened.identity.run_id));
         Ok(runs)
     }
@@ -76,6 +112,12 @@ impl Store {
         let bytes = std::fs::read(&file).map_err(DiskError::io("read", &file))?;
         Ok(read_chain(&bytes).map_err(|fault| DiskError::Chain { path: file, fault })?.events)
     }
+}
+
+/// When a run was opened, ms of the Unix epoch: the first 48 bits of its id (UUID version 7, RFC 9562, 5.7).
+fn opened_ms(run_id: &str) -> Option<i64> {
+    let digits: String = run_id.chars().filter(|c| *c != '-').take(12).collect();
+    i64::from_str_radix(&digits, 16).ok().filter(|_| digits.len() == 12)
 }
 
 /// Names in a folder; none if it is not there.

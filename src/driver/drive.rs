@@ -12,7 +12,7 @@ use crate::record::event::{Captured, Event, Happening};
 use crate::record::light::LightCaptured;
 use crate::record::question::{Answer, Question};
 use crate::run::{At, Remark, Run};
-use crate::station::{Bench, CaptureRequest, Durability, Journal, LightRequest, ReadingRequest, Trouble, Want};
+use crate::station::{Bench, CaptureRequest, Durability, Journal, LightRequest, Moment, ReadingRequest, Trouble, Want};
 
 /// Failures of an instrument in a row after which the run is left open instead of going on.
 const FAILURES: u32 = 25;
@@ -57,11 +57,7 @@ impl Driver<'_> {
             let done = match &want {
                 Want::Finished => return Ok(()),
                 Want::MakeSafe => self.make_safe(),
-                Want::WaitUntil { elapsed_ms, .. } => self.wait_until(*elapsed_ms),
-                Want::Capture(request) => self.capture(request),
-                Want::Light(request) => self.light(request),
-                Want::Reading(request) => self.read(request),
-                Want::Answer(question) => self.ask(question),
+                want => self.unless_stopped(want),
             };
             match done {
                 Ok(()) => failures = 0,
@@ -74,6 +70,21 @@ impl Driver<'_> {
                 Err(Failed::Interrupted(why)) => return Err(why),
             }
             before = Some(want);
+        }
+    }
+
+    /// What is wanted, unless somebody wants the run to end.
+    fn unless_stopped(&mut self, want: &Want) -> Result<(), Failed> {
+        if let Err(trouble) = self.bench.interlock.stop_key() {
+            return self.trouble(trouble);
+        }
+        match want {
+            Want::WaitUntil { elapsed_ms, .. } => self.wait_until(*elapsed_ms),
+            Want::Capture(request) => self.capture(request),
+            Want::Light(request) => self.light(request),
+            Want::Reading(request) => self.read(request),
+            Want::Answer(question) => self.ask(question),
+            Want::MakeSafe | Want::Finished => Ok(()),
         }
     }
 
@@ -184,6 +195,13 @@ impl Driver<'_> {
 
     fn store(&mut self, what: Happening, durability: Durability) -> Result<(), Failed> {
         let now = self.bench.clock.now();
+        if let Some(by_s) = self.bench.clock.was_set() {
+            self.store_at(now, Happening::ClockSet { by_s }, Durability::Soon)?;
+        }
+        self.store_at(now, what, durability)
+    }
+
+    fn store_at(&mut self, now: Moment, what: Happening, durability: Durability) -> Result<(), Failed> {
         let event = self.journal.append(now, &what, durability)?;
         let remarks = self.run.take(&event.what, at_of(&event));
         self.watcher.happened(self.run, &event, &remarks);
@@ -217,6 +235,13 @@ fn at_of(event: &Event) -> At {
     At { wall, elapsed_ms: (event.elapsed_s * 1000.0).round() as u64 }
 }
 
+/// Folds stored events into a fresh run, as [`resume`] does, without going on.
+pub fn fold(run: &mut Run, events: &[Event]) {
+    for event in events {
+        run.take(&event.what, at_of(event));
+    }
+}
+
 /// Folds stored events into a fresh run, sets the clock after them and, unless all is done, stores that the run goes on.
 ///
 /// * `events`: of the run folder, from the first.
@@ -228,9 +253,7 @@ pub fn resume(
     journal: &mut dyn Journal,
     events: &[Event],
 ) -> Result<(), Interrupted> {
-    for event in events {
-        run.take(&event.what, at_of(event));
-    }
+    fold(run, events);
     bench.clock.resume(events)?;
     if events.len() > 1 && run.wants() != Want::Finished {
         let event = journal.append(bench.clock.now(), &Happening::Resumed, Durability::Now)?;

@@ -34,7 +34,7 @@ impl Engine {
         let Some(interferometer) = &plan.station.interferometer else { return Ok(None) };
         let certificate = interferometer.certificate.as_ref();
         let settings = Settings {
-            free_spectral_range: interferometer.fsr,
+            free_spectral_range: interferometer.fsr_in_air(),
             u_free_spectral_range: interferometer.fsr_u,
             nominal_spacing: Some(plan.recipe.nominal_spacing),
             mode_floor: plan.recipe.mode_floor,

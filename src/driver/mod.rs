@@ -8,7 +8,7 @@ mod finding;
 #[cfg(test)]
 mod tests;
 
-pub use drive::{Driver, Watcher, resume};
+pub use drive::{Driver, Watcher, fold, resume};
 pub use engine::Engine;
 pub use finding::finding_of;
 

@@ -15,8 +15,9 @@ pub use answers::FilePerson;
 pub use folder::{CaptureFolder, FolderError, folder_bench};
 pub use nobody::{NoInstrument, Nobody};
 pub use simulated::{
-    CaptureHead, SimulatedBench, SimulatedOptions, simulated_capture_name, simulated_csv, simulated_light_csv,
+    CaptureHead, SIMULATED_INITIALS, SimulatedBench, SimulatedOptions, simulated_capture_name, simulated_csv,
+    simulated_light_csv,
 };
 pub use terminal::TerminalPerson;
 pub use typed::{expected, parse_answer};
-pub use wall::WallClock;
+pub use wall::{TimeSource, WallClock, Zoned};

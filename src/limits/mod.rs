@@ -75,6 +75,8 @@ pub struct Limit {
     pub reject: Option<String>,
     /// What outside means.
     pub outside: Outside,
+    /// It does not bind a tube that a rack warmed, where the rack is why there is no value; else that gives hold.
+    pub rack_skips: bool,
 }
 
 /// A bound of a limit.

@@ -13,7 +13,7 @@ use crate::{
 };
 
 const TOP: &[&str] = &["revision", "title", "grades", "rule", "limit"];
-const LIMIT: &[&str] = &["measurand", "lower", "upper", "wanted", "rule", "severity", "reject", "outside"];
+const LIMIT: &[&str] = &["measurand", "lower", "upper", "wanted", "rule", "severity", "reject", "outside", "rack"];
 const SEVERITIES: &[(&str, Severity)] =
     &[("critical", Severity::Critical), ("major", Severity::Major), ("minor", Severity::Minor)];
 const OUTSIDE: &[(&str, Outside)] = &[("fail", Outside::Fail), ("hold", Outside::Hold)];
@@ -109,6 +109,7 @@ fn limit(
         None => None,
     };
     let outside = table.get("outside").map_or(Some(Outside::Fail), |item| item.word(OUTSIDE));
+    let rack_skips = table.get("rack").map_or(Some(false), |item| item.word(&[("hold", false), ("skip", true)]));
     let holds = table.get("outside").is_some_and(|item| item.written() != "\"fail\"");
     let severity = match table.get("severity") {
         Some(item) => item.word(SEVERITIES),
@@ -130,6 +131,7 @@ fn limit(
         severity: severity?,
         reject,
         outside: outside?,
+        rack_skips: rack_skips?,
     })
 }
 

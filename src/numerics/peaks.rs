@@ -62,21 +62,61 @@ pub struct Peak {
 pub fn find(signal: &[f64], options: &Options) -> Vec<Peak> {
     let high_enough = |&i: &usize| options.min_height.is_none_or(|least| signal[i] >= least);
     let indices: Vec<usize> = local_maxima(signal).into_iter().filter(high_enough).collect();
-    let indices = keep_distance(signal, indices, options.min_distance);
-    if indices.is_empty() {
-        return Vec::new();
-    }
-    let left = left_minima(signal);
-    let mirrored: Vec<f64> = signal.iter().rev().copied().collect();
-    let right = left_minima(&mirrored);
-    let last = signal.len() - 1;
-    let describe = |index: usize| {
-        let (left_base, right_base) = (left[index], last - right[last - index]);
+    // No base lies below the lowest sample: what does not rise far enough above it needs no bases.
+    let lowest = signal.iter().copied().fold(f64::INFINITY, f64::min);
+    let may_be_prominent = |&i: &usize| options.min_prominence.is_none_or(|least| signal[i] - lowest >= least);
+    let walls: Vec<usize> = indices.into_iter().filter(may_be_prominent).collect();
+    let bases = if signal.iter().any(|x| x.is_nan()) { all_bases(signal, &walls) } else { bases(signal, &walls) };
+    let kept = keep_distance(signal, walls.clone(), options.min_distance);
+    let mut all = walls.into_iter().zip(bases);
+    let with_bases = kept.into_iter().filter_map(|index| all.find(|(wall, _)| *wall == index));
+    let describe = |(index, (left_base, right_base)): (usize, (usize, usize))| {
         let prominence = signal[index] - signal[left_base].max(signal[right_base]);
         with_width(signal, index, prominence, left_base, right_base)
     };
     let prominent = |p: &Peak| options.min_prominence.is_none_or(|least| p.prominence >= least);
-    indices.into_iter().map(describe).filter(prominent).collect()
+    with_bases.map(describe).filter(prominent).collect()
+}
+
+/// Bases of peaks among which every higher maximum is listed: only these end a stretch, so one pass finds the lowest
+/// sample between neighbours, and the stack of [`left_minima`] runs over the peaks alone. No sample may be NaN.
+fn bases(signal: &[f64], walls: &[usize]) -> Vec<(usize, usize)> {
+    // Of equal samples the nearest to the peak counts: the last on its left, the first on its right.
+    let lowest = |from: usize, to: usize, last: bool| {
+        let lower = |best: usize, i: usize| {
+            if signal[i] < signal[best] || (last && signal[i] == signal[best]) { i } else { best }
+        };
+        (from + 1..=to).fold(from, lower)
+    };
+    let one_way = |order: &mut dyn Iterator<Item = (usize, usize)>| {
+        let mut stack: Vec<(f64, usize)> = Vec::new();
+        let found = order.map(|(wall, valley)| {
+            let mut lowest = valley;
+            while let Some(&(_, minimum)) = stack.last().filter(|(top, _)| *top <= signal[wall]) {
+                if signal[minimum] < signal[lowest] {
+                    lowest = minimum;
+                }
+                stack.pop();
+            }
+            stack.push((signal[wall], lowest));
+            lowest
+        });
+        found.collect::<Vec<usize>>()
+    };
+    let before = |k: usize| if k == 0 { 0 } else { walls[k - 1] };
+    let after = |k: usize| walls.get(k + 1).copied().unwrap_or(signal.len() - 1);
+    let left = one_way(&mut (0..walls.len()).map(|k| (walls[k], lowest(before(k), walls[k], true))));
+    let right = one_way(&mut (0..walls.len()).rev().map(|k| (walls[k], lowest(walls[k], after(k), false))));
+    left.into_iter().zip(right.into_iter().rev()).collect()
+}
+
+/// Bases of any number of peaks, in one pass over the signal each way.
+fn all_bases(signal: &[f64], indices: &[usize]) -> Vec<(usize, usize)> {
+    let left = left_minima(signal);
+    let mirrored: Vec<f64> = signal.iter().rev().copied().collect();
+    let right = left_minima(&mirrored);
+    let last = signal.len() - 1;
+    indices.iter().map(|&index| (left[index], last - right[last - index])).collect()
 }
 
 fn local_maxima(signal: &[f64]) -> Vec<usize> {

@@ -65,6 +65,17 @@ impl World {
         }
     }
 
+    /// The same tube on the same bench, struck once more: what is true of it stays, cold comb and noise are drawn anew.
+    ///
+    /// * `earlier`: how often it was struck before; 0 changes nothing.
+    pub fn again(self, earlier: u64) -> Self {
+        match earlier {
+            0 => self,
+            // An odd factor keeps the seeds of all runs apart.
+            _ => Self::new(&self.tube, &self.bench, self.seed ^ earlier.wrapping_mul(0x9e37_79b9_7f4a_7c15)),
+        }
+    }
+
     /// The tube.
     pub fn tube(&self) -> &TubeTruth {
         &self.tube

@@ -7,6 +7,9 @@ use super::table;
 table! {
     // Instruments and people.
     NO_PROBE = "no high-voltage probe on this bench", "kein Hochspannungstastkopf an diesem Messplatz";
+    PRESS_IN_THE_DARK = "there is no light to watch while the mount is pressed",
+        "beim Drücken der Fassung ist kein Licht zu beobachten";
+    SEEN_IS_NONE_OF = "what is seen, `{0}`, is none of {1}", "was zu sehen ist, `{0}`, ist keines von {1}";
     NOT_HERE = "not on this bench", "nicht an diesem Messplatz";
     CAPTURES_ONLY = "captures only: nobody at a bench", "nur Aufnahmen: niemand am Messplatz";
     NO_REASON = "no reason given", "kein Grund angegeben";
@@ -84,4 +87,26 @@ table! {
         "die Anpassung der Linien kam nicht zur Ruhe; neu justieren und wiederholen";
     WEAK_SCALE = "the peaks seen do not fix the frequency scale; raise the ramp until every mode shows at least twice",
         "die Linien legen die Frequenzskala nicht fest; Rampe erhöhen, bis jede Mode mindestens zweimal erscheint";
+    FAR_TOO_SLOW = "the detector is far too slow for this ramp: its time constant is {0} times what the ramp takes for one \
+        line; slow the ramp tenfold, or take the low-pass filter out",
+        "der Empfänger ist viel zu langsam für diese Rampe: seine Zeitkonstante ist das {0}-Fache der Zeit für eine Linie; Rampe \
+        zehnmal langsamer fahren oder das Tiefpassfilter entfernen";
+    FEW_LEVELS = "the highest peak is only {0} steps of the digitizer high; raise the gain until it fills half of the range",
+        "die höchste Linie ist nur {0} Stufen des Digitalisierers hoch; Verstärkung erhöhen, bis sie den halben Bereich füllt";
+    UNSTEADY = "one mode changes in height by {0} % against the others from order to order: the tube hopped or swapped in \
+        mid-sweep, or two captures were spliced; take another capture",
+        "eine Mode ändert ihre Höhe von Ordnung zu Ordnung um {0} % gegen die anderen: Modensprung oder Tausch während der \
+        Rampe, oder zwei Aufnahmen wurden zusammengefügt; erneut aufnehmen";
+    FALSE_COMB_PART = "the spacing reads {0} MHz, a whole part of the nominal {1} MHz: light between the modes looks like a comb \
+        of its own; realign, set the gain so that no peak is lost, and repeat",
+        "der Abstand zeigt {0} MHz, einen ganzen Teil des Nennwerts {1} MHz: Licht zwischen den Moden sieht aus wie ein eigener \
+        Kamm; neu justieren, Verstärkung so wählen, dass keine Linie fehlt, und wiederholen";
+    FALSE_COMB_MULTIPLE = "the spacing reads {0} MHz, a multiple of the nominal {1} MHz: modes between those seen are missing; \
+        realign, set the gain so that no peak is lost, and repeat",
+        "der Abstand zeigt {0} MHz, ein Vielfaches des Nennwerts {1} MHz: Moden dazwischen fehlen; neu justieren, Verstärkung so \
+        wählen, dass keine Linie fehlt, und wiederholen";
+    NO_TURN = "no usable ramp channel, and the modes come out as if the ramp turned within the record; record the ramp, or at \
+        least two and a half of its periods",
+        "kein brauchbarer Rampenkanal, und die Moden sehen aus, als kehrte die Rampe in der Aufnahme um; die Rampe aufzeichnen \
+        oder mindestens zweieinhalb ihrer Perioden";
 }

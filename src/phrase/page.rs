@@ -43,6 +43,7 @@ table! {
     REVISIONS = "revision {0}, revision {1}", "Revision {0}, Revision {1}";
     RULE = "rule", "Regel";
     TECHNICIAN = "technician", "Prüfer";
+    REPEATS_RUN = "repeats run", "wiederholt";
     DUE = "due\u{a0}{0}", "gültig\u{a0}bis\u{a0}{0}";
     OVERDUE_SINCE = "overdue\u{a0}since\u{a0}{0}", "abgelaufen\u{a0}am\u{a0}{0}";
     OVERDUE = "overdue", "abgelaufen";
@@ -99,6 +100,23 @@ table! {
     HOPS = "{0} hops (cross)", "{0} Modensprünge (Kreuz)";
     ONE_SWAP = "{0} swap (diamond)", "{0} Achsenwechsel (Raute)";
     SWAPS = "{0} swaps (diamond)", "{0} Achsenwechsel (Raute)";
+
+    // Chart of a bench.
+    BENCH_TITLE = "Reference tubes of {0}", "Referenzröhren von {0}";
+    BENCH_AS_OF = "As of {0}.", "Stand {0}.";
+    BENCH_HOLDS = "Gives no verdicts: {0}", "Keine Beurteilung: {0}";
+    BENCH_STORED = "{0} of {1} checks came stored with the scenario.",
+        "{0} von {1} Prüfungen waren mit dem Szenario gespeichert.";
+    BENCH_OF_TUBE = "{0}, {1}", "{0}, {1}";
+    BENCH_BAND = "{0} ± {1} {2}: band; last check {3} {2}; a cross is out of bounds",
+        "{0} ± {1} {2}: Band; letzte Prüfung {3} {2}; ein Kreuz liegt außerhalb der Grenzen";
+    BENCH_AXIS = "days since {0}; off by, {1}", "Tage seit {0}; Abweichung, {1}";
+    BENCH_NO_CHECK = "{0}, {1}: no check yet", "{0}, {1}: noch keine Prüfung";
+    BENCH_SUMS = "cumulative sums, standard deviations: up solid, down dashed; alarm above {0}",
+        "kumulative Summen, Standardabweichungen: aufwärts durchgezogen, abwärts gestrichelt; Alarm über {0}";
+    BENCH_NO_SUMS = "cumulative sums: none while the standard deviation of a check is unknown",
+        "kumulative Summen: keine, solange die Standardabweichung einer Prüfung unbekannt ist";
+    BENCH_DRIFT = "drift: above the alarm", "Drift: über dem Alarm";
 
     // Foot.
     EXPLAINED = "U: expanded uncertainty for 95.45 %. \"conforms\": probability of being inside, no prior \

@@ -23,6 +23,11 @@ table! {
         "Die Aufnahmen tragen keine Zeit: sie gelten in ihrer Reihenfolge.";
     DARK_TUBE = "Dark tube: {0}.", "Dunkle Röhre: {0}.";
     STOPPED = "Stopped: {0}", "Abgebrochen: {0}";
+    REPEATS = "Repeats run {0} because: {1}.", "Wiederholt Lauf {0}, Grund: {1}.";
+    CLOCK_BACK = "The clock on the wall was set back by {0} s: times on this sheet go on from before.",
+        "Die Wanduhr wurde um {0} s zurückgestellt: die Zeiten auf diesem Blatt laufen wie vorher weiter.";
+    CLOCK_AHEAD = "The clock on the wall ran ahead by {0} s (set forward, or the machine slept): not counted here.",
+        "Die Wanduhr sprang um {0} s vor (verstellt, oder der Rechner ruhte): hier nicht mitgezählt.";
 
     // Cautions.
     CAUTION = "{0} Laser radiation; start pulses of up to 10 kV; charge stays in tube and ballast after switch-off; \
@@ -50,6 +55,16 @@ table! {
     // Strike.
     NO_LIGHT_AFTER = "no light after {0} tries", "kein Licht nach {0} Versuchen";
     NOT_LIT = "the tube did not light", "die Röhre zündete nicht";
+
+    // From the rack.
+    FROM_RACK = "taken from the rack, burning since {0}", "aus dem Einbrenngestell genommen, brennt seit {0}";
+    FROM_RACK_REMARK = "Taken from the rack, burning since {0}: its strike and its warm-up were not seen here.",
+        "Aus dem Einbrenngestell genommen, brennt seit {0}: Zündung und Einlaufen wurden hier nicht gesehen.";
+    RACK_NO_CYCLE = "taken from the rack at rest: no whole walk cycle was seen; take it sooner, or strike it cold here",
+        "in Ruhe aus dem Einbrenngestell genommen: keine ganze Wanderungsperiode gesehen; früher entnehmen oder hier kalt zünden";
+    RACK_NO_CYCLE_HOLD = "The tube came from the rack at rest and no whole walk cycle was seen: take it sooner, or strike it cold here.",
+        "Die Röhre kam in Ruhe aus dem Einbrenngestell, keine ganze Wanderungsperiode wurde gesehen: früher entnehmen oder hier kalt zünden.";
+    RACK_NOT_JUDGED = "not judged: from the rack", "nicht bewertet: aus dem Einbrenngestell";
 
     // Dwell.
     NO_LIGHT_FOR = "no light in the captures for 30 s", "seit 30 s kein Licht in den Aufnahmen";
@@ -83,6 +98,7 @@ table! {
     FROM_MANY = "from {0} captures {1}", "aus {0} Aufnahmen {1}";
     AT_REST = "at rest", "in Ruhe";
     OF_DWELL_ONE_MODE = "of the dwell: one mode alone at rest", "des Einlaufens: in Ruhe nur eine Mode";
+    OF_DWELL_SURER = "of the dwell: those at rest say less", "des Einlaufens: die in Ruhe sagen weniger";
     OF_DWELL_NONE = "of the dwell: none at rest", "des Einlaufens: keine in Ruhe";
     OF_STEP = "of {0}", "von {0}";
     LEFT_OUT = "{0}, {1} that stood apart left out", "{0}, {1} abseits liegende weggelassen";

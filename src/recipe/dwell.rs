@@ -24,11 +24,25 @@ pub struct Dwell {
     pub cycles: f64,
     /// Samples of a capture.
     pub samples: usize,
+    /// A tube from the rack is looked at for at least this long before it counts as at rest, s.
+    pub rest_for_s: f64,
+    /// Whole walk cycles wanted of a tube from the rack; its dwell ends without them once they cannot come any more.
+    pub rack_cycles: f64,
 }
 
 impl Dwell {
-    pub(super) const KEYS: &[&str] =
-        &["early_every", "early_for", "every", "longest", "residual_walk", "horizon", "cycles", "samples"];
+    pub(super) const KEYS: &[&str] = &[
+        "early_every",
+        "early_for",
+        "every",
+        "longest",
+        "residual_walk",
+        "horizon",
+        "cycles",
+        "samples",
+        "rest_for",
+        "rack_cycles",
+    ];
     pub(super) const FILLS: &[&str] = &["warmup_tau", "warmup_ready", "walk_cycles", "walk_growth", "walk_rate"];
 
     pub(super) fn read(context: &Context<'_, '_>) -> Option<Self> {
@@ -46,6 +60,10 @@ impl Dwell {
         let horizon_s = context.seconds_or("horizon", 600.0);
         let cycles = count("cycles", 2.0);
         let samples = context.or("samples", 2_000, |item| item.whole(200, 10_000_000));
+        let rest_for_s = context.seconds_or("rest_for", 120.0);
+        let rack_cycles = context.or("rack_cycles", 1.0, |item| {
+            item.quantity_within(Dimension::Ratio, (0.0, 1e4), "a number from 0 to 10000")
+        });
         if let (Some(early), Some(longest), Some(item)) = (early_for_s, longest_s, context.table.get("early_for"))
             && early > longest
         {
@@ -60,6 +78,8 @@ impl Dwell {
             horizon_s: horizon_s?,
             cycles: cycles?,
             samples: usize::try_from(samples?).ok()?,
+            rest_for_s: rest_for_s?,
+            rack_cycles: rack_cycles?,
         })
     }
 }

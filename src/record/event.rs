@@ -85,6 +85,11 @@ pub enum Happening {
     Waited,
     /// High voltage is off.
     MadeSafe,
+    /// The clock on the wall was set, or the machine slept; wall times of the run go on from before.
+    ClockSet {
+        /// By how much, s; below zero: back.
+        by_s: f64,
+    },
     /// Opened again after an interruption.
     Resumed,
     /// Stopped by a person, with the reason.

@@ -4,7 +4,9 @@
 
 pub mod event;
 pub mod finding;
+pub mod life;
 pub mod light;
+pub mod link;
 pub mod question;
 pub mod reference;
 pub mod sheet;

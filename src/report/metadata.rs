@@ -93,7 +93,7 @@ fn column((name, datatype, meaning): &(&str, &str, &str)) -> Json {
 /// What of the run fits no column.
 fn run_notes(sheet: &Sheet) -> Json {
     let who = &sheet.identity;
-    json!({
+    let mut notes = json!({
         "run_id": who.run_id,
         "serial": who.serial,
         "title": sheet.title.english(),
@@ -115,7 +115,11 @@ fn run_notes(sheet: &Sheet) -> Json {
         "measured_by": sheet.measured_by.as_ref().map(|by| json!({
             "initials": by.initials, "at": by.at.to_rfc3339(), "meaning": by.meaning.english() })),
         "instruments": sheet.instruments.iter().map(instrument).collect::<Vec<_>>(),
-    })
+    });
+    if let Some(repeat) = &who.repeats {
+        notes["repeats"] = json!({ "run_id": repeat.run_id, "reason": repeat.reason });
+    }
+    notes
 }
 
 fn instrument(instrument: &Instrument) -> Json {

@@ -2,22 +2,26 @@
 //! Must not open a file, read a clock or decide anything: every verdict comes in with the sheet.
 //! Main functions: [`record_csv`], [`budget_csv`], [`csv_metadata`], [`record_pdf`], [`value_text`].
 
+mod bench;
 mod charts;
 mod csv;
 mod escape;
 mod metadata;
 mod page;
 mod pdf;
+mod read;
 mod reason;
 pub mod scene;
 mod text;
 mod typeface;
 
+pub use self::bench::{BenchChart, BenchPoint, BenchTitle, bench_csv, bench_pdf};
 pub use self::csv::{BUDGET_COLUMNS, RECORD_COLUMNS, budget_csv, record_csv};
 pub use self::escape::{neutralise, restore};
 pub use self::metadata::csv_metadata;
 pub use self::page::{Page, Part};
 pub use self::pdf::PdfError;
+pub use self::read::{ReadRecord, ReadValue, hashes_in, read_record};
 pub use self::text::{ValueText, bound_text, probability_text, row_line, value_text};
 
 use self::typeface::Typeface;

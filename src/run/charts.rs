@@ -9,7 +9,7 @@ use super::{
     steps::Room,
 };
 use crate::{
-    behaviour::{GainPoint, gain_points},
+    behaviour::{GainPoint, WarmupState, gain_points},
     record::{
         event::Captured,
         finding::ModeFinding,
@@ -68,6 +68,9 @@ pub(crate) fn walk_chart(book: &Notebook) -> Option<WalkChart> {
     if state.points.is_empty() {
         return None;
     }
+    if let Some(rack) = &book.rack {
+        return Some(rack_chart(book, &state, rack.age_s));
+    }
     let pair = |measured: &crate::uncertainty::Measured| (measured.value, measured.expanded());
     let finite = |(a, b): &(f64, f64)| a.is_finite() && b.is_finite();
     let settled = match dwelt.end {
@@ -85,6 +88,21 @@ pub(crate) fn walk_chart(book: &Notebook) -> Option<WalkChart> {
         hops: book.hops.iter().map(|hop| (hop.at, hop.size)).filter(finite).collect(),
         swaps: book.swaps.iter().map(|swap| swap.at).filter(|at| at.is_finite()).collect(),
     })
+}
+
+/// The walk of a tube from the rack, on the time since it was lit there; nothing is predicted from a warm-up not seen.
+fn rack_chart(book: &Notebook, state: &WarmupState, age_s: f64) -> WalkChart {
+    let ended = book.dwells.last().filter(|dwelt| dwelt.end.is_some_and(|end| end != DwellEnd::Dark));
+    let sound = |(at, walked): &(f64, f64)| at.is_finite() && walked.is_finite();
+    WalkChart {
+        points: thinned(&state.points).into_iter().filter(sound).map(|(at, walked)| (at + age_s, walked)).collect(),
+        prediction: Vec::new(),
+        tau: None,
+        ready: None,
+        dwell_end: ended.map(|dwelt| dwelt.seconds + age_s),
+        hops: book.hops.iter().map(|hop| (hop.at + age_s, hop.size)).collect(),
+        swaps: book.swaps.iter().map(|swap| swap.at + age_s).collect(),
+    }
 }
 
 /// At most [`MOST`] of them, evenly taken, the last among them.

@@ -7,6 +7,7 @@ use super::{
     answer::check_answer,
     steps::{Given, Room, Step, Wish},
 };
+use crate::phrase::{Saying, figure, reasons};
 use crate::record::{
     event::{Captured, Happening},
     question::{Answer, Question},
@@ -52,6 +53,10 @@ impl Run {
             Happening::CaptureLost { step, number, reason, for_good } => self.lost(step, *number, reason, *for_good),
             Happening::Reading { step, what, value, reason } => self.read(step, what, *value, reason.as_deref()),
             Happening::Waited => Ok(()),
+            Happening::ClockSet { by_s } => {
+                self.book.remark(clock_set(*by_s));
+                Ok(())
+            }
             Happening::MadeSafe => {
                 self.made_safe();
                 Ok(())
@@ -216,4 +221,10 @@ impl Run {
             self.ending = Some(Ending { at: at.wall, stopped: None, unsafe_yet: true });
         }
     }
+}
+
+/// What the sheet says of a clock that was set in mid-run.
+fn clock_set(by_s: f64) -> Saying {
+    let phrase = if by_s < 0.0 { &reasons::CLOCK_BACK } else { &reasons::CLOCK_AHEAD };
+    phrase.with([figure(by_s.abs().round())])
 }

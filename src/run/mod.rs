@@ -12,6 +12,7 @@ mod malus;
 mod notebook;
 mod plan;
 mod pool;
+mod rack;
 mod reference;
 mod sheet;
 mod spacing;
@@ -26,6 +27,7 @@ use chrono::{DateTime, FixedOffset};
 
 use self::{
     notebook::Notebook,
+    rack::Rack,
     steps::{LightWish, Step, Wish},
 };
 use crate::{
@@ -34,6 +36,7 @@ use crate::{
         question::Question,
         sheet::Sheet,
     },
+    station::file::Interferometer,
     station::{CaptureRequest, LightRequest, ReadingRequest, Want},
 };
 
@@ -112,11 +115,10 @@ impl Run {
     pub fn open(plan: Plan, identity: Identity) -> Self {
         let steps = plan.recipe.steps.iter().map(|step| steps::step_of(&step.kind)).collect();
         let opened_at = DateTime::parse_from_rfc3339(&identity.started_at).ok();
+        let air = plan.station.interferometer.as_ref().and_then(Interferometer::air_line);
         let mut run = Self {
             plan,
-            identity,
-            opened_at,
-            book: Notebook::default(),
+            book: Notebook::begin(Rack::of(&identity, opened_at), air),
             steps,
             current: 0,
             next_capture: 1,
@@ -124,7 +126,10 @@ impl Run {
             events: 0,
             pending: None,
             interrupted: false,
-            high_voltage: false,
+            // Taken over from the rack, it burns from the first moment on.
+            high_voltage: identity.lit_since.is_some(),
+            identity,
+            opened_at,
             answered_by: String::new(),
             ending: None,
         };

@@ -2,6 +2,7 @@
 //! Must not decide what comes next.
 //! Main types: [`Notebook`], [`Seen`], [`Dwelt`].
 
+use super::rack::Rack;
 use crate::{
     behaviour::{Glimpse, GlimpseMode, Hop, Swap, Warmup},
     phrase::Saying,
@@ -11,7 +12,7 @@ use crate::{
         sheet::{GainChart, SweepChart},
     },
     sweep::{Place, SharedAxis},
-    uncertainty::Measured,
+    uncertainty::{BudgetLine, Measured},
 };
 
 /// One capture with light that could be measured.
@@ -79,6 +80,10 @@ pub(crate) struct Dwelt {
 /// What was seen so far.
 #[derive(Default)]
 pub(crate) struct Notebook {
+    /// The tube burnt already when the run was opened; times then count from the opening.
+    pub rack: Option<Rack>,
+    /// What the air of the bench adds to a mode spacing, relative.
+    pub air: Option<BudgetLine>,
     /// Monotonic ms of first light.
     pub first_light_ms: Option<u64>,
     /// The tube gives no light, and how that was seen.
@@ -108,6 +113,11 @@ pub(crate) struct Notebook {
 }
 
 impl Notebook {
+    /// Nothing seen yet, of a tube from the rack or one that is struck here.
+    pub fn begin(rack: Option<Rack>, air: Option<BudgetLine>) -> Self {
+        Self { rack, air, ..Self::default() }
+    }
+
     /// Seconds since first light, negative before it; since the opening while there was no light yet.
     pub fn since_first_light(&self, seconds_since_opened: f64) -> f64 {
         seconds_since_opened - self.first_light_ms.unwrap_or(0) as f64 / 1e3

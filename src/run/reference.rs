@@ -27,6 +27,7 @@ pub(super) fn limits(reference: &Reference) -> Limits {
         severity: Severity::Major,
         reject: Some(OUT.to_owned()),
         outside: Outside::Fail,
+        rack_skips: false,
     };
     Limits {
         revision: 0,

@@ -6,7 +6,14 @@ use std::borrow::Cow;
 
 use chrono::NaiveDate;
 
-use super::{Run, caution::caution, charts, filled::Filled, reference};
+use super::{
+    Run,
+    caution::caution,
+    charts,
+    filled::Filled,
+    rack::{self, Rack},
+    reference,
+};
 use crate::{
     limits::{Judging, Limits, judge},
     measurand,
@@ -31,7 +38,7 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
     holds.extend(run.book.holds.iter().cloned());
     let complete = finished.is_some_and(|ending| ending.stopped.is_none());
     let dark = run.book.dark.is_some();
-    let limits = limits(run);
+    let limits = limits(run, &mut rows);
     let judged = judge(Judging { limits: &limits, rows: &mut rows, bench_holds: &holds, finished: complete, dark });
     let judged = if product { judged } else { reference::verdict(judged) };
     let verdict = match run.ending.as_ref().and_then(|ending| ending.stopped.as_ref()) {
@@ -69,10 +76,11 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
 }
 
 /// What the rows are judged by: the type's limits, or the values of the reference tube.
-fn limits(run: &Run) -> Cow<'_, Limits> {
+fn limits<'a>(run: &'a Run, rows: &mut [Row]) -> Cow<'a, Limits> {
     let reference = run.plan.station.reference(&run.identity.serial).filter(|_| !run.identity.run_kind.is_product());
     match reference {
         Some(reference) => Cow::Owned(reference::limits(reference)),
+        None if run.book.rack.is_some() => Cow::Owned(rack::limits(run, rows)),
         None => Cow::Borrowed(&run.plan.limits),
     }
 }
@@ -121,6 +129,9 @@ fn rows(run: &Run) -> Vec<Row> {
             row.note = Saying::none();
         }
     }
+    if run.book.rack.is_some() {
+        rack::empty_unseen(&mut rows);
+    }
     // Stable: equal ranks stay in the order of the recipe.
     rows.sort_by_key(|row| measurand::rank(&row.measurand));
     rows
@@ -152,12 +163,16 @@ fn remarks(run: &Run) -> Vec<Saying> {
     let simulated = run.identity.simulated.then(|| Saying::from(&reasons::SIMULATED));
     let captures = run.identity.from_captures.then(|| (&reasons::FROM_CAPTURES).into());
     let untimed = run.identity.times_assumed.then(|| (&reasons::UNTIMED).into());
+    let repeats = run.identity.repeats.as_ref();
+    let repeats = repeats.map(|it| reasons::REPEATS.with([name(it.run_id.clone()), said(Saying::outside(&it.reason))]));
     let dark = run.book.dark.as_ref().map(|how| reasons::DARK_TUBE.with([said(how.clone())]));
     let stopped = run.ending.as_ref().and_then(|ending| ending.stopped.as_ref());
     let stopped = stopped.map(|why| reasons::STOPPED.with([said(Saying::outside(why))]));
     let reference = (!run.identity.run_kind.is_product())
         .then(|| reasons::REFERENCE_TUBE.with([name(run.plan.station.station.clone())]));
-    let all = simulated.into_iter().chain(reference).chain(captures).chain(untimed).chain(dark).chain(stopped);
+    let rack = run.book.rack.as_ref().map(Rack::sentence);
+    let origin = simulated.into_iter().chain(reference).chain(rack).chain(captures).chain(untimed);
+    let all = origin.chain(repeats).chain(dark).chain(stopped);
     all.chain(run.book.remarks.iter().cloned()).collect()
 }
 

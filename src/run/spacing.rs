@@ -24,7 +24,11 @@ pub(crate) fn pooled<'a>(captures: impl IntoIterator<Item = &'a Seen>) -> Option
 
 /// Both rows, the spacing noted in the book; none without a spacing.
 pub(crate) fn rows(pooled: Option<Pooled>, from: Saying, book: &mut Notebook) -> Option<[Filled; 2]> {
-    let pooled = pooled?;
+    let mut pooled = pooled?;
+    if let Some(mut air) = book.air.clone() {
+        air.sensitivity = pooled.measured.value;
+        pooled.measured.budget.push(air);
+    }
     let spacing = &pooled.measured;
     let phrase = if pooled.used == 1 { &reasons::FROM_ONE } else { &reasons::FROM_MANY };
     let mut note = phrase.with([figure(pooled.used), said(from)]);

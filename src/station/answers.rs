@@ -20,6 +20,10 @@ pub struct Answers {
     pub technician: Option<String>,
     /// Tube type.
     pub tube_type: Option<String>,
+    /// Why a finished run is repeated, where the file says so.
+    pub retest: Option<String>,
+    /// Since when the tube burns already in a rack, as `--lit-since` has it.
+    pub lit_since: Option<String>,
     /// Bench time that an answer takes, s.
     pub time_to_answer_s: f64,
     name: String,
@@ -73,7 +77,7 @@ pub enum AnswerTrouble {
     },
 }
 
-const TOP: &[&str] = &["technician", "tube_type", "time_to_answer", "steps"];
+const TOP: &[&str] = &["technician", "tube_type", "retest", "time_to_answer", "lit_since", "steps"];
 
 impl Answers {
     /// Reads an answer file.
@@ -86,6 +90,8 @@ impl Answers {
             let word = |key| root.get(key).map_or(Some(None), |item| item.text().map(|text| Some(text.to_owned())));
             let technician = word("technician");
             let tube_type = word("tube_type");
+            let retest = word("retest");
+            let lit_since = word("lit_since");
             let allowed = "a time from 0 s to 1 h";
             let time = root.get("time_to_answer");
             let time = time.map_or(Some(4.0), |item| item.quantity_within(Dimension::Time, (0.0, 3600.0), allowed));
@@ -93,6 +99,8 @@ impl Answers {
             Some(Self {
                 technician: technician?,
                 tube_type: tube_type?,
+                retest: retest?,
+                lit_since: lit_since?,
                 time_to_answer_s: time?,
                 name: name.to_owned(),
                 steps: steps?,

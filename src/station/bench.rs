@@ -44,6 +44,11 @@ pub trait Clock {
     fn wait_until(&mut self, elapsed_ms: u64) -> Result<(), Trouble>;
     /// Takes up a run again whose last event is given: the monotonic clock goes on from there.
     fn resume(&mut self, events: &[Event]) -> Result<(), Trouble>;
+
+    /// By how many seconds the clock on the wall was set since this was asked last, below zero for back; none if it was not.
+    fn was_set(&mut self) -> Option<f64> {
+        None
+    }
 }
 
 /// The bytes of one capture as they came: one file or several, with their names.
@@ -84,6 +89,13 @@ pub trait Person {
 pub trait Interlock {
     /// High voltage off; returns when it is.
     fn make_safe(&mut self) -> Result<(), Trouble>;
+
+    /// Looked at before each thing that is done: whether somebody pressed the key that stops the run.
+    ///
+    /// Errors: [`Trouble::Stopped`] with the reason.
+    fn stop_key(&mut self) -> Result<(), Trouble> {
+        Ok(())
+    }
 }
 
 /// A bench: everything a run needs of the world.

@@ -21,6 +21,12 @@ const LEAST_COMB_SHARE: f64 = 0.64;
 const MOST_LIGHTS: usize = 16;
 /// A fitted line counts if its height exceeds this many of its own standard uncertainties (`measurement.md`: 5 σ).
 const LEAST_HEIGHT_SIGMA: f64 = 5.0;
+/// Reach of a class on the smooth map and on a fitted axis: share of the apparent width, and its bounds, orders.
+const FIRST: [(f64, f64, f64); 3] = [(0.6, 0.015, 0.06), (1.2, 0.03, 0.06), (2.4, 0.05, 0.06)];
+const LATER: (f64, f64, f64) = (0.4, 0.006, 0.04);
+/// Share of all height that should repeat.
+const ENOUGH: f64 = 0.8;
+
 /// Rounds: the smooth order map, then free offsets, then twice the comb.
 const ROUNDS: usize = 4;
 
@@ -84,7 +90,7 @@ pub(super) fn assign(
     let mut best: Option<Round> = None;
     let mut best_share = 0.0;
     for number in 0..ROUNDS {
-        let (kept, n_stray) = ramp.classes(&map, number == 0);
+        let (kept, n_stray) = if number == 0 { ramp.first_classes(&map) } else { ramp.classes(&map, LATER) };
         if number == 0 {
             if let Some(choice) = ramp.free_axis(&kept, &map) {
                 map = Map::Fitted(choice.fit);
@@ -149,9 +155,28 @@ impl Ramp<'_> {
         (x - self.half) / self.half
     }
 
+    /// Classes on the smooth map: where too little repeats, the map may be further off than lines are wide.
+    fn first_classes(&self, map: &Map) -> (Vec<Class>, usize) {
+        let repeated = |classes: &[Class]| {
+            let members = |class: &&Class| class.members.len() >= 2;
+            classes.iter().filter(members).map(|class| class.height * class.members.len() as f64).sum::<f64>()
+        };
+        let all: f64 = self.good.iter().map(|i| self.fit.heights[*i]).sum();
+        let mut best = self.classes(map, FIRST[0]);
+        for reach in &FIRST[1..] {
+            if repeated(&best.0) > ENOUGH * all {
+                break;
+            }
+            let wider = self.classes(map, *reach);
+            if repeated(&wider.0) > repeated(&best.0) {
+                best = wider;
+            }
+        }
+        best
+    }
+
     /// Classes that repeat, and how many do not.
-    fn classes(&self, map: &Map, first: bool) -> (Vec<Class>, usize) {
-        let (share, least, most) = if first { (0.6, 0.015, 0.06) } else { (0.4, 0.006, 0.04) };
+    fn classes(&self, map: &Map, (share, least, most): (f64, f64, f64)) -> (Vec<Class>, usize) {
         let tolerance = (share * self.apparent)
             .clamp(least, most)
             .hypot((4.0 * self.u_phase(map)).min(0.02))

@@ -171,11 +171,11 @@ fn solve_with(
 }
 
 /// Highest degree ever tried: with a handful of orders more would follow noise.
-const MOST_TERMS: usize = 6;
+pub(super) const MOST_TERMS: usize = 6;
 /// Chi-square of one degree of freedom at 0.1 %.
-const SIGNIFICANT: f64 = 10.83;
+pub(super) const SIGNIFICANT: f64 = 10.83;
 /// A term is admissible if it inflates the spacing's uncertainty by less than this over the best one with fewer terms.
-const MOST_INFLATION: f64 = 6.0;
+pub(super) const MOST_INFLATION: f64 = 6.0;
 
 /// From this many terms on a ramp counts as outside any polynomial family.
 const SERIES_TERMS: usize = 5;
@@ -191,7 +191,7 @@ fn last_changes(fits: &[AxisFit]) -> f64 {
 }
 
 /// A ramp's next coefficient over its last: smooth piezo ramps fall off by three or more a degree (found).
-const FALL_OFF: f64 = 0.35;
+pub(super) const FALL_OFF: f64 = 0.35;
 
 /// Change of the spacing that a term too weakly seen to be fitted may still cause, Hz.
 ///
@@ -226,6 +226,10 @@ pub(super) struct Choice {
     pub birge: f64,
     /// Standard uncertainty for what one more term would change, beyond what scatter explains, Hz.
     pub truncation: f64,
+    /// The part of it that stands for a series that goes on, Hz.
+    pub series: f64,
+    /// All degrees tried, from 1.
+    pub tried: Vec<AxisFit>,
 }
 
 /// Factor on stated uncertainties for residuals that contradict them; of a fit without any left over, what others say.
@@ -280,7 +284,7 @@ pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, off
     let goes_on = best + 1 >= SERIES_TERMS || (next.is_none() && best + 1 >= 3);
     let series = if goes_on { SERIES_SHARE * last_changes(&fits[..=best]) } else { 0.0 };
     let truncation = expected_term(placed, covariance, fsr, offsets, &fit, birge).unwrap_or(beyond).hypot(series);
-    Some(Choice { fit, terms: best + 1, birge, truncation })
+    Some(Choice { fit, terms: best + 1, birge, truncation, series, tried: fits })
 }
 
 #[cfg(test)]

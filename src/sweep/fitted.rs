@@ -14,6 +14,9 @@ use crate::numerics::smoothing;
 /// The pole must improve the sum of squares by this chi-square (1 parameter at far below 0.1 %) to be believed.
 const POLE_CHI_SQUARE: f64 = 30.0;
 
+/// A pole below this share of the width is well away from where a second minimum was ever seen.
+const SHORT_POLE: f64 = 0.3;
+
 /// Lines nearer than this share of their width have slid onto each other.
 const COLLAPSED: f64 = 0.5;
 
@@ -112,6 +115,10 @@ fn with_pole(samples: &Samples, start: &Start, plain: &LineFit) -> Option<LineFi
             && best.as_ref().is_none_or(|b| fit.sum_of_squares < b.sum_of_squares)
         {
             best = Some(fit);
+        }
+        // A short pole found from a short one is the only one; a long one may have a better far away.
+        if best.as_ref().and_then(|fit| fit.pole.map(|pole| pole < SHORT_POLE * fit.width)) == Some(true) {
+            break;
         }
     }
     let best = best?;

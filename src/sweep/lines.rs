@@ -198,7 +198,7 @@ fn normal_equations(columns: &[Column], residuals: &[f64]) -> (DMatrix<f64>, DVe
 }
 
 /// Inverse of a symmetric matrix, columns scaled to one first so that volts and samples mix safely.
-fn scaled_inverse(normal: &DMatrix<f64>) -> Option<DMatrix<f64>> {
+pub(super) fn scaled_inverse(normal: &DMatrix<f64>) -> Option<DMatrix<f64>> {
     let n = normal.nrows();
     let scale: Vec<f64> = (0..n).map(|i| normal[(i, i)].max(1e-300).sqrt()).collect();
     let scaled = DMatrix::from_fn(n, n, |i, j| normal[(i, j)] / (scale[i] * scale[j]));
@@ -207,13 +207,13 @@ fn scaled_inverse(normal: &DMatrix<f64>) -> Option<DMatrix<f64>> {
 }
 
 /// Residuals of the finest bins alone: those on the lines, evenly spaced there.
-fn on_lines(samples: &Samples, residuals: &[f64]) -> Vec<f64> {
+pub(super) fn on_lines(samples: &Samples, residuals: &[f64]) -> Vec<f64> {
     let fine = |i: &usize| samples.bounds[i + 1] - samples.bounds[*i] == samples.finest;
     (0..residuals.len()).filter(fine).map(|i| residuals[i]).collect()
 }
 
 /// How much residuals that remember each other inflate a variance: 1 + 2 Σ ρ over one line width, less what chance gives.
-fn memory_factor(residuals: &[f64], width: f64) -> f64 {
+pub(super) fn memory_factor(residuals: &[f64], width: f64) -> f64 {
     let n = residuals.len();
     let lags = (width.ceil() as usize).clamp(1, 64).min(n / 4);
     let power: f64 = residuals.iter().map(|r| r * r).sum();

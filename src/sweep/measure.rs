@@ -10,11 +10,14 @@ use super::{
     fitted::{self, Fitted},
     flatten, orders,
     orders::Orders,
-    outcome, repeat as own_repeat,
+    outcome,
+    refine::{self, Swept},
+    repeat as own_repeat,
     segment::{self, Segment},
     steady,
 };
 use crate::capture::Capture;
+use crate::uncertainty::{BudgetLine, Evaluation};
 
 /// Fewest samples on a ramp that can be measured.
 const FEWEST_SAMPLES: usize = 100;
@@ -27,10 +30,12 @@ const FEWEST_LEVELS: f64 = 12.0;
 /// A detector whose time constant is more line widths than this has run the lines together (found).
 const FAR_TOO_SLOW: f64 = 6.0;
 /// A spacing this near to a whole part of the nominal one is that.
-const NEAR_PART: f64 = 0.04;
+const NEAR_PART: f64 = 0.02;
 /// Change of one mode's height against the others' that no sound sweep has, and that which is worth a warning.
-const UNSTEADY: f64 = 0.35;
-const UNEVEN_HEIGHTS: f64 = 0.08;
+const UNSTEADY: f64 = 0.25;
+const UNEVEN_HEIGHTS: f64 = 0.06;
+/// What a hop that changes heights by a share does to the spacing, of the spacing and that share (found: up to 0.06).
+const BY_A_HOP: f64 = 0.05;
 /// Reduced chi-square from which the baseline is looked at.
 const BAD_FIT: f64 = 8.0;
 /// A baseline that moves by this share of the highest peak is worth taking out.
@@ -51,6 +56,7 @@ const AGREE: f64 = 4.0;
 /// 3. All lines are fitted at once (Lorentzian, one width, detector pole where the data ask for it).
 /// 4. Peaks are gathered into classes (one light, seen in every order), the comb is laid over the classes.
 /// 5. Σ cᵢ Pᵢ(x) − m·Δν = k·FSR is solved for axis and spacing, weighted by the centres' covariance.
+/// 6. From there one model of all samples (Airy lines, both ramps) is fitted; where it does not fit, step 5 stands.
 pub fn measure(capture: &Capture, settings: &Settings) -> Measurement {
     let mut result = Measurement { free_spectral_range: settings.free_spectral_range, ..Measurement::default() };
     if let Err(refusal) = run(capture, settings, &mut result) {
@@ -83,14 +89,11 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
         *result = found;
         return Ok(());
     }
-    let first = attempt(&segment, settings, result);
-    if doubtful(&first, result)
-        && let Some(better) = without_baseline(&segment, settings, &before, result)
-    {
-        *result = better;
-        return Ok(());
+    let first = attempt(&segment, Some(capture).filter(|_| segment.has_ramp), settings, result);
+    match doubtful(&first, result).then(|| without_baseline(&segment, settings, &before, result)).flatten() {
+        Some(better) => *result = better,
+        None => first?,
     }
-    first?;
     if !segment.has_ramp && turns(result, settings) {
         result.mode_spacing = None;
         return Err(Refusal::NoTurn);
@@ -98,8 +101,13 @@ fn run(capture: &Capture, settings: &Settings, result: &mut Measurement) -> Resu
     Ok(())
 }
 
-/// Measures one ramp.
-fn attempt(segment: &Segment, settings: &Settings, result: &mut Measurement) -> Result<(), Refusal> {
+/// Measures one ramp; `back`: the capture, where its other ramp may help.
+fn attempt(
+    segment: &Segment,
+    back: Option<&Capture>,
+    settings: &Settings,
+    result: &mut Measurement,
+) -> Result<(), Refusal> {
     result.noise = Some(segment.noise);
     warn_of_segment(segment, result);
     let look = detect::detect(segment);
@@ -116,11 +124,10 @@ fn attempt(segment: &Segment, settings: &Settings, result: &mut Measurement) -> 
     if look.peaks.len() > MOST_LINES {
         return Err(Refusal::Clutter { count: look.peaks.len() });
     }
-    let orders = repeat(&look, segment, settings)?;
-    let fitted = fitted::fit_lines(segment, &look, &orders).ok_or(Refusal::NoFit)?;
-    if let Some(pole) = fitted.fit.pole {
+    let mut main = sweep(segment, &look, settings)?;
+    if let Some(pole) = main.fitted.fit.pole {
         let time_constant = pole * segment.dt;
-        let ratio = pole / fitted.fit.width;
+        let ratio = pole / main.fitted.fit.width;
         if ratio > FAR_TOO_SLOW {
             return Err(Refusal::FarTooSlow { ratio });
         }
@@ -128,13 +135,23 @@ fn attempt(segment: &Segment, settings: &Settings, result: &mut Measurement) -> 
             result.warnings.push(Warning::SlowDetector { time_constant });
         }
     }
-    let assigned = assign::assign(segment.signal.len(), &orders, &fitted, settings)?;
-    if assigned.n_stray > 0 {
-        result.warnings.push(Warning::Stray { count: assigned.n_stray });
+    if main.assigned.n_stray > 0 {
+        result.warnings.push(Warning::Stray { count: main.assigned.n_stray });
     }
-    outcome::fill(segment, &fitted, &assigned, settings, result);
-    doubt(&assigned, &fitted, segment, settings, result);
+    let second = back.and_then(|capture| segment::other(capture, segment));
+    let other = second.as_ref().and_then(|second| sweep(second, &detect::detect(second), settings).ok());
+    refine::sharpen(&mut main, other, settings.free_spectral_range);
+    outcome::fill(main.segment, &main.fitted, &main.assigned, settings, result);
+    doubt(&main.assigned, &main.fitted, main.segment, settings, result);
     Ok(())
+}
+
+/// Fits the lines of one ramp and says which is which.
+fn sweep<'a>(segment: &'a Segment, look: &Look, settings: &Settings) -> Result<Swept<'a>, Refusal> {
+    let orders = repeat(look, segment, settings)?;
+    let fitted = fitted::fit_lines(segment, look, &orders).ok_or(Refusal::NoFit)?;
+    let assigned = assign::assign(segment.signal.len(), &orders, &fitted, settings)?;
+    Ok(Swept { segment, fitted, assigned })
 }
 
 /// Withdraws a spacing that looks sound and is not.
@@ -144,10 +161,13 @@ fn doubt(assigned: &Assigned, fitted: &Fitted, segment: &Segment, settings: &Set
         result.mode_spacing = None;
         result.no_spacing = Some(refusal);
     };
+    let near = |parts: &[f64]| {
+        let near_one = |nominal: f64| parts.iter().any(|part| (spacing / nominal / part - 1.0).abs() < NEAR_PART);
+        settings.nominal_spacing.is_some_and(near_one)
+    };
+    // Twice nominal is a polarizing element in the way, warned of by name, unless the lines do not even fit.
     if let Some(nominal) = settings.nominal_spacing
-        && let ratio = spacing / nominal
-        // Twice nominal is a polarizing element in the way, and warned of by name.
-        && [1.0 / 4.0, 1.0 / 3.0, 1.0 / 2.0, 3.0, 4.0].iter().any(|part| (ratio / part - 1.0).abs() < NEAR_PART)
+        && (near(&[1.0 / 4.0, 1.0 / 3.0, 1.0 / 2.0, 3.0, 4.0]) || (near(&[2.0]) && misfits(result)))
     {
         return withdraw(Refusal::FalseComb { spacing, nominal }, result);
     }
@@ -164,6 +184,12 @@ fn doubt(assigned: &Assigned, fitted: &Fitted, segment: &Segment, settings: &Set
         withdraw(Refusal::Unsteady { change }, result);
     } else if change > UNEVEN_HEIGHTS {
         result.warnings.push(Warning::HeightsChange { change });
+        let by_a_hop = BY_A_HOP * change * spacing;
+        let line = "heights that change in mid-sweep: what a hop of that size does to the spacing";
+        if let Some(spacing) = &mut result.mode_spacing {
+            let line = BudgetLine::direct("unsteady-sweep", line, Evaluation::TypeB, by_a_hop, f64::INFINITY);
+            spacing.budget.push(line);
+        }
     }
 }
 
@@ -172,7 +198,12 @@ fn doubtful(first: &Result<(), Refusal>, result: &Measurement) -> bool {
     match first {
         Err(Refusal::Dark | Refusal::FewLevels { .. } | Refusal::FarTooSlow { .. } | Refusal::Fringes { .. }) => false,
         Err(_) => true,
-        Ok(()) => misfits(result) || result.no_spacing.is_some(),
+        // A tube that did not hold still did not, whatever the baseline.
+        Ok(()) => match result.no_spacing {
+            Some(Refusal::Unsteady { .. }) => false,
+            Some(_) => true,
+            None => misfits(result),
+        },
     }
 }
 
@@ -196,8 +227,8 @@ fn without_baseline(
     let look = detect::detect(&flat);
     let (flat, _) = flatten::flattened(segment, look.width).unwrap_or((flat, moved));
     let mut result = before.clone();
-    attempt(&flat, settings, &mut result).ok()?;
-    let surer = u_spacing(&result) < u_spacing(first) || (first.modes.is_empty() && !result.modes.is_empty());
+    attempt(&flat, None, settings, &mut result).ok()?;
+    let surer = u_spacing(&result) < u_spacing(first);
     result.warnings.push(Warning::Baseline { share });
     surer.then_some(result)
 }
@@ -212,8 +243,10 @@ fn by_own_repeat(
     let (period, stretches) = own_repeat::stretches(segment)?;
     let of = |range: (usize, usize)| {
         let mut result = before.clone();
-        attempt(&segment::cut(capture, range, false), settings, &mut result).ok()?;
-        (!turns(&result, settings) && !misfits(&result) && result.mode_spacing.is_some()).then_some(result)
+        attempt(&segment::cut(capture, range, false), None, settings, &mut result).ok()?;
+        let spacing = result.mode_spacing.as_ref()?.value;
+        let against = settings.nominal_spacing.is_some_and(|_| !confirmed(spacing, settings));
+        (!against && !turns(&result, settings) && !misfits(&result)).then_some(result)
     };
     let mut best: Option<Measurement> = None;
     for stretch in stretches {
@@ -241,9 +274,18 @@ fn misfits(result: &Measurement) -> bool {
 /// leaves them, or lines that do not fit and a spacing that nothing confirms.
 fn turns(result: &Measurement, settings: &Settings) -> bool {
     let Some(spacing) = result.mode_spacing.as_ref().map(|spacing| spacing.value) else { return false };
-    let uneven = |w: &Warning| matches!(w, Warning::UnevenComb { rms } if *rms > UNEVEN * spacing);
-    let confirmed = settings.nominal_spacing.is_some_and(|nominal| (spacing / nominal - 1.0).abs() < CONFIRMED);
-    result.warnings.iter().any(uneven) || (misfits(result) && !confirmed)
+    let odd = |w: &Warning| match w {
+        Warning::UnevenComb { rms } => *rms > UNEVEN * spacing,
+        Warning::Misfit { .. } => true,
+        _ => false,
+    };
+    result.warnings.iter().any(odd) && !confirmed(spacing, settings)
+}
+
+/// Whether a nominal spacing was given and is near, as far as the free spectral range is known.
+fn confirmed(spacing: f64, settings: &Settings) -> bool {
+    let near = |nominal: f64| (spacing / nominal - 1.0).abs() < CONFIRMED.hypot(2.0 * settings.u_free_spectral_range);
+    settings.nominal_spacing.is_some_and(near)
 }
 
 fn check(settings: &Settings) -> Result<(), Refusal> {

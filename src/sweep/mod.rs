@@ -2,18 +2,21 @@
 //! Must not open a file, and never takes volts for hertz: the repeat of the orders is the frequency scale.
 //! Main entry: [`measure`]; main type: [`Measurement`].
 
+mod airy;
 mod assign;
 mod axis;
 mod comb;
 mod detect;
 mod fitted;
 mod flatten;
+mod global;
 mod lag;
 mod lines;
 mod measure;
 mod model;
 mod orders;
 mod outcome;
+mod refine;
 mod remarks;
 mod repeat;
 mod samples;

@@ -48,27 +48,30 @@ impl Problem<'_> {
         let lag = self.with_pole.then(|| Lag::new(xs, p[2 * n_peaks + 1]));
         let extra = if self.with_pole { TAIL * p[2 * n_peaks + 1] } else { 0.0 };
         let mut model = vec![0.0; n];
-        let mut width_column = vec![0.0; if want_columns { n } else { 0 }];
+        let mut width_column = vec![0.0; n];
         let mut columns: Vec<Column> = Vec::with_capacity(if want_columns { self.n_parameters() } else { 0 });
         let mut height_columns: Vec<Column> = Vec::new();
         for j in 0..n_peaks {
             let (centre, height, w) = (p[j], p[n_peaks + j], width * self.stretch[j]);
             let from = xs.partition_point(|x| *x < centre - REACH * w);
             let to = xs.partition_point(|x| *x <= centre + REACH * w + extra);
-            let size = if want_columns { to - from } else { 0 };
-            let (mut by_centre, mut by_height) = (Vec::with_capacity(size), Vec::with_capacity(size));
+            let size = to - from;
+            let (mut by_centre, mut by_height) = (vec![0.0; size], vec![0.0; size]);
             let per = 2.0 / w;
-            for i in from..to {
-                let q = per * (xs[i] - centre);
+            let (bow, by_width) = (&self.samples.bow[from..to], &mut width_column[from..to]);
+            let places = xs[from..to].iter().zip(bow).zip(&mut model[from..to]).zip(by_width);
+            for ((((x, bow), model), by_width), (by_centre, by_height)) in
+                places.zip(by_centre.iter_mut().zip(&mut by_height))
+            {
+                let q = per * (x - centre);
                 let l = 1.0 / (1.0 + q * q);
                 // The bin's mean differs from its middle by the curvature.
-                let mean = l + self.samples.bow(i) * per * per * (6.0 * q * q - 2.0) * l * l * l;
-                model[i] += height * mean;
-                if want_columns {
-                    by_height.push(mean);
-                    by_centre.push(height * 2.0 * per * q * l * l);
-                    width_column[i] += height * 2.0 * q * q * l * l / width;
-                }
+                let mean = l + bow * per * per * (6.0 * q * q - 2.0) * l * l * l;
+                let slope = height * 2.0 * q * l * l;
+                *model += height * mean;
+                *by_height = mean;
+                *by_centre = slope * per;
+                *by_width += slope * q / width;
             }
             if want_columns {
                 if let Some(lag) = &lag {

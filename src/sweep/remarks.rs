@@ -150,19 +150,20 @@ impl fmt::Display for Refusal {
                  mid-sweep, or two captures were spliced; take another capture",
                 change * 100.0
             ),
-            Self::FalseComb { spacing, nominal } => {
-                let (spacing, nominal) = (spacing / 1e6, nominal / 1e6);
-                write!(f, "the spacing reads {spacing:.1} MHz, ")?;
-                if spacing < nominal {
-                    write!(
-                        f,
-                        "a whole part of the nominal {nominal:.1} MHz: light between the modes looks like a comb of its own; "
-                    )?;
-                } else {
-                    write!(f, "a multiple of the nominal {nominal:.1} MHz: modes between those seen are missing; ")?;
-                }
-                write!(f, "realign, set the gain so that no peak is lost, and repeat")
-            }
+            Self::FalseComb { spacing, nominal } if spacing < nominal => write!(
+                f,
+                "the spacing reads {:.1} MHz, a whole part of the nominal {:.1} MHz: light between the modes looks like a comb of \
+                 its own; realign, set the gain so that no peak is lost, and repeat",
+                spacing / 1e6,
+                nominal / 1e6
+            ),
+            Self::FalseComb { spacing, nominal } => write!(
+                f,
+                "the spacing reads {:.1} MHz, a multiple of the nominal {:.1} MHz: modes between those seen are missing; realign, \
+                 set the gain so that no peak is lost, and repeat",
+                spacing / 1e6,
+                nominal / 1e6
+            ),
             Self::NoTurn => write!(
                 f,
                 "no usable ramp channel, and the modes come out as if the ramp turned within the record; record the ramp, or at \

@@ -12,7 +12,7 @@ use crate::numerics::spectra::autocorrelation;
 /// Blocks the record is thinned to for its autocorrelation.
 const THINNED: usize = 16_384;
 /// Least correlation of a record with itself one ramp period on.
-const LEAST: f64 = 0.6;
+const LEAST: f64 = 0.7;
 /// A shorter period is believed before a longer one if it correlates this share as well.
 const AS_WELL: f64 = 0.93;
 /// Places within a period at which a stretch may begin.

@@ -11,6 +11,8 @@ pub(super) struct Samples {
     pub signal: Vec<f64>,
     /// Root of the number of samples in each bin; 0 where one of them may not be fitted.
     pub root: Vec<f64>,
+    /// (n² − 1)/24: what the mean of a bin of n samples adds to its middle, times the second derivative by sample.
+    pub bow: Vec<f64>,
     /// First sample of each bin, and one past the last of all.
     pub bounds: Vec<usize>,
     /// Samples of a bin on a line.
@@ -52,6 +54,7 @@ impl Samples {
         let mut samples = Self {
             x: bounds.windows(2).map(|b| (b[0] + b[1] - 1) as f64 / 2.0).collect(),
             signal: Vec::new(),
+            bow: bounds.windows(2).map(|b| (((b[1] - b[0]) as f64).powi(2) - 1.0) / 24.0).collect(),
             root: Vec::with_capacity(bounds.len()),
             finest: size(0.0),
             n: signal.len(),
@@ -68,12 +71,6 @@ impl Samples {
     /// Means of another signal of the same ramp over the same bins.
     pub fn means(&self, signal: &[f64]) -> Vec<f64> {
         self.bounds.windows(2).map(|b| signal[b[0]..b[1]].iter().sum::<f64>() / (b[1] - b[0]) as f64).collect()
-    }
-
-    /// (n² − 1)/24: what the mean of n samples adds to the middle, times the second derivative by sample position.
-    pub fn bow(&self, bin: usize) -> f64 {
-        let n = (self.bounds[bin + 1] - self.bounds[bin]) as f64;
-        (n * n - 1.0) / 24.0
     }
 
     /// Bins that may be fitted.

@@ -60,8 +60,29 @@ const FLYBACK: usize = 4;
 /// Finds the longest one-way ramp of a capture and prepares its signal; the whole capture where no channel ramps.
 pub(super) fn find(capture: &Capture) -> Segment {
     let n = capture.photodiode.len();
-    let found = capture.ramp.as_deref().filter(|ramp| ramp.len() == n).and_then(longest_ramp);
+    let found = capture.ramp.as_deref().filter(|ramp| ramp.len() == n).and_then(one_way);
     cut(capture, found.unwrap_or((0, n)), found.is_some())
+}
+
+/// A ramp shorter than this share of the main one is left alone: a flyback.
+const LEAST_OTHER: f64 = 0.3;
+/// Fewest samples of another ramp that is worth a look.
+const FEWEST_OTHER: f64 = 100.0;
+
+/// The longest ramp of what the main one leaves of a capture, if it is as good a ramp and points the same way up.
+pub(super) fn other(capture: &Capture, main: &Segment) -> Option<Segment> {
+    let n = capture.photodiode.len();
+    let (from, to) = if main.start > n - main.end { (0, main.start) } else { (main.end, n) };
+    let least = (LEAST_OTHER * (main.end - main.start) as f64).max(FEWEST_OTHER);
+    let ramp = capture.ramp.as_deref().filter(|ramp| ramp.len() == n && (to - from) as f64 >= least)?;
+    let (start, end) = one_way(&ramp[from..to]).filter(|(start, end)| (end - start) as f64 >= least)?;
+    let other = cut(capture, (from + start, from + end), true);
+    (other.inverted == main.inverted).then_some(other)
+}
+
+/// Longest stretch over which the ramp runs one way, up to its turns.
+fn one_way(ramp: &[f64]) -> Option<(usize, usize)> {
+    longest_ramp(ramp).map(|found| up_to_the_turn(ramp, found))
 }
 
 /// Cuts samples (first, one past last) out of a capture and prepares their signal.
@@ -176,6 +197,18 @@ fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
     let start = if best.0 == 0 { 0 } else { start };
     let end = if best.1 + 1 >= means.len() { n } else { end };
     (end > start + 8).then_some((start, end))
+}
+
+/// The same ramp without samples beyond its turns: block means place a turn no better than half a block.
+fn up_to_the_turn(ramp: &[f64], (start, end): (usize, usize)) -> (usize, usize) {
+    let rising = ramp[end - 1] > ramp[start];
+    let block = ramp.len().div_ceil(BLOCKS).max(1);
+    let beyond = |i: usize| if rising { ramp[i] } else { -ramp[i] };
+    let (first, last) = (start..end.min(start + 2 * block), end.saturating_sub(2 * block).max(start)..end);
+    let lowest = first.min_by(|a, b| beyond(*a).total_cmp(&beyond(*b))).filter(|_| start > 0);
+    let highest = last.max_by(|a, b| beyond(*a).total_cmp(&beyond(*b))).filter(|_| end < ramp.len());
+    let (from, to) = (lowest.unwrap_or(start), highest.map_or(end, |i| i + 1));
+    if to > from + 8 { (from, to) } else { (start, end) }
 }
 
 /// Straight line through a ramp: (V at the first sample, V a sample); none if it is flat.

@@ -27,6 +27,8 @@ pub struct Brisk {
     pub station: String,
     pub truth: TubeTruth,
     pub bench: BenchTruth,
+    /// How long the tube burnt already in a rack; none: it is struck.
+    pub lit_for_s: Option<f64>,
 }
 
 /// What a run left.
@@ -68,6 +70,7 @@ impl Brisk {
             // The output rises and the walk has no fast part unless a test says so.
             truth: TubeTruth { power_tau: 20.0, fast_cycles: 0.0, ..truth },
             bench: scenario.benches["bench-1"].clone(),
+            lit_for_s: None,
         }
     }
 
@@ -90,6 +93,12 @@ impl Brisk {
         (Moment { wall: STARTED_AT.parse().unwrap(), elapsed_ms: 0 }, Happening::Opened(Box::new(opened)))
     }
 
+    fn lit_since(&self) -> Option<String> {
+        let start: chrono::DateTime<chrono::FixedOffset> = STARTED_AT.parse().unwrap();
+        let ago = |seconds: f64| start - chrono::TimeDelta::milliseconds((seconds * 1e3) as i64);
+        self.lit_for_s.map(|seconds| ago(seconds).to_rfc3339())
+    }
+
     fn identity(&self, seed: u64) -> Identity {
         Identity {
             run_id: format!("{}-{seed}", self.name),
@@ -100,6 +109,7 @@ impl Brisk {
             time_zone: "Europe/Lisbon".into(),
             simulated: true,
             program_version: "0.1.0".into(),
+            lit_since: self.lit_since(),
             ..Identity::default()
         }
     }
@@ -116,7 +126,9 @@ impl Brisk {
     ) -> Result<Driven, Interrupted> {
         let options =
             SimulatedOptions { started_at: STARTED_AT.parse().unwrap(), pace: f64::INFINITY, time_to_answer_ms: 2000 };
-        let mut bench = SimulatedBench::new(World::new(&self.truth, &self.bench, seed), options).bench_with(voice);
+        let bench = SimulatedBench::new(World::new(&self.truth, &self.bench, seed), options);
+        let lit_for = |seconds: f64| (seconds * 1e3) as u64;
+        let mut bench = self.lit_for_s.map_or(bench.clone(), |s| bench.lit_for(lit_for(s))).bench_with(voice);
         let plan = Plan::from_texts(&self.recipe, &self.limits, &self.station).unwrap();
         let engine = Engine::of(&plan).unwrap();
         let mut run = Run::open(plan, self.identity(seed));

@@ -6,6 +6,8 @@
 mod bench;
 mod causes;
 mod envelope;
+mod faults;
 mod noise;
+mod rack;
 mod warmup;
 mod watch;

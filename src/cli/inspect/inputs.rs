@@ -9,7 +9,7 @@ use chrono::{DateTime, FixedOffset};
 
 use super::{Arguments, Format};
 use crate::cli::{Ending, Failure, home};
-use crate::disk::{Home, Store, demo_bench};
+use crate::disk::{Home, Rack, Store, demo_bench, said};
 use crate::instruments::CaptureFolder;
 use crate::phantom::Scenario;
 use crate::phrase::Language;
@@ -36,10 +36,14 @@ pub(super) struct Inputs {
     pub captures: Option<CaptureFolder>,
     pub answers: Option<Answers>,
     pub ask: bool,
+    /// Why a finished run is to be repeated: as given, else as the answer file says.
+    pub retest: Option<String>,
     /// Ceiling on bench time; none on a bench that is not simulated.
     pub pace: Option<f64>,
     pub seed: Option<u64>,
     pub start: Option<DateTime<FixedOffset>>,
+    /// Since when the tube burns already, as given, and where; none if it is struck here.
+    pub lit_since: Option<(&'static str, String)>,
     /// Language, if it was asked for.
     pub language: Option<Language>,
     pub format: Format,
@@ -47,12 +51,18 @@ pub(super) struct Inputs {
 
 impl Inputs {
     /// Reads and parses what the arguments name.
-    pub fn read(arguments: Arguments) -> Result<Self, Failure> {
+    pub fn read(arguments: Arguments, serial: &str) -> Result<Self, Failure> {
+        // A scanner's stray blank is no part of a serial number.
+        let serial = serial.trim();
         let home = home::find(arguments.home, arguments.reports)?;
-        let scenario = arguments.scenario.as_deref().map(read_scenario).transpose()?;
+        let scenario = match &arguments.scenario {
+            Some(Some(path)) => Some(read_scenario(path)?),
+            Some(None) => Some(Scenario::demo()),
+            None => None,
+        };
         let (name, text) = match &arguments.station {
             Some(path) => (path.display().to_string(), read_text(path)?),
-            None => demo_station(scenario.as_ref(), arguments.serial.trim())?,
+            None => demo_station(scenario.as_ref(), serial)?,
         };
         let station = StationFile::parse(&name, &text).map_err(|faults| faulty("station file", &faults))?;
         let captures = arguments.captures.as_deref().map(CaptureFolder::open).transpose();
@@ -75,16 +85,26 @@ impl Inputs {
                 "`{name}` has no [interferometer]; expected one, since captures need its free spectral range `fsr`"
             )));
         }
+        let answers = arguments.answers.as_deref().map(read_answers).transpose()?;
+        let of_answers = || answers.as_ref().and_then(|answers| answers.retest.clone());
+        let retest = arguments.retest.or_else(of_answers);
+        let store = Store::new(home.reports());
+        let rack = Rack::read(store.reports()).map_err(|error| Failure::store(&error))?;
+        let of_option = arguments.lit_since.map(|text| ("--lit-since", text));
+        let of_answers = || Some(("`lit_since` of the answers", answers.as_ref()?.lit_since.clone()?));
+        let of_rack = || Some(("since when it burns, by `tubewright rack list`,", rack.since(serial)?.to_owned()));
+        let lit_since = of_option.or_else(of_answers).or_else(of_rack).filter(|_| captures.is_none());
         Ok(Self {
-            // A scanner's stray blank is no part of a serial number.
-            serial: arguments.serial.trim().to_owned(),
+            retest,
+            serial: serial.to_owned(),
+            lit_since,
             tube_type: arguments.tube_type,
-            store: Store::new(home.reports()),
+            store,
             home,
             station: (text, station),
             scenario,
             captures,
-            answers: arguments.answers.as_deref().map(read_answers).transpose()?,
+            answers,
             ask: arguments.ask,
             pace: simulated.then(|| arguments.pace.unwrap_or(PACE)),
             seed: arguments.seed,
@@ -101,7 +121,7 @@ impl Inputs {
 }
 
 /// The compiled-in station file of the bench on which the scenario has this tube.
-fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, String), Failure> {
+pub(in crate::cli) fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, String), Failure> {
     let demo;
     let scenario = match scenario {
         Some(scenario) => scenario,
@@ -121,7 +141,7 @@ fn demo_station(scenario: Option<&Scenario>, serial: &str) -> Result<(String, St
 }
 
 /// Whether captures come from the simulated bench; a source that needs something more is said.
-fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
+pub(in crate::cli) fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
     match station.interferometer.as_ref().map(|interferometer| &interferometer.source) {
         Some(Source::Simulated) => Ok(true),
         Some(Source::Folder) => {
@@ -135,12 +155,12 @@ fn is_simulated(station: &StationFile, name: &str) -> Result<bool, Failure> {
     }
 }
 
-fn read_text(path: &Path) -> Result<String, Failure> {
+pub(in crate::cli) fn read_text(path: &Path) -> Result<String, Failure> {
     std::fs::read_to_string(path)
-        .map_err(|error| Failure::unusable(format!("cannot read `{}`: {error}", path.display())))
+        .map_err(|error| Failure::unusable(format!("cannot read `{}`: {}", path.display(), said(&error))))
 }
 
-fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
+pub(in crate::cli) fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
     Scenario::parse(&path.display().to_string(), &read_text(path)?)
         .map_err(|error| Failure::unusable(format!("the scenario cannot be used:\n{error}")))
 }
@@ -148,15 +168,19 @@ fn read_scenario(path: &Path) -> Result<Scenario, Failure> {
 fn read_answers(path: &Path) -> Result<Answers, Failure> {
     let answers = Answers::parse(&path.display().to_string(), &read_text(path)?)
         .map_err(|faults| faulty("answer file", &faults))?;
+    // A blank one is a fault of the file already.
     if answers.technician.is_none() {
-        let message = format!("an answer is missing: `{}` has no `technician = \"…\"` (initials)", path.display());
+        let message = format!(
+            "an answer is missing: `{}` has no `technician`; expected `technician = \"KT\"`, the initials of who measures",
+            path.display()
+        );
         return Err(Failure::new(Ending::Unfinished, message));
     }
     Ok(answers)
 }
 
 /// Every fault of a file, a line each.
-pub(super) fn faulty(what: &str, faults: &[impl Display]) -> Failure {
+pub(in crate::cli) fn faulty(what: &str, faults: &[impl Display]) -> Failure {
     let lines: Vec<String> = faults.iter().map(ToString::to_string).collect();
     Failure::unusable(format!("the {what} cannot be used:\n{}", lines.join("\n")))
 }

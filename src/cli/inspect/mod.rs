@@ -1,26 +1,36 @@
-//! `tubewright inspect SERIAL`: the recipe of one tube from the first question to the frozen record.
+//! `tubewright inspect SERIAL`: the recipe of one tube from the first question to the frozen record; without a serial, a day of them.
 //! Must not decide anything: the run judges, this carries its verdict to the exit status.
 //! Main function: [`run`].
 
 mod bench;
+mod day;
+pub(super) mod earlier;
 mod freeze;
 mod inputs;
+mod lit_since;
 mod opening;
+mod outside;
 mod run_id;
-mod serial;
+pub(super) mod serial;
 mod show;
+mod stop;
+mod voice;
 
 use std::path::PathBuf;
 
 use chrono::{DateTime, FixedOffset};
 use clap::{Args, ValueEnum};
 
+pub(super) use self::inputs::{demo_station, faulty, is_simulated, read_scenario, read_text};
+pub(super) use self::serial::check as check_serial;
 use self::{inputs::Inputs, opening::Opening, show::Show};
-use super::{Ending, Failure};
-use crate::driver::{Driver, Engine, Interrupted, Watcher as _, resume};
+use super::{Ending, Failure, output};
+use crate::disk::{Rack, RunFolder, Store};
+use crate::driver::{Driver, Engine, Interrupted, Watcher, resume};
 use crate::phrase::Language;
-use crate::record::sheet::Outcome;
-use crate::run::Run;
+use crate::record::event::Event;
+use crate::record::sheet::{Outcome, Sheet};
+use crate::run::{Remark, Run};
 
 /// How results are printed.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
@@ -32,11 +42,11 @@ pub enum Format {
 }
 
 /// Arguments as given.
-#[derive(Debug, Args)]
+#[derive(Debug, Clone, Args)]
 pub struct Arguments {
-    /// Serial number of the tube, as scanned
-    #[arg(value_name = "SERIAL")]
-    serial: String,
+    /// Serial number of the tube, as scanned; left out with --scenario: every tube of the scenario
+    #[arg(value_name = "SERIAL", required_unless_present = "scenario")]
+    serial: Option<String>,
     /// Tube type: a folder below limits/
     #[arg(long = "type", value_name = "TYPE")]
     tube_type: Option<String>,
@@ -52,6 +62,12 @@ pub struct Arguments {
     /// Take the answers from a file
     #[arg(long, value_name = "FILE")]
     answers: Option<PathBuf>,
+    /// Repeat a finished run of this serial: the cause, in words
+    #[arg(long, value_name = "WHY")]
+    retest: Option<String>,
+    /// End the unfinished run of this serial, if nobody is at it: the reason, in words
+    #[arg(long, value_name = "WHY", conflicts_with_all = ["retest", "scenario", "captures", "ask", "answers"])]
+    stop: Option<String>,
     /// Folder that holds limits/ and reports/ (else TUBEWRIGHT_HOME, else the nearest parent with limits/)
     #[arg(long, value_name = "DIR")]
     home: Option<PathBuf>,
@@ -67,9 +83,12 @@ pub struct Arguments {
     /// Fixes when the run starts (RFC 3339)
     #[arg(long, value_name = "TIME", value_parser = moment)]
     start: Option<DateTime<FixedOffset>>,
-    /// Scenario of the simulated bench
-    #[arg(long, value_name = "FILE", conflicts_with = "captures")]
-    scenario: Option<PathBuf>,
+    /// The tube burns already, in a rack: since a time of today (07:40), RFC 3339, or for an age ("40 min")
+    #[arg(long, value_name = "TIME", conflicts_with = "captures")]
+    lit_since: Option<String>,
+    /// Scenario of the simulated bench: a file, else the demo day; without SERIAL all of its tubes, one after the other
+    #[arg(long, value_name = "FILE", num_args = 0..=1, conflicts_with = "captures")]
+    scenario: Option<Option<PathBuf>>,
     /// Language of the sheet and of the questions: en or de (else the station's)
     #[arg(long, value_name = "CODE", value_parser = language)]
     language: Option<Language>,
@@ -95,44 +114,108 @@ fn moment(text: &str) -> Result<DateTime<FixedOffset>, String> {
         .map_err(|_| format!("`{text}` is no time; expected such as 2026-01-05T06:00:00Z (RFC 3339)"))
 }
 
-/// Inspects one tube.
+impl Arguments {
+    /// The same for one tube of a day: without a pace of its own the bench goes as fast as it can.
+    fn for_day(&self) -> Self {
+        Self { pace: self.pace.or(Some(f64::INFINITY)), ..self.clone() }
+    }
+}
+
+/// Inspects one tube, or all of a scenario.
 pub fn run(arguments: Arguments) -> Result<Ending, Failure> {
-    serial::check(&arguments.serial)?;
-    let inputs = Inputs::read(arguments)?;
-    let mut opening = Opening::decide(&inputs)?;
+    stop::listen();
+    let Some(serial) = arguments.serial.clone() else { return day::run(&arguments) };
+    serial::check(&serial)?;
+    if let Some(why) = &arguments.stop {
+        let home = super::home::find(arguments.home, arguments.reports)?;
+        return outside::stop(&Store::new(home.reports()), serial.trim(), why, arguments.format);
+    }
+    let inputs = Inputs::read(arguments, &serial)?;
+    let mut show = Show::new(inputs.format, inputs.pace);
+    inspect(&inputs, Some(&mut show)).map(|done| ending_of(&done.sheet))
+}
+
+/// A run that came to its end.
+struct Done {
+    sheet: Sheet,
+    folder: PathBuf,
+}
+
+/// Sees nothing.
+struct Unseen;
+
+impl Watcher for Unseen {
+    fn happened(&mut self, _: &Run, _: &Event, _: &[Remark]) {}
+}
+
+/// Drives the run of one tube to its end and freezes its record.
+///
+/// * `show`: who shows it; none shows nothing.
+fn inspect(inputs: &Inputs, mut show: Option<&mut Show>) -> Result<Done, Failure> {
+    let mut opening = Opening::decide(inputs)?;
     let engine = Engine::of(&opening.plan)
         .map_err(|error| Failure::unusable(format!("failed to read the station's columns: {error}")))?;
     let mut run = Run::open(opening.plan.clone(), opening.identity.clone());
-    let mut show = Show::new(inputs.format, inputs.pace);
     let (mut journal, events) = opening.folder()?;
-    show.begun(&run, journal.path(), events.len() > 1);
+    voice::same(inputs, &opening.identity, &events, journal.path())?;
+    // On the bench it is no longer in the rack.
+    let mut rack = Rack::read(inputs.store.reports()).map_err(|error| Failure::store(&error))?;
+    if rack.since(&inputs.serial).is_some() {
+        rack.change(&[], std::slice::from_ref(&inputs.serial)).map_err(|error| Failure::store(&error))?;
+    }
+    if let Some(show) = show.as_deref_mut() {
+        show.begun(&run, journal.path(), events.len() > 1);
+        if let Some(repeat) = &opening.identity.repeats {
+            output::talk(&format!("Repeats run {} because: {}", repeat.run_id, repeat.reason));
+        }
+    }
     if let Err(why) = resume(&mut run, &mut opening.bench, &mut journal, &events) {
         return Err(interrupted(&why, journal.path()));
     }
-    if let Some(event) = events.last() {
+    if let (Some(show), Some(event)) = (show.as_deref_mut(), events.last()) {
         show.happened(&run, event, &[]);
     }
-    let driven = Driver {
-        run: &mut run,
-        bench: &mut opening.bench,
-        journal: &mut journal,
-        engine: engine.as_ref(),
-        watcher: &mut show,
+    let armed = stop::Armed::new();
+    let mut unseen = Unseen;
+    let watcher: &mut dyn Watcher = match show.as_deref_mut() {
+        Some(show) => show,
+        None => &mut unseen,
+    };
+    let (bench, engine) = (&mut opening.bench, engine.as_ref());
+    let driven = Driver { run: &mut run, bench, journal: &mut journal, engine, watcher }.drive();
+    drop(armed);
+    if let Some(show) = show.as_deref_mut() {
+        show.clear();
     }
-    .drive();
-    show.clear();
     if let Err(why) = driven {
         return Err(interrupted(&why, journal.path()));
     }
+    let sheet = finish(&run, &mut journal, show)?;
+    Ok(Done { sheet, folder: journal.path().to_owned() })
+}
+
+/// Freezes the record and shows how the tube ended.
+fn finish(run: &Run, journal: &mut RunFolder, show: Option<&mut Show>) -> Result<Sheet, Failure> {
     let sheet = run.sheet();
-    freeze::freeze(&mut journal, &sheet)?;
-    show.ended(&sheet, journal.path())?;
-    Ok(match sheet.verdict.outcome {
+    freeze::freeze(journal, &sheet)?;
+    if sheet.verdict.outcome == Outcome::Stopped && !sheet.identity.from_captures {
+        output::talk(
+            "Stopped. Look whether the tube is still lit: only the supply's switch takes the high voltage off.",
+        );
+    }
+    if let Some(show) = show {
+        show.ended(&sheet, journal.path())?;
+    }
+    Ok(sheet)
+}
+
+fn ending_of(sheet: &Sheet) -> Ending {
+    match sheet.verdict.outcome {
         Outcome::Pass => Ending::Accepted,
         Outcome::Fail => Ending::NotAccepted,
         Outcome::Hold => Ending::Hold,
         Outcome::Open | Outcome::Stopped => Ending::Unfinished,
-    })
+    }
 }
 
 /// An interruption as an ending, with where the open sheet is kept.

@@ -7,16 +7,17 @@ use std::path::PathBuf;
 use chrono::{DateTime, Datelike as _, FixedOffset, Utc};
 
 use super::{
-    bench,
+    bench, earlier,
     inputs::{Inputs, faulty},
+    lit_since::lit_since,
     run_id::run_id,
 };
 use crate::cli::checks::{checks_of, last_of_each};
 use crate::cli::{Failure, output};
-use crate::disk::{FoundRun, RunFolder, SerialLock, TypeTexts};
+use crate::disk::{FoundRun, RunFolder, SerialLock, TypeTexts, life_of};
 use crate::limits::{Limits, nearest};
 use crate::recipe::Recipe;
-use crate::record::event::{Event, Happening, Identity, Opened, RunKind};
+use crate::record::event::{Event, Happening, Identity, Opened, Repeat, RunKind};
 use crate::record::reference::ReferenceCheck;
 use crate::run::Plan;
 use crate::station::standing::unclosed;
@@ -46,17 +47,17 @@ impl Opening {
         // Another process may have finished its run meanwhile.
         let runs = inputs.store.runs_of(&inputs.serial).map_err(|error| Failure::store(&error))?;
         match (runs.iter().rfind(is_open), planned) {
-            (Some(open), _) => Self::again(inputs, open, lock),
-            (None, Some(planned)) => Self::anew(inputs, planned, runs.len(), lock),
-            (None, None) => Self::anew(inputs, new_plan(inputs, &runs)?, runs.len(), lock),
+            (Some(open), _) => Self::again(inputs, &runs, open, lock),
+            (None, Some(planned)) => Self::anew(inputs, planned, &runs, lock),
+            (None, None) => Self::anew(inputs, new_plan(inputs, &runs)?, &runs, lock),
         }
     }
 
-    fn again(inputs: &Inputs, open: &FoundRun, lock: SerialLock) -> Result<Self, Failure> {
+    fn again(inputs: &Inputs, runs: &[FoundRun], open: &FoundRun, lock: SerialLock) -> Result<Self, Failure> {
         let Opened { identity, recipe, limits, station } = &open.opened;
         let other = |what: &str| {
             Err(Failure::unusable(format!(
-                "`{}` is unfinished and {what}; give the command it was started with, or end it with `--ask` and `stop: why`",
+                "`{}` is unfinished and {what}; give the command it was started with, or end it with `--stop \"why\"`",
                 open.path.display()
             )))
         };
@@ -69,31 +70,36 @@ impl Opening {
         if identity.simulated != inputs.simulated() {
             return other(if identity.simulated { "is on a simulated bench" } else { "is on a real bench" });
         }
+        let repeated = identity.repeats.as_ref().map(|repeat| repeat.reason.as_str());
+        if inputs.retest.as_ref().is_some_and(|why| Some(why.trim()) != repeated) {
+            return other(if repeated.is_some() { "repeats another for another cause" } else { "repeats none" });
+        }
         if inputs.language.is_some_and(|given| given != identity.language()) {
             return other(&format!("has its sheet in language `{}`", identity.language().code()));
         }
         let plan = Plan::from_texts(recipe, limits, station).map_err(|faults| faulty("stored plan", &faults))?;
         let started_at = DateTime::parse_from_rfc3339(&identity.started_at).unwrap_or_default();
-        let bench = bench::build(inputs, started_at, &mut identity.technician.clone())?;
+        let before = runs.iter().filter(|run| run.opened.identity.run_id < identity.run_id).count();
+        let lit_since = identity.lit_since.as_deref().and_then(|since| DateTime::parse_from_rfc3339(since).ok());
+        let bench = bench::build(inputs, before, started_at, lit_since, &mut identity.technician.clone())?;
         Ok(Self { plan, identity: identity.clone(), bench, path: open.path.clone(), first: None, _lock: lock })
     }
 
-    /// * `earlier`: how many runs of this serial there are already.
-    fn anew(inputs: &Inputs, planned: Planned, earlier: usize, lock: SerialLock) -> Result<Self, Failure> {
-        let Planned { tube_type, texts, plan } = planned;
+    /// * `runs`: of this serial, those that there are already.
+    fn anew(inputs: &Inputs, planned: Planned, runs: &[FoundRun], lock: SerialLock) -> Result<Self, Failure> {
+        let Planned { tube_type, texts, plan, repeats, started_at, lit_since } = planned;
         let (station_text, station) = &inputs.station;
-        let started_at = started_at(inputs).with_timezone(&station.time_zone).fixed_offset();
         let reference = station.reference(&inputs.serial).is_some();
         let run_kind = if reference { RunKind::Reference } else { RunKind::Product };
         let reference_checks = if reference { None } else { Some(bench_checks(inputs, started_at)?) };
         let mut technician = String::new();
-        let bench = bench::build(inputs, started_at, &mut technician)?;
+        let bench = bench::build(inputs, runs.len(), started_at, lit_since, &mut technician)?;
         let tube = inputs.scenario.as_ref().and_then(|scenario| scenario.tube(&inputs.serial));
         let of_tube =
             |field: fn(&crate::phantom::ScenarioTube) -> &String| tube.map(field).cloned().unwrap_or_default();
         let seed = inputs.seed.or(inputs.scenario.as_ref().map(|scenario| scenario.seed));
         let identity = Identity {
-            run_id: run_id(started_at.timestamp_millis(), &inputs.serial, earlier, seed),
+            run_id: run_id(started_at.timestamp_millis(), &inputs.serial, runs.len(), seed),
             serial: inputs.serial.clone(),
             tube_type,
             supplier: of_tube(|tube| &tube.supplier),
@@ -108,8 +114,10 @@ impl Opening {
             times_assumed: inputs.captures.as_ref().is_some_and(|folder| folder.first_at().is_none()),
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
             language: inputs.language.unwrap_or(station.language).stored(),
+            repeats,
             run_kind,
             reference_checks,
+            lit_since: lit_since.map(|since| since.to_rfc3339_opts(chrono::SecondsFormat::Millis, false)),
             ..Identity::default()
         };
         let opened = Opened {
@@ -146,8 +154,13 @@ fn bench_checks(inputs: &Inputs, at: DateTime<FixedOffset>) -> Result<Vec<Refere
 }
 
 /// When a new run starts: as told, else as the scenario or the first capture says, else now.
-fn started_at(inputs: &Inputs) -> DateTime<FixedOffset> {
-    let of_scenario = || inputs.scenario.as_ref()?.tube(&inputs.serial).map(|tube| tube.started_at);
+///
+/// * `not_before`: on the simulated bench, whose clock is its own, a run does not begin before the one before it ended.
+fn started_at(inputs: &Inputs, not_before: Option<DateTime<FixedOffset>>) -> DateTime<FixedOffset> {
+    let of_scenario = || {
+        let started_at = inputs.scenario.as_ref()?.tube(&inputs.serial)?.started_at;
+        Some(not_before.map_or(started_at, |earliest| started_at.max(earliest)))
+    };
     let of_captures = || inputs.captures.as_ref()?.first_at();
     inputs.start.or_else(of_scenario).or_else(of_captures).unwrap_or_else(|| Utc::now().fixed_offset())
 }
@@ -157,6 +170,10 @@ struct Planned {
     tube_type: String,
     texts: TypeTexts,
     plan: Plan,
+    /// The run that it repeats.
+    repeats: Option<Repeat>,
+    started_at: DateTime<FixedOffset>,
+    lit_since: Option<DateTime<FixedOffset>>,
 }
 
 /// Type, texts and plan of a new run.
@@ -178,7 +195,32 @@ fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<Planned, Failure> {
     let recipe = Recipe::parse(&texts.recipe_name, &texts.recipe).map_err(|faults| faulty("recipe", &faults))?;
     let plan = Plan { recipe, limits, station: inputs.station.1.clone() };
     same_revision_same_text(&tube_type, &texts, &plan, runs)?;
-    Ok(Planned { tube_type, texts, plan })
+    let finished = earlier::Finished::of(runs);
+    // A reference tube is measured at every shift: it judges the bench, and nothing is retested.
+    let reference = inputs.station.1.reference(&inputs.serial).is_some();
+    let repeats = if reference { None } else { repeats(inputs, &tube_type, &plan, &finished)? };
+    let zone = inputs.station.1.time_zone;
+    let started_at = started_at(inputs, earlier::not_before(&finished)).with_timezone(&zone).fixed_offset();
+    let lit_since =
+        inputs.lit_since.as_ref().map(|(from, text)| lit_since(from, text, started_at, zone)).transpose()?;
+    Ok(Planned { tube_type, texts, plan, repeats, started_at, lit_since })
+}
+
+/// Which earlier run the new one repeats, if it may be opened at all.
+fn repeats(
+    inputs: &Inputs,
+    tube_type: &str,
+    plan: &Plan,
+    finished: &[earlier::Finished<'_>],
+) -> Result<Option<Repeat>, Failure> {
+    let life = life_of(inputs.store.reports(), &inputs.serial).map_err(|error| Failure::store(&error))?;
+    let wanted = earlier::Wanted {
+        serial: &inputs.serial,
+        tube_type,
+        why: inputs.retest.as_deref(),
+        retests: plan.recipe.retests,
+    };
+    earlier::allow(&wanted, finished, &life)
 }
 
 /// `--type`, else the answers, else the serial's last run, else the scenario, else a person.

@@ -10,7 +10,7 @@ const CHARACTERS: usize = 64;
 const BYTES: usize = 200;
 
 /// A serial is what the scanner sends: 1 to 64 printable characters, at most 200 bytes. `/` and `..` are allowed.
-pub(super) fn check(serial: &str) -> Result<(), Failure> {
+pub(in crate::cli) fn check(serial: &str) -> Result<(), Failure> {
     let wrong = |found: String| {
         let expected = format!("expected 1 to {CHARACTERS} printable characters and at most {BYTES} bytes");
         Err(Failure::unusable(format!("the serial number cannot be used: {found}; {expected}: scan it again")))

@@ -19,6 +19,7 @@ use crate::record::question::Question;
 use crate::record::sheet::{Row, Sheet, Value};
 use crate::report::row_line;
 use crate::run::{Remark, Run};
+use crate::station::standing::holds;
 
 /// A rewritten line changes this often at most.
 const REWRITE_EVERY: Duration = Duration::from_millis(200);
@@ -68,6 +69,11 @@ impl Show {
         let (serial, tube_type) = (&identity.serial, &identity.tube_type);
         output::talk(&format!("{serial}, type {tube_type}: sheet {how} in {}", folder.display()));
         output::talk(&format!("Decision rule: {}", run.sheet().rule));
+        if let Some(at) = run.sheet().started_at.filter(|_| identity.run_kind.is_product()) {
+            for sentence in holds(&run.plan().station, at, identity.reference_checks.as_deref()) {
+                output::talk(&format!("No verdict will be given: {}", sentence.english()));
+            }
+        }
         if again && !identity.from_captures {
             output::talk("Look first whether the supply is on and the tube lit: high voltage may still be there.");
         }

@@ -222,7 +222,8 @@ fn read(files: &[PathBuf], columns: Option<&Columns>) -> Result<Capture, String>
         if path.is_dir() {
             return Err(format!("`{0}` is a folder; name the files in it, such as `{0}/*.csv`", path.display()));
         }
-        let bytes = std::fs::read(path).map_err(|error| format!("cannot read `{}`: {error}", path.display()))?;
+        let bytes = std::fs::read(path)
+            .map_err(|error| format!("cannot read `{}`: {}", path.display(), crate::disk::said(&error)))?;
         contents.push((path.to_string_lossy().into_owned(), bytes));
     }
     let borrowed: Vec<(&str, &[u8])> = contents.iter().map(|(name, bytes)| (name.as_str(), bytes.as_slice())).collect();

@@ -34,7 +34,7 @@ pub struct SimulateArgs {
     #[arg(long = "type", value_name = "TYPE", default_value = "quad-375")]
     pub tube_type: String,
     /// How many captures.
-    #[arg(long, default_value_t = 20)]
+    #[arg(long, default_value_t = 20, value_parser = clap::value_parser!(u32).range(1..))]
     pub captures: u32,
     /// Time between captures.
     #[arg(long, default_value = "500 ms", value_parser = time)]

@@ -66,3 +66,49 @@ fn impossible_numbers_are_refused_by_name() {
     assert!(refused.starts_with("`--finesse` is 1 in SI units; expected 2 or more"), "{refused}");
     assert!(!folder.exists());
 }
+
+#[test]
+fn faults_change_the_captures_and_the_truth_says_how() {
+    let home = tempfile::tempdir().unwrap();
+    let made = |name: &str, more: &[&str]| {
+        let folder = home.path().join(name);
+        run(&args(&folder, &[&["--captures", "2", "--type", "plate-250"][..], more].concat())).unwrap();
+        let truth: serde_json::Value = serde_json::from_slice(&fs::read(folder.join(TRUTH)).unwrap()).unwrap();
+        (fs::read(folder.join("c00001.csv")).unwrap(), truth)
+    };
+    let (sound, truth) = made("sound", &[]);
+    assert_eq!((&truth["helium_share"], &truth["discharge"]), (&1.0.into(), &"salmon".into()));
+    let faults = ["--fault", "helium-lost=45%", "--fault", "walked-mirror = 0.1 mrad"];
+    let (captured, truth) = made("faulty", &faults);
+    assert!(captured != sound);
+    assert_eq!((&truth["helium_share"], &truth["discharge"]), (&0.55.into(), &"deep red-orange".into()));
+    assert_eq!((&truth["mirror_tilt_rad"], &truth["press_test"]), (&1e-4.into(), &"rises".into()));
+    assert!(truth["power_w"].as_f64().unwrap() < 0.5 * 2.5e-3, "{truth}");
+    // Zero of a fault is no fault: the same bytes.
+    let (same, _) = made("zero", &["--fault", "wear=0%", "--fault", "draught=0K"]);
+    assert!(same == sound);
+}
+
+#[test]
+fn faults_that_cannot_be_are_refused_with_what_can() {
+    for (given, words) in [
+        ("helium-lots=3%", "the nearest known one is `helium-lost`"),
+        ("wear", "`wear` has no amount"),
+        ("wear=150%", "expected 0 to 100 %"),
+        ("draught=3 MHz", "is not a unit of a temperature"),
+    ] {
+        let refused = Program::try_parse_from(["simulate", "x", "--fault", given]).map(|it| it.args.captures);
+        let words_found = refused.unwrap_err().to_string();
+        assert!(words_found.contains(words), "{given}: {words_found}");
+    }
+}
+
+#[test]
+fn help_and_readme_know_every_kind_of_fault() {
+    let help = <Program as clap::CommandFactory>::command().render_long_help().to_string();
+    let readme = include_str!("../../../README.md");
+    for kind in FAULT_KINDS {
+        assert!(help.contains(kind.word) && help.contains(kind.range), "{} in --help", kind.word);
+        assert!(readme.contains(&format!("`{}`", kind.word)), "{} in README", kind.word);
+    }
+}

@@ -21,6 +21,7 @@ use crate::{
 };
 pub use capture_text::{CaptureHead, simulated_capture_name, simulated_csv, simulated_light_csv};
 use state::State;
+pub use technician::INITIALS as SIMULATED_INITIALS;
 use technician::Technician;
 
 /// Average of the power reading that goes into a capture's head, ms.
@@ -49,6 +50,12 @@ impl SimulatedBench {
     /// Puts a world behind the traits.
     pub fn new(world: World, options: SimulatedOptions) -> Self {
         Self { state: Rc::new(RefCell::new(State::new(world, options))) }
+    }
+
+    /// The same with a tube that burnt for so long already when the run was opened, ms: a rack warmed it.
+    pub fn lit_for(self, ms: u64) -> Self {
+        self.state.borrow_mut().burns_for(ms);
+        self
     }
 
     /// The bench of a scenario's tube.

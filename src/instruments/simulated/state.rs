@@ -22,8 +22,8 @@ pub(super) struct State {
     pub options: SimulatedOptions,
     /// Bench time since the run was opened, ms.
     now_ms: u64,
-    /// Bench time of first light, ms, while the discharge burns.
-    first_light: Option<u64>,
+    /// Bench time of first light, ms, while the discharge burns; below zero where it burnt before the run.
+    first_light: Option<i64>,
     pub polarizer: Option<f64>,
     pub blocked: bool,
     /// Where bench time and wall time were last alike.
@@ -64,7 +64,7 @@ impl State {
         let signed = |ms: u64| i64::try_from(ms).unwrap_or(i64::MAX);
         let lit = self.first_light.is_some();
         let at = match self.first_light {
-            Some(light) => signed(self.now_ms.saturating_sub(light)),
+            Some(light) => signed(self.now_ms).saturating_sub(light).max(0),
             // From −1 down, so that every moment in the dark has noise of its own.
             None => -1 - signed(self.now_ms),
         };
@@ -73,7 +73,12 @@ impl State {
 
     /// First light, now. A tube that burns already stays as it is.
     pub fn switch_on(&mut self) {
-        self.first_light.get_or_insert(self.now_ms);
+        self.first_light.get_or_insert(i64::try_from(self.now_ms).unwrap_or(i64::MAX));
+    }
+
+    /// The tube burnt for so long already when the run was opened, ms.
+    pub fn burns_for(&mut self, ms: u64) {
+        self.first_light = Some(i64::try_from(ms).map_or(i64::MIN, |ms| -ms));
     }
 
     /// The discharge is out.

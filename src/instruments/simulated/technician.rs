@@ -12,7 +12,7 @@ use crate::{
 };
 
 /// Who stands in the record as having answered.
-const INITIALS: &str = "simulated";
+pub const INITIALS: &str = "simulated";
 /// Steps of the panel meters: 0.01 mA, 1 V; and of a stopwatch, 0.1 s.
 const CURRENT_STEP: f64 = 1e-5;
 const VOLTAGE_STEP: f64 = 1.0;

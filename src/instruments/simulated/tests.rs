@@ -124,3 +124,31 @@ fn the_technician_answers_from_the_truth() {
     assert_eq!(bench.person.answer(&look), Ok(Answer::Choice("clean".into())));
     assert_eq!(bench.person.initials(), "simulated");
 }
+
+#[test]
+fn looks_follow_from_the_truth_and_the_press_test_needs_light() {
+    let scenario = Scenario::demo();
+    let look = |step: &str, words: &[&str]| Question {
+        step: step.into(),
+        ..question("choice", false, Expects::Choice(words.iter().map(|word| (*word).to_owned()).collect()))
+    };
+    let press = look("press_test", &["steady", "rises", "falls"]);
+    let mut benches = ["DEMO-0002", "DEMO-0004", "DEMO-0008"]
+        .map(|serial| SimulatedBench::of_scenario(&scenario, serial, None, None, f64::INFINITY).unwrap().bench());
+    for bench in &mut benches {
+        assert!(matches!(bench.person.answer(&press), Ok(Answer::CannotSay(_))), "dark before the strike");
+        bench.person.answer(&start_delay()).unwrap();
+    }
+    let said = benches.map(|mut bench| {
+        let colour = look("discharge", &["salmon", "deep red-orange"]);
+        [&colour, &press].map(|question| match bench.person.answer(question) {
+            Ok(Answer::Choice(word)) => word,
+            other => unreachable!("{other:?}"),
+        })
+    });
+    assert_eq!(said, [["salmon", "steady"], ["deep red-orange", "steady"], ["salmon", "rises"]]);
+    // What the recipe has no word for is said, and not turned into another word.
+    let mut bench = SimulatedBench::of_scenario(&scenario, "DEMO-0004", None, None, f64::INFINITY).unwrap().bench();
+    let answer = bench.person.answer(&look("discharge", &["salmon", "pinkish"])).unwrap();
+    assert_eq!(answer, Answer::CannotSay("what is seen, `deep red-orange`, is none of salmon, pinkish".into()));
+}

@@ -2,10 +2,12 @@
 //! Must not smooth, fit or leave out what was measured.
 //! Main functions: [`sweep`], [`gain`], [`walk`]; main types: [`Frame`], [`Plot`].
 
+mod bench;
 mod gain;
 mod sweep;
 mod walk;
 
+pub use bench::{BENCH_HEIGHT, bench};
 pub use gain::gain;
 pub use sweep::sweep;
 pub use walk::walk;

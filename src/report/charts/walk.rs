@@ -25,11 +25,13 @@ pub fn walk(chart: Option<&WalkChart>, rows: &[Row], face: &Typeface, frame: Fra
         return missing(face, frame, &page::WALK, &page::NO_WALK);
     };
     let everything = || chart.points.iter().chain(&chart.prediction).filter(|(t, n)| t.is_finite() && n.is_finite());
-    let Some((_, last)) = range(everything().map(|point| point.0 / MINUTE)) else {
+    let Some((first, last)) = range(everything().map(|point| point.0 / MINUTE)) else {
         return missing(face, frame, &page::WALK, &page::EMPTY_WALK);
     };
     let (low, high) = range(everything().map(|point| point.1)).unwrap_or((0.0, 1.0));
-    let plot = Plot::new(frame, (0.0, last * 1.02), (low.min(0.0), high.max(1.0) * 1.08));
+    // Of a tube from the rack nothing is known of the time before.
+    let first = if chart.prediction.is_empty() && chart.tau.is_none() { first } else { 0.0 };
+    let plot = Plot::new(frame, (first, last + 0.02 * (last - first)), (low.min(0.0), high.max(1.0) * 1.08));
     let mut scene = Scene::default();
     titles(&mut scene, face, frame, face.word(&page::WALK), face.word(&page::WALK_SPACINGS));
     let drawn = |points: &[Point]| {

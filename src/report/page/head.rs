@@ -211,13 +211,18 @@ fn run(sheet: &Sheet, face: &Typeface) -> Vec<Said> {
     let started = sheet.started_at.map(|at| face.language.moment(at)).unwrap_or_default();
     let revisions = phrases::REVISIONS.with([figure(sheet.recipe.revision), figure(sheet.limits.revision)]);
     let took = Saying::list([took, dwell].into_iter().flatten(), &COMMA);
-    vec![
+    // Only where there is one: the head of an ordinary sheet stays as it is.
+    let repeats = sheet.identity.repeats.as_ref();
+    let repeats = repeats.map(|repeat| said(face.word(&phrases::REPEATS_RUN), &repeat.run_id));
+    let mut lines = vec![
         said(face.word(&phrases::STARTED), &started),
         said(face.word(&phrases::TOOK), &face.say(&took)),
         said(face.word(&phrases::RECIPE_LIMITS), &face.say(&revisions)),
         said(face.word(&phrases::RULE), &face.say(&rule(&sheet.rule))),
         said(face.word(&phrases::TECHNICIAN), &sheet.identity.technician),
-    ]
+    ];
+    lines.extend(repeats);
+    lines
 }
 
 /// One column of the head, a line for each thing said. Returns its last baseline.

@@ -37,7 +37,10 @@ pub(super) fn whole_cycles(book: &Notebook, from: &str, cycles: f64) -> Result<(
     if dwelt.end == Some(DwellEnd::Longest) {
         return Err(reasons::DID_NOT_SETTLE.with([name(from), figure(format!("{:.0}", dwelt.longest / 60.0))]));
     }
-    dwelt.warmup.last_cycles(cycles).ok_or_else(|| reasons::NO_WHOLE_CYCLES.with([name(from), figure(cycles)]))
+    dwelt.warmup.last_cycles(cycles).ok_or_else(|| match book.rack {
+        Some(_) => (&reasons::RACK_NO_CYCLE).into(),
+        None => reasons::NO_WHOLE_CYCLES.with([name(from), figure(cycles)]),
+    })
 }
 
 fn counts(room: &Room<'_>, from: &str, cycles: f64) -> [Filled; 2] {

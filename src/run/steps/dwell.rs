@@ -12,6 +12,7 @@ use crate::{
         filled::Filled,
         grid::Grid,
         notebook::{DwellEnd, Dwelt, Kept, Notebook},
+        rack,
     },
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
@@ -107,6 +108,9 @@ impl Dwell {
         }
         dwelt.seconds = glimpse.at;
         let state = dwelt.warmup.state();
+        if room.book.rack.is_some() {
+            return rack::is_over(&state, &self.keys);
+        }
         // A time constant known to no better than a half predicts nothing: a walk misread early must not end the dwell.
         let tau_known = state.tau.as_ref().is_none_or(|tau| tau.expanded() <= 0.5 * tau.value.abs());
         // What strayed from the fit over the last horizon (a draught) may stray again over the next.
@@ -141,7 +145,11 @@ impl Dwell {
         room.book.redraw(step);
         self.follow_again(room);
         let now = room.book.since_first_light(room.now_ms as f64 / 1e3);
+        let from_rack = room.book.rack.is_some();
         let Some(dwelt) = room.book.dwells.iter_mut().find(|dwelt| dwelt.step == step) else { return };
+        // At rest without the cycles wanted is at rest all the same.
+        let at_rest = from_rack && end == DwellEnd::Longest && rack::is_at_rest(&dwelt.warmup.state(), &self.keys);
+        let end = if at_rest { DwellEnd::Settled } else { end };
         dwelt.end = Some(end);
         if end != DwellEnd::SourceEnded || dwelt.seconds <= 0.0 {
             dwelt.seconds = now.max(dwelt.seconds);
@@ -149,6 +157,9 @@ impl Dwell {
         dwelt.warmup.finish();
         let state = dwelt.warmup.state();
         let longest = self.keys.longest_s / 60.0;
+        if from_rack && end == DwellEnd::Settled && state.cycles_seen < self.keys.rack_cycles {
+            room.book.holds.push((&reasons::RACK_NO_CYCLE_HOLD).into());
+        }
         match end {
             DwellEnd::Dark => room.book.dark = Some((&reasons::NO_LIGHT_FOR).into()),
             DwellEnd::Longest => {
@@ -164,9 +175,27 @@ impl Dwell {
             room.book.remark(reasons::UNREADABLE_FIRST.with([figure(self.n_lost), name(step), why]));
         }
         if room.book.dark.is_none() {
-            self.filled = self.rows(end, &state, room);
+            self.filled = match &room.book.rack {
+                Some(rack) => self.rack_rows(&rack.reason(), &state, room),
+                None => self.rows(end, &state, room),
+            };
             room.book.gain_chart = charts::gain_chart(room.book, step, room.plan.recipe.nominal_spacing);
         }
+    }
+
+    /// Of a tube from the rack only the rate at rest was seen here.
+    fn rack_rows(&self, reason: &Saying, state: &WarmupState, room: &Room<'_>) -> Vec<Filled> {
+        let glimpses: Vec<Glimpse> = room.book.of(room.step).iter().map(|seen| seen.glimpse.clone()).collect();
+        let drift = Drift::new(state, room.plan.recipe.nominal_spacing, &glimpses);
+        let rate = rack::resting(state, &self.keys).map(|rest| {
+            let u = rest.u_rate * state.spacing;
+            let line =
+                BudgetLine::direct("scatter", "scatter of the walk at rest", Evaluation::TypeA, u, f64::INFINITY);
+            drift.on(Measured::with_line(rest.rate * state.spacing, line), 1.0)
+        });
+        let mut rows: Vec<Filled> = KEYS[..4].iter().map(|key| Filled::absent(key, reason.clone())).collect();
+        rows.push(some_number(KEYS[4], rate.as_ref(), &(&reasons::NO_RATE).into()));
+        rows
     }
 
     fn rows(&self, end: DwellEnd, state: &WarmupState, room: &Room<'_>) -> Vec<Filled> {
@@ -271,7 +300,9 @@ impl Step for Dwell {
     fn begin(&mut self, room: &mut Room<'_>) {
         let first_light = *room.book.first_light_ms.get_or_insert(room.now_ms);
         self.wavelength = room.plan.recipe.wavelength;
-        self.grid = Grid::new(first_light, self.keys.early_every_s, self.keys.early_for_s, self.keys.every_s);
+        // A tube from the rack walks slowly from the first capture on.
+        let early_for = if room.book.rack.is_some() { 0.0 } else { self.keys.early_for_s };
+        self.grid = Grid::new(first_light, self.keys.early_every_s, early_for, self.keys.every_s);
         // Without a strike, first light is now and so is the first capture.
         self.next_ms = self.grid.at_or_after(room.now_ms);
         self.lit_ms = room.now_ms;

@@ -16,6 +16,9 @@ const U_BY_HAND: f64 = 0.05;
 /// Relative standard uncertainty of a start voltage from an instrument that no certificate names (from memory).
 const U_NO_CERTIFICATE: f64 = 0.05;
 
+/// Questions it puts.
+const STAGES: usize = 3;
+
 /// The step.
 pub(super) struct Strike {
     tries_at_most: u64,
@@ -75,7 +78,13 @@ pub(super) fn absent(key: &str, answer: &Answer) -> Filled {
 }
 
 impl Step for Strike {
-    fn begin(&mut self, _room: &mut Room<'_>) {}
+    fn begin(&mut self, room: &mut Room<'_>) {
+        if let Some(rack) = &room.book.rack {
+            let keys = ["start_delay", "start_tries", "start_voltage"];
+            self.filled = keys.map(|key| Filled::absent(key, rack.reason())).to_vec();
+            self.stage = STAGES;
+        }
+    }
 
     fn wants(&self) -> Wish {
         match self.stage {
@@ -111,6 +120,6 @@ impl Step for Strike {
     }
 
     fn expected_s(&self, _book: &Notebook) -> Option<f64> {
-        Some(5.0 * 3_usize.saturating_sub(self.stage) as f64)
+        Some(5.0 * STAGES.saturating_sub(self.stage) as f64)
     }
 }

@@ -3,12 +3,13 @@
 //! Main types: [`Interferometer`], [`PowerMeter`], [`Supply`], [`Polarizer`].
 
 use crate::{
+    constants::AIR_REFRACTIVITY,
     limits::{
         nearest,
         reading::{Item, Table},
     },
     quantity::Dimension,
-    uncertainty::Certificate,
+    uncertainty::{BudgetLine, Certificate, Evaluation},
 };
 
 /// Where an instrument's readings come from.
@@ -94,6 +95,27 @@ pub(super) const SUPPLY: &[&str] = &["source", "ballast", "ballast_distance", "u
 pub(super) const POLARIZER: &[&str] = &["source", "extinction", "u_angle"];
 /// A bench whose scale is known worse than this decides nothing.
 const WORST_RELATIVE_U: f64 = 0.2;
+
+impl Interferometer {
+    /// Free spectral range on the bench, Hz. The bench stands in air: a certificate for air holds as it is, one for vacuum
+    /// is divided by the refractive index. The light's frequencies are the same in both, so that nothing else is corrected.
+    pub fn fsr_in_air(&self) -> f64 {
+        match self.certificate.as_ref().map(|certificate| certificate.medium.as_str()) {
+            Some("vacuum") => self.fsr / (1.0 + AIR_REFRACTIVITY.value),
+            _ => self.fsr,
+        }
+    }
+
+    /// What the air adds to the budget, relative; none without a certificate, whose uncertainty is then all there is.
+    /// Where the certificate does not say its medium, the range may be off by the whole index, one way (rectangular).
+    pub fn air_line(&self) -> Option<BudgetLine> {
+        let (words, u) = match self.certificate.as_ref()?.medium.as_str() {
+            "" => ("medium of the certificate not stated", AIR_REFRACTIVITY.value / 3f64.sqrt()),
+            _ => ("refractive index of air: weather, height", AIR_REFRACTIVITY.u_value),
+        };
+        Some(BudgetLine::direct("air", words, Evaluation::TypeB, u, f64::INFINITY))
+    }
+}
 
 fn source(table: &Table<'_>, allowed: &[&str]) -> Option<Source> {
     let item = table.need("source")?;
@@ -209,4 +231,28 @@ fn certificate(table: &Table<'_>, has_medium: bool) -> Option<Option<Certificate
         _ => "",
     };
     Some(Some(Certificate { number: number?.to_owned(), date: date?, due: due?, medium: medium.to_owned() }))
+}
+
+#[cfg(test)]
+mod tests {
+    #![allow(clippy::unwrap_used)]
+    use crate::station::file::StationFile;
+
+    #[test]
+    fn a_certificate_for_vacuum_is_corrected_and_the_air_has_its_line() {
+        let of = |medium: &str| {
+            let text = format!(
+                "station = \"b\"\ntime_zone = \"UTC\"\n[interferometer]\nsource = \"folder\"\nfsr = \"8 GHz\"\n\
+                 fsr_u = \"0.3 %\"\ncertificate = {{ number = \"1\", date = 2026-01-12, due = 2027-01-12{medium} }}\n"
+            );
+            StationFile::parse("s.toml", &text).unwrap().interferometer.unwrap()
+        };
+        let [air, vacuum, unsaid] = [", in = \"air\"", ", in = \"vacuum\"", ""].map(of);
+        assert_eq!(air.fsr_in_air(), 8e9);
+        // 8 GHz × 2.7e-4 = 2.16 MHz less; the square of the index is 0.6 kHz.
+        assert!((vacuum.fsr_in_air() - (8e9 - 2.16e6)).abs() < 1e3, "{}", vacuum.fsr_in_air());
+        assert_eq!(unsaid.fsr_in_air(), 8e9);
+        let u = |it: &super::Interferometer| it.air_line().unwrap().standard_uncertainty;
+        assert!(u(&unsaid) > 5.0 * u(&air));
+    }
 }

@@ -1,0 +1,84 @@
+//! `tubewright rack`: which tubes burn in the rack since when, so that `inspect` need not be told.
+//! Must not say that a tube is warm: its dwell does.
+//! Main function: [`run`].
+
+use std::path::PathBuf;
+
+use chrono::{DateTime, SecondsFormat, Utc};
+use clap::{Args, Subcommand};
+
+use super::{Ending, Failure, home, inspect::check_serial, output};
+use crate::disk::Rack;
+
+/// Arguments as given.
+#[derive(Debug, Args)]
+pub struct Arguments {
+    #[command(subcommand)]
+    action: Action,
+    /// Folder that holds limits/ and reports/ (else TUBEWRIGHT_HOME, else the nearest parent with limits/)
+    #[arg(long, value_name = "DIR", global = true)]
+    home: Option<PathBuf>,
+    /// Folder of records
+    #[arg(long, value_name = "DIR", global = true)]
+    reports: Option<PathBuf>,
+}
+
+#[derive(Debug, Subcommand)]
+enum Action {
+    /// Note that tubes were lit in the rack
+    Add {
+        /// Serial numbers, as scanned
+        #[arg(value_name = "SERIAL", required = true)]
+        serials: Vec<String>,
+        /// Since when they burn (RFC 3339); else now
+        #[arg(long, value_name = "TIME")]
+        at: Option<String>,
+    },
+    /// Show the tubes in the rack
+    List,
+    /// Note that tubes were taken out or went dark
+    Take {
+        /// Serial numbers, as scanned
+        #[arg(value_name = "SERIAL", required = true)]
+        serials: Vec<String>,
+    },
+}
+
+/// Puts in, shows or takes out.
+pub fn run(arguments: Arguments) -> Result<Ending, Failure> {
+    let home = home::find(arguments.home, arguments.reports)?;
+    let mut rack = Rack::read(home.reports()).map_err(|error| Failure::store(&error))?;
+    match arguments.action {
+        Action::Add { serials, at } => {
+            let since = since(at.as_deref())?;
+            let put =
+                serials.iter().map(|serial| check_serial(serial).map(|()| (serial.trim().to_owned(), since.clone())));
+            let put = put.collect::<Result<Vec<_>, _>>()?;
+            rack.change(&put, &[]).map_err(|error| Failure::store(&error))?;
+        }
+        Action::List => {}
+        Action::Take { serials } => {
+            let take: Vec<String> = serials.iter().map(|serial| serial.trim().to_owned()).collect();
+            if let Some(missing) = take.iter().find(|serial| rack.since(serial).is_none()) {
+                let there: Vec<&str> = rack.tubes().map(|(serial, _)| serial).collect();
+                let there = if there.is_empty() { "nothing".to_owned() } else { there.join(", ") };
+                return Err(Failure::unusable(format!("`{missing}` is not in the rack; it holds {there}")));
+            }
+            rack.change(&[], &take).map_err(|error| Failure::store(&error))?;
+        }
+    }
+    for (serial, since) in rack.tubes() {
+        output::result(&format!("{serial}  burning since {since}"))?;
+    }
+    Ok(Ending::Accepted)
+}
+
+fn since(at: Option<&str>) -> Result<String, Failure> {
+    let Some(text) = at else { return Ok(Utc::now().to_rfc3339_opts(SecondsFormat::Secs, false)) };
+    match DateTime::parse_from_rfc3339(text) {
+        Ok(at) => Ok(at.to_rfc3339_opts(SecondsFormat::Secs, false)),
+        Err(_) => Err(Failure::unusable(format!(
+            "--at is `{text}`; expected a time such as 2026-03-02T07:40:00+00:00 (RFC 3339)"
+        ))),
+    }
+}
