@@ -224,6 +224,8 @@ pub(super) struct Choice {
     pub terms: usize,
     /// Factor on u for residuals larger than the centres' covariance allows (Birge ratio), at least 1.
     pub birge: f64,
+    /// The same for the places of single lines: they do not gain what the comb does.
+    pub birge_of_places: f64,
     /// Standard uncertainty for what one more term would change, beyond what scatter explains, Hz.
     pub truncation: f64,
     /// The part of it that stands for a series that goes on, Hz.
@@ -284,7 +286,7 @@ pub(super) fn choose(placed: &[Placed], covariance: &DMatrix<f64>, fsr: f64, off
     let goes_on = best + 1 >= SERIES_TERMS || (next.is_none() && best + 1 >= 3);
     let series = if goes_on { SERIES_SHARE * last_changes(&fits[..=best]) } else { 0.0 };
     let truncation = expected_term(placed, covariance, fsr, offsets, &fit, birge).unwrap_or(beyond).hypot(series);
-    Some(Choice { fit, terms: best + 1, birge, truncation, series, tried: fits })
+    Some(Choice { fit, terms: best + 1, birge, birge_of_places: birge, truncation, series, tried: fits })
 }
 
 #[cfg(test)]

@@ -21,6 +21,7 @@ mod remarks;
 mod repeat;
 mod samples;
 mod segment;
+mod separable;
 mod shared;
 mod steady;
 mod trace;

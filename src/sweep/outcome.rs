@@ -97,7 +97,8 @@ pub(super) fn fill(
     let half = segment.signal.len() as f64 / 2.0;
     let sign = if segment.rising { 1.0 } else { -1.0 };
     let choice = &assigned.choice;
-    let mut scale = Scale { segment, fit, axis: &choice.fit, half, fsr, birge: choice.birge, sign, reference: 0.0 };
+    let mut scale =
+        Scale { segment, fit, axis: &choice.fit, half, fsr, birge: choice.birge_of_places, sign, reference: 0.0 };
     scale.reference = scale.at(segment.reference);
     // One common width at the middle of the ramp, where the stretch is 1.
     let fwhm = fit.width * scale.slope(half);
@@ -125,6 +126,12 @@ pub(super) fn fill(
         if tooth.is_some() { &mut modes } else { &mut off_axis }.push((mode.position, mode));
     }
     finish_modes(modes, off_axis, fsr, result);
+    if let Some(spacing) = choice.fit.spacing {
+        // What the axis leaves out grows along the comb.
+        for mode in result.modes.iter_mut().chain(&mut result.off_axis) {
+            mode.u_offset = mode.u_offset.hypot(choice.truncation * mode.offset / spacing);
+        }
+    }
     result.mode_count = result.modes.iter().filter(|mode| mode.relative_height >= settings.mode_floor).count();
     warn_of_result(fit, choice, &assigned.classes, settings, segment, result);
     result.ramp_ends = segment.has_ramp.then(|| (segment.ramp_at(0.0), segment.ramp_at(2.0 * half)));

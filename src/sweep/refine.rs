@@ -100,6 +100,7 @@ impl Sharp {
         choice.fit.spacing = Some(self.global.shape.spacing);
         choice.fit.u_spacing = self.global.u_spacing * self.noise * self.global.memory.sqrt();
         choice.birge = self.birge;
+        choice.birge_of_places = choice.birge_of_places.max(self.birge);
         choice.truncation = self.truncation;
         swept.fitted.fit.width = self.global.shape.width / (choice.fit.slope(0.0) / half);
         if self.global.shape.pole.is_some() {
@@ -141,14 +142,17 @@ fn choose(tracks: &mut [Track<'_>], shape: &Shape) -> Option<(Global, Option<Wid
     }
 }
 
+/// Ramps with one term more for each that ends where the samples stop to show any: piezo ramps are no polynomials.
+const ODDS: f64 = 30.0;
+
 /// Standard uncertainty of the spacing for the axis term that was left out, Hz.
 ///
 /// Either the ramp has no such term, or it has one of the size that smooth ramps have ([`FALL_OFF`] of the last, normal
-/// about 0); before the samples are asked, one is as likely as the other. How much they speak for the second (the ratio of
+/// about 0), which before the samples are asked is [`ODDS`] times as likely. How much they speak for the second (the ratio of
 /// the two marginal likelihoods) weighs what the term, drawn toward 0 as its size asks, would change, and how far that
 /// change is known.
 fn truncation(global: &Global, wider: &Wider, noise: f64) -> f64 {
-    let (mut log_ratio, mut drawn) = (0.0, 0.0);
+    let (mut log_ratio, mut drawn) = (ODDS.ln(), 0.0);
     for (last, next) in global.last.iter().zip(&wider.last) {
         let (coefficient, u) = (next.0, next.1 * noise);
         let terms = global.axes.first().map_or(1, |axis| axis.len() - 1);

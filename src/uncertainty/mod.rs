@@ -152,4 +152,34 @@ mod tests {
         assert!((measured.u() - 31.7).abs() < 0.1);
         assert!((measured.dof() - 16.7).abs() < 0.3);
     }
+
+    #[test]
+    fn combines_as_the_impedance_example() {
+        // JCGM 100:2008, H.2: five simultaneous readings of V, mA, rad; R = 127.732, X = 219.847, Z = 254.260 ohm with
+        // u = 0.071, 0.295, 0.236. Means over the five make each reading's resistance one observation (approach 2).
+        let readings = [
+            (5.007, 19.663, 1.0456),
+            (4.994, 19.639, 1.0438),
+            (5.005, 19.640, 1.0468),
+            (4.990, 19.685, 1.0428),
+            (4.999, 19.678, 1.0433),
+        ];
+        let wanted = [(127.732, 0.071), (219.847, 0.295), (254.260, 0.236)];
+        for (which, (value, u)) in wanted.into_iter().enumerate() {
+            let one = |&(volt, milliampere, phase): &(f64, f64, f64)| {
+                let ohm = volt / milliampere * 1e3;
+                [ohm * f64::cos(phase), ohm * f64::sin(phase), ohm][which]
+            };
+            let values: Vec<f64> = readings.iter().map(one).collect();
+            let mean = values.iter().sum::<f64>() / 5.0;
+            let scatter = (values.iter().map(|v| (v - mean).powi(2)).sum::<f64>() / 20.0).sqrt();
+            let measured = Measured::with_line(mean, BudgetLine::direct("", "", Evaluation::TypeA, scatter, 4.0));
+            // Both approaches of the guide agree to the digits printed there, the last one rounded.
+            assert!(
+                (measured.value - value).abs() < 1e-3 && (measured.u() - u).abs() < 1e-3,
+                "{which}: {mean} {scatter}"
+            );
+            assert_eq!(measured.dof(), 4.0);
+        }
+    }
 }

@@ -271,6 +271,6 @@ pub struct Score {
     pub stated: f64,
     /// Root mean square bound, Hz.
     pub bound: f64,
-    /// Median time to measure, s.
+    /// Mean time to measure, s.
     pub time: f64,
 }

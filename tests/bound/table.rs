@@ -161,6 +161,6 @@ pub fn score(case: &Case, captures: usize, first_seed: u64) -> Score {
         covered: inside as f64 / n.max(1) as f64,
         stated: median(&mut ratios),
         bound,
-        time: median(&mut times),
+        time: times.iter().sum::<f64>() / times.len().max(1) as f64,
     }
 }
