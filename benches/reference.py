@@ -5,7 +5,8 @@ Reads captures (time_s, ramp_V, photodiode_V[, crossed_V]) with pandas' C reader
 window with curve_fit and an analytic Jacobian, sorts the centres into orders and teeth of a comb, and solves
 sum c_i P_i(x) - m * spacing = k * FSR for axis and spacing by weighted linear least squares, terms chosen by BIC.
 
-Usage: reference.py FSR_HZ NOMINAL_HZ CAPTURE...   prints one JSON object a capture: spacing_hz, u_hz, read_s, measure_s.
+Usage: reference.py FSR_HZ NOMINAL_HZ CAPTURE...   prints one JSON object a capture: spacing_hz, u_hz, times by
+the clock (read_s, measure_s) and by the processor (read_cpu_s, cpu_s).
 """
 import json
 import sys
@@ -121,9 +122,9 @@ def spacing_of(x, u, n, order, tooth, fsr):
 def main():
     fsr, nominal = float(sys.argv[1]), float(sys.argv[2])
     for path in sys.argv[3:]:
-        begun = time.perf_counter()
+        begun, begun_cpu = time.perf_counter(), time.process_time()
         ramp, signal = read(path)
-        read_at = time.perf_counter()
+        read_at, read_cpu = time.perf_counter(), time.process_time()
         try:
             first, end = rising_ramp(ramp)
             found = lines(signal[first:end])
@@ -132,8 +133,9 @@ def main():
             spacing, uncertainty = spacing_of(x, u, end - first, order, tooth, fsr)
         except (ValueError, IndexError, TypeError):
             spacing, uncertainty = None, None
-        done = time.perf_counter()
-        print(json.dumps({"spacing_hz": spacing, "u_hz": uncertainty, "read_s": read_at - begun, "measure_s": done - read_at}))
+        done, done_cpu = time.perf_counter(), time.process_time()
+        result = {"spacing_hz": spacing, "u_hz": uncertainty, "read_s": read_at - begun, "measure_s": done - read_at}
+        print(json.dumps(result | {"read_cpu_s": read_cpu - begun_cpu, "cpu_s": done_cpu - begun_cpu}))
 
 
 if __name__ == "__main__":

@@ -6,9 +6,10 @@ use chrono::DateTime;
 
 use super::{
     Interrupted,
-    engine::{Engine, measure_trace},
+    engine::{Engine, Measured, measure_trace},
 };
 use crate::record::event::{Captured, Event, Happening};
+use crate::record::finding::{CaptureFinding, Trace};
 use crate::record::light::LightCaptured;
 use crate::record::question::{Answer, Question};
 use crate::run::{At, Remark, Run};
@@ -23,6 +24,12 @@ const REPEATS: u32 = 1000;
 pub trait Watcher {
     /// One event was stored and taken.
     fn happened(&mut self, run: &Run, event: &Event, remarks: &[Remark]);
+    /// Whether it would show the next sweep: a trace is thinned for it then.
+    fn looks(&self) -> bool {
+        false
+    }
+    /// A sweep was measured; its trace is gone afterwards.
+    fn swept(&mut self, _finding: &CaptureFinding, _trace: Option<Trace>) {}
     /// A person is about to be asked.
     fn asking(&mut self, _question: &Question) {}
 }
@@ -118,13 +125,17 @@ impl Driver<'_> {
             }
             Err(trouble) => return self.trouble(trouble),
         };
-        let (mut fact, finding) = match engine.measure(&captured, request) {
+        let shown = self.watcher.looks();
+        let Measured { mut fact, finding, trace } = match engine.measure(&captured, request, shown) {
             Ok(measured) => measured,
             Err(reason) => return self.store(lost(reason, false), Durability::Now),
         };
         let durability = if request.keep { Durability::Now } else { Durability::Soon };
         if request.keep {
             fact.files = self.journal.keep(request.number, &captured)?;
+        }
+        if shown {
+            self.watcher.swept(&finding, trace);
         }
         let captured = Captured { step: request.step.clone(), number: request.number, fact, finding };
         self.store(Happening::Captured(Box::new(captured)), durability)

@@ -1,6 +1,6 @@
 //! Bytes of a capture → the fact and the finding that are stored.
 //! Must not open a file.
-//! Main type: [`Engine`].
+//! Main types: [`Engine`], [`Measured`].
 
 use sha2::{Digest as _, Sha256};
 
@@ -8,7 +8,7 @@ use super::finding::{finding_of, light_finding_of, trace_of};
 use crate::behaviour::{LightSettings, measure_light};
 use crate::capture::{CaptureError, Columns, read_many};
 use crate::record::event::CaptureFact;
-use crate::record::finding::CaptureFinding;
+use crate::record::finding::{CaptureFinding, Trace};
 use crate::record::light::LightFinding;
 use crate::run::Plan;
 use crate::station::{CaptureRequest, CapturedBytes, LightRequest};
@@ -46,19 +46,19 @@ impl Engine {
 
     /// Measures one capture.
     ///
+    /// * `shown`: somebody looks on: a thinned trace is made even if none is stored.
+    ///
     /// Errors: the bytes cannot be read as a capture, in words. A capture that can be read but not measured is a finding.
-    pub fn measure(
-        &self,
-        captured: &CapturedBytes,
-        request: &CaptureRequest,
-    ) -> Result<(CaptureFact, CaptureFinding), String> {
+    pub fn measure(&self, captured: &CapturedBytes, request: &CaptureRequest, shown: bool) -> Result<Measured, String> {
         let files: Vec<(&str, &[u8])> = captured.files.iter().map(|(name, b)| (name.as_str(), b.as_slice())).collect();
         let capture = read_many(&files, self.columns.as_ref()).map_err(|error| error.to_string())?;
         let measurement = measure(&capture, &self.settings);
         let mut finding = finding_of(&measurement);
         finding.warnings.extend(capture.remarks.iter().map(ToString::to_string));
+        let trace = (request.trace || shown).then(|| thin_trace(&capture, &measurement, TRACE_COLUMNS)).flatten();
+        let trace = trace.map(trace_of);
         if request.trace {
-            finding.trace = thin_trace(&capture, &measurement, TRACE_COLUMNS).map(trace_of);
+            finding.trace.clone_from(&trace);
         }
         let fact = CaptureFact {
             taken_s: captured.taken_ms as f64 / 1000.0,
@@ -68,8 +68,19 @@ impl Engine {
             power: capture.head.power,
             run_current: capture.head.run_current,
         };
-        Ok((fact, finding))
+        Ok(Measured { fact, finding, trace })
     }
+}
+
+/// What came of one capture.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Measured {
+    /// The fact, to be stored.
+    pub fact: CaptureFact,
+    /// The finding, to be stored.
+    pub finding: CaptureFinding,
+    /// The thinned trace for whoever looks on; not stored.
+    pub trace: Option<Trace>,
 }
 
 /// Measures one trace of the total light; needs no interferometer.

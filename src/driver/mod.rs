@@ -9,7 +9,7 @@ mod finding;
 mod tests;
 
 pub use drive::{Driver, Watcher, fold, resume};
-pub use engine::Engine;
+pub use engine::{Engine, Measured};
 pub use finding::finding_of;
 
 use crate::station::{JournalError, Trouble};

@@ -18,6 +18,6 @@ pub use simulated::{
     CaptureHead, SIMULATED_INITIALS, SimulatedBench, SimulatedOptions, simulated_capture_name, simulated_csv,
     simulated_light_csv,
 };
-pub use terminal::TerminalPerson;
-pub use typed::{expected, parse_answer};
+pub use terminal::{Charset, Colour, HandInterlock, Line, Look, Role, Screen, TerminalPerson, caution_lines};
+pub use typed::{expected, parse_answer, said};
 pub use wall::{TimeSource, WallClock, Zoned};

@@ -1,6 +1,6 @@
 //! From the text somebody typed to an answer, checked against what the question expects.
 //! Must not ask.
-//! Main functions: [`parse_answer`], [`expected`].
+//! Main functions: [`parse_answer`], [`expected`], [`said`].
 
 use crate::quantity::{UNITS, Unit, parse_as};
 use crate::record::question::{Answer, Expects, Question};
@@ -26,8 +26,25 @@ pub fn expected(expects: &Expects) -> String {
     }
 }
 
+/// An answer in words, in the unit of the question: `0.98 kV`, `clean`.
+pub fn said(question: &Question, answer: &Answer) -> String {
+    match answer {
+        Answer::Number(value) => {
+            let ucum = if let Expects::Number { ucum, .. } = &question.expects { ucum.as_str() } else { "" };
+            match unit_of(ucum) {
+                Some(unit) => format!("{} {}", shown(value / unit.factor), unit.symbol),
+                None => shown(*value),
+            }
+        }
+        Answer::Whole(count) => count.to_string(),
+        Answer::Choice(word) => word.clone(),
+        Answer::Done => "done".to_owned(),
+        Answer::CannotSay(reason) => format!("left open: {reason}"),
+    }
+}
+
 /// Six significant digits are more than a bound of what is possible has.
-fn shown(value: f64) -> String {
+pub(super) fn shown(value: f64) -> String {
     let rounded: f64 = format!("{value:.5e}").parse().unwrap_or(value);
     format!("{}", rounded + 0.0)
 }
@@ -83,7 +100,14 @@ mod tests {
     use super::*;
 
     fn question(expects: Expects) -> Question {
-        Question { step: "supply".into(), word: "w".into(), text: "?".into(), expects, high_voltage: false }
+        Question {
+            step: "supply".into(),
+            word: "w".into(),
+            text: "?".into(),
+            caution: String::new(),
+            expects,
+            high_voltage: false,
+        }
     }
 
     #[test]

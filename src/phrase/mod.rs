@@ -1,6 +1,6 @@
 //! Every sentence that can stand on a sheet, in one table: English and German side by side, and how they are put together.
 //! Must not decide what is said, and must not speak for data: CSV and JSON are English with a decimal point.
-//! Main types: [`Phrase`], [`Saying`], [`Language`]; the table: [`verdict`], [`reasons`], [`questions`], [`page`], [`outside`].
+//! Main types: [`Phrase`], [`Saying`], [`Language`]; the table: [`verdict`], [`reasons`], [`questions`], [`page`], [`terminal`], [`outside`].
 
 mod language;
 pub mod outside;
@@ -9,6 +9,7 @@ pub mod questions;
 pub mod reasons;
 mod recognise;
 mod saying;
+pub mod terminal;
 pub mod verdict;
 
 #[cfg(test)]
@@ -60,5 +61,5 @@ use table;
 
 /// Every phrase of every table, with its name.
 pub fn all() -> impl Iterator<Item = (&'static str, &'static Phrase)> {
-    [verdict::ALL, reasons::ALL, questions::ALL, page::ALL, outside::ALL].into_iter().flatten().copied()
+    [verdict::ALL, reasons::ALL, questions::ALL, page::ALL, outside::ALL, terminal::ALL].into_iter().flatten().copied()
 }

@@ -10,6 +10,7 @@ table! {
     PRESS_IN_THE_DARK = "there is no light to watch while the mount is pressed",
         "beim Drücken der Fassung ist kein Licht zu beobachten";
     SEEN_IS_NONE_OF = "what is seen, `{0}`, is none of {1}", "was zu sehen ist, `{0}`, ist keines von {1}";
+    NO_INSTRUMENT = "no instrument for it at this bench", "kein Messgerät dafür an diesem Messplatz";
     NOT_HERE = "not on this bench", "nicht an diesem Messplatz";
     CAPTURES_ONLY = "captures only: nobody at a bench", "nur Aufnahmen: niemand am Messplatz";
     NO_REASON = "no reason given", "kein Grund angegeben";

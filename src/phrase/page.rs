@@ -110,7 +110,8 @@ table! {
     BENCH_OF_TUBE = "{0}, {1}", "{0}, {1}";
     BENCH_BAND = "{0} ± {1} {2}: band; last check {3} {2}; a cross is out of bounds",
         "{0} ± {1} {2}: Band; letzte Prüfung {3} {2}; ein Kreuz liegt außerhalb der Grenzen";
-    BENCH_AXIS = "days since {0}; off by, {1}", "Tage seit {0}; Abweichung, {1}";
+    BENCH_AXIS = "days since {0}; upright: off by, % of what is allowed",
+        "Tage seit {0}; senkrecht: Abweichung in % der erlaubten";
     BENCH_NO_CHECK = "{0}, {1}: no check yet", "{0}, {1}: noch keine Prüfung";
     BENCH_SUMS = "cumulative sums, standard deviations: up solid, down dashed; alarm above {0}",
         "kumulative Summen, Standardabweichungen: aufwärts durchgezogen, abwärts gestrichelt; Alarm über {0}";

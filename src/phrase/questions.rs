@@ -5,18 +5,14 @@
 use super::table;
 
 table! {
-    SWITCH_ON = "Tube seated, leads covered, beam stop in place, hands clear: switch the supply on and time \
-        it until first light. Start pulses of up to 10 kV; laser radiation",
-        "Röhre sitzt, Anschlüsse abgedeckt, Strahlfänger am Platz, Hände weg: Netzteil einschalten und die Zeit bis \
-        zum ersten Licht nehmen. Zündimpulse bis 10 kV; Laserstrahlung";
+    SWITCH_ON = "Switch the supply on and time it until first light",
+        "Das Netzteil einschalten und die Zeit bis zum ersten Licht nehmen";
     TRIES = "Tries to start, at most {0}; 0 if there was no light", "Zündversuche, höchstens {0}; 0, wenn kein Licht kam";
     START_VOLTAGE = "Highest voltage at the anode in the first try", "Höchste Spannung an der Anode beim ersten Versuch";
     RUN_CURRENT = "Run current, in the cathode return", "Betriebsstrom, in der Kathodenrückleitung";
     RUN_VOLTAGE = "Run voltage at the supply", "Betriebsspannung am Netzteil";
-    DROPOUT = "Lower the current slowly until the discharge goes out and note the last current. The tube stays \
-        dark; charge stays in tube and ballast",
-        "Den Strom langsam senken, bis die Entladung erlischt, und den letzten Strom notieren. Die Röhre bleibt \
-        dunkel; in Röhre und Vorwiderstand bleibt Ladung";
+    DROPOUT = "Lower the current slowly until the discharge goes out and note the last current. The tube stays dark",
+        "Den Strom langsam senken, bis die Entladung erlischt, und den letzten Strom notieren. Die Röhre bleibt dunkel";
     TURN = "Turn the polarizer to {0}°, counter-clockwise looking toward the tube",
         "Den Polarisator auf {0}° drehen, gegen den Uhrzeigersinn mit Blick auf die Röhre";
     POLARIZER_OUT = "Take the polarizer out of the beam", "Den Polarisator aus dem Strahl nehmen";
@@ -31,5 +27,22 @@ table! {
         "Stellung der Messerschneide, bei der 10 % der Leistung durchgehen";
     KNIFE_AT_90 = "Position of the knife edge at which 90 % of the power passes",
         "Stellung der Messerschneide, bei der 90 % der Leistung durchgehen";
+    // Above a question, between two zigzags.
+    MIND_SWITCHING = "High voltage and laser light: start pulses reach 10 kV. Tube seated, leads covered, beam stop in \
+        place, eyewear on, hands clear. Local rules and licensed practice decide who may switch on.",
+        "Hochspannung und Laserlicht: Zündimpulse erreichen 10 kV. Röhre sitzt, Anschlüsse abgedeckt, Strahlfänger am \
+        Platz, Schutzbrille auf, Hände weg. Wer einschalten darf, bestimmen die örtlichen Regeln und die Zulassung.";
+    MIND_METERS = "High voltage: read the meter and touch nothing. Charge stays in tube and ballast. A probe goes on or \
+        off only with the supply off and both discharged with an insulated tool.",
+        "Hochspannung: ablesen, nichts berühren. In Röhre und Vorwiderstand bleibt Ladung. Ein Tastkopf wird nur bei \
+        ausgeschaltetem Netzteil angelegt oder abgenommen, nach Entladen beider mit isoliertem Werkzeug.";
+    MIND_BEAM = "Laser light: eyewear on, a beam stop behind, no reflection toward an eye. High voltage is on: hands \
+        stay clear of the tube and its leads.",
+        "Laserlicht: Schutzbrille auf, Strahlfänger dahinter, kein Reflex ins Auge. Hochspannung liegt an: Hände weg \
+        von der Röhre und ihren Anschlüssen.";
+    MIND_LOOKS = "Laser light and high voltage: never look along the beam. Before a hand or a lamp comes near the glass: \
+        supply off, tube and ballast discharged with an insulated tool. Local rules decide who may.",
+        "Laserlicht und Hochspannung: nie in den Strahl blicken. Bevor Hand oder Lampe dem Glas nahe kommen: Netzteil \
+        aus, Röhre und Vorwiderstand mit isoliertem Werkzeug entladen. Wer das darf, bestimmen die örtlichen Regeln.";
     OPEN_BEAM = "Open the beam again", "Den Strahl wieder freigeben";
 }

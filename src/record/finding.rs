@@ -80,6 +80,12 @@ pub struct ModeFinding {
     pub u_ramp: f64,
 }
 
+/// The letter of a mode on every chart, by its place among a capture's modes: a … z, then a1, b1 …
+pub fn mode_letter(index: usize) -> String {
+    let letter = (b'a'..=b'z').nth(index % 26).map_or('a', char::from);
+    if index < 26 { letter.to_string() } else { format!("{letter}{}", index / 26) }
+}
+
 /// One line of a budget.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct StoredLine {

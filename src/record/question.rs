@@ -13,6 +13,9 @@ pub struct Question {
     pub word: String,
     /// What the technician reads: "Run voltage at the supply".
     pub text: String,
+    /// What endangers whoever does it, and what to do against that; empty where nothing does.
+    #[serde(default, skip_serializing_if = "String::is_empty")]
+    pub caution: String,
     /// What counts as an answer.
     pub expects: Expects,
     /// The answer switches high voltage on: stored as asked before anybody may act.

@@ -19,7 +19,7 @@ pub use self::bench::{BenchChart, BenchPoint, BenchTitle, bench_csv, bench_pdf};
 pub use self::csv::{BUDGET_COLUMNS, RECORD_COLUMNS, budget_csv, record_csv};
 pub use self::escape::{neutralise, restore};
 pub use self::metadata::csv_metadata;
-pub use self::page::{Page, Part};
+pub use self::page::{CountBox, InBox, Page, Part, RowScale, boxes, telling};
 pub use self::pdf::PdfError;
 pub use self::read::{ReadRecord, ReadValue, hashes_in, read_record};
 pub use self::text::{ValueText, bound_text, probability_text, row_line, value_text};

@@ -1,9 +1,10 @@
-//! The line on laser class and the usual cautions.
+//! The line on laser class and the usual cautions; what stands above a question that sends a hand near the tube.
 //! Must not give a class as tested, nor a clearance: local rules and licensed practice decide.
-//! Main function: [`caution`].
+//! Main functions: [`caution`], [`of_question`].
 
 use crate::{
-    phrase::{Saying, name, reasons, said},
+    phrase::{Phrase, Saying, name, questions, reasons, said},
+    record::question::Expects,
     uncertainty::{COVERAGE, coverage_factor},
 };
 
@@ -23,9 +24,36 @@ pub(crate) fn caution(greatest_power: Option<(f64, f64)>) -> Saying {
     reasons::CAUTION.with([said(class)])
 }
 
+/// What stands above a question: what endangers whoever does it, and what to do against that; none where nothing does.
+///
+/// * `word`: the question's word; one that is not known here goes by what is done for it: a hand near the beam, a look.
+pub(super) fn of_question(word: &str, expects: &Expects, high_voltage: bool) -> Option<&'static Phrase> {
+    Some(match (word, expects) {
+        _ if high_voltage => &questions::MIND_SWITCHING,
+        ("start_voltage" | "run_current" | "run_voltage" | "dropout_current", _) => &questions::MIND_METERS,
+        (_, Expects::Done) => &questions::MIND_BEAM,
+        (_, Expects::Choice(_)) => &questions::MIND_LOOKS,
+        (_, Expects::Number { .. } | Expects::Whole { .. }) => return None,
+    })
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn hands_near_the_tube_are_cautioned() {
+        let number = Expects::Number { ucum: "kV".into(), lowest: 0.0, highest: 1.0 };
+        let needs = |word: &str, expects: &Expects, on: bool, words: &[&str]| {
+            let said = of_question(word, expects, on).map_or("", |phrase| phrase.en);
+            assert!(words.iter().all(|word| said.contains(word)), "{word}: {said}");
+        };
+        needs("start_delay", &number, true, &["High voltage", "hands clear", "licensed practice"]);
+        needs("run_voltage", &number, false, &["High voltage", "supply off", "insulated tool"]);
+        needs("turn_45.0", &Expects::Done, false, &["Laser light", "eyewear"]);
+        needs("choice", &Expects::Choice(vec![]), false, &["supply off", "insulated tool", "Local rules"]);
+        assert_eq!(of_question("tries", &Expects::Whole { lowest: 0, highest: 3 }, false), None);
+    }
 
     #[test]
     fn class_counts_the_uncertainty() {

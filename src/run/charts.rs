@@ -12,7 +12,7 @@ use crate::{
     behaviour::{GainPoint, WarmupState, gain_points},
     record::{
         event::Captured,
-        finding::ModeFinding,
+        finding::{ModeFinding, mode_letter},
         sheet::{ChartMode, GainChart, SweepChart, WalkChart},
     },
 };
@@ -32,13 +32,7 @@ pub(crate) fn sweep_chart(captured: &Captured, room: &Room<'_>) -> Option<SweepC
 
 fn chart_mode(index: usize, mode: &ModeFinding, off_axis: bool) -> ChartMode {
     let peak_height = mode.peak_height + mode.crossed_height.unwrap_or(0.0);
-    ChartMode { name: letter(index), offset: mode.offset, peak_height, fwhm: mode.fwhm, off_axis }
-}
-
-/// a … z, then a1, b1 …
-fn letter(index: usize) -> String {
-    let letter = (b'a'..=b'z').nth(index % 26).map_or('a', char::from);
-    if index < 26 { letter.to_string() } else { format!("{letter}{}", index / 26) }
+    ChartMode { name: mode_letter(index), offset: mode.offset, peak_height, fwhm: mode.fwhm, off_axis }
 }
 
 /// Wall time of a moment of the run.
@@ -118,7 +112,7 @@ mod tests {
 
     #[test]
     fn letters_and_thinning() {
-        assert_eq!([letter(0), letter(25), letter(27)], ["a", "z", "b1"]);
+        assert_eq!([mode_letter(0), mode_letter(25), mode_letter(27)], ["a", "z", "b1"]);
         for n in [0, 1, 299, 300, 301, 8000] {
             let points: Vec<usize> = (0..n).collect();
             let thin = thinned(&points);

@@ -34,7 +34,7 @@ use crate::{
     record::{
         event::{Happening, Identity},
         question::Question,
-        sheet::Sheet,
+        sheet::{Sheet, WalkChart},
     },
     station::file::Interferometer,
     station::{CaptureRequest, LightRequest, ReadingRequest, Want},
@@ -73,6 +73,8 @@ pub struct Progress {
     pub done_steps: usize,
     /// Steps of the recipe.
     pub n_steps: usize,
+    /// Expected seconds to the end of the step at hand; none where that cannot be said yet.
+    pub step_s: Option<f64>,
     /// Expected seconds to the end of the run; none where that cannot be said yet.
     pub expected_s: Option<f64>,
 }
@@ -163,8 +165,10 @@ impl Run {
             }
             Wish::Reading(what) => Want::Reading(ReadingRequest { step, what, not_before_ms: 0 }),
             Wish::Ask { word, text, expects, high_voltage } => {
-                let text = text.text(self.identity.language());
-                Want::Answer(Question { step, word, text, expects, high_voltage })
+                let language = self.identity.language();
+                let caution = caution::of_question(&word, &expects, high_voltage);
+                let caution = caution.map_or_else(String::new, |caution| caution.of(language).to_owned());
+                Want::Answer(Question { step, word, text: text.text(language), caution, expects, high_voltage })
             }
             // Only a recipe whose every step wants nothing, before its first event.
             Wish::Nothing => Want::WaitUntil { step, elapsed_ms: self.elapsed_ms },
@@ -187,8 +191,14 @@ impl Run {
             step: self.step_name().to_owned(),
             done_steps: self.current.min(self.steps.len()),
             n_steps: self.steps.len(),
+            step_s: left.first().and_then(|step| step.expected_s(&self.book)),
             expected_s,
         }
+    }
+
+    /// The walk as the sheet shows it, without the rest of the sheet.
+    pub fn walk(&self) -> Option<WalkChart> {
+        charts::walk_chart(&self.book).filter(|_| !self.identity.times_assumed)
     }
 
     /// The plan it was opened with.

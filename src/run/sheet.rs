@@ -9,7 +9,6 @@ use chrono::NaiveDate;
 use super::{
     Run,
     caution::caution,
-    charts,
     filled::Filled,
     rack::{self, Rack},
     reference,
@@ -68,7 +67,7 @@ pub(super) fn sheet_of(run: &Run) -> Sheet {
         rows,
         sweep_chart: run.book.sweep_chart.clone(),
         gain_chart: run.book.gain_chart.clone(),
-        walk_chart: charts::walk_chart(&run.book).filter(|_| !run.identity.times_assumed),
+        walk_chart: run.walk(),
         remarks: remarks(run),
         caution: caution(run.book.greatest_power),
         measured_by,

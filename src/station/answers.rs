@@ -253,6 +253,7 @@ choise = "clean"
             step: step.to_owned(),
             word: word.to_owned(),
             text: "What is it".to_owned(),
+            caution: String::new(),
             expects,
             high_voltage: false,
         };

@@ -106,13 +106,7 @@ fn half_window(width: f64) -> usize {
 }
 
 fn pass(signal: &[f64], baseline: f64, prominence: f64) -> Vec<Seen> {
-    // What stands out by so much stands so much above the lowest sample: all else need not be looked at.
-    let lowest = signal.iter().copied().fold(f64::INFINITY, f64::min);
-    let options = peaks::Options {
-        min_height: Some(lowest + prominence * (1.0 - 1e-9)),
-        min_prominence: Some(prominence),
-        ..Default::default()
-    };
+    let options = peaks::Options { min_prominence: Some(prominence), ..Default::default() };
     peaks::find(signal, &options)
         .into_iter()
         .map(|peak| Seen {

@@ -4,6 +4,8 @@
 
 use std::fmt;
 
+use crate::phrase::{Saying, figure, outside};
+
 /// Why a capture, or its spacing, cannot be measured.
 #[derive(Debug, Clone, PartialEq)]
 pub enum Refusal {
@@ -84,93 +86,45 @@ pub enum Refusal {
     Setting(String),
 }
 
+impl Refusal {
+    /// The refusal from the table of sentences. Stored events hold its English, which is known again there.
+    pub fn saying(&self) -> Saying {
+        let megahertz = |hertz: f64| figure(format!("{:.1}", hertz / 1e6));
+        let percent = |share: f64| figure(format!("{:.0}", share * 100.0));
+        match self {
+            Self::TooShort { samples } => outside::TOO_SHORT.with([figure(samples)]),
+            Self::NotFinite { sample } => outside::NOT_FINITE.with([figure(sample)]),
+            Self::Dark => (&outside::DARK).into(),
+            Self::Clutter { count } => outside::CLUTTER.with([figure(count)]),
+            Self::Fringes { share } => outside::FRINGES.with([percent(*share)]),
+            Self::OneOrder => (&outside::ONE_ORDER).into(),
+            Self::NoRepeat { share } => outside::NO_REPEAT.with([percent(*share)]),
+            Self::NoComb { share } => outside::NO_COMB.with([percent(*share)]),
+            Self::Ambiguous { first, second, nominal: Some(nominal) } => {
+                outside::AMBIGUOUS_NEAR.with([megahertz(*first), megahertz(*second), megahertz(*nominal)])
+            }
+            Self::Ambiguous { first, second, nominal: None } => {
+                outside::AMBIGUOUS.with([megahertz(*first), megahertz(*second)])
+            }
+            Self::OneMode => (&outside::ONE_MODE).into(),
+            Self::NoFit => (&outside::NO_FIT).into(),
+            Self::WeakScale => (&outside::WEAK_SCALE).into(),
+            Self::FarTooSlow { ratio } => outside::FAR_TOO_SLOW.with([figure(format!("{ratio:.0}"))]),
+            Self::FewLevels { levels } => outside::FEW_LEVELS.with([figure(format!("{levels:.0}"))]),
+            Self::Unsteady { change } => outside::UNSTEADY.with([percent(*change)]),
+            Self::FalseComb { spacing, nominal } => {
+                let phrase = if spacing < nominal { &outside::FALSE_COMB_PART } else { &outside::FALSE_COMB_MULTIPLE };
+                phrase.with([megahertz(*spacing), megahertz(*nominal)])
+            }
+            Self::NoTurn => (&outside::NO_TURN).into(),
+            Self::Setting(what) => Saying::outside(what),
+        }
+    }
+}
+
 impl fmt::Display for Refusal {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        match self {
-            Self::TooShort { samples } => {
-                write!(f, "the longest ramp has {samples} samples; at least 100 are needed: record more samples a ramp")
-            }
-            Self::NotFinite { sample } => write!(f, "sample {sample} is not a finite number; record the capture again"),
-            Self::Dark => {
-                write!(f, "no peak stands above the noise: is the tube lit and the beam on the interferometer?")
-            }
-            Self::Clutter { count } => write!(
-                f,
-                "clutter: {count} peaks on one ramp, more than any comb has; realign the interferometer, or reduce the ramp"
-            ),
-            Self::Fringes { share } => write!(
-                f,
-                "broad fringes, no peaks: the bumps are {:.0} % as wide as their distance; a finesse of 6 or more is needed",
-                share * 100.0
-            ),
-            Self::OneOrder => write!(
-                f,
-                "one order only: nothing repeats, so there is no frequency scale; raise the ramp until every mode shows twice"
-            ),
-            Self::NoRepeat { share } => write!(
-                f,
-                "the peaks do not repeat: only {:.0} % of their height is found again one order on; raise the ramp until every mode \
-                 shows twice, or realign the interferometer",
-                share * 100.0
-            ),
-            Self::NoComb { share } => write!(
-                f,
-                "the peaks form no comb: only {:.0} % of their height fits evenly spaced modes; realign and repeat",
-                share * 100.0
-            ),
-            Self::Ambiguous { first, second, nominal } => {
-                write!(f, "spacings of {:.1} MHz and {:.1} MHz fit equally well", first / 1e6, second / 1e6)?;
-                match nominal {
-                    Some(nominal) => write!(f, ", and neither is near the nominal {:.1} MHz", nominal / 1e6)?,
-                    None => write!(f, "; give the nominal spacing")?,
-                }
-                write!(f, ", or use an interferometer of another free spectral range")
-            }
-            Self::OneMode => write!(
-                f,
-                "one mode an order: a spacing needs two; take more captures while the tube walks, or remove the polarizer"
-            ),
-            Self::NoFit => write!(f, "the fit of the peaks did not come to rest; realign and repeat"),
-            Self::WeakScale => write!(
-                f,
-                "the peaks seen do not fix the frequency scale; raise the ramp until every mode shows at least twice"
-            ),
-            Self::FarTooSlow { ratio } => write!(
-                f,
-                "the detector is far too slow for this ramp: its time constant is {ratio:.0} times what the ramp takes for one \
-                 line; slow the ramp tenfold, or take the low-pass filter out"
-            ),
-            Self::FewLevels { levels } => write!(
-                f,
-                "the highest peak is only {levels:.0} steps of the digitizer high; raise the gain until it fills half of the range"
-            ),
-            Self::Unsteady { change } => write!(
-                f,
-                "one mode changes in height by {:.0} % against the others from order to order: the tube hopped or swapped in \
-                 mid-sweep, or two captures were spliced; take another capture",
-                change * 100.0
-            ),
-            Self::FalseComb { spacing, nominal } if spacing < nominal => write!(
-                f,
-                "the spacing reads {:.1} MHz, a whole part of the nominal {:.1} MHz: light between the modes looks like a comb of \
-                 its own; realign, set the gain so that no peak is lost, and repeat",
-                spacing / 1e6,
-                nominal / 1e6
-            ),
-            Self::FalseComb { spacing, nominal } => write!(
-                f,
-                "the spacing reads {:.1} MHz, a multiple of the nominal {:.1} MHz: modes between those seen are missing; realign, \
-                 set the gain so that no peak is lost, and repeat",
-                spacing / 1e6,
-                nominal / 1e6
-            ),
-            Self::NoTurn => write!(
-                f,
-                "no usable ramp channel, and the modes come out as if the ramp turned within the record; record the ramp, or at \
-                 least two and a half of its periods"
-            ),
-            Self::Setting(what) => f.write_str(what),
-        }
+        f.write_str(&self.saying().english())
     }
 }
 
@@ -300,6 +254,49 @@ impl fmt::Display for Warning {
                  mid-sweep, or the gain is not linear; repeat",
                 change * 100.0
             ),
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::phrase::Language;
+
+    /// Every refusal but a setting, which no stored event can hold.
+    fn all() -> [Refusal; 20] {
+        let combs = |nominal| Refusal::Ambiguous { first: 300.1e6, second: 150.04e6, nominal };
+        [
+            Refusal::TooShort { samples: 12 },
+            Refusal::NotFinite { sample: 0 },
+            Refusal::Dark,
+            Refusal::Clutter { count: 77 },
+            Refusal::Fringes { share: 0.4 },
+            Refusal::OneOrder,
+            Refusal::NoRepeat { share: 0.125 },
+            Refusal::NoComb { share: 0.5 },
+            combs(None),
+            combs(Some(999.3e6)),
+            Refusal::OneMode,
+            Refusal::NoFit,
+            Refusal::WeakScale,
+            Refusal::FarTooSlow { ratio: 31.4 },
+            Refusal::FewLevels { levels: 3.0 },
+            Refusal::Unsteady { change: 0.31 },
+            Refusal::FalseComb { spacing: 499.6e6, nominal: 999.3e6 },
+            Refusal::FalseComb { spacing: 1998.6e6, nominal: 999.3e6 },
+            Refusal::NoTurn,
+            Refusal::Setting(String::new()),
+        ]
+    }
+
+    #[test]
+    fn what_is_stored_is_known_again_in_every_language() {
+        for refusal in all() {
+            let again = Saying::outside(&refusal.to_string());
+            assert_eq!(again.english(), refusal.to_string());
+            assert_eq!(again.text(Language::German), refusal.saying().text(Language::German));
+            assert!(matches!(refusal, Refusal::Setting(_)) || again.text(Language::German) != again.english());
         }
     }
 }

@@ -12,9 +12,12 @@ use super::{
 };
 use crate::cli::{Ending, Failure};
 use crate::instruments::{
-    FilePerson, NoInstrument, Nobody, SimulatedBench, SimulatedOptions, TerminalPerson, WallClock, Zoned, folder_bench,
+    FilePerson, HandInterlock, NoInstrument, Nobody, Screen, SimulatedBench, SimulatedOptions, TerminalPerson,
+    WallClock, Zoned, folder_bench,
 };
-use crate::station::{Bench, Person};
+use crate::phrase::terminal as phrase;
+use crate::run::Run;
+use crate::station::{Bench, Person, Trouble, Want};
 
 /// Why a question is passed over where only captures are looked at.
 const CAPTURES_ONLY: &str = "captures only: nobody at a bench";
@@ -25,9 +28,10 @@ const NOT_ON_THIS_BENCH: &str = "not on this bench";
 const INITIALS_TRIES: usize = 3;
 
 /// A person at this terminal; initials not known yet.
-pub(super) fn terminal() -> TerminalPerson {
+pub(super) fn terminal(screen: &Screen) -> TerminalPerson {
     // Lines are read one at a time through the one buffer of the process: a second terminal loses nothing of a pipe.
-    TerminalPerson::new(String::new(), Box::new(Lines::default()), Box::new(io::stderr()))
+    let input = Box::new(Lines::over(screen.clone()));
+    TerminalPerson::new(String::new(), input, Box::new(io::stderr()), screen.clone())
 }
 
 /// Builds the bench.
@@ -45,7 +49,7 @@ pub(super) fn build(
 ) -> Result<Bench, Failure> {
     let bench = of_source(inputs, earlier, started_at, lit_since, technician)?;
     let clock = Box::new(Zoned::over(bench.clock, inputs.station.1.time_zone));
-    Ok(Bench { clock, interlock: Box::new(StopKey { inner: bench.interlock }), ..bench })
+    Ok(Bench { clock, interlock: Box::new(StopKey { inner: bench.interlock, screen: inputs.screen.clone() }), ..bench })
 }
 
 fn of_source(
@@ -72,14 +76,25 @@ fn of_source(
         captures: none(),
         meters: none(),
         person: person.unwrap_or_else(|| Box::new(Nobody::LeavesOpen(hint))),
-        interlock: none(),
+        interlock: if inputs.ask { Box::new(HandInterlock::new(terminal(&inputs.screen))) } else { none() },
     })
+}
+
+/// Waits until a person at a real bench has looked at supply and tube, before a run goes on that was interrupted.
+///
+/// Where high voltage has to come off anyway, the interlock asks. Errors: the input ended.
+pub(super) fn looked(inputs: &Inputs, run: &Run) -> Result<(), Trouble> {
+    let at_a_bench = inputs.ask && inputs.captures.is_none() && !inputs.simulated();
+    if !at_a_bench || matches!(run.wants(), Want::MakeSafe | Want::Finished) {
+        return Ok(());
+    }
+    terminal(&inputs.screen).wait_for(&phrase::LOOKED)
 }
 
 /// Who was named to answer: a person here, or a file.
 fn person(inputs: &Inputs, technician: &mut String) -> Result<Option<Box<dyn Person>>, Failure> {
     if inputs.ask {
-        let mut person = terminal();
+        let mut person = terminal(&inputs.screen);
         if technician.is_empty() {
             *technician = initials(&mut person)?;
         }

@@ -76,7 +76,8 @@ fn one(arguments: &Arguments, serial: &str) -> Line {
     let done = Inputs::read(arguments.for_day(), serial).and_then(|inputs| match finished(&inputs)? {
         Some(line) => Ok(line),
         None => {
-            let mut show = (inputs.format == Format::Text).then(|| Show::new(inputs.format, inputs.pace));
+            let mut show = (inputs.format == Format::Text)
+                .then(|| Show::new(inputs.format, inputs.pace, inputs.screen.clone(), inputs.ask));
             inspect(&inputs, show.as_mut()).map(|Done { sheet, folder }| of_sheet(&sheet, folder))
         }
     });

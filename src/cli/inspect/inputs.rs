@@ -10,7 +10,7 @@ use chrono::{DateTime, FixedOffset};
 use super::{Arguments, Format};
 use crate::cli::{Ending, Failure, home};
 use crate::disk::{Home, Rack, Store, demo_bench, said};
-use crate::instruments::CaptureFolder;
+use crate::instruments::{CaptureFolder, Screen};
 use crate::phantom::Scenario;
 use crate::phrase::Language;
 use crate::station::{
@@ -41,6 +41,8 @@ pub(super) struct Inputs {
     /// Ceiling on bench time; none on a bench that is not simulated.
     pub pace: Option<f64>,
     pub seed: Option<u64>,
+    /// Where the run is shown and people are asked.
+    pub screen: Screen,
     pub start: Option<DateTime<FixedOffset>>,
     /// Since when the tube burns already, as given, and where; none if it is struck here.
     pub lit_since: Option<(&'static str, String)>,
@@ -85,6 +87,7 @@ impl Inputs {
                 "`{name}` has no [interferometer]; expected one, since captures need its free spectral range `fsr`"
             )));
         }
+        let screen = arguments.screen.screen(arguments.language.unwrap_or(station.language));
         let answers = arguments.answers.as_deref().map(read_answers).transpose()?;
         let of_answers = || answers.as_ref().and_then(|answers| answers.retest.clone());
         let retest = arguments.retest.or_else(of_answers);
@@ -108,6 +111,7 @@ impl Inputs {
             ask: arguments.ask,
             pace: simulated.then(|| arguments.pace.unwrap_or(PACE)),
             seed: arguments.seed,
+            screen,
             start: arguments.start,
             language: arguments.language,
             format: arguments.format,

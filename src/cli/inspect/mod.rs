@@ -8,9 +8,11 @@ pub(super) mod earlier;
 mod freeze;
 mod inputs;
 mod lit_since;
+mod live;
 mod opening;
 mod outside;
 mod run_id;
+mod screen;
 pub(super) mod serial;
 mod show;
 mod stop;
@@ -95,6 +97,8 @@ pub struct Arguments {
     /// How to print
     #[arg(long, value_enum, default_value = "text")]
     format: Format,
+    #[command(flatten)]
+    screen: screen::ScreenArguments,
 }
 
 fn pace(text: &str) -> Result<f64, String> {
@@ -131,7 +135,7 @@ pub fn run(arguments: Arguments) -> Result<Ending, Failure> {
         return outside::stop(&Store::new(home.reports()), serial.trim(), why, arguments.format);
     }
     let inputs = Inputs::read(arguments, &serial)?;
-    let mut show = Show::new(inputs.format, inputs.pace);
+    let mut show = Show::new(inputs.format, inputs.pace, inputs.screen.clone(), inputs.ask);
     inspect(&inputs, Some(&mut show)).map(|done| ending_of(&done.sheet))
 }
 
@@ -164,16 +168,20 @@ fn inspect(inputs: &Inputs, mut show: Option<&mut Show>) -> Result<Done, Failure
         rack.change(&[], std::slice::from_ref(&inputs.serial)).map_err(|error| Failure::store(&error))?;
     }
     if let Some(show) = show.as_deref_mut() {
-        show.begun(&run, journal.path(), events.len() > 1);
+        show.begun(&run, journal.path());
         if let Some(repeat) = &opening.identity.repeats {
-            output::talk(&format!("Repeats run {} because: {}", repeat.run_id, repeat.reason));
+            show.say(&format!("Repeats run {} because: {}", repeat.run_id, repeat.reason));
         }
     }
     if let Err(why) = resume(&mut run, &mut opening.bench, &mut journal, &events) {
         return Err(interrupted(&why, journal.path()));
     }
-    if let (Some(show), Some(event)) = (show.as_deref_mut(), events.last()) {
-        show.happened(&run, event, &[]);
+    if let (Some(show), Some(last)) = (show.as_deref_mut(), events.last()) {
+        if events.len() > 1 {
+            show.taken_up(&run, last);
+            bench::looked(inputs, &run).map_err(|trouble| interrupted(&trouble.into(), journal.path()))?;
+        }
+        show.happened(&run, last, &[]);
     }
     let armed = stop::Armed::new();
     let mut unseen = Unseen;

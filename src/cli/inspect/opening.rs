@@ -237,7 +237,7 @@ fn tube_type(inputs: &Inputs, runs: &[FoundRun]) -> Result<String, Failure> {
     let of_answers = || inputs.answers.as_ref()?.tube_type.clone();
     let of_last = || runs.last().map(|run| run.opened.identity.tube_type.clone());
     let of_scenario = || Some(inputs.scenario.as_ref()?.tube(&inputs.serial)?.tube_type.clone());
-    let asked = || inputs.ask.then(|| bench::terminal().ask_line("Tube type")).flatten();
+    let asked = || inputs.ask.then(|| bench::terminal(&inputs.screen).ask_line("Tube type")).flatten();
     let given = inputs.tube_type.clone().or_else(of_answers).or_else(of_last).or_else(of_scenario).or_else(asked);
     given.ok_or_else(|| unknown_type(inputs, None))
 }

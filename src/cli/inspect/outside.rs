@@ -8,7 +8,7 @@ use super::{Format, earlier, finish, show::Show};
 use crate::cli::{Ending, Failure};
 use crate::disk::{DiskError, RunFolder, SerialLock, Store};
 use crate::driver::{Driver, resume};
-use crate::instruments::{NoInstrument, Nobody, WallClock};
+use crate::instruments::{NoInstrument, Nobody, Screen, WallClock};
 use crate::record::event::{Event, Identity, Opened};
 use crate::run::{Plan, Run};
 use crate::station::{Bench, Clock, Interlock, Moment, Trouble};
@@ -34,7 +34,7 @@ pub(super) fn stop(store: &Store, serial: &str, why: &str, format: Format) -> Re
     let mut bench = bench(&identity, &plan, reason);
     let mut run = Run::open(plan, identity);
     let (mut journal, events) = RunFolder::reopen(&found.path).map_err(disk)?;
-    let mut show = Show::new(format, None);
+    let mut show = Show::new(format, None, Screen::plain(), false);
     resume(&mut run, &mut bench, &mut journal, &events).map_err(|why| super::interrupted(&why, journal.path()))?;
     Driver { run: &mut run, bench: &mut bench, journal: &mut journal, engine: None, watcher: &mut show }
         .drive()

@@ -7,6 +7,7 @@ use std::process;
 use std::sync::atomic::{AtomicU8, Ordering};
 
 use crate::cli::{Ending, output};
+use crate::instruments::Screen;
 use crate::station::{Interlock, Trouble};
 
 /// Nothing can be stopped: Ctrl-C leaves at once.
@@ -64,6 +65,8 @@ fn was_asked() -> bool {
 /// An interlock that also hears the stop key.
 pub(super) struct StopKey {
     pub inner: Box<dyn Interlock>,
+    /// Where the question why is put.
+    pub screen: Screen,
 }
 
 impl Interlock for StopKey {
@@ -79,7 +82,9 @@ impl Interlock for StopKey {
         let mut err = io::stderr().lock();
         let _ = write!(err, "\r\x1b[2KStop: why? ").and_then(|()| err.flush());
         drop(err);
+        self.screen.interrupted();
         let line = read_line(&mut io::stdin().lock());
+        self.screen.wrote(1);
         was_asked();
         why(line)
     }
@@ -116,9 +121,15 @@ fn read_line(input: &mut dyn BufRead) -> Option<String> {
 pub(super) struct Lines {
     line: Vec<u8>,
     at: usize,
+    screen: Screen,
 }
 
 impl Lines {
+    /// Typed below what stands at the foot of a terminal.
+    pub fn over(screen: Screen) -> Self {
+        Self { screen, ..Self::default() }
+    }
+
     fn next(&mut self, input: &mut dyn BufRead) {
         self.at = 0;
         self.line.clear();
@@ -126,6 +137,8 @@ impl Lines {
             let text = match (was_asked(), reason(&line)) {
                 (false, _) => line,
                 (true, "") => {
+                    // What the stop key said, what was typed, and what is said now.
+                    self.screen.wrote(3);
                     output::talk("Going on: the question above still waits for its answer.");
                     continue;
                 }

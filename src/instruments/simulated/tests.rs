@@ -18,7 +18,14 @@ fn request(number: u64, not_before_ms: u64) -> CaptureRequest {
 }
 
 fn question(word: &str, high_voltage: bool, expects: Expects) -> Question {
-    Question { step: "strike".into(), word: word.into(), text: String::new(), expects, high_voltage }
+    Question {
+        step: "strike".into(),
+        word: word.into(),
+        text: String::new(),
+        caution: String::new(),
+        expects,
+        high_voltage,
+    }
 }
 
 fn start_delay() -> Question {

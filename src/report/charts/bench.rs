@@ -31,21 +31,22 @@ pub fn bench(chart: &BenchChart, face: &Typeface, frame: Frame) -> Scene {
     let band = [shown(chart.value), shown(chart.within), unit(), shown(last.value)];
     let title = face.say(&page::BENCH_OF_TUBE.with(of()));
     titles(&mut scene, face, frame, &title, &face.say(&page::BENCH_BAND.with(band)));
-    let far = chart.points.iter().map(|point| (point.value - chart.value).abs()).filter(|far| far.is_finite());
-    let reach = far.fold(chart.within, f64::max) * 1.15;
-    // Departures from the value: that is what a reader wants to see, and its ticks are short.
+    // Departures in shares of what is allowed: all charts read alike, and their ticks are short.
+    let off = |value: f64| 100.0 * (value - chart.value) / chart.within;
+    let far = chart.points.iter().map(|point| off(point.value).abs()).filter(|far| far.is_finite());
+    let reach = far.fold(100.0, f64::max) * 1.15;
     let plot = Plot::new(frame, x, (-reach, reach));
-    let (top, bottom) = (plot.at_y(chart.within), plot.at_y(-chart.within));
+    let (top, bottom) = (plot.at_y(100.0), plot.at_y(-100.0));
     scene.block((plot.left, top), (plot.right - plot.left, bottom - top), INSIDE);
     scene.line(vec![(plot.left, plot.at_y(0.0)), (plot.right, plot.at_y(0.0))], Stroke::dashed(BLUE, 0.7, 3.0, 2.0));
     for point in chart.points.iter().filter(|point| point.value.is_finite()) {
-        let place = plot.at((days(point.at), point.value - chart.value));
+        let place = plot.at((days(point.at), off(point.value)));
         match point.inside {
             true => scene.disc(place, 1.3, DARK),
             false => scene.cross(place, 2.8, Stroke::solid(RUST, 1.2)),
         }
     }
-    let axis = face.say(&page::BENCH_AXIS.with([day(first.at.date_naive()), unit()]));
+    let axis = face.say(&page::BENCH_AXIS.with([day(first.at.date_naive())]));
     plot.axes(&mut scene, face, &axis, 8, 3);
     let below = Frame { top: frame.top + frame.plot + 28.0, plot: SUMS, ..frame };
     sums(&mut scene, face, (chart, x), below, &days);

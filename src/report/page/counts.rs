@@ -1,6 +1,6 @@
 //! Boxes for a counted row: one a whole number, solid where allowed, dashed where not, the count marked in its box.
 //! Must not let meaning rest on colour.
-//! Main function: [`draw`].
+//! Main items: [`draw`], [`boxes`].
 
 use super::{
     super::{
@@ -16,8 +16,34 @@ const MOST: usize = 5;
 /// From box to box, pt.
 const STEP: f64 = 38.0;
 
-/// The boxes, their middle at `y`. Returns where they end; nothing is drawn where nothing is limited.
-pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) -> Option<f64> {
+/// What stands in a box.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum InBox {
+    /// Nothing.
+    Nothing,
+    /// The count, which is allowed.
+    Count,
+    /// The count, which is not.
+    Outside,
+    /// The count may be this as well.
+    Possible,
+}
+
+/// One box of a counted row, before it is drawn, on paper or on a terminal.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct CountBox {
+    /// Its number.
+    pub n: u64,
+    /// The limit allows it.
+    pub allowed: bool,
+    /// What stands in it.
+    pub mark: InBox,
+    /// The next box is further than one.
+    pub gap: bool,
+}
+
+/// The boxes of a counted row, ascending; none where nothing is limited.
+pub fn boxes(row: &Row) -> Option<Vec<CountBox>> {
     let Value::Count { value, low, high } = row.value else { return None };
     let judged = row.judged.last()?;
     let allowed = |n: u64| {
@@ -25,31 +51,45 @@ pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) -
         judged.lower.is_none_or(|lower| n >= lower) && judged.upper.is_none_or(|upper| n <= upper)
     };
     let numbers = shown(value, judged.lower, judged.upper);
+    let boxed = |(i, &n): (usize, &u64)| {
+        let mark = match n {
+            n if n == value && (judged.verdict == RowVerdict::Fail || !allowed(n)) => InBox::Outside,
+            n if n == value => InBox::Count,
+            n if (low..=high).contains(&n) => InBox::Possible,
+            _ => InBox::Nothing,
+        };
+        let gap = numbers.get(i + 1).is_some_and(|&next| next > n + 1);
+        CountBox { n, allowed: allowed(n), mark, gap }
+    };
+    Some(numbers.iter().enumerate().map(boxed).collect())
+}
+
+/// The boxes, their middle at `y`. Returns where they end; nothing is drawn where nothing is limited.
+pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) -> Option<f64> {
+    let boxes = boxes(row)?;
     let height = (pitch * 0.47).min(6.4);
-    for (i, &n) in numbers.iter().enumerate() {
+    for (i, boxed) in boxes.iter().enumerate() {
         let left = LEFT_END + 4.0 + STEP * i as f64;
         let frame: (Point, Point) = ((left, y - height / 2.0), (15.0, height));
-        if allowed(n) {
+        if boxed.allowed {
             scene.block(frame.0, frame.1, BEST);
             scene.outline(corners(frame.0, frame.1), Stroke::solid(GREY, 0.5));
         } else {
             scene.outline(corners(frame.0, frame.1), Stroke::dashed(MIST, 0.5, 1.5, 1.5));
         }
         let middle = (left + 7.5, y);
-        if n == value && (judged.verdict == RowVerdict::Fail || !allowed(n)) {
-            scene.cross(middle, 2.8, CROSS);
-        } else if n == value {
-            scene.disc(middle, 2.2, DARK);
-        } else if (low..=high).contains(&n) {
-            scene.ring(middle, 1.9, Stroke::solid(DARK, 0.7));
+        match boxed.mark {
+            InBox::Outside => scene.cross(middle, 2.8, CROSS),
+            InBox::Count => scene.disc(middle, 2.2, DARK),
+            InBox::Possible => scene.ring(middle, 1.9, Stroke::solid(DARK, 0.7)),
+            InBox::Nothing => {}
         }
         let style = Style::plain(SMALLEST, GREY);
         // What follows in the row is further than one: said by an ellipsis.
-        let gap = numbers.get(i + 1).is_some_and(|&next| next > n + 1);
-        let text = if gap { format!("{n} …") } else { n.to_string() };
+        let text = if boxed.gap { format!("{} …", boxed.n) } else { boxed.n.to_string() };
         scene.fitted(face, (left + 18.0, y + style.size * 0.35), Anchor::Start, &text, style, STEP - 21.0);
     }
-    Some(LEFT_END + 4.0 + STEP * numbers.len() as f64 - 15.0)
+    Some(LEFT_END + 4.0 + STEP * boxes.len() as f64 - 15.0)
 }
 
 /// The numbers that get a box: the count, the bounds, and their neighbours; ascending.

@@ -9,6 +9,12 @@ mod head;
 mod rows;
 mod scale;
 
+pub use self::{
+    counts::{CountBox, InBox, boxes},
+    rows::telling,
+    scale::RowScale,
+};
+
 use super::{
     charts::{self, Frame},
     scene::Scene,

@@ -1,6 +1,6 @@
 //! The scale drawing of a row: brackets for bounds, a dot for the value, a bar for its expanded uncertainty.
 //! Must not let meaning rest on colour: a value outside is a cross, one off the scale an arrow.
-//! Main function: [`draw`].
+//! Main items: [`draw`], [`RowScale`].
 
 use super::{
     super::{
@@ -12,6 +12,7 @@ use super::{
 };
 use crate::{
     measurand::{self, Measurand, Shape},
+    phrase::Language,
     record::sheet::{Judged, Row, RowVerdict, Value, Zone},
 };
 
@@ -28,21 +29,64 @@ pub const CROSS: Stroke = Stroke::solid(RUST, 1.5);
 /// How far, in spans of the bounds, a value may lie outside and still be drawn to scale.
 const FARTHEST: f64 = 3.0;
 
+/// The drawing of a row before it is drawn, on paper or on a terminal.
+pub struct RowScale {
+    axis: Axis,
+    /// Bounds of each grade that has any, best grade first, open ends at infinity; SI.
+    pub bounds: Vec<(f64, f64)>,
+    /// Value, SI.
+    pub value: f64,
+    /// Expanded uncertainty, SI; 0 where there is none.
+    pub expanded: f64,
+    /// The value is a lower bound.
+    pub open: bool,
+    /// Outside, or not conforming for the least demanding grade.
+    pub crossed: bool,
+    /// Lower bounds in figures, best grade first.
+    pub lower_text: String,
+    /// Upper bounds in figures.
+    pub upper_text: String,
+}
+
+impl RowScale {
+    /// None where nothing is limited or nothing can be drawn to scale.
+    pub fn of(row: &Row, language: Language) -> Option<Self> {
+        let (value, expanded, open) = match row.value {
+            Value::Number { value, .. } if !value.is_finite() => return None,
+            Value::Number { value, expanded, .. } => (value, if expanded.is_finite() { expanded } else { 0.0 }, false),
+            Value::AtLeast(least) => (least, 0.0, true),
+            _ => return None,
+        };
+        let bounds: Vec<(f64, f64)> = row.judged.iter().filter_map(bounds_of).collect();
+        if bounds.is_empty() {
+            return None;
+        }
+        let known = measurand::find(&row.measurand);
+        // To scale around the bounds that tell most: those of another grade would squeeze a doubt into a dot.
+        let telling: Vec<(f64, f64)> = rows::telling(row).and_then(bounds_of).into_iter().collect();
+        let axis = Axis::around(if telling.is_empty() { &bounds } else { &telling }, value, expanded, known);
+        let (lower_text, upper_text) = (
+            figures(row, known, language, |judged| judged.lower),
+            figures(row, known, language, |judged| judged.upper),
+        );
+        Some(Self { axis, bounds, value, expanded, open, crossed: crossed(row), lower_text, upper_text })
+    }
+
+    /// Place of a value on the axis, 0 at its left end, 1 at its right; beyond the ends, the end.
+    pub fn part(&self, value: f64) -> f64 {
+        self.axis.part(value)
+    }
+
+    /// The axis reaches a value.
+    pub fn reaches(&self, value: f64) -> bool {
+        (self.axis.from..=self.axis.to).contains(&value)
+    }
+}
+
 /// The drawing, its axis at `y`; nothing where nothing is limited.
 pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
-    let (value, expanded, open) = match row.value {
-        Value::Number { value, expanded, .. } => (value, if expanded.is_finite() { expanded } else { 0.0 }, false),
-        Value::AtLeast(least) => (least, 0.0, true),
-        _ => return,
-    };
-    let bounds: Vec<(f64, f64)> = row.judged.iter().filter_map(bounds_of).collect();
-    if bounds.is_empty() {
-        return;
-    }
-    let known = measurand::find(&row.measurand);
-    // To scale around the bounds that tell most: those of another grade would squeeze a doubt into a dot.
-    let telling: Vec<(f64, f64)> = rows::telling(row).and_then(bounds_of).into_iter().collect();
-    let axis = Axis::around(if telling.is_empty() { &bounds } else { &telling }, value, expanded, known);
+    let Some(scale) = RowScale::of(row, face.language) else { return };
+    let (axis, bounds) = (&scale.axis, &scale.bounds);
     let half = pitch * 0.235;
     scene.line(vec![(LEFT_END, y), (RIGHT_END, y)], Stroke::solid(RULE, 0.5));
     let widest = bounds.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |a, b| (a.0.min(b.0), a.1.max(b.1)));
@@ -54,12 +98,12 @@ pub fn draw(scene: &mut Scene, face: &Typeface, row: &Row, y: f64, pitch: f64) {
             scene.block((from, y - half), (to - from, 2.0 * half), ink);
         }
     }
-    for &(lower, upper) in &bounds {
+    for &(lower, upper) in bounds {
         bracket(scene, axis.inside(lower), 2.2, y, half + 1.4);
         bracket(scene, axis.inside(upper), -2.2, y, half + 1.4);
     }
-    numbers(scene, face, row, known, y);
-    mark(scene, &axis, (value, expanded), y, crossed(row), open);
+    numbers(scene, face, &scale, y);
+    mark(scene, axis, (scale.value, scale.expanded), y, scale.crossed, scale.open);
 }
 
 /// Bounds with open ends at infinity; none if there is no bound at all.
@@ -110,8 +154,13 @@ impl Axis {
 
     /// Place on the page; beyond the ends, the end.
     fn place(&self, value: f64) -> f64 {
+        LEFT_END + (RIGHT_END - LEFT_END) * self.part(value)
+    }
+
+    /// The same as a part of the axis.
+    fn part(&self, value: f64) -> f64 {
         let part = (value - self.from) / (self.to - self.from);
-        LEFT_END + (RIGHT_END - LEFT_END) * if part.is_nan() { 0.5 } else { part.clamp(0.0, 1.0) }
+        if part.is_nan() { 0.5 } else { part.clamp(0.0, 1.0) }
     }
 }
 
@@ -123,23 +172,30 @@ fn bracket(scene: &mut Scene, x: Option<f64>, serif: f64, y: f64, half: f64) {
     }
 }
 
-/// The bounds in figures at the ends of the axis, best grade first.
-fn numbers(scene: &mut Scene, face: &Typeface, row: &Row, known: Option<&'static Measurand>, y: f64) {
-    let listed = |bound: fn(&Judged) -> Option<f64>| {
-        let mut texts: Vec<String> = Vec::new();
-        for text in row.judged.iter().filter_map(bound).map(|b| bound_text(known, b, face.language)) {
-            if !texts.contains(&text) {
-                texts.push(text);
-            }
+/// Bounds in figures, best grade first, each once.
+fn figures(
+    row: &Row,
+    known: Option<&'static Measurand>,
+    language: Language,
+    bound: fn(&Judged) -> Option<f64>,
+) -> String {
+    let mut texts: Vec<String> = Vec::new();
+    for text in row.judged.iter().filter_map(bound).map(|b| bound_text(known, b, language)) {
+        if !texts.contains(&text) {
+            texts.push(text);
         }
-        texts.join(" · ")
-    };
+    }
+    texts.join(" · ")
+}
+
+/// The bounds in figures at the ends of the axis.
+fn numbers(scene: &mut Scene, face: &Typeface, scale: &RowScale, y: f64) {
     let style = Style::plain(SMALLEST, GREY);
     let baseline = y + style.size * 0.35;
     let room = |from: f64, to: f64| to - from - 5.0;
-    let (lower, upper) = (listed(|judged| judged.lower), listed(|judged| judged.upper));
-    scene.fitted(face, (LEFT_END - 4.0, baseline), Anchor::End, &lower, style, room(LABEL_LEFT, LEFT_END));
-    scene.fitted(face, (RIGHT_END + 4.0, baseline), Anchor::Start, &upper, style, room(RIGHT_END, LABEL_RIGHT));
+    let (lower, upper) = (&scale.lower_text, &scale.upper_text);
+    scene.fitted(face, (LEFT_END - 4.0, baseline), Anchor::End, lower, style, room(LABEL_LEFT, LEFT_END));
+    scene.fitted(face, (RIGHT_END + 4.0, baseline), Anchor::Start, upper, style, room(RIGHT_END, LABEL_RIGHT));
 }
 
 /// Value and uncertainty: a dot, a cross outside, an arrow off the scale or for "at least".
