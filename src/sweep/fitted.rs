@@ -142,16 +142,11 @@ fn hidden(samples: &Samples, fit: &LineFit, look: &Look) -> Vec<Seen> {
         min_distance: (fit.width / bin).ceil().max(1.0) as usize,
     };
     let found = crate::numerics::peaks::find(&smoothed, &options);
-    // A line that stands just beyond an end of the ramp shows its flank only, and no top.
-    let end = |at: Option<&f64>, x: f64| at.filter(|r| **r > threshold).map(|r| (x, *r));
-    let ends = [end(smoothed.first(), 0.0), end(smoothed.last(), samples.n as f64)];
     // A misfit top leaves residuals on the line itself: only what stands clear of every line is new.
     let clear = |x: f64| fit.centres.iter().all(|c| (c - x).abs() > 0.7 * fit.width);
     found
         .into_iter()
-        .map(|p| (p.index as f64 * bin + (bin - 1.0) / 2.0, p.height))
-        .chain(ends.into_iter().flatten())
-        .map(|(x, height)| Seen { x, height, width: fit.width })
+        .map(|p| Seen { x: p.index as f64 * bin + (bin - 1.0) / 2.0, height: p.height, width: fit.width })
         .filter(|p| clear(p.x))
         .take(12)
         .collect()

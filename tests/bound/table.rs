@@ -35,8 +35,8 @@ pub fn cases() -> Vec<Case> {
     cases.extend([
         Case { name: "outside: power law 0.8", up: Ramp::PowerLaw(0.8, 0.5), ..PLAIN },
         Case { name: "outside: power law 1.3", up: Ramp::PowerLaw(1.3, 0.5), ..PLAIN },
-        Case { name: "outside: creep 5 %", up: Ramp::Creep(0.03), orders: 3.4, ..PLAIN },
-        Case { name: "outside: wiggle 0.5 %", up: Ramp::Wiggle(0.02, 0.003, 0.7), orders: 3.4, ..PLAIN },
+        Case { name: "outside: creep 3 %", up: Ramp::Creep(0.03), orders: 3.4, ..PLAIN },
+        Case { name: "outside: wiggle 0.3 %", up: Ramp::Wiggle(0.02, 0.003, 0.7), orders: 3.4, ..PLAIN },
         Case {
             name: "outside: power law, 600 MHz",
             up: Ramp::PowerLaw(0.85, 0.4),
