@@ -13,18 +13,24 @@ const WANTED: f64 = 1.2;
 
 #[test]
 fn errors_stay_near_the_bound_and_inside_what_is_stated() {
-    let names = ["plain 375 mm", "noise 0.1 %", "2,500 samples", "250 mm, 10 GHz FSR", "both ramps, 2 modes"];
+    // Not here: cases of which single captures are refused or fall back on lines fitted singly (`reports/studies/accuracy.md`).
+    let names = ["plain 375 mm", "noise 5 %", "2,500 samples", "250 mm, 10 GHz FSR", "150 mm, 2 modes"];
     println!("{}", table::HEAD);
+    let mut faults = Vec::new();
     for case in table::cases().iter().filter(|case| names.contains(&case.name)) {
         let score = table::score(case, CAPTURES, 7);
         println!("{}", table::row(case, &score));
-        assert_eq!(score.none, 0, "{}: a spacing in every capture", case.name);
         let chance = 2.0 / (2.0 * CAPTURES as f64).sqrt();
-        assert!(score.rms < WANTED * (1.0 + chance), "{}: {} of the bound", case.name, score.rms);
-        // Three standard deviations of a mean over the captures, beyond a fifth of the bound.
-        assert!(score.bias.abs() < 0.2 + 3.0 * score.u_bias, "{}: biased by {}", case.name, score.bias);
-        // 95 % with a standard deviation of 2.8 % over 60 captures: three of them.
-        assert!(score.covered > 0.865, "{}: covered {}", case.name, score.covered);
-        assert!(score.stated < 1.5, "{}: states {} of the bound", case.name, score.stated);
+        // Three standard deviations of a mean over the captures beyond a fifth of the bound; 95 % with a standard
+        // deviation of 2.8 % over 60 captures: three of them.
+        let sound = score.none == 0
+            && score.rms < WANTED * (1.0 + chance)
+            && score.bias.abs() < 0.2 + 3.0 * score.u_bias
+            && score.covered > 0.865
+            && score.stated < 1.5;
+        if !sound {
+            faults.push(case.name);
+        }
     }
+    assert!(faults.is_empty(), "{faults:?}");
 }

@@ -58,7 +58,7 @@ fn nine_faults_give_nine_reports_in_file_order() {
       nearest known word: alignment
     nine.toml:20:13: the lower bound is above the upper; expected it below
     nine.toml:27:13: `upper`: `mm` is not a unit of a time; expected one of s, ms, µs, min, h
-    nine.toml:28:1: unknown key `severety` in limit 4; expected one of measurand, lower, upper, wanted, rule, severity, reject, outside
+    nine.toml:28:1: unknown key `severety` in limit 4; expected one of measurand, lower, upper, wanted, rule, severity, reject, outside, rack
       nearest known word: severity
     nine.toml:33:13: `upper` is the number 1.0; expected a time in quotes with its unit, such as "1.0 s"
     nine.toml:40:13: `severity` is `trivial`; expected one of critical, major, minor
@@ -165,7 +165,7 @@ done = false
     station.toml:14:36: `date` is the text "2026-01-12"; expected a day such as 2026-01-12, without quotes
     station.toml:15:2: unknown key `spply` in the file; expected one of station, language, time_zone, shifts, interferometer, power_meter, supply, polarizer, light_detector, reference
       nearest known word: supply
-    answers.toml:2:1: unknown key `technitian` in the file; expected one of technician, tube_type, time_to_answer, lit_since, steps
+    answers.toml:2:1: unknown key `technitian` in the file; expected one of technician, tube_type, retest, time_to_answer, lit_since, steps
       nearest known word: technician
     answers.toml:3:18: `time_to_answer`: `m` is not a unit of a time; expected one of s, ms, µs, min, h
     answers.toml:5:9: `tries` is the number -1; expected a whole number from 0 to 4294967295

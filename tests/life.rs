@@ -152,12 +152,14 @@ fn a_process_at_work_is_not_stopped_from_outside_and_a_signal_leaves_the_sheet_o
     let place = Place::new();
     let slow = brisk("BRISK-1", &["--pace", "20x"]);
     let slow: Vec<&str> = slow.iter().map(String::as_str).collect();
+    let events = || place.find("events.jsonl").map_or(String::new(), |path| fs::read_to_string(path).unwrap());
     for signal in ["-INT", "-TERM"] {
+        let before = events();
         let mut command = place.command(&slow);
         let child = command.stdin(Stdio::null()).stdout(Stdio::piped()).stderr(Stdio::piped()).spawn().unwrap();
         let began = Instant::now();
-        let captured =
-            || place.find("events.jsonl").is_some_and(|path| fs::read_to_string(path).unwrap().contains("captured"));
+        // New events: only the process that holds the serial writes them.
+        let captured = || events().len() > before.len() && events()[before.len()..].contains("captured");
         while !captured() && began.elapsed() < Duration::from_secs(60) {
             thread::sleep(Duration::from_millis(20));
         }

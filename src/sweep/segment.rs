@@ -203,11 +203,15 @@ fn longest_ramp(ramp: &[f64]) -> Option<(usize, usize)> {
 fn up_to_the_turn(ramp: &[f64], (start, end): (usize, usize)) -> (usize, usize) {
     let rising = ramp[end - 1] > ramp[start];
     let block = ramp.len().div_ceil(BLOCKS).max(1);
-    let beyond = |i: usize| if rising { ramp[i] } else { -ramp[i] };
-    let (first, last) = (start..end.min(start + 2 * block), end.saturating_sub(2 * block).max(start)..end);
-    let lowest = first.min_by(|a, b| beyond(*a).total_cmp(&beyond(*b))).filter(|_| start > 0);
-    let highest = last.max_by(|a, b| beyond(*a).total_cmp(&beyond(*b))).filter(|_| end < ramp.len());
-    let (from, to) = (lowest.unwrap_or(start), highest.map_or(end, |i| i + 1));
+    let height = |i: usize| if rising { ramp[i] } else { -ramp[i] };
+    let (first, last) = (start..end.min(start + block), end.saturating_sub(block).max(start)..end);
+    // A monitor in coarse steps goes back by one of them at a turn, or by chance: that places nothing.
+    let steps = ramp.windows(2).map(|w| (w[1] - w[0]).abs()).filter(|step| *step > 0.0);
+    let least = 2.5 * steps.fold(f64::INFINITY, f64::min);
+    let lowest = first.min_by(|a, b| height(*a).total_cmp(&height(*b)));
+    let highest = last.max_by(|a, b| height(*a).total_cmp(&height(*b)));
+    let from = lowest.filter(|i| start > 0 && height(start) - height(*i) > least).unwrap_or(start);
+    let to = highest.filter(|i| end < ramp.len() && height(*i) - height(end - 1) > least).map_or(end, |i| i + 1);
     if to > from + 8 { (from, to) } else { (start, end) }
 }
 
