@@ -75,9 +75,13 @@ pub fn envelope(points: &[GainPoint]) -> Result<Envelope, String> {
     let (left, right) = (crossing(&bins, half, false)?, crossing(&bins, half, true)?);
     // The top's own doubt moves both crossings: half of it, by the slope.
     let u_top = bins.iter().filter(|bin| bin.height == top).map(|bin| bin.u_height).fold(0.0, f64::max);
+    let width = (sorted.last().map_or(0.0, |p| p.detuning) - sorted.first().map_or(0.0, |p| p.detuning)) / count as f64;
+    let by_bins = "width of the bins at both crossings";
+    // Half a bin either way, rectangular, at each crossing.
+    let bins_line = BudgetLine::direct("envelope bins", by_bins, Evaluation::TypeB, width / 6f64.sqrt(), f64::INFINITY);
     let fwhm = Measured {
         value: right.0 - left.0,
-        budget: vec![scatter(left.1.hypot(right.1), f64::INFINITY), shape(0.5 * u_top * 2.0 * (left.2 + right.2))],
+        budget: vec![scatter(left.1.hypot(right.1), f64::INFINITY), shape(0.5 * u_top * (left.2 + right.2)), bins_line],
     };
     Ok(Envelope { span, fwhm, dip: dip(&bins, &sorted), filled: (bins.len(), count) })
 }
@@ -226,7 +230,8 @@ fn dip(bins: &[Bin], sorted: &[GainPoint]) -> Measured {
     let words = "greatest and least of many bins";
     let b = BudgetLine::direct("envelope bins", words, Evaluation::TypeB, chosen, f64::INFINITY);
     let found = Measured { value: depth, budget: vec![a, b] };
-    if depth > SIGNIFICANT * found.u() { found } else { none(found.u()) }
+    // What was not seen may hide as deep as what was found and its uncertainty: that is the expanded uncertainty then.
+    if depth > SIGNIFICANT * found.u() { found } else { none(0.5 * depth.max(0.0) + found.u()) }
 }
 
 /// Standard deviation of a bin about the line through its neighbours.

@@ -43,11 +43,15 @@ fn every_type_reads_its_envelope_within_the_stated_uncertainty() {
         let (span, fwhm, dip) = truth(&brisk);
         for seed in 1..=6 {
             let driven = brisk.drive(seed);
+            // A dwell of a minute shows some 300 modes, a tenth of a real one: a dip of 4 % may hide in it.
             for (key, truth) in [("lasing_span", span), ("envelope_fwhm", fwhm), ("dip_depth", dip)] {
                 let (value, u, _) = driven.number(key);
-                println!("{} {seed} {key} {value} ± {u}, truth {truth}: {}", brisk.name, (value - truth) / u);
                 pulls.push((key, (value - truth) / u));
-                assert!(u < 0.03 * truth.max(0.5), "{key} of {}: {value} ± {u}", brisk.name);
+                assert!(
+                    u < if key == "dip_depth" { 0.06 } else { 0.03 * truth },
+                    "{key} of {}: {value} ± {u}",
+                    brisk.name
+                );
             }
             let (gain, u, _) = driven.number("gain_ratio");
             assert!((gain - brisk.truth.gain_ratio).abs() < 2.0 * u, "{gain} ± {u}");

@@ -59,7 +59,7 @@ pub(super) fn add(arguments: &Arguments, store: &Store, serial: &str, kind: &str
 fn kind_of(word: &str) -> Result<LifeKind, Failure> {
     let words = LifeKind::ALL.map(LifeKind::word);
     LifeKind::ALL.into_iter().find(|kind| kind.word() == word).ok_or_else(|| {
-        let near = nearest(word, words.into_iter());
+        let near = nearest(word, words);
         let near = near.map_or_else(String::new, |near| format!("\n  nearest known word: {near}"));
         Failure::unusable(format!("`--add {word}` is not known; expected one of {}{near}", words.join(", ")))
     })

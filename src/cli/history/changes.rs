@@ -59,7 +59,7 @@ fn difference(old: &ReadValue, new: &ReadValue, shared: &[&str]) -> Option<(f64,
         let of = |number: &&str| {
             line.source_id.strip_prefix(number).is_some_and(|rest| rest.is_empty() || rest.starts_with('/'))
         };
-        line.evaluation == Evaluation::TypeB && shared.iter().any(|number| of(number))
+        line.evaluation == Evaluation::TypeB && shared.iter().any(of)
     };
     let (mut budget, mut common): (Vec<BudgetLine>, Vec<BudgetLine>) = (Vec::new(), Vec::new());
     for (sign, line) in lines(old, factor)?.map(|line| (-1.0, line)).chain(lines(new, factor)?.map(|line| (1.0, line)))

@@ -32,7 +32,7 @@ pub(super) fn json(past: &Past) -> String {
 fn run(number: usize, column: &Column) -> Json {
     let (who, record) = (&column.identity, &column.record);
     let or_null = |text: &str| if text.is_empty() { Json::Null } else { json!(text) };
-    let values: serde_json::Map<String, Json> = record.values.iter().flat_map(|value| fields(value)).collect();
+    let values: serde_json::Map<String, Json> = record.values.iter().flat_map(fields).collect();
     json!({
         "run": number,
         "run_id": who.run_id,

@@ -156,7 +156,7 @@ fn table(title: &str, lines: &[Line], n: usize) -> Result<(), Failure> {
     let (serial, words) = (wide(|line| &line.serial), wide(|line| &line.words));
     for line in lines {
         let folder = line.folder.as_ref().map(|folder| folder.display().to_string()).unwrap_or_default();
-        output::result(&format!("{:serial$}  {:words$}  {folder}", line.serial, line.words).trim_end())?;
+        output::result(format!("{:serial$}  {:words$}  {folder}", line.serial, line.words).trim_end())?;
         if !line.reason.is_empty() {
             output::result(&format!("{:serial$}  {}", "", line.reason))?;
         }

@@ -118,7 +118,6 @@ impl Opening {
             run_kind,
             reference_checks,
             lit_since: lit_since.map(|since| since.to_rfc3339_opts(chrono::SecondsFormat::Millis, false)),
-            ..Identity::default()
         };
         let opened = Opened {
             identity: identity.clone(),

@@ -11,6 +11,7 @@ use crate::{
     run::{
         filled::Filled,
         notebook::{DwellEnd, Notebook, Seen},
+        pool::median,
         spacing,
     },
     uncertainty::{BudgetLine, Evaluation, Measured},
@@ -88,7 +89,8 @@ fn ratio(seen: &Seen) -> Option<(f64, f64)> {
 }
 
 /// Largest ratio over the captures that stays for three in a row: light off the comb lasts for a stretch of the walk, a capture
-/// misread once does not. Of fewer than three captures, the largest.
+/// misread once does not. Of fewer than three captures, the largest. Where no capture shows any, 0 ± the median of their
+/// noises: one capture whose own peak is ill fitted must not put a sound tube in doubt.
 fn off_axis(captures: &[Seen]) -> Filled {
     let ratios: Vec<(f64, f64)> = captures.iter().filter_map(ratio).collect();
     let by_value = |a: &(f64, f64), b: &(f64, f64)| a.0.total_cmp(&b.0);
@@ -98,8 +100,10 @@ fn off_axis(captures: &[Seen]) -> Filled {
         three.get(1).copied()
     };
     let lasting = if ratios.len() < 3 { ratios } else { ratios.windows(3).filter_map(middle).collect() };
+    let median_u = median(lasting.iter().map(|(_, u)| *u).collect());
     match lasting.into_iter().max_by(by_value) {
         Some((value, u)) => {
+            let u = if value > 0.0 { u } else { median_u };
             let words = if value > 0.0 { "scatter of both peaks" } else { "noise of a peak's height" };
             let line = BudgetLine::direct("scatter", words, Evaluation::TypeA, u, f64::INFINITY);
             let note = if value > 0.0 { Saying::none() } else { (&reasons::NO_PEAK_OFF).into() };
