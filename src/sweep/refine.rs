@@ -25,6 +25,8 @@ pub(super) struct Swept<'a> {
 /// The model may leave this much more than the free lines do, per parameter saved, in units of the noise: F at 0.1 % for
 /// five to thirty parameters saved is 2 to 4.
 const MOST_F: f64 = 3.0;
+/// What the model leaves, over the noise of neighbouring samples: a reduced chi-square of 4 is a misfit.
+const MOST_NOISE: f64 = 2.0;
 /// Heights on the two ramps may differ by this share (root mean square) before they are not the same lights.
 const MOST_UNLIKE: f64 = 0.2;
 /// Terms that a fit starts with at least, where the lines give them: what is not needed is dropped.
@@ -77,6 +79,10 @@ impl Sharp {
             return None;
         }
         let noise = (left / global.dof).sqrt();
+        // Beside lines that fit badly themselves F says nothing: the samples must be described as well.
+        if noise > MOST_NOISE * main.segment.noise {
+            return None;
+        }
         // A series that goes on does so only where the terms that showed it stand.
         let terms = global.axes.first().map_or(0, |axis| axis.len() - 1);
         let goes_on = ramps.iter().filter(|(swept, ..)| terms >= swept.assigned.choice.terms);
