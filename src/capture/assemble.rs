@@ -291,11 +291,10 @@ fn time_base(
     let judged = judge(&sources[spot.0], spot.1, stamps, first);
     let (time, found) = judged.map_err(|e| if many { e.within(sources[spot.0].name) } else { e })?;
     remarks.extend(found);
-    for other in 0..sources.len() {
+    for (other, source) in sources.iter().enumerate() {
         let used = parts.spots().any(|(file, _)| file == other);
-        let Some(c) = sources[other].time.filter(|_| used && other != spot.0) else { continue };
-        let stamps = sources[other].columns[c][first..end].to_vec();
-        let source = &sources[other];
+        let Some(c) = source.time.filter(|_| used && other != spot.0) else { continue };
+        let stamps = source.columns[c][first..end].to_vec();
         let (second, _) = judge(source, c, stamps, first).map_err(|error| error.within(source.name))?;
         // Two exports of one record round alike; half a step is more than rounding can do to a fitted base.
         let apart = (second.start - time.start).abs() + (second.step - time.step).abs() * time.n as f64;

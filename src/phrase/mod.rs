@@ -51,7 +51,7 @@ impl Phrase {
 /// constants would sooner or later lack one.
 macro_rules! table {
     ($($name:ident = $en:literal, $de:literal;)*) => {
-        $(#[doc = $en]
+        $(#[doc = concat!("In English: \"", $en, "\".")]
         pub static $name: $crate::phrase::Phrase = $crate::phrase::Phrase::new($en, $de);)*
         /// Every phrase of this table with its name.
         pub static ALL: &[(&str, &$crate::phrase::Phrase)] = &[$((stringify!($name), &$name)),*];

@@ -166,8 +166,8 @@ table! {
         "Keine Netzlinie hebt sich vom Rauschen ab: {0} Hz angenommen.";
     HARMONICS = "{0} harmonics of {1} Hz, {2} s; {3} % could hide in the noise",
         "{0} Harmonische von {1} Hz, {2} s; {3} % könnten im Rauschen verborgen sein";
-    NO_TONE = "no line stands above the noise, {0}; a tone of the discharge may lie higher",
-        "keine Linie ragt aus dem Rauschen, {0}; ein Störton der Entladung kann höher liegen";
+    NO_TONE = "none above the noise, {0}; that of the discharge may lie higher",
+        "keiner über dem Rauschen, {0}; der der Entladung kann höher liegen";
     TONE_OF_MODES = "moved between two traces, as a beat of modes does: no fault",
         "zwischen zwei Aufnahmen gewandert, wie eine Modenschwebung: kein Fehler";
     TONE_MOVING = "moved between two traces, too high for a beat of modes: points at the discharge",
