@@ -132,8 +132,8 @@ fn a_run_is_stopped_from_outside_and_the_next_one_names_it() {
     let folder = &folders(&place, "BRISK-1")[0];
     let events = text(folder, "events.jsonl");
     assert!(
-        events.contains("\"kind\":\"stopped\"") && events.contains("\"kind\":\"made_safe\""),
-        "made safe after the stop"
+        events.contains("\"kind\":\"stopped\"") && events.contains("\"kind\":\"not_made_safe\""),
+        "a stop from outside does not claim that somebody switched off"
     );
     // What was measured is kept, the rest says why it is empty.
     let record = text(folder, "record.csv");

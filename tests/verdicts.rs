@@ -338,7 +338,7 @@ fn the_sentences_of_a_verdict() {
     * Power: prime lost in doubt; alignment, 0.30 mW, holds
 
     pass, grade alignment.
-    Not prime: power 0.450 mW is below 0.50 mW; axis swaps: 58, above 0. Marked: output mirror film, wanted clean (minor).
+    Not prime: power 0.450 mW is below 0.50 mW; likely cause: mirror sputtered; axis swaps: 58, above 0; likely cause: axes swap at a fixed place under the gain line, for life. Marked: output mirror film, wanted clean (minor).
     * Power: prime lost: below 0.50 mW; alignment, 0.30 mW, holds
     * Axis swaps: prime lost: above 0; alignment holds
       output mirror: marked-mirror: wanted clean; minor, the grade stays

@@ -96,8 +96,12 @@ impl Driver<'_> {
     }
 
     fn make_safe(&mut self) -> Result<(), Failed> {
-        self.bench.interlock.make_safe()?;
-        self.store(Happening::MadeSafe, Durability::Now)
+        let happened = match self.bench.interlock.make_safe() {
+            Ok(()) => Happening::MadeSafe,
+            Err(Trouble::NotHere(reason)) => Happening::NotMadeSafe { reason },
+            Err(trouble) => return self.trouble(trouble),
+        };
+        self.store(happened, Durability::Now)
     }
 
     fn wait_until(&mut self, elapsed_ms: u64) -> Result<(), Failed> {

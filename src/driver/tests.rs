@@ -31,6 +31,7 @@ impl Watcher for Kinds {
     fn happened(&mut self, _: &Run, event: &Event, _: &[Remark]) {
         self.0.push(match event.what {
             Happening::MadeSafe => "made_safe",
+            Happening::NotMadeSafe { .. } => "not_made_safe",
             Happening::Asked { .. } => "asked",
             Happening::Answered { .. } => "answered",
             Happening::CaptureLost { .. } => "lost",

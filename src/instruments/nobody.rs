@@ -52,6 +52,6 @@ impl Meters for NoInstrument {
 
 impl Interlock for NoInstrument {
     fn make_safe(&mut self) -> Result<(), Trouble> {
-        Ok(())
+        Err(Trouble::NotHere(self.reason.clone()))
     }
 }

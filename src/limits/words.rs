@@ -32,8 +32,12 @@ pub fn fail(rows: &[&Limited<'_>], all: &[Row]) -> Saying {
     let judged = first.entries(RowVerdict::Fail).last();
     let told = |judged| SENTENCE.with([opening(with_cause(why(first.row, judged), first.row, all))]);
     let reason = judged.map_or_else(Saying::none, told);
-    let mut codes: Vec<&str> = others.iter().filter_map(|row| row.limit.reject.as_deref()).collect();
-    codes.dedup();
+    let mut codes: Vec<&str> = Vec::new();
+    for code in others.iter().filter_map(|row| row.limit.reject.as_deref()) {
+        if Some(code) != first.limit.reject.as_deref() && !codes.contains(&code) {
+            codes.push(code);
+        }
+    }
     let also = if codes.is_empty() { Saying::none() } else { ALSO.with([names(&codes, &COMMA)]) };
     Saying::list([reason, also], &SPACE)
 }

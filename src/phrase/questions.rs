@@ -40,9 +40,10 @@ table! {
         stay clear of the tube and its leads.",
         "Laserlicht: Schutzbrille auf, Strahlfänger dahinter, kein Reflex ins Auge. Hochspannung liegt an: Hände weg \
         von der Röhre und ihren Anschlüssen.";
-    MIND_LOOKS = "Laser light and high voltage: never look along the beam. Before a hand or a lamp comes near the glass: \
-        supply off, tube and ballast discharged with an insulated tool. Local rules decide who may.",
-        "Laserlicht und Hochspannung: nie in den Strahl blicken. Bevor Hand oder Lampe dem Glas nahe kommen: Netzteil \
-        aus, Röhre und Vorwiderstand mit isoliertem Werkzeug entladen. Wer das darf, bestimmen die örtlichen Regeln.";
+    MIND_LOOKS = "Laser light and high voltage: never look along the beam. No hand near a tube that burns, but by an insulated \
+        tool where the question asks for it; else supply off, tube and ballast discharged first. Local rules decide who may.",
+        "Laserlicht und Hochspannung: nie in den Strahl blicken. Keine Hand an eine brennende Röhre, außer mit isoliertem \
+        Werkzeug, wo die Frage es verlangt; sonst erst Netzteil aus, Röhre und Vorwiderstand entladen. Wer das darf, \
+        bestimmen die örtlichen Regeln.";
     OPEN_BEAM = "Open the beam again", "Den Strahl wieder freigeben";
 }

@@ -22,6 +22,8 @@ table! {
     UNTIMED = "The captures carry no time: they were taken in their order.",
         "Die Aufnahmen tragen keine Zeit: sie gelten in ihrer Reihenfolge.";
     DARK_TUBE = "Dark tube: {0}.", "Dunkle Röhre: {0}.";
+    NOT_MADE_SAFE = "Nobody stood at the switch when this run ended: whether the high voltage is off is not known.",
+        "Beim Ende dieses Laufs stand niemand am Schalter: ob die Hochspannung aus ist, ist nicht bekannt.";
     STOPPED = "Stopped: {0}", "Abgebrochen: {0}";
     REPEATS = "Repeats run {0} because: {1}.", "Wiederholt Lauf {0}, Grund: {1}.";
     CLOCK_BACK = "The clock on the wall was set back by {0} s: times on this sheet go on from before.",

@@ -85,6 +85,11 @@ pub enum Happening {
     Waited,
     /// High voltage is off.
     MadeSafe,
+    /// Nobody stood at the switch: whether high voltage is off is not known.
+    NotMadeSafe {
+        /// Why, in words.
+        reason: String,
+    },
     /// The clock on the wall was set, or the machine slept; wall times of the run go on from before.
     ClockSet {
         /// By how much, s; below zero: back.

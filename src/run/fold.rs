@@ -61,6 +61,14 @@ impl Run {
                 self.made_safe();
                 Ok(())
             }
+            Happening::NotMadeSafe { .. } => {
+                // With captures alone there is no tube that this program had lit.
+                if !self.identity.from_captures {
+                    self.book.remark(&reasons::NOT_MADE_SAFE);
+                }
+                self.made_safe();
+                Ok(())
+            }
             Happening::Resumed => {
                 // Nobody knows whether the switch was thrown: off first, then the question again.
                 self.interrupted |= self.ending.is_none() && self.pending.is_some();

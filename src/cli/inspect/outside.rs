@@ -64,7 +64,7 @@ struct StopNow(String);
 
 impl Interlock for StopNow {
     fn make_safe(&mut self) -> Result<(), Trouble> {
-        Ok(())
+        Err(Trouble::NotHere("stopped from outside: nobody stood at the switch".into()))
     }
 
     fn stop_key(&mut self) -> Result<(), Trouble> {
