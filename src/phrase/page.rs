@@ -77,13 +77,13 @@ table! {
     SWEEP = "Sweep", "Durchlauf";
     SWEEP_AT = "Sweep, {0}", "Durchlauf, {0}";
     SWEEP_SIGNAL = "signal, of the strongest mode; thin line: fitted modes",
-        "Signal, der stärksten Mode; dünn: angepasste Moden";
+        "Signal, bezogen auf die stärkste Mode; dünn: angepasste Moden";
     SWEEP_AXIS = "detuning of the scan, GHz", "Verstimmung des Durchlaufs, GHz";
     NO_SWEEP = "no sweep was kept", "kein Durchlauf aufbewahrt";
     EMPTY_SWEEP = "the sweep that was kept is empty", "der aufbewahrte Durchlauf ist leer";
     GAIN = "Gain line", "Verstärkungslinie";
     GAIN_CYCLES = "Gain line, {0} walk cycles", "Verstärkungslinie, {0} Wanderperioden";
-    GAIN_HEIGHT = "peak height, of the greatest; bars: U", "Linienhöhe, der größten; Balken: U";
+    GAIN_HEIGHT = "peak height, of the greatest; bars: U", "Linienhöhe, bezogen auf die größte; Balken: U";
     GAIN_AXIS = "detuning from the line's middle, MHz", "Verstimmung von der Linienmitte, MHz";
     NO_HEIGHTS = "no heights were followed over a walk", "keine Höhen über eine Wanderung verfolgt";
     EMPTY_HEIGHTS = "the walk showed no peak heights", "die Wanderung zeigte keine Linienhöhen";

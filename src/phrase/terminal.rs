@@ -31,10 +31,10 @@ table! {
     THEN_ENTER = "{0}, then Enter", "{0}, dann Eingabetaste";
 
     // A person says that it is safe.
-    TAKE_OFF = "Supply off. Charge stays in tube and ballast after switch-off: discharge both with an insulated tool \
-        before a hand comes near. Local rules and licensed practice decide who may do this.",
-        "Netzteil aus. Nach dem Ausschalten bleibt Ladung in Röhre und Vorwiderstand: beide mit isoliertem Werkzeug \
-        entladen, bevor eine Hand in die Nähe kommt. Wer das darf, bestimmen die örtlichen Regeln und die Zulassung.";
+    TAKE_OFF = "Switch the supply off now, if it is on. Charge stays in tube and ballast after switch-off: discharge both \
+        with an insulated tool before a hand comes near. Local rules and licensed practice decide who may do this.",
+        "Jetzt das Netzteil ausschalten, falls es noch an ist. Nach dem Ausschalten bleibt Ladung in Röhre und \
+        Vorwiderstand: beide mit isoliertem Werkzeug entladen, bevor eine Hand in die Nähe kommt. Wer das darf, bestimmen die örtlichen Regeln und die Zulassung.";
     IS_OFF = "Supply off, tube dark, charge taken off", "Netzteil aus, Röhre dunkel, entladen";
     LOOK_FIRST = "Look first whether the supply is on and the tube lit: high voltage may still be there.",
         "Zuerst nachsehen, ob das Netzteil an ist und die Röhre leuchtet: Hochspannung kann noch anliegen.";
