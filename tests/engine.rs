@@ -2,10 +2,13 @@
 
 #![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
 
+use rand_chacha::ChaCha8Rng;
+use rand_core::{RngCore as _, SeedableRng as _};
 use tubewright::{
     capture::{Capture, TimeBase},
     phantom::{Scenario, ScenarioTube, Setting, World},
     sweep::{Measurement, Settings, measure},
+    uncertainty::Measured,
 };
 
 /// Free spectral range of the simulated bench, Hz.
@@ -131,4 +134,49 @@ fn nothing_that_comes_in_can_panic() {
     // A ramp that is none is taken as none: the whole capture stands for one ramp.
     let flat = with(&|c| c.ramp.as_mut().expect("a ramp").fill(1.0));
     assert!(flat.warnings.iter().any(|w| w.to_string().contains("no usable ramp")));
+}
+
+/// A capture of Gaussian noise alone, over a triangle with its turn inside: no light, a bench without the simulator's digitizer.
+fn nothing_but_noise(seed: u64, samples: usize) -> Capture {
+    let mut generator = ChaCha8Rng::seed_from_u64(seed);
+    let mut uniform = || ((generator.next_u64() >> 11) as f64 + 0.5) / (1_u64 << 53) as f64;
+    // Box and Muller (Ann. Math. Stat. 29, 610, 1958).
+    let mut normal = || (-2.0 * uniform().ln()).sqrt() * (std::f64::consts::TAU * uniform()).cos();
+    let turn = 0.8 * samples as f64;
+    let ramp = |i: usize| if (i as f64) < turn { i as f64 / turn } else { 5.0 - 5.0 * i as f64 / samples as f64 };
+    Capture {
+        time: TimeBase { start: 0.0, step: 1e-6, n: samples },
+        ramp: Some((0..samples).map(|i| 10.0 * ramp(i)).collect()),
+        photodiode: (0..samples).map(|_| 0.05 + 0.004 * normal()).collect(),
+        crossed: None,
+        head: Default::default(),
+        remarks: Vec::new(),
+    }
+}
+
+#[test]
+fn noise_alone_is_a_dark_tube_at_every_length() {
+    for samples in [2_000, 4_000, 20_000] {
+        let dark = |seed: &u64| measure(&nothing_but_noise(*seed, samples), &settings(399.7e6)).dark;
+        assert_eq!((1..=60).filter(dark).count(), 60, "{samples} samples");
+    }
+}
+
+#[test]
+fn a_weak_tube_is_not_a_dark_one() {
+    let (scenario, _) = demo("DEMO-0003");
+    let own = scenario.world("DEMO-0003", Some(1)).expect("a world").bench().noise;
+    // The highest peak 15 to 20 noise deviations high.
+    for height in [15.0, 17.0, 20.0] {
+        let mut measured = 0;
+        for seed in 1..=20 {
+            let (capture, truth) = taken("DEMO-0003", seed, 4_000, 1.0 / (height * own));
+            let measurement = measure(&capture, &settings(399.7e6));
+            assert!(!measurement.dark, "{height} deviations, seed {seed}");
+            let close = |spacing: &Measured| (spacing.value - truth).abs() < 4.0 * spacing.u();
+            measured += u64::from(measurement.mode_spacing.as_ref().is_some_and(close));
+        }
+        println!("{height} deviations high: {measured} of 20 measured");
+        assert!(measured >= 18, "{height} deviations: {measured} of 20");
+    }
 }

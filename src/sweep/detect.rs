@@ -3,7 +3,10 @@
 //! Main entry: [`detect`].
 
 use super::segment::{Segment, ranked, sampled};
-use crate::numerics::{peaks, smoothing};
+use crate::numerics::{
+    peaks::{self, Peak},
+    smoothing,
+};
 
 /// A peak as first seen.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -20,6 +23,9 @@ pub(super) struct Seen {
 const LEAST_SHARE: f64 = 0.012;
 /// Noise deviations that a peak must stand out by after smoothing.
 const LEAST_SIGMA: f64 = 6.0;
+/// Noise deviations that the most prominent peak must exceed what noise alone is expected to span. The range of n normal deviates
+/// passes 2·√(2 ln n) by so much less than once in a thousand captures, and σ itself is estimated to 2 or 3 %.
+const OVER_NOISE: f64 = 2.0;
 /// More peaks than this are clutter, not modes.
 const MOST: usize = 160;
 
@@ -31,6 +37,8 @@ pub(super) struct Look {
     pub baseline: f64,
     /// Typical width of the strong peaks, samples.
     pub width: f64,
+    /// No peak stands out by more than noise alone does: no light.
+    pub only_noise: bool,
 }
 
 /// Samples beyond which a ramp is thinned for the first look.
@@ -81,9 +89,21 @@ fn look(signal: &[f64], noise: f64) -> Look {
         if half_window(width) == half { smoothed } else { smoothing::moving_mean(signal, half_window(width)) };
     let noise = noise / (2.0 * half_window(width) as f64 + 1.0).sqrt();
     let top = smoothed.iter().cloned().fold(f64::MIN, f64::max) - baseline;
-    let mut peaks = pass(&smoothed, baseline, (LEAST_SIGMA * noise).max(LEAST_SHARE * top));
+    let found = prominent(&smoothed, (LEAST_SIGMA * noise).max(LEAST_SHARE * top));
+    let most = found.iter().map(|peak| peak.prominence).fold(0.0, f64::max);
+    let only_noise = found.is_empty() || most <= span_of_noise(smoothed.len(), noise);
+    let mut peaks = seen(found, baseline);
     peaks.truncate_strongest(MOST);
-    Look { peaks, baseline, width }
+    Look { peaks, baseline, width, only_noise }
+}
+
+/// Prominence that noise of standard deviation `noise` may reach among n samples without any light, in units of `noise`'s.
+///
+/// The highest of n normal deviates lies near √(2 ln n)·σ and the lowest as far below (extreme values of a normal sample, e.g.
+/// David & Nagaraja, Order Statistics); from the one to the other is the prominence of noise's highest peak: 7.8 σ of 2,000
+/// samples, 8.9 σ of 20,000. It always passes a fixed 6 σ. Smoothed samples are not independent: they span less.
+fn span_of_noise(n: usize, noise: f64) -> f64 {
+    (2.0 * (2.0 * (n.max(2) as f64).ln()).sqrt() + OVER_NOISE) * noise
 }
 
 trait Truncate {
@@ -106,15 +126,20 @@ fn half_window(width: f64) -> usize {
 }
 
 fn pass(signal: &[f64], baseline: f64, prominence: f64) -> Vec<Seen> {
-    let options = peaks::Options { min_prominence: Some(prominence), ..Default::default() };
-    peaks::find(signal, &options)
-        .into_iter()
-        .map(|peak| Seen {
-            x: peak.index as f64,
-            height: peak.height - baseline,
-            width: peak.width_at_half_prominence.max(1.0),
-        })
-        .collect()
+    seen(prominent(signal, prominence), baseline)
+}
+
+fn prominent(signal: &[f64], prominence: f64) -> Vec<Peak> {
+    peaks::find(signal, &peaks::Options { min_prominence: Some(prominence), ..Default::default() })
+}
+
+fn seen(peaks: Vec<Peak>, baseline: f64) -> Vec<Seen> {
+    let seen = |peak: Peak| Seen {
+        x: peak.index as f64,
+        height: peak.height - baseline,
+        width: peak.width_at_half_prominence.max(1.0),
+    };
+    peaks.into_iter().map(seen).collect()
 }
 
 /// Median width of the peaks at least half as high as the highest.

@@ -113,7 +113,7 @@ fn attempt(
     let look = detect::detect(segment);
     let mean = segment.signal.iter().sum::<f64>() / segment.signal.len() as f64;
     result.mean_level = Some(mean - look.baseline);
-    if look.peaks.is_empty() {
+    if look.only_noise {
         result.dark = true;
         return Err(Refusal::Dark);
     }

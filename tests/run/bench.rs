@@ -42,6 +42,8 @@ pub struct Tube {
     pub power: f64,
     /// No light from this time after switching on, s.
     pub dark_from: f64,
+    /// Light again from this time on, s.
+    pub dark_to: f64,
     /// The source has no capture after this one.
     pub n_captures: u64,
     pub tries: u64,
@@ -60,6 +62,7 @@ impl Tube {
             axis: 0.3,
             power: 0.9e-3,
             dark_from: f64::INFINITY,
+            dark_to: f64::INFINITY,
             n_captures: u64::MAX,
             tries: 1,
         }
@@ -105,7 +108,7 @@ impl Tube {
     pub fn finding(&self, t: f64, polarizer: Option<f64>, trace: bool, noise: &mut Noise) -> CaptureFinding {
         let mut finding =
             CaptureFinding { engine: "by hand".into(), free_spectral_range: FSR, order_count: 2, ..Default::default() };
-        if t >= self.dark_from {
+        if (self.dark_from..self.dark_to).contains(&t) {
             finding.dark = true;
             return finding;
         }
@@ -289,6 +292,11 @@ impl Driver {
             Want::Finished => return false,
         }
         true
+    }
+
+    /// Time in which nothing happens: a pause.
+    pub fn pause(&mut self, seconds: f64) {
+        self.now_ms += (seconds * 1e3) as u64;
     }
 
     pub fn until(&mut self, stop: impl Fn(&Want) -> bool) {

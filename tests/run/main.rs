@@ -246,6 +246,26 @@ fn a_dark_tube_fails_as_dark() {
 }
 
 #[test]
+fn one_dark_capture_after_a_gap_is_no_dark_tube() {
+    // Light, a pause of 60 s, then dark captures: for a moment, or for good.
+    let flickers = |dark_to| Tube { dark_from: 60.0, dark_to, ..Tube::twin() };
+    for (dark_to, is_dark) in [(75.0, false), (1e6, true)] {
+        let mut driver = Driver::new(&texts(999.3, "random"), identity(), flickers(dark_to), 10_000);
+        for _ in 0..20 {
+            driver.one();
+        }
+        driver.pause(60.0);
+        driver.happen(Happening::Resumed);
+        let script = driver.finish();
+        let dark = |event: &&Happening| matches!(event, Happening::Captured(captured) if captured.finding.dark);
+        let n_dark = script.events.iter().map(|(happening, _)| happening).filter(dark).count();
+        assert!(n_dark >= if is_dark { 2 } else { 1 }, "{n_dark} dark captures");
+        let code = script.run.sheet().verdict.reject_code;
+        assert_eq!(code.as_deref() == Some("dark"), is_dark, "until {dark_to} s: {code:?}, {n_dark} dark captures");
+    }
+}
+
+#[test]
 fn a_stop_makes_safe_and_keeps_the_sheet() {
     let (texts, tube) = twin();
     let mut driver = Driver::new(&texts, identity(), tube, 10_000);

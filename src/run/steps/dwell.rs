@@ -17,7 +17,8 @@ use crate::{
     uncertainty::{BudgetLine, Evaluation, Measured},
 };
 
-/// Captures dark for longer than this after first light, or after the last light: a dark tube, ms.
+/// Two or more captures without light in between, the first and the last of them this far apart: a dark tube, ms. Time in which
+/// nothing was captured (a pause, a wide grid) says nothing of the light.
 const DARK_AFTER_MS: u64 = 30_000;
 /// Standard uncertainty of the rate at which an interferometer's body moves, Hz/s: aluminium moves 1,090 MHz for 0.1 K
 /// (`measurement.md` 8), taken as within 0.1 K an hour, rectangular (the hour from memory).
@@ -30,8 +31,8 @@ pub(super) struct Dwell {
     grid: Grid,
     next_ms: u64,
     wavelength: f64,
-    /// Monotonic ms of the last light seen, at first of first light.
-    lit_ms: u64,
+    /// Monotonic ms of the first dark capture since light was last seen.
+    dark_since_ms: Option<u64>,
     any_light: bool,
     any_dark: bool,
     n_lost: u64,
@@ -49,7 +50,7 @@ impl Dwell {
             keys: keys.clone(),
             next_ms: 0,
             wavelength: 0.0,
-            lit_ms: 0,
+            dark_since_ms: None,
             any_light: false,
             any_dark: false,
             n_lost: 0,
@@ -77,7 +78,8 @@ impl Dwell {
     fn captured(&mut self, captured: &crate::record::event::Captured, room: &mut Room<'_>) {
         if captured.finding.dark {
             self.any_dark = true;
-            if room.now_ms.saturating_sub(self.lit_ms) > DARK_AFTER_MS {
+            let since_ms = *self.dark_since_ms.get_or_insert(room.now_ms);
+            if room.now_ms.saturating_sub(since_ms) >= DARK_AFTER_MS {
                 return self.end(DwellEnd::Dark, room);
             }
             return self.go_on(room);
@@ -90,7 +92,7 @@ impl Dwell {
             }
             return self.go_on(room);
         }
-        self.lit_ms = room.now_ms;
+        self.dark_since_ms = None;
         self.any_light = true;
         if kept == Kept::Redrawn {
             self.follow_again(room);
@@ -305,7 +307,6 @@ impl Step for Dwell {
         self.grid = Grid::new(first_light, self.keys.early_every_s, early_for, self.keys.every_s);
         // Without a strike, first light is now and so is the first capture.
         self.next_ms = self.grid.at_or_after(room.now_ms);
-        self.lit_ms = room.now_ms;
         self.begun = true;
         let settings = self.settings(room);
         room.book.dwells.push(Dwelt {
