@@ -151,7 +151,7 @@ fn a_tube_put_into_the_rack_now_goes_to_the_simulated_bench() {
     assert!(run.out.contains("taken from the rack, burning since 2026-03-02 07:"), "{}{}", run.err, run.out);
     // Of today in the station's zone, as `--lit-since` takes it.
     rack(&["add", "other", "--at", "00:00"]).ends(0, &["T00:00:00"]);
-    rack(&["add", "X", "--at", "-5 min"]).ends(30, &["--at is", "after now at"]).leaves_nothing();
+    rack(&["add", "X", "--at=-5 min"]).ends(30, &["--at is", "after now at"]).leaves_nothing();
 }
 
 #[test]
