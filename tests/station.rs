@@ -54,9 +54,10 @@ fn a_shift_of_a_bench_with_one_reference_tube() {
     });
     assert!(record.unwrap().contains("Reference tube of brisk: judges the bench, not the tube."));
     // A run within the shift counts, even one whose sheet was opened by hand later.
-    inspect(&place, "BRISK-1", "2026-03-02T13:30:00Z", &[]).ends(0, &["pass, grade prime"]);
+    let checked = ["--retest", "the bench is checked now"];
+    inspect(&place, "BRISK-1", "2026-03-02T13:30:00Z", &checked).ends(0, &["pass, grade prime"]);
     // Without its end check the shift is not closed; the new one asks for its own.
-    let next = inspect(&place, "BRISK-1", "2026-03-02T14:05:00Z", &[]);
+    let next = inspect(&place, "BRISK-1", "2026-03-02T14:05:00Z", &["--retest", "measured again after the shift"]);
     next.ends(
         21,
         &[
@@ -137,4 +138,33 @@ fn a_tube_goes_from_the_rack_to_the_bench() {
     left.ends(0, &["other"]);
     assert!(!left.out.contains("BRISK-1"), "on the bench it is no longer in the rack: {}", left.out);
     rack(&["take", "other"]).ends(0, &[]);
+}
+
+#[test]
+fn a_tube_put_into_the_rack_now_goes_to_the_simulated_bench() {
+    let place = Place::new();
+    let rack = |action: &[&str]| place.run(&[&["rack"], action, &["--reports", "reports"]].concat());
+    // The scenario's clock is in March; by the clock on the wall the tube burns since 40 minutes.
+    rack(&["add", "BRISK-1", "--at", "40 min"]).ends(0, &["BRISK-1  burning since"]);
+    let run = place.inspect("BRISK-1", &[]);
+    run.is_calm();
+    assert!(run.out.contains("taken from the rack, burning since 2026-03-02 07:"), "{}{}", run.err, run.out);
+    // Of today in the station's zone, as `--lit-since` takes it.
+    rack(&["add", "other", "--at", "00:00"]).ends(0, &["T00:00:00"]);
+    rack(&["add", "X", "--at=-5 min"]).ends(30, &["--at is", "after now at"]).leaves_nothing();
+}
+
+#[test]
+fn what_is_said_of_one_tube_is_refused_for_a_day() {
+    let place = place("0.90 mW");
+    let of_one = [
+        ["--type", "brisk-150"],
+        ["--start", "2026-03-02T08:00:00Z"],
+        ["--retest", "why not"],
+        ["--lit-since", "40 min"],
+    ];
+    for [option, value] in of_one {
+        let day = place.run(&["inspect", "--scenario", "scenario.toml", option, value, "--reports", "reports"]);
+        day.ends(30, &[&format!("`{option}` is of one tube, and no SERIAL is given")]).leaves_nothing();
+    }
 }

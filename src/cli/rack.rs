@@ -2,13 +2,18 @@
 //! Must not say that a tube is warm: its dwell does.
 //! Main function: [`run`].
 
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 
-use chrono::{DateTime, SecondsFormat, Utc};
+use chrono::{SecondsFormat, Utc};
 use clap::{Args, Subcommand};
 
-use super::{Ending, Failure, home, inspect::check_serial, output};
+use super::{
+    Ending, Failure, home,
+    inspect::{check_serial, demo_station, faulty, lit_since, read_text},
+    output,
+};
 use crate::disk::Rack;
+use crate::station::file::StationFile;
 
 /// Arguments as given.
 #[derive(Debug, Args)]
@@ -30,9 +35,12 @@ enum Action {
         /// Serial numbers, as scanned
         #[arg(value_name = "SERIAL", required = true)]
         serials: Vec<String>,
-        /// Since when they burn (RFC 3339); else now
+        /// Since when they burn: a time of today (07:40), RFC 3339, or an age ("40 min"); else now
         #[arg(long, value_name = "TIME")]
         at: Option<String>,
+        /// Station file, for its time zone; without it the simulated demo bench's
+        #[arg(long, value_name = "FILE")]
+        station: Option<PathBuf>,
     },
     /// Show the tubes in the rack
     List,
@@ -49,8 +57,8 @@ pub fn run(arguments: Arguments) -> Result<Ending, Failure> {
     let home = home::find(arguments.home, arguments.reports)?;
     let mut rack = Rack::read(home.reports()).map_err(|error| Failure::store(&error))?;
     match arguments.action {
-        Action::Add { serials, at } => {
-            let since = since(at.as_deref())?;
+        Action::Add { serials, at, station } => {
+            let since = since(at.as_deref(), station.as_deref())?;
             let put =
                 serials.iter().map(|serial| check_serial(serial).map(|()| (serial.trim().to_owned(), since.clone())));
             let put = put.collect::<Result<Vec<_>, _>>()?;
@@ -73,12 +81,14 @@ pub fn run(arguments: Arguments) -> Result<Ending, Failure> {
     Ok(Ending::Accepted)
 }
 
-fn since(at: Option<&str>) -> Result<String, Failure> {
-    let Some(text) = at else { return Ok(Utc::now().to_rfc3339_opts(SecondsFormat::Secs, false)) };
-    match DateTime::parse_from_rfc3339(text) {
-        Ok(at) => Ok(at.to_rfc3339_opts(SecondsFormat::Secs, false)),
-        Err(_) => Err(Failure::unusable(format!(
-            "--at is `{text}`; expected a time such as 2026-03-02T07:40:00+00:00 (RFC 3339)"
-        ))),
-    }
+fn since(at: Option<&str>, station: Option<&Path>) -> Result<String, Failure> {
+    let now = Utc::now();
+    let Some(text) = at else { return Ok(now.to_rfc3339_opts(SecondsFormat::Secs, false)) };
+    let (name, station) = match station {
+        Some(path) => (path.display().to_string(), read_text(path)?),
+        None => demo_station(None, "")?,
+    };
+    let zone = StationFile::parse(&name, &station).map_err(|faults| faulty("station file", &faults))?.time_zone;
+    let now = now.with_timezone(&zone).fixed_offset();
+    Ok(lit_since("--at", text, ("now", now), zone)?.to_rfc3339_opts(SecondsFormat::Secs, false))
 }

@@ -47,6 +47,14 @@ pub enum DiskError {
         /// " by process 4242 since 2026-01-05T06:00:00Z", or empty.
         by: String,
     },
+    /// Another process holds the rack longer than a change takes.
+    #[error("`{}` is held by another process for more than {seconds} s; nothing was changed: give the same command again", .path.display())]
+    RackBusy {
+        /// The rack's file.
+        path: PathBuf,
+        /// How long it was waited, s.
+        seconds: u64,
+    },
     /// The stored events do not fit together.
     #[error("`{}`: {fault}", .path.display())]
     Chain {

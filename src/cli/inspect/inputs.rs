@@ -5,7 +5,7 @@
 use std::fmt::Display;
 use std::path::Path;
 
-use chrono::{DateTime, FixedOffset};
+use chrono::{DateTime, FixedOffset, Utc};
 
 use super::{Arguments, Format};
 use crate::cli::{Ending, Failure, home};
@@ -95,7 +95,13 @@ impl Inputs {
         let rack = Rack::read(store.reports()).map_err(|error| Failure::store(&error))?;
         let of_option = arguments.lit_since.map(|text| ("--lit-since", text));
         let of_answers = || Some(("`lit_since` of the answers", answers.as_ref()?.lit_since.clone()?));
-        let of_rack = || Some(("since when it burns, by `tubewright rack list`,", rack.since(serial)?.to_owned()));
+        // The clock of a scenario is its own: there the tube is as old as it is by the clock on the wall.
+        let own_clock = simulated && arguments.start.is_none();
+        let of_rack = || {
+            let since = rack.since(serial)?;
+            let text = if own_clock { age(since) } else { None }.unwrap_or_else(|| since.to_owned());
+            Some(("since when it burns, by `tubewright rack list`,", text))
+        };
         let lit_since = of_option.or_else(of_answers).or_else(of_rack).filter(|_| captures.is_none());
         Ok(Self {
             retest,
@@ -122,6 +128,12 @@ impl Inputs {
     pub fn simulated(&self) -> bool {
         self.scenario.is_some()
     }
+}
+
+/// How long ago that is, as a technician would say it: "2400 s".
+fn age(since: &str) -> Option<String> {
+    let since = DateTime::parse_from_rfc3339(since).ok()?;
+    Some(format!("{} s", (Utc::now().fixed_offset() - since).num_seconds()))
 }
 
 /// The compiled-in station file of the bench on which the scenario has this tube.

@@ -9,16 +9,20 @@ use crate::cli::Failure;
 use crate::quantity::{Dimension, parse_as};
 use crate::station::shift::moment;
 
+/// The start of a run, for messages.
+pub(super) const RUN: &str = "the start of the run";
+
 /// Reads a time of day of the station's today, a time in RFC 3339, or an age such as `40 min`.
 ///
 /// * `from`: where it was given, for messages: `--lit-since`.
-/// * `started_at`: when the run starts, in the station's zone.
+/// * `end`: what `started_at` is, for messages: [`RUN`].
+/// * `started_at`: when the run starts, in the station's zone; where a tube goes into the rack, now.
 ///
 /// Errors: it is none of these, or lies after the start.
-pub(super) fn lit_since(
+pub(in crate::cli) fn lit_since(
     from: &str,
     text: &str,
-    started_at: DateTime<FixedOffset>,
+    (end, started_at): (&str, DateTime<FixedOffset>),
     zone: Tz,
 ) -> Result<DateTime<FixedOffset>, Failure> {
     let text = text.trim();
@@ -37,9 +41,10 @@ pub(super) fn lit_since(
     };
     if since > started_at {
         return Err(Failure::unusable(format!(
-            "{from} is {}, after the start of the run at {}; expected a time before it: of yesterday say the date too, \
+            "{from} is {}, after {} at {}; expected a time before it: of yesterday say the date too, \
              or give an age such as \"40 min\"",
             since.with_timezone(&zone).format("%Y-%m-%d %H:%M"),
+            end,
             started_at.format("%Y-%m-%d %H:%M")
         )));
     }
@@ -54,7 +59,7 @@ mod tests {
     fn read(text: &str, start: &str) -> Result<String, String> {
         let zone = Tz::Europe__Lisbon;
         let start = DateTime::parse_from_rfc3339(start).unwrap().with_timezone(&zone).fixed_offset();
-        lit_since("--lit-since", text, start, zone).map(|at| at.to_rfc3339()).map_err(|failure| failure.message)
+        lit_since("--lit-since", text, (RUN, start), zone).map(|at| at.to_rfc3339()).map_err(|failure| failure.message)
     }
 
     #[test]

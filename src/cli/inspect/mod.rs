@@ -24,6 +24,7 @@ use chrono::{DateTime, FixedOffset};
 use clap::{Args, ValueEnum};
 
 pub(super) use self::inputs::{demo_station, faulty, is_simulated, read_scenario, read_text};
+pub(super) use self::lit_since::lit_since;
 pub(super) use self::serial::check as check_serial;
 use self::{inputs::Inputs, opening::Opening, show::Show};
 use super::{Ending, Failure, output};
@@ -119,6 +120,23 @@ fn moment(text: &str) -> Result<DateTime<FixedOffset>, String> {
 }
 
 impl Arguments {
+    /// Refuses for a whole day what is said of one tube.
+    fn of_one_tube(&self) -> Result<(), Failure> {
+        let given = [
+            ("--type", self.tube_type.is_some()),
+            ("--start", self.start.is_some()),
+            ("--retest", self.retest.is_some()),
+            ("--lit-since", self.lit_since.is_some()),
+        ];
+        match given.iter().find(|(_, given)| *given) {
+            Some((option, _)) => Err(Failure::unusable(format!(
+                "`{option}` is of one tube, and no SERIAL is given: say the SERIAL, or leave `{option}` out to inspect all \
+                 tubes of the scenario"
+            ))),
+            None => Ok(()),
+        }
+    }
+
     /// The same for one tube of a day: without a pace of its own the bench goes as fast as it can.
     fn for_day(&self) -> Self {
         Self { pace: self.pace.or(Some(f64::INFINITY)), ..self.clone() }
@@ -128,7 +146,10 @@ impl Arguments {
 /// Inspects one tube, or all of a scenario.
 pub fn run(arguments: Arguments) -> Result<Ending, Failure> {
     stop::listen();
-    let Some(serial) = arguments.serial.clone() else { return day::run(&arguments) };
+    let Some(serial) = arguments.serial.clone() else {
+        arguments.of_one_tube()?;
+        return day::run(&arguments);
+    };
     serial::check(&serial)?;
     if let Some(why) = &arguments.stop {
         let home = super::home::find(arguments.home, arguments.reports)?;

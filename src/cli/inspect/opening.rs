@@ -9,7 +9,7 @@ use chrono::{DateTime, Datelike as _, FixedOffset, Utc};
 use super::{
     bench, earlier,
     inputs::{Inputs, faulty},
-    lit_since::lit_since,
+    lit_since::{RUN, lit_since},
     run_id::run_id,
 };
 use crate::cli::checks::{checks_of, last_of_each};
@@ -201,7 +201,7 @@ fn new_plan(inputs: &Inputs, runs: &[FoundRun]) -> Result<Planned, Failure> {
     let zone = inputs.station.1.time_zone;
     let started_at = started_at(inputs, earlier::not_before(&finished)).with_timezone(&zone).fixed_offset();
     let lit_since =
-        inputs.lit_since.as_ref().map(|(from, text)| lit_since(from, text, started_at, zone)).transpose()?;
+        inputs.lit_since.as_ref().map(|(from, text)| lit_since(from, text, (RUN, started_at), zone)).transpose()?;
     Ok(Planned { tube_type, texts, plan, repeats, started_at, lit_since })
 }
 
