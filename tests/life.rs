@@ -214,6 +214,7 @@ fn history_shows_runs_beside_each_other_and_what_changed() {
     let shown = history(&place, "BRISK-1", &[]);
     shown.ends(0, &[]).leaves_nothing();
     let out = &shown.out;
+    assert_eq!(out.matches("about one row in twenty changes by chance").count(), 1, "{out}");
     for words in [
         "2 runs",
         "repeats run 1 because: mirror cleaned",

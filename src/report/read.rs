@@ -51,6 +51,8 @@ pub struct ReadValue {
     pub unit: String,
     /// Expanded uncertainty for 95.45 %, in that unit, where there is one.
     pub expanded: Option<f64>,
+    /// Expanded over standard uncertainty, where there is one.
+    pub coverage_factor: Option<f64>,
     /// Remarks; the reason of an absent value.
     pub note: String,
     /// Its budget, in SI.
@@ -132,6 +134,7 @@ fn value(row: &Row) -> ReadValue {
         value: row.text("value"),
         unit: row.text("unit"),
         expanded: row.number("expanded_uncertainty"),
+        coverage_factor: row.number("coverage_factor").filter(|k| *k > 0.0),
         note: row.text("note"),
         budget: Vec::new(),
     }
@@ -202,12 +205,14 @@ mod tests {
 
     #[test]
     fn numbers_words_and_what_is_no_record() {
-        let text = b"run_id,step,measurand,value,expanded_uncertainty,verdict,grade,note\r\nr,,tube,,,pass,prime,\r\n\
-            r,p,power,0.91,0.02,pass,prime,\r\nr,p,power,0.91,0.02,pass,alignment,\r\nr,g,visual.getter,bright,,pass,,'=1\r\n";
+        let text = b"run_id,step,measurand,value,expanded_uncertainty,coverage_factor,verdict,grade,note\r\n\
+            r,,tube,,,,pass,prime,\r\nr,p,power,0.91,0.02,2.1,pass,prime,\r\nr,p,power,0.91,0.02,2.1,pass,alignment,\r\n\
+            r,g,visual.getter,bright,,,pass,,'=1\r\n";
         let record = read_record(text, BUDGET, METADATA).unwrap();
         assert_eq!((record.outcome.as_str(), record.grade.as_str(), record.reason.as_str()), ("pass", "prime", "dim"));
         let values: Vec<_> = record.values.iter().map(|value| (value.measurand.as_str(), value.number())).collect();
         assert_eq!(values, [("power", Some(0.91)), ("visual.getter", None)], "a row of two grades is one value");
+        assert_eq!((record.values[0].expanded, record.values[0].coverage_factor), (Some(0.02), Some(2.1)));
         assert_eq!((record.values[1].value.as_str(), record.values[1].note.as_str()), ("bright", "=1"));
         let dofs: Vec<f64> = record.values[0].budget.iter().map(|line| line.dof).collect();
         assert_eq!((dofs, record.certificates), (vec![9.0, f64::INFINITY], vec!["C-1".to_owned()]));

@@ -5,7 +5,7 @@
 use serde_json::{Value as Json, json};
 
 use super::{
-    changes::{Change, changes},
+    changes::{By, Change, Comparison, comparisons},
     gather::{Column, Past},
 };
 use crate::cli::{Ending, Failure};
@@ -19,12 +19,8 @@ pub(super) fn json(past: &Past) -> String {
         json!({ "life": event.kind.word(), "date": event.date, "note": event.note, "noted_at": event.noted_at,
                 "after_run_id": event.after })
     }));
-    for (place, pair) in past.columns.windows(2).enumerate() {
-        if let [before, after] = pair {
-            let changed = changes(&before.record, &after.record);
-            lines.extend(changed.iter().map(|change| changed_line(place + 1, change)));
-        }
-    }
+    let compared = comparisons(&past.columns.iter().map(|column| &column.record).collect::<Vec<_>>());
+    lines.extend(compared.iter().flat_map(|it| it.changes.iter().map(move |change| changed_line(it, change))));
     lines.extend(past.left_out.iter().map(|why| json!({ "left_out": why })));
     lines.iter().map(|line| line.to_string() + "\n").collect()
 }
@@ -70,18 +66,25 @@ fn fields(value: &ReadValue) -> Vec<(String, Json)> {
     fields
 }
 
-fn changed_line(from: usize, change: &Change) -> Json {
+/// A difference beside a lower bound is no number: `difference_at_least_si` is the least one, with its sign.
+fn changed_line(runs: &Comparison, change: &Change) -> Json {
     let key =
         measurand::find(&change.measurand).map_or_else(|| change.measurand.clone(), measurand::Measurand::json_key);
+    let (difference, expanded, at_least) = match change.by {
+        By::Another => (None, None, None),
+        By::Difference(difference, expanded) => (Some(difference), Some(expanded), None),
+        By::AtLeast(least) => (None, None, Some(least)),
+    };
     json!({
         "change": key,
-        "from_run": from,
-        "to_run": from + 1,
+        "from_run": runs.from,
+        "to_run": runs.to,
         "before": change.before.value,
         "after": change.after.value,
         "unit": change.after.unit,
-        "difference_si": change.difference.map(|(difference, _)| difference),
-        "difference_expanded_si": change.difference.map(|(_, expanded)| expanded),
+        "difference_si": difference,
+        "difference_expanded_si": expanded,
+        "difference_at_least_si": at_least,
     })
 }
 

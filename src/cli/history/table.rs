@@ -1,9 +1,9 @@
 //! The past of a tube as a table for people.
-//! Must not compare: the changes come in. English, as the records are that it is read from.
+//! Must not compare: [`comparisons`] does. English, as the records are that it is read from.
 //! Main function: [`text`].
 
 use super::{
-    changes::{Change, changes},
+    changes::{By, Change, comparisons},
     gather::{Column, Past},
 };
 use crate::cli::inspect::earlier::ending_words;
@@ -12,7 +12,7 @@ use crate::phrase::{Language, Saying};
 use crate::record::sheet::{Row, Value};
 use crate::report::{ReadValue, value_text};
 
-/// Runs with what happened between them, the values beside each other, and what changed from each run to the next.
+/// Runs with what happened between them, the values beside each other, and what changed from run to run.
 pub(super) fn text(serial: &str, past: &Past) -> String {
     let mut lines = vec![title(serial, past)];
     for item in in_time(past) {
@@ -22,19 +22,38 @@ pub(super) fn text(serial: &str, past: &Past) -> String {
         lines.push(String::new());
         lines.extend(values(&past.columns));
     }
-    for (place, pair) in past.columns.windows(2).enumerate() {
-        let [before, after] = pair else { continue };
-        lines.push(format!("\nFrom run {} to run {}, beyond the uncertainties (95.45 %):", place + 1, place + 2));
-        let changed = changes(&before.record, &after.record);
-        lines.extend(changed.iter().map(|change| format!("  {}", sentence(change))));
-        if changed.is_empty() {
-            lines.push("  nothing".to_owned());
-        }
-    }
+    lines.extend(changed(&past.columns));
     if !past.left_out.is_empty() {
         lines.push(format!("\n{} left out, named on standard error", past.left_out.len()));
     }
     lines.join("\n") + "\n"
+}
+
+/// What changed, each run beside the last earlier ones that have its values.
+fn changed(columns: &[Column]) -> Vec<String> {
+    if columns.len() < 2 {
+        return Vec::new();
+    }
+    let compared = comparisons(&columns.iter().map(|column| &column.record).collect::<Vec<_>>());
+    let mut lines = vec![
+        "\nChanges beyond the uncertainties. Each row is tested at 95.45 %: about one row in twenty changes by chance."
+            .to_owned(),
+    ];
+    for run in 2..=columns.len() {
+        let mut beside = compared.iter().filter(|it| it.to == run).peekable();
+        if beside.peek().is_none() {
+            lines.push(format!("Run {run}: no row that an earlier run has too"));
+        }
+        for it in beside {
+            let rows = if it.rows == 1 { "1 row" } else { &format!("{} rows", it.rows) };
+            lines.push(format!("From run {} to run {run}, {rows} compared:", it.from));
+            lines.extend(it.changes.iter().map(|change| format!("  {}", sentence(change))));
+            if it.changes.is_empty() {
+                lines.push("  nothing".to_owned());
+            }
+        }
+    }
+    lines
 }
 
 fn title(serial: &str, past: &Past) -> String {
@@ -136,9 +155,9 @@ fn row_of(value: &ReadValue) -> Row {
         (Some(Shape::Count), Some(n), _) => Value::Count { value: n as u64, low: n as u64, high: n as u64 },
         (Some(_), Some(n), Some(expanded)) => Value::Number {
             value: n * factor,
-            u: expanded * factor / 2.0,
+            u: expanded * factor / value.coverage_factor.unwrap_or(2.0),
             expanded: expanded * factor,
-            k: 2.0,
+            k: value.coverage_factor.unwrap_or(2.0),
             dof: f64::INFINITY,
         },
         (Some(_), Some(n), None) => Value::AtLeast(n * factor),
@@ -156,16 +175,21 @@ fn row_of(value: &ReadValue) -> Row {
     }
 }
 
-/// "Power: 0.929 ± 0.028 mW, then 0.851 ± 0.026 mW: by -0.078 ± 0.005 mW".
+/// "Power: 0.929 ± 0.028 mW, then 0.851 ± 0.026 mW: by -0.078 ± 0.005 mW"; beside a lower bound "…: a fall of ≥ 4050".
 fn sentence(change: &Change) -> String {
     let pair = format!("{}: {}, then {}", label(&change.measurand), shown(&change.before), shown(&change.after));
-    let Some(((difference, expanded), known)) = change.difference.zip(measurand::find(&change.measurand)) else {
-        return pair;
+    let unit = measurand::find(&change.measurand).map_or("", |known| known.unit().symbol);
+    let text = |value| value_text(&Row { value, ..row_of(&change.after) }, Language::English);
+    let by = match change.by {
+        By::Another => return pair,
+        By::Difference(value, expanded) => {
+            let text = text(Value::Number { value, u: expanded / 2.0, expanded, k: 2.0, dof: f64::INFINITY });
+            format!("by {} {}", text.value, text.spread)
+        }
+        By::AtLeast(least) => {
+            let way = if least < 0.0 { "fall" } else { "rise" };
+            format!("a {way} of {}", text(Value::AtLeast(least.abs())).value)
+        }
     };
-    let difference = Row {
-        value: Value::Number { value: difference, u: expanded / 2.0, expanded, k: 2.0, dof: f64::INFINITY },
-        ..row_of(&change.after)
-    };
-    let text = value_text(&difference, Language::English);
-    format!("{pair}: by {} {} {}", text.value, text.spread, known.unit().symbol).trim_end().to_owned()
+    format!("{pair}: {by} {unit}").trim_end().to_owned()
 }
