@@ -169,7 +169,8 @@ fn numbers_that_are_none_are_refused_or_left_out_with_a_word() {
 
 #[test]
 fn one_order_alone_has_no_scale() {
-    let place = with_captures(&["--orders", "0.7"]);
+    // Less than an order, but enough that the modes are in it: in a shorter ramp there may be noise alone.
+    let place = with_captures(&["--orders", "0.8"]);
     let ran = measure(&place, &first_capture(&place));
     ran.ends(30, &[]).leaves_nothing();
     let object = object(&ran);
