@@ -18,6 +18,8 @@ use super::{
 };
 use crate::phrase::Phrase;
 
+/// Width of a tick's label beside the upright axis: "−100" is the widest; the page's margin takes what passes the frame.
+const TICK_ROOM: f64 = 18.0;
 /// Height of a chart beyond its plot: title, subtitle, room for marks, ticks, name of the axis.
 pub const OVERHEAD: f64 = 54.0;
 const TITLES: f64 = 30.0;
@@ -94,7 +96,7 @@ impl Plot {
             let text = face.language.figure(&text);
             let y = self.at_y(value);
             scene.line(vec![(self.left - 2.5, y), (self.left, y)], line);
-            scene.fitted(face, (self.left - 4.0, y + 2.3), Anchor::End, &text, TICK, 14.0);
+            scene.fitted(face, (self.left - 4.0, y + 2.3), Anchor::End, &text, TICK, TICK_ROOM);
         }
         scene.fitted(face, (self.right, self.bottom + 18.5), Anchor::End, x_name, TICK, self.right - self.left);
     }
